@@ -1,0 +1,49 @@
+"""What a command says on the terminal while it works: progress and notes, on stderr."""
+
+import sys
+import time
+
+import click
+
+from sitescreen.notes import Note
+from sitescreen.progress import Progress
+
+QUIET_S = 2.0
+"""Runs shorter than this say nothing. [s]"""
+
+
+class TerminalProgress(Progress):
+    """A live line on a terminal; on a pipe one line a stage, once the run has lasted over two seconds."""
+
+    def __init__(self) -> None:
+        super().__init__()
+        from rich.console import Console
+
+        self._begun = time.perf_counter()
+        self._console = Console(stderr=True, highlight=False)
+        self._status = self._console.status("") if sys.stderr.isatty() else None
+
+    def started(self, text: str) -> None:
+        """Show the stage."""
+        if self._status is not None:
+            from rich.markup import escape
+
+            self._status.update(escape(f"{text} …"))
+            self._status.start()
+        elif time.perf_counter() - self._begun > QUIET_S or text.startswith(("Compiling", "Reading the ground")):
+            click.echo(f"{text} …", err=True)
+
+    def ended(self, text: str) -> None:
+        """Clear the live line; a longer stage leaves its seconds."""
+        if self._status is not None:
+            self._status.stop()
+
+
+def show_notes(notes: tuple[Note, ...]) -> None:
+    """Warnings and assumptions, one line each; plain information stays in the record."""
+    for note in notes:
+        if note.level == "warning":
+            click.echo(f"Warning ({note.where}): {note.text}", err=True)
+    for note in notes:
+        if note.level == "assumed":
+            click.echo(f"Assumed ({note.where}): {note.text}", err=True)

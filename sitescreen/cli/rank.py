@@ -1,0 +1,105 @@
+"""``sitescreen rank``: the main job."""
+
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import click
+
+from sitescreen.cli.options import (
+    EXISTING,
+    brief_argument,
+    in_one_line,
+    plots_option,
+    shore_option,
+    terrain_option,
+    zone_option,
+)
+
+if TYPE_CHECKING:
+    from sitescreen.brief import Brief
+    from sitescreen.screening import Screening
+
+
+@click.command("rank")
+@brief_argument
+@terrain_option
+@shore_option
+@plots_option
+@zone_option
+@click.option("--out", type=EXISTING, help="Folder for the results. Default: the brief's, else “out”.")
+@in_one_line
+def command(
+    brief: Path | None,
+    terrain: tuple[Path, ...],
+    shore: Path | None,
+    plots: Path | None,
+    zone: str | None,
+    out: Path | None,
+) -> None:
+    """Rank the plots of a BRIEF, or of files named by options.
+
+    Writes map.html, ranking.csv, ranking.xlsx, plots.gpkg, layers/*.tif and record.json into the output folder; results
+    of an earlier run stay whole until the new ones are complete.
+
+    \b
+    sitescreen rank demo_region/brief.toml
+    sitescreen rank --terrain tile.tif --shore shore.gpkg --plots plots.gpkg --out results
+    """
+    from sitescreen.cli._show import TerminalProgress, show_notes
+    from sitescreen.deliverables import write_results
+    from sitescreen.deliverables.folder import check_writable
+    from sitescreen.screening import screen
+
+    the_brief = asked(brief, terrain, shore, plots, zone, out)
+    folder = the_brief.output.folder
+    check_writable(folder)  # before the work, not after it
+    progress = TerminalProgress()
+    screening = screen(the_brief, progress)
+    with progress.step("Writing the results"):
+        write_results(screening, folder)
+    show_notes(screening.notes)
+    _summary(screening, folder)
+
+
+def asked(
+    brief: Path | None,
+    terrain: tuple[Path, ...],
+    shore: Path | None,
+    plots: Path | None,
+    zone: str | None,
+    out: Path | None,
+) -> "Brief":
+    """The brief that the words of the call amount to; options replace what the file says."""
+    from sitescreen.brief import Brief, load_brief
+    from sitescreen.errors import BriefError
+
+    if brief is not None:
+        if terrain or shore or plots:
+            raise BriefError(
+                f"both the brief {brief} and files by option were given",
+                "one of the two is needed",
+                "Name the files in the brief, or leave the brief out",
+            )
+        return load_brief(brief).with_choices(zone=zone, out=out)
+    if not terrain or plots is None:
+        raise BriefError(
+            "no brief was given, and not both --terrain and --plots",
+            "a brief, or at least a terrain raster and a file of plots, is needed",
+            "Try: sitescreen rank demo_region/brief.toml",
+        )
+    return Brief.from_files(list(terrain), shore, plots, zone=zone, out=out)
+
+
+def _summary(screening: "Screening", folder: Path) -> None:
+    """The head of the ranking on stdout, and where the rest is."""
+    table = screening.table
+    ranked = table[table["rank"].notna()]
+    aside = table[table["rank"].isna()]
+    click.echo(f"{len(table)} plots: {len(ranked)} ranked, {len(aside)} set aside.")
+    for row in ranked.head(screening.brief.judge.shortlist).itertuples():
+        gains = screening.reasons[row.plot].for_
+        name = f" {row.name}" if row.name else ""
+        click.echo(f"{int(row.rank):>4}. {row.plot}{name}, {row.zone}: {row.overall_mark:.0f} of 100. {' '.join(gains[:1])}")
+    click.echo(f"Map: {folder / 'map.html'}")
+    click.echo(f"Table: {folder / 'ranking.csv'}")
+    click.echo("A screening, not a survey: local codes and licensed practice decide.")
