@@ -1,0 +1,271 @@
+"""The numbers that sitescreen works with, read from ``config/`` and checked.
+
+Frozen models, one a section of ``config/defaults.toml``. Where each number comes from stands there, on the line above.
+"""
+
+import difflib
+import tomllib
+from collections.abc import Mapping
+from functools import cache
+from importlib import resources
+from itertools import pairwise
+from pathlib import Path
+from typing import Annotated, Any, TypeVar
+
+import annotated_types
+from pydantic import AfterValidator, BaseModel, ConfigDict, Field, ValidationError
+
+from sitescreen.errors import ConfigError
+
+Model = TypeVar("Model", bound=BaseModel)
+
+Share = Annotated[float, Field(ge=0, le=1)]
+Positive = Annotated[float, Field(gt=0, le=1e6)]
+
+
+def _is_curve(points: tuple[tuple[float, float], ...]) -> tuple[tuple[float, float], ...]:
+    values = [value for value, _ in points]
+    if any(later <= earlier for earlier, later in pairwise(values)):
+        raise ValueError("a curve whose first numbers rise from point to point")
+    return points
+
+
+Ramp = Annotated[
+    tuple[tuple[Annotated[float, Field(allow_inf_nan=False)], Share], ...],
+    Field(min_length=2, max_length=20),
+    AfterValidator(_is_curve),
+]
+"""Points (value, fit), the values rising; linear between them and level beyond them."""
+
+
+class Section(BaseModel):
+    """A checked, frozen group of settings; a key that it does not know is an error."""
+
+    model_config = ConfigDict(frozen=True, extra="forbid", allow_inf_nan=False)
+
+
+class ReadingSettings(Section):
+    """How plots take their readings from the cells under them."""
+
+    known_share_least: Share
+    cells_least: Annotated[float, Field(ge=1, le=1000)]
+    flat_gradient: Share
+    pool_share_least: Share
+
+
+class TerrainSettings(Section):
+    """The ground."""
+
+    buildable_limit_pct: Annotated[float, Field(gt=0, le=100)]
+    rise_radius_m: Annotated[float, Field(ge=100, le=10_000)]
+    sky_azimuths: Annotated[int, Field(ge=4, le=360)]
+    smallest_water_km2: Positive
+
+
+class ShoreSettings(Section):
+    """Which waters count."""
+
+    smallest_lake_km2: Annotated[float, Field(ge=0, le=1000)]
+
+
+class BreezeSettings(Section):
+    """The day's breeze from sea or lake."""
+
+    front_speed_m_s: Annotated[float, Field(ge=0.5, le=20)]
+    onset_h: Annotated[float, Field(ge=0, le=24)]
+    end_h: Annotated[float, Field(ge=0, le=24)]
+    tail_from_km: Positive
+    tail_length_km: Positive
+    lake_width_none_km: Annotated[float, Field(ge=0, le=100)]
+    lake_width_full_km: Annotated[float, Field(gt=0, le=500)]
+
+
+class WindSettings(Section):
+    """Exposure and shelter."""
+
+    shelter_reach_m: Annotated[float, Field(ge=100, le=12_000)]
+    receptor_height_m: Annotated[float, Field(ge=0, le=100)]
+    shelter_from_tangent: Share
+    shelter_span_tangent: Annotated[float, Field(gt=0, le=2)]
+    shelter_most: Share
+    rise_for_double_m: Positive
+    speed_up_least: Annotated[float, Field(ge=-1, le=0)]
+    speed_up_most: Annotated[float, Field(ge=0, le=3)]
+
+
+class ColdAirSettings(Section):
+    """Cold air on calm clear nights."""
+
+    least_depth_m: Annotated[float, Field(ge=0, le=100)]
+    noise_factor: Annotated[float, Field(ge=0, le=10)]
+    least_cells: Annotated[int, Field(ge=1, le=10_000)]
+    fill_scale_m: Positive
+    strength_k: Mapping[str, Annotated[float, Field(ge=0, le=30)]]
+
+
+class ZoneFit(Section):
+    """One zone's ramps. Each is a condition; a condition left out does not limit the zone."""
+
+    t_mean_c: Ramp | None = None
+    t_range_k: Ramp | None = None
+    rh_mean: Ramp | None = None
+    hottest_month_max_c: Ramp | None = None
+    elevation_m: Ramp | None = None
+    sea_km: Ramp | None = None
+    lake_km: Ramp | None = None
+    lake_km_per_width: Ramp | None = None
+    lake_width_km: Ramp | None = None
+    unless: tuple[str, ...] = ()
+
+    def ramps(self) -> dict[str, Any]:
+        """The conditions that are set, by the quantity they look at."""
+        return {name: ramp for name in type(self).model_fields if name != "unless" and (ramp := getattr(self, name))}
+
+
+class ZoneSettings(Section):
+    """How well a plot fits each climate zone. The zones' order settles ties and which memberships are known first."""
+
+    lapse_k_km: Annotated[float, Field(ge=0, le=10)]
+    least_membership: Share
+    station_height_km_per_100m: Annotated[float, Field(ge=0, le=1000)]
+    station_far_km: Positive
+    station_high_m: Positive
+    with_normals: Mapping[str, ZoneFit]
+    without_normals: Mapping[str, ZoneFit]
+
+
+class JudgementSettings(Section):
+    """Marks and ranks."""
+
+    assumed_weight_factor: Share
+    mark_tie: Annotated[float, Field(ge=0, le=0.1)]
+    reasons_shown: Annotated[int, Field(ge=1, le=10)]
+
+
+class Defaults(Section):
+    """All sections of ``config/defaults.toml``."""
+
+    readings: ReadingSettings
+    terrain: TerrainSettings
+    shore: ShoreSettings
+    breeze: BreezeSettings
+    wind: WindSettings
+    cold_air: ColdAirSettings
+    zones: ZoneSettings
+    judgement: JudgementSettings
+
+
+def config_folder() -> Path:
+    """The folder of settings: inside the installed package, or beside it in a checkout."""
+    inside = Path(str(resources.files("sitescreen") / "config"))
+    return inside if inside.is_dir() else Path(__file__).resolve().parent.parent / "config"
+
+
+@cache
+def load_defaults() -> Defaults:
+    """The shipped settings.
+
+    Raises
+    ------
+    ConfigError
+        If ``config/defaults.toml`` is missing or wrong; the message names file, key and allowed range.
+    """
+    return read_settings(config_folder() / "defaults.toml", Defaults)
+
+
+def read_settings(path: Path, model: type[Model]) -> Model:
+    """Read a TOML file into a checked model.
+
+    Raises
+    ------
+    ConfigError
+        If the file cannot be read, is not TOML, or holds a key or value that the model does not allow.
+    """
+    return checked(read_toml(path), model, path.name)
+
+
+def read_toml(path: Path) -> dict[str, Any]:
+    """The content of a TOML file.
+
+    Raises
+    ------
+    ConfigError
+        If the file cannot be read or is not TOML in UTF-8.
+    """
+    try:
+        return tomllib.loads(path.read_text(encoding="utf-8"))
+    except OSError as error:
+        raise ConfigError(
+            f"the settings file {path} cannot be read ({error.strerror})",
+            "a readable file is needed",
+            "Check the path, or install sitescreen again if the file is its own",
+        ) from error
+    except (tomllib.TOMLDecodeError, UnicodeDecodeError) as error:
+        raise ConfigError(
+            f"{path.name} is not valid TOML: {error}",
+            "a TOML file in UTF-8 is needed",
+            "Correct that line; text stands in quotes, lists in [ ]",
+        ) from error
+
+
+def checked(values: Mapping[str, Any], model: type[Model], file_name: str) -> Model:
+    """Check values against a model; the first fault becomes one line that names file, key and allowed range."""
+    try:
+        return model.model_validate(values)
+    except ValidationError as error:
+        raise _config_error(error, model, file_name) from error
+
+
+def _config_error(error: ValidationError, model: type[BaseModel], file_name: str) -> ConfigError:
+    fault = error.errors()[0]
+    key = ".".join(str(part + 1) if isinstance(part, int) else part for part in fault["loc"])
+    if fault["type"] == "extra_forbidden":
+        known = _known_keys(model, fault["loc"])
+        near = difflib.get_close_matches(str(fault["loc"][-1]), known, n=1)
+        way_out = f"Perhaps {near[0]!r} was meant" if near else "Remove it, or correct its spelling"
+        return ConfigError(f"{file_name} has the unknown key {key!r}", f"known keys are {', '.join(known)}", way_out)
+    if fault["type"] == "missing":
+        return ConfigError(f"{file_name} has no key {key!r}", "that key is needed", "Add it")
+    given = repr(fault["input"])
+    given = given if len(given) <= 60 else given[:57] + "…"
+    allowed = _allowed(model, fault["loc"]) or _in_words(fault)
+    return ConfigError(f"{file_name} has {key} = {given}", f"{allowed} is needed", "Correct that value")
+
+
+def _in_words(fault: Any) -> str:
+    if fault["type"] == "value_error":
+        return str(fault["ctx"]["error"])
+    return str(fault["msg"]).replace("Input should be", "a value that is").rstrip(".")
+
+
+def _known_keys(model: type[BaseModel], loc: tuple[int | str, ...]) -> list[str]:
+    """Keys allowed beside the last part of a path into nested models."""
+    owner = _owner(model, loc)
+    return list(owner.model_fields) if owner else []
+
+
+def _owner(annotation: Any, loc: tuple[int | str, ...]) -> type[BaseModel] | None:
+    """The model that holds the last part of the path."""
+    for part in loc[:-1]:
+        if isinstance(annotation, type) and issubclass(annotation, BaseModel):
+            field = annotation.model_fields.get(str(part))
+            annotation = field.annotation if field else None
+        elif inner := getattr(annotation, "__args__", ()):
+            # a list's or a mapping's last argument is what it holds
+            annotation = next((one for one in reversed(inner) if one not in (..., type(None))), None)
+    return annotation if isinstance(annotation, type) and issubclass(annotation, BaseModel) else None
+
+
+def _allowed(model: type[BaseModel], loc: tuple[int | str, ...]) -> str:
+    """The range that a number may have, in words; "" where the path leads to something else."""
+    owner = _owner(model, loc)
+    field = owner.model_fields.get(str(loc[-1])) if owner else None
+    low = high = None
+    for rule in field.metadata if field else ():
+        if isinstance(rule, annotated_types.Ge):
+            low = f"from {rule.ge:g}"
+        elif isinstance(rule, annotated_types.Gt):
+            low = f"above {rule.gt:g}"
+        elif isinstance(rule, annotated_types.Le):
+            high = f"to {rule.le:g}"
+    return f"a number {low} {high}" if low and high else ""
