@@ -1,0 +1,144 @@
+"""The main job on the tropical 90 m tile with its lake, end to end.
+
+The terrain holds the lake exactly flat at 185 m over 58,670 cells (some 499 km²); the global shoreline maps the same
+lake some 4.5 times as large. Both are honest, and the program must live with that and say so.
+"""
+
+import re
+import subprocess
+import sys
+from collections.abc import Callable
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+import pandas as pd
+import pytest
+import rasterio
+from rasterio.windows import Window
+from scipy.stats import spearmanr
+from sitescreen.brief import load_brief
+from sitescreen.terrain.flat_water import flat_water
+
+from sitescreen.screening import Screening, screen
+
+pytestmark = pytest.mark.real_terrain
+
+# By the file's own cells, apart from the program:
+IN_THE_LAKE = ["03"]  # all of the plot at 185 m, inside the mapped lake
+DRY_BUT_MAPPED = ["04", "08"]  # all of the plot inside the mapped lake, none of it flat
+PARTLY_MAPPED = ["21"]  # three tenths inside the mapped lake, none of it flat
+
+
+def test_every_plot_has_an_outcome(lake_screening: Screening) -> None:
+    """24 in, 24 out: a rank or a stated reason."""
+    table = lake_screening.table.set_index("plot")
+    assert sorted(table.index) == [f"{k:02d}" for k in range(1, 25)]
+    ranked = table["rank"].notna()
+    assert (table.loc[~ranked, "set_aside"].str.len() > 0).all()
+    assert sorted(table.loc[ranked, "rank"]) == list(range(1, int(ranked.sum()) + 1))
+
+
+def test_the_lake_is_found_in_the_terrain(lake_screening: Screening) -> None:
+    """One flat area at 185 m of some 499 km²."""
+    flat = flat_water(lake_screening.fields["elevation_m"])
+    largest = int(np.argmax(flat.area_km2))
+    assert flat.level_m[largest] == pytest.approx(185.0, abs=0.01)
+    # the warp blurs the rim of a very ragged shore, so that only cells with all neighbours in the lake stay flat
+    assert flat.area_km2[largest] == pytest.approx(499.0, rel=0.15)
+
+
+def test_a_plot_in_the_lake_is_set_aside(lake_screening: Screening) -> None:
+    table = lake_screening.table.set_index("plot")
+    for plot in IN_THE_LAKE:
+        assert "water" in table.loc[plot, "set_aside"]
+        assert pd.isna(table.loc[plot, "rank"])
+
+
+def test_dry_ground_under_a_mapped_lake_is_a_concern(lake_screening: Screening) -> None:
+    """Shoreline and terrain disagree: the plot keeps its rank and carries the warning."""
+    table = lake_screening.table.set_index("plot")
+    for plot in DRY_BUT_MAPPED:
+        assert table.loc[plot, "set_aside"] == ""
+        assert pd.notna(table.loc[plot, "rank"])
+        assert re.search("water|lake|shore", table.loc[plot, "cautions"])
+
+
+def test_the_disagreement_is_reported_in_figures(lake_screening: Screening) -> None:
+    """The share that mapped and flat water have in common, 0.22 by the file's own cells, stands in a note."""
+    said = [note.text for note in lake_screening.notes if note.where in ("shore", "terrain") and "flat" in note.text]
+    assert said
+    figures = [float(figure) for text in said for figure in re.findall(r"0\.\d+|\d+(?= ?%)", text)]
+    assert any(abs(figure - 0.22) < 0.03 or abs(figure - 22) < 3 for figure in figures), said
+
+
+def test_distances_agree_with_geodesics(
+    lake_screening: Screening, lake_place: Any, by_geodesics: Callable[..., pd.DataFrame]
+) -> None:
+    table = lake_screening.table.set_index("plot").drop(index=[*IN_THE_LAKE, *DRY_BUT_MAPPED, *PARTLY_MAPPED])
+    walked = by_geodesics(lake_place.shore, "lake", table)
+    assert len(table) == 20
+    assert set(table["shore_kind"]) == {"lake"}
+    assert walked["km"].max() > 20
+    # half the spacing of the walked points, and a line that is straight in metres bends by metres in degrees
+    assert np.abs(table["shore_distance_km"] - walked["km"]).max() < 0.015
+
+
+def test_four_tiles_give_the_same_ranks_and_readings(
+    lake_screening: Screening, lake_place: Any, tmp_path: Path
+) -> None:
+    """A second run, from the tile cut into four: nothing in the table moves, not by one bit."""
+    with rasterio.open(lake_place.terrain) as source:
+        parts = [Window(0, 0, 500, 700), Window(500, 0, 701, 700), Window(0, 700, 500, 501), Window(500, 700, 701, 501)]
+        for k, part in enumerate(parts):
+            profile = source.profile | {"width": part.width, "height": part.height}
+            profile["transform"] = source.window_transform(part)
+            with rasterio.open(tmp_path / f"{k}.tif", "w", **profile) as out:
+                out.write(source.read(1, window=part), 1)
+    tiles = ", ".join(f'"{tmp_path / f"{k}.tif"}"' for k in range(4))
+    whole = lake_place.brief.read_text(encoding="utf-8")
+    brief = lake_place.brief.with_name("four.toml")
+    brief.write_text(whole.replace(f'"{lake_place.terrain}"', tiles), encoding="utf-8")
+    again = screen(load_brief(brief)).table
+    pd.testing.assert_frame_equal(
+        pd.DataFrame(again.drop(columns="geometry")),
+        pd.DataFrame(lake_screening.table.drop(columns="geometry")),
+        check_exact=True,
+    )
+
+
+def test_ranks_stand_when_the_ground_trembles(lake_screening: Screening, lake_place: Any, tmp_path: Path) -> None:
+    """Noise of 0.2 m on the land, a fiftieth of the terrain's own error: ranks hold but for near ties."""
+    with rasterio.open(lake_place.terrain) as source:
+        heights, profile = source.read(1), source.profile
+    noise = np.random.default_rng(20).normal(0.0, 0.2, heights.shape).astype(np.float32)
+    shaken = np.where(heights == 185, heights, heights + noise).astype(np.float32)
+    terrain = tmp_path / "shaken.tif"
+    with rasterio.open(terrain, "w", **(profile | {"dtype": "float32"})) as out:
+        out.write(shaken, 1)
+    brief = lake_place.brief.with_name("shaken.toml")
+    text = lake_place.brief.read_text(encoding="utf-8").replace(str(lake_place.terrain), str(terrain))
+    brief.write_text(text, encoding="utf-8")
+    before = lake_screening.table.set_index("plot")
+    after = screen(load_brief(brief)).table.set_index("plot").loc[before.index]
+    assert (before["set_aside"] == after["set_aside"]).all()
+    ranked = before["rank"].notna()
+    assert (before["overall_mark"] - after["overall_mark"])[ranked].abs().max() < 1.0
+    assert spearmanr(before.loc[ranked, "rank"], after.loc[ranked, "rank"]).statistic > 0.98
+
+
+def test_the_command_writes_the_same_table_twice(lake_place: Any) -> None:
+    """``sitescreen rank`` in processes of their own: whole results, and the same bytes of the table."""
+    command = Path(sys.executable).with_name("sitescreen")
+    tables = []
+    for folder in ("first", "second"):
+        out = lake_place.brief.parent / folder
+        done = subprocess.run(
+            [command, "rank", str(lake_place.brief), "--out", str(out)], capture_output=True, text=True, check=False
+        )
+        assert done.returncode == 0, done.stderr
+        for result in ("map.html", "plots.gpkg", "record.json"):
+            assert (out / result).stat().st_size > 1000
+        tables.append((out / "ranking.csv").read_bytes())
+    assert tables[0] == tables[1]
+    assert len(tables[0].splitlines()) == 25
