@@ -1,7 +1,7 @@
-"""How windy the ground is compared with open level ground, from a first exposure and a first shelter.
+"""How windy the ground is compared with open level ground, in each of 16 sectors and over the year.
 
-First version. Shelter looks upwind in each of 16 sectors; exposure does not know the wind's direction: it follows from
-how far a cell stands above the ground within 1 km. Neutral, moderate wind only: neither calm nights nor breezes.
+Hills speed the wind up by linear theory (:mod:`sitescreen.climate.hill_speed_up`); ground upwind shelters by its angle.
+Neutral, moderate wind only: it says nothing of calm nights or of breezes. Ground cover is not looked at yet.
 """
 
 from collections.abc import Sequence
@@ -10,6 +10,7 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
+from sitescreen.climate.hill_speed_up import hill_fields
 from sitescreen.grid import Field
 from sitescreen.inputs.wind import Rose
 from sitescreen.settings import WindSettings
@@ -21,26 +22,10 @@ SECTORS_DEG = np.arange(16) * 22.5
 FloatArray = NDArray[np.float64]
 
 
-def relief_speed_up(rise_m: NDArray[np.float32], settings: WindSettings) -> NDArray[np.float32]:
-    """Fractional speed-up of the wind at 10 m, ΔS, from the height above the ground within 1 km.
-
-    Parameters
-    ----------
-    rise_m : array
-        Height above the mean of the surrounding disc of 1 km radius. [m]
-
-    Returns
-    -------
-    array
-        ΔS = rise / 200 m, within the stated caps. Negative in hollows and valleys.
-
-    Notes
-    -----
-    For Gaussian hills with half-height half-widths of 250–1,000 m the guideline of Taylor & Lee (1984, Climatol. Bull.
-    18(2):3–32: 1.6·H/L·exp(−4·z/L)) gives 4.7–5.5 times rise/1,000 m, for ridges about 7: hence 5. It stands in for
-    the spectral linear method and knows no direction.
-    """
-    return np.clip(rise_m / settings.rise_for_double_m, settings.speed_up_least, settings.speed_up_most)
+def soft_cap(speed_up: NDArray[np.float32], settings: WindSettings) -> NDArray[np.float32]:
+    """ΔS bent towards its caps, x → cap·tanh(x/cap), so that linear theory cannot promise storms or dead calm."""
+    cap = np.where(speed_up > 0, np.float32(settings.speed_up_most), np.float32(-settings.speed_up_least))
+    return np.asarray(cap * np.tanh(speed_up / cap), dtype=np.float32)
 
 
 def shelter_factor(tangent: NDArray[np.float32], settings: WindSettings) -> NDArray[np.float32]:
@@ -88,7 +73,8 @@ def wind_fields(
     Parameters
     ----------
     elevation, rise : Field
-        Ground, with the sea at its level, and height above the 1 km surroundings. [m]
+        Ground, with the sea at its level [m]; and the rise above the 1 km surroundings, which is known only where the
+        ground around is: the hills' flow is not trusted beside unknown ground.
     convergence_deg : float
         Bearing of grid north from true north. [°] One number a block: it varies by under 0.3° across one.
     roses : sequence of (ventilation rose, year rose)
@@ -103,7 +89,7 @@ def wind_fields(
         sheltered fraction = 1 − Σ p·W over the year (high = sheltered). NaN where the ground upwind is unknown in any
         sector that the rose uses, and within 1 km of unknown ground.
     """
-    speed_up = relief_speed_up(rise.values, settings)
+    hills = hill_fields(elevation, settings)
     air = np.zeros(elevation.grid.shape, dtype=np.float32)
     energy = np.zeros_like(air)
     open_share = np.zeros_like(air)
@@ -115,7 +101,7 @@ def wind_fields(
         azimuth = (bearing - convergence_deg) % 360.0
         tangent = upwind_tangent(elevation, azimuth, settings.shelter_reach_m, settings.receptor_height_m)
         shelter = shelter_factor(tangent.values, settings)
-        ratio = speed_ratio(shelter, speed_up)
+        ratio = speed_ratio(shelter, soft_cap(hills.speed_up(azimuth), settings))
         by_cell = used[:, place] if len(roses) > 1 else used[:, :1, None]
         for total, weight, term in zip((air, energy, open_share), by_cell, (ratio, ratio**3, shelter), strict=True):
             # a sector without wind must not spread its unknown ground: 0 × NaN is NaN

@@ -1,9 +1,9 @@
-"""First exposure and first shelter."""
+"""Shelter, speed ratio and the sums over a rose."""
 
 import numpy as np
 import pytest
 
-from sitescreen.climate.wind import energy_mean, relief_speed_up, shelter_factor, speed_ratio, wind_fields
+from sitescreen.climate.wind import energy_mean, shelter_factor, soft_cap, speed_ratio, wind_fields
 from sitescreen.grid import Field, Grid
 from sitescreen.inputs.wind import Rose, assumed_wind
 from sitescreen.settings import load_defaults
@@ -12,25 +12,9 @@ from sitescreen.terrain.position import rise_m
 WIND = load_defaults().wind
 
 
-def _hill(half_width_m: float, height_m: float = 60.0) -> Field:
-    grid = Grid("EPSG:32641", 0.0, 7200.0, 30.0, 240, 240)
-    x, y = np.meshgrid(grid.x_centres_m() - 3600.0, grid.y_centres_m() - 3600.0)
-    spread = half_width_m / np.sqrt(2 * np.log(2))
-    return Field(height_m * np.exp(-(x**2 + y**2) / (2 * spread**2)), grid, "m", "a round hill")
-
-
-@pytest.mark.parametrize("half_width_m", [250.0, 500.0, 750.0, 1000.0])
-def test_crest_speed_up_is_near_the_guideline_for_round_hills(half_width_m: float) -> None:
-    """Taylor & Lee 1984 (Climatol. Bull. 18(2):3–32), 3-D hill: ΔS = 1.6·H/L·exp(−4·z/L) at z = 10 m; within 20 %."""
-    hill = _hill(half_width_m)
-    rise = rise_m(hill, 1000.0).values[119:121, 119:121].mean()
-    ours = relief_speed_up(np.array([rise], dtype=np.float32), WIND)[0]
-    guideline = 1.6 * 60.0 / half_width_m * np.exp(-4.0 * 10.0 / half_width_m)
-    assert ours / guideline == pytest.approx(1.0, abs=0.2)
-
-
-def test_speed_up_is_capped() -> None:
-    assert relief_speed_up(np.array([1e4, -1e4], dtype=np.float32), WIND) == pytest.approx([1.15, -0.7])
+def test_speed_up_bends_towards_its_caps_and_keeps_small_values() -> None:
+    bent = soft_cap(np.array([1e3, -1e3, 0.1, -0.1, 0.0], dtype=np.float32), WIND)
+    assert bent == pytest.approx([1.15, -0.7, 0.1, -0.1, 0.0], abs=1e-3)
 
 
 def test_shelter_closure_at_its_ends_and_middle() -> None:
