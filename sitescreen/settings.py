@@ -13,7 +13,7 @@ from pathlib import Path
 from typing import Annotated, Any, TypeVar
 
 import annotated_types
-from pydantic import AfterValidator, BaseModel, ConfigDict, Field, ValidationError
+from pydantic import AfterValidator, BaseModel, ConfigDict, Field, ValidationError, model_validator
 
 from sitescreen.errors import ConfigError
 
@@ -88,7 +88,10 @@ class WindSettings(Section):
     shelter_from_tangent: Share
     shelter_span_tangent: Annotated[float, Field(gt=0, le=2)]
     shelter_most: Share
-    rise_for_double_m: Positive
+    roughness_m: Annotated[float, Field(ge=0.001, le=2)]
+    pad_km: Annotated[float, Field(ge=1, le=50)]
+    long_cut_km: Annotated[float, Field(ge=0, le=200)]
+    short_cut_m: Annotated[float, Field(ge=0, le=5000)]
     speed_up_least: Annotated[float, Field(ge=-1, le=0)]
     speed_up_most: Annotated[float, Field(ge=0, le=3)]
 
@@ -132,6 +135,29 @@ class ZoneSettings(Section):
     station_high_m: Positive
     with_normals: Mapping[str, ZoneFit]
     without_normals: Mapping[str, ZoneFit]
+
+    @model_validator(mode="after")
+    def _precedence_ends(self) -> "ZoneSettings":
+        if list(self.with_normals) != list(self.without_normals):
+            raise ValueError("the same zones with and without normals, in one order")
+        for fits in (self.with_normals, self.without_normals):
+            if any(other not in fits for fit in fits.values() for other in fit.unless):
+                raise ValueError("names of zones in `unless`")
+            in_order_of_precedence(fits)
+        return self
+
+
+def in_order_of_precedence(fits: Mapping[str, ZoneFit]) -> list[str]:
+    """The zones, those that take precedence before those that give way to them."""
+    done: list[str] = []
+    waiting = list(fits)
+    while waiting:
+        ready = [zone for zone in waiting if all(other in done for other in fits[zone].unless)]
+        if not ready:
+            raise ValueError(f"an end to the circle of `unless` between {', '.join(waiting)}")
+        done += ready
+        waiting = [zone for zone in waiting if zone not in done]
+    return done
 
 
 class JudgementSettings(Section):

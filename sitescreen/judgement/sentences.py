@@ -1,0 +1,91 @@
+"""Sentences with numbers: filling templates with what is known of a plot, and never with what is not."""
+
+import math
+from collections.abc import Mapping, Sequence
+from functools import cache
+from string import Formatter
+from typing import Any
+
+COMPASS = ("north", "north-east", "east", "south-east", "south", "south-west", "west", "north-west")
+
+LEVEL_WITH_M = 5.0
+"""Heights within this of the surroundings are level with them: our choice, no source. [m]"""
+
+
+def compass_word(bearing_deg: float) -> str:
+    """The nearest of the eight compass points, as in “from the south-east”."""
+    return COMPASS[round(bearing_deg / 45.0) % 8]
+
+
+def facts(row: Mapping[str, Any]) -> dict[str, Any]:
+    """What templates may speak of: a plot's readings, and the same in a client's terms.
+
+    Parameters
+    ----------
+    row : mapping
+        Readings of one plot. Unknown ones may be NaN, None or "".
+
+    Returns
+    -------
+    dict
+        Known readings only, with shares also in per cent (``breeze_pct``), wind also as ``more_…_pct`` and
+        ``less_…_pct`` than open level ground, bearings also as words.
+    """
+    known = {name: value for name, value in row.items() if is_known(value)}
+    told = dict(known)
+    for share, name in (
+        ("breeze_reach", "breeze_pct"),
+        ("buildable_share", "buildable_pct"),
+        ("share_in_water", "water_pct"),
+        ("sky_hidden_share", "hidden_pct"),
+        ("known_weight_share", "known_pct"),
+    ):
+        if share in known:
+            told[name] = 100.0 * known[share]
+    for ratio, name in (("ventilation", "air_pct"), ("ridge_exposure", "wind_pct")):
+        if ratio in known:
+            told[f"more_{name}"] = 100.0 * (known[ratio] - 1.0)
+            told[f"less_{name}"] = 100.0 * (1.0 - known[ratio])
+    if "slope_deg" in known:
+        told["slope_pct"] = 100.0 * math.tan(math.radians(known["slope_deg"]))
+    if "rise_m" in known:
+        told["below_m"] = -known["rise_m"]
+        if known["rise_m"] >= LEVEL_WITH_M:
+            told["stands"] = f"Sits {known['rise_m']:.0f} m above the ground within 1 km"
+        elif known["rise_m"] <= -LEVEL_WITH_M:
+            told["stands"] = f"Lies {-known['rise_m']:.0f} m below the ground within 1 km"
+    for bearing, name in (("aspect_deg", "aspect_word"), ("onshore_from_deg", "onshore_word")):
+        if bearing in known:
+            told[name] = compass_word(known[bearing])
+    if known.get("shore_kind") in ("sea", "lake"):
+        told["shore"] = known["shore_kind"]
+    return told
+
+
+def is_known(value: Any) -> bool:
+    """Whether a reading holds anything: not NaN, None or ""."""
+    if value is None or value == "":
+        return False
+    return not (isinstance(value, float) and math.isnan(value))
+
+
+@cache
+def _fields(template: str) -> frozenset[str]:
+    return frozenset(name for _, name, _, _ in Formatter().parse(template) if name)
+
+
+def fill(templates: Sequence[str], told: Mapping[str, Any]) -> str:
+    """The first template all of whose facts are known, filled in; "" if there is none.
+
+    Parameters
+    ----------
+    templates : sequence of str
+        Wordings of one thing, the fullest first, with fields such as ``{rise_m:.0f}``.
+    told : mapping
+        As :func:`facts` gives it.
+    """
+    for template in templates:
+        if _fields(template) <= told.keys():
+            # a rounded −0 is a 0
+            return template.format(**told).replace(" -0 ", " 0 ")
+    return ""
