@@ -7,9 +7,9 @@ from typing import Annotated, Literal, NamedTuple
 import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
-from pydantic import Field, model_validator
+from pydantic import AfterValidator, Field, model_validator
 
-from sitescreen.judgement.sentences import facts, fill, is_known
+from sitescreen.judgement.sentences import check_template, facts, fill, is_known
 from sitescreen.settings import Section, config_folder, read_settings
 
 Level = Literal["note", "concern", "stop"]
@@ -112,7 +112,7 @@ class CautionRule(Section):
     level: Level
     when: Annotated[tuple[Condition, ...], Field(min_length=1)]
     zones: tuple[str, ...] = ()
-    say: Annotated[tuple[str, ...], Field(min_length=1)]
+    say: Annotated[tuple[Annotated[str, AfterValidator(check_template)], ...], Field(min_length=1)]
     unknown_level: Level | None = None
     say_unknown: str = ""
     source: Annotated[str, Field(min_length=1)]

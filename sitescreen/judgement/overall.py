@@ -115,10 +115,7 @@ def zone_marks(
         Part of its weight that such a criterion keeps.
     """
     here = readings.iloc[rows]
-    weights = {
-        one.name: one.weight * (factor if {one.name, one.reading, one.question} & set(halved) else 1.0)
-        for one in profile.criteria
-    }
+    weights = {one.name: one.weight * (factor if one.is_among(halved) else 1.0) for one in profile.criteria}
     known = marks(here, profile)
     lowest, highest = mark_limits(here, profile)
     overall, share = weighted_mean(known, weights)

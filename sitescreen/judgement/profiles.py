@@ -1,6 +1,6 @@
 """Zone profiles: what each climate zone wants of the ground, as checked data from ``config/zones/``."""
 
-from collections.abc import Mapping
+from collections.abc import Collection, Mapping
 from functools import cached_property
 from itertools import pairwise
 from pathlib import Path
@@ -10,6 +10,7 @@ from pydantic import AfterValidator, Field, model_validator
 
 from sitescreen.errors import ConfigError
 from sitescreen.judgement.derived import DERIVED_READINGS
+from sitescreen.judgement.sentences import check_template
 from sitescreen.settings import Section, checked, config_folder, load_defaults, read_toml
 
 Question = Literal["breeze", "wind", "cold", "sun", "ground", "own"]
@@ -79,7 +80,7 @@ class Criterion(Section):
     curve: Annotated[tuple[tuple[float, Mark], ...], Field(min_length=2, max_length=40), AfterValidator(_rises)]
     ordinary_mark: Mark = 60.0
     source: Text
-    says: str = ""
+    says: Annotated[str, AfterValidator(check_template)] = ""
 
     @property
     def worst_mark(self) -> float:
@@ -90,6 +91,10 @@ class Criterion(Section):
     def best_mark(self) -> float:
         """The highest mark that any reading could earn."""
         return max(mark for _, mark in self.curve)
+
+    def is_among(self, names: Collection[str]) -> bool:
+        """Whether a list names this criterion, its reading or its question."""
+        return not {self.name, self.reading, self.question}.isdisjoint(names)
 
     def curve_in_words(self) -> str:
         """The points as ``0.3 → 0, 1 → 70``, with the unit."""

@@ -51,9 +51,9 @@ def facts(row: Mapping[str, Any]) -> dict[str, Any]:
     if "rise_m" in known:
         told["below_m"] = -known["rise_m"]
         if known["rise_m"] >= LEVEL_WITH_M:
-            told["stands"] = f"Sits {known['rise_m']:.0f} m above the ground within 1 km"
+            told["stands_high"] = f"Sits {known['rise_m']:.0f} m above the ground within 1 km"
         elif known["rise_m"] <= -LEVEL_WITH_M:
-            told["stands"] = f"Lies {-known['rise_m']:.0f} m below the ground within 1 km"
+            told["stands_low"] = f"Lies {-known['rise_m']:.0f} m below the ground within 1 km"
     for bearing, name in (("aspect_deg", "aspect_word"), ("onshore_from_deg", "onshore_word")):
         if bearing in known:
             told[name] = compass_word(known[bearing])
@@ -72,6 +72,27 @@ def is_known(value: Any) -> bool:
 @cache
 def _fields(template: str) -> frozenset[str]:
     return frozenset(name for _, name, _, _ in Formatter().parse(template) if name)
+
+
+def check_template(template: str) -> str:
+    """The template, if it can be filled in: plain field names, formats that fit a number or a word.
+
+    Raises
+    ------
+    ValueError
+        In the words of an error message's "needed" part.
+    """
+    try:
+        for _, name, spec, conversion in Formatter().parse(template):
+            if name is None:
+                continue
+            # attributes and indices could reach into the program, and numbers mean nothing here
+            if not name.isidentifier() or conversion:
+                raise ValueError
+            format(1.0 if spec else "word", spec or "")
+    except ValueError:
+        raise ValueError("a sentence with fields such as {rise_m:.0f}") from None
+    return template
 
 
 def fill(templates: Sequence[str], told: Mapping[str, Any]) -> str:
