@@ -1,5 +1,6 @@
 """Grid and Field, the two types that every stage speaks."""
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -153,3 +154,33 @@ class Field:
         """The part inside bounds that lie on the grid's cell edges (a copy, so the whole can be let go)."""
         grid, window = self.grid.part(bounds)
         return Field(self.values[window].copy(), grid, self.unit, self.what)
+
+
+def joined(fields: Sequence[Field]) -> Field:
+    """Fields of one quantity on parts of one lattice, put together; NaN where none of them reaches.
+
+    Raises
+    ------
+    GridError
+        If they differ in coordinate system or cell size.
+    """
+    first = fields[0]
+    if len(fields) == 1:
+        return first
+    step = first.grid.cell_size_m
+    if any((one.grid.crs, one.grid.cell_size_m) != (first.grid.crs, step) for one in fields):
+        raise GridError(
+            "fields of different coordinate systems or cell sizes were to be joined",
+            "parts of one lattice are needed",
+            "Join the fields of each UTM zone apart",
+        )
+    bounds = [one.grid.bounds for one in fields]
+    west, south = min(b[0] for b in bounds), min(b[1] for b in bounds)
+    east, north = max(b[2] for b in bounds), max(b[3] for b in bounds)
+    grid = Grid(first.grid.crs, west, north, step, round((north - south) / step), round((east - west) / step))
+    values = np.full(grid.shape, np.nan, dtype=np.float32)
+    for one in fields:
+        row = round((north - one.grid.north_m) / step)
+        col = round((one.grid.west_m - west) / step)
+        values[row : row + one.grid.rows, col : col + one.grid.cols] = one.values
+    return Field(values, grid, first.unit, first.what)

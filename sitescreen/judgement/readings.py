@@ -122,6 +122,8 @@ def block_readings(
 
     out["cells"] = coverage.cells
     out["share_flat_water"] = mean((ground.flat.label > 0).astype(np.float32))
+    # over the plot's mapped water only, however small a part of it that is
+    out["over_water_m"] = coverage.mean(ground.over_water_m, 0.0)
     index = pd.Index(plot_ids, name="plot")
     return Readings(pd.DataFrame(out, index=index), pd.DataFrame(why, index=index))
 

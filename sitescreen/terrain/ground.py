@@ -3,6 +3,7 @@
 from dataclasses import dataclass
 
 import numpy as np
+from scipy import ndimage
 from numpy.typing import NDArray
 
 from sitescreen.grid import Field
@@ -17,10 +18,11 @@ from sitescreen.terrain.slope import Gradient, aspect_deg, gradient, slope_deg
 
 @dataclass(frozen=True)
 class Ground:
-    """What the terrain stage knows of a block."""
+    """What the terrain stage knows of a block. ``over_water_m``: height over the level of mapped water, NaN on land."""
 
     elevation: Field
     water_kind: NDArray[np.uint8]
+    over_water_m: NDArray[np.float32]
     flat: FlatWater
     gradient: Gradient
     slope: Field
@@ -31,8 +33,8 @@ class Ground:
     hollows: Hollows
 
 
-def at_sea_level(elevation: Field, water_kind: NDArray[np.uint8]) -> Field:
-    """The ground with the mapped sea at 0 m wherever the terrain model says nothing, or less than 0, about it.
+def water_level_m(elevation: Field, water_kind: NDArray[np.uint8]) -> NDArray[np.float32]:
+    """Level of the mapped water at each of its cells. [m]
 
     Parameters
     ----------
@@ -43,15 +45,37 @@ def at_sea_level(elevation: Field, water_kind: NDArray[np.uint8]) -> Field:
 
     Returns
     -------
-    Field
-        Open water is a known, level surface: nothing on it hides the horizon or stops the wind. Mapped sea over higher
-        ground keeps its height; the disagreement is reported elsewhere.
+    float32 array, shape (rows, cols)
+        0 for the sea; for each connected lake the 5th percentile of the heights that the terrain model has inside its
+        outline, which low water and ground mapped as lake by mistake hardly move. NaN on land, and in lakes of which
+        the terrain model knows no height.
+    """
+    level = np.where(water_kind == 1, np.float32(0.0), np.float32(np.nan))
+    lake = water_kind == 2
+    if not lake.any():
+        return level
+    label, _ = ndimage.label(lake, structure=np.ones((3, 3)))
+    for number, where in enumerate(ndimage.find_objects(label), start=1):
+        inside = label[where] == number
+        heights = elevation.values[where][inside]
+        heights = heights[np.isfinite(heights)]
+        if heights.size:
+            level[where][inside] = np.percentile(heights, 5)
+    return level
+
+
+def with_level_water(elevation: Field, water_kind: NDArray[np.uint8], level_m: NDArray[np.float32]) -> Field:
+    """The ground with mapped water at its level wherever the terrain model has a gap, or puts the sea below 0 m.
+
+    Open water is a known, level surface: nothing on it hides the horizon or stops the wind. Mapped water over higher
+    ground keeps its height; the disagreement is reported elsewhere.
     """
     values = elevation.values
-    sea = (water_kind == 1) & ~(values >= 0.0)
-    if not sea.any():
+    fill = (water_kind > 0) & np.isnan(values) & np.isfinite(level_m)
+    fill |= (water_kind == 1) & (values < 0.0)
+    if not fill.any():
         return elevation
-    return Field(np.where(sea, np.float32(0.0), values), elevation.grid, elevation.unit, elevation.what)
+    return Field(np.where(fill, level_m, values), elevation.grid, elevation.unit, elevation.what)
 
 
 def read_ground(
@@ -74,12 +98,14 @@ def read_ground(
     error_range_m : float
         Distance over which neighbouring errors resemble one another. [m]
     """
-    ground = at_sea_level(elevation, water_kind)
+    level = water_level_m(elevation, water_kind)
+    ground = with_level_water(elevation, water_kind, level)
     flat = flat_water(ground, settings.smallest_water_km2)
     outlets = (water_kind > 0) | (flat.label > 0)
     return Ground(
         elevation=ground,
         water_kind=water_kind,
+        over_water_m=ground.values - level,
         flat=flat,
         gradient=gradient(ground),
         slope=slope_deg(ground),

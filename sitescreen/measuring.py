@@ -1,0 +1,146 @@
+"""One block of ground, measured: terrain, then climate, then the readings of its plots."""
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from sitescreen.climate.cold_air import closed_pools, smallest_pool_seen_m
+from sitescreen.climate.wind import wind_fields
+from sitescreen.grid import Field, Grid
+from sitescreen.inputs import Inputs
+from sitescreen.inputs.wind import Rose
+from sitescreen.judgement.coverage import cover
+from sitescreen.judgement.readings import BlockClimate, Readings, block_readings, with_shore
+from sitescreen.lattice import Block, blocks_of, convergence_deg
+from sitescreen.progress import Progress
+from sitescreen.settings import Defaults
+from sitescreen.terrain.flat_water import WaterDisagreement, water_disagreement
+from sitescreen.terrain.ground import read_ground
+from sitescreen.terrain.shore_distance import nearest_shore, shore_distance
+
+BLOCK_MARGIN_M = 12_600.0
+"""Ground computed round a block's core: more than any reading of this version looks. [m]"""
+
+VENTILATION_SLOT = "hot_afternoon"
+"""When people want air to move: the slot of the wind table that ventilation uses."""
+
+
+@dataclass(frozen=True)
+class BlockResult:
+    """What one block hands on: readings of its plots, and its fields cut to the block's core."""
+
+    block: Block
+    readings: Readings
+    fields: dict[str, Field]
+    disagreement: WaterDisagreement
+
+
+def plots_by_block(inputs: Inputs) -> Iterator[tuple[Block, NDArray[np.int64]]]:
+    """Each block with plots that can be judged, and their rows in the table of plots; in the lattice's order."""
+    table = inputs.plots.table
+    rows = np.flatnonzero((table["outcome"] == "").to_numpy())
+    lon, lat = table["lon"].to_numpy()[rows], table["lat"].to_numpy()[rows]
+    found: dict[Block, list[int]] = {}
+    for row, block in zip(rows, blocks_of(lon, lat, inputs.terrain.cell_size_m), strict=True):
+        found.setdefault(block, []).append(int(row))
+    for block in sorted(found):
+        yield block, np.array(found[block], dtype=np.int64)
+
+
+def measure(
+    block: Block, rows: NDArray[np.int64], inputs: Inputs, settings: Defaults, progress: Progress
+) -> BlockResult:
+    """Everything that is read off one block: terrain, then climate, then the readings of its plots.
+
+    Parameters
+    ----------
+    block : Block
+    rows : int64 array, shape (n,)
+        The block's plots, as rows of the table of plots.
+    inputs : Inputs
+    settings : Defaults
+    progress : Progress
+    """
+    terrain, shore = inputs.terrain, inputs.shore
+    plots = inputs.plots.table.iloc[rows]
+    lon, lat = plots["lon"].to_numpy(), plots["lat"].to_numpy()
+    with progress.step("Reading the ground"):
+        grid = block.window(BLOCK_MARGIN_M, terrain.data_bounds(block.crs))
+        elevation = terrain.elevation(grid)
+        water_kind = shore.water_kind(grid) if shore else np.zeros(grid.shape, dtype=np.uint8)
+    with progress.step("Measuring slope, hollows and sky"):
+        ground = read_ground(
+            elevation, water_kind, terrain.vertical_error_m, terrain.error_range_m, settings.terrain
+        )
+        disagreement = water_disagreement(water_kind, ground.flat, elevation)
+    with progress.step("Measuring wind and shelter"):
+        north = _block_convergence_deg(grid)
+        roses, place = _roses(inputs, grid)
+        wind = wind_fields(ground.elevation, ground.rise, north, roses, place, settings.wind)
+    pools = closed_pools(ground.hollows, terrain.vertical_error_m, settings.cold_air)
+    with progress.step("Measuring distance to the shore"):
+        near = nearest_shore(shore, lon, lat, block.crs)
+        shore_km = shore_distance(shore, grid) if shore else None
+    with progress.step("Reading the plots"):
+        coverage = cover(plots.geometry.to_crs(block.crs), grid)
+        readings = block_readings(
+            list(plots["plot"]),
+            coverage,
+            ground,
+            BlockClimate(wind, pools),
+            convergence_deg(block.crs, lon, lat),
+            smallest_pool_seen_m(terrain.vertical_error_m, settings.cold_air),
+            settings.readings,
+        )
+        readings = with_shore(readings, near, settings)
+    fields = {
+        "elevation_m": ground.elevation,
+        "slope_deg": ground.slope,
+        "aspect_deg": ground.aspect,
+        "buildable_chance": ground.buildable,
+        "rise_m": ground.rise,
+        "sky_view": ground.sky_view,
+        "hollow_depth_m": pools.depth_m,
+        "ventilation": wind.ventilation,
+        "ridge_exposure": wind.ridge_exposure,
+        "sheltered_fraction": wind.sheltered_fraction,
+        **({"shore_distance_km": shore_km} if shore_km is not None else {}),
+    }
+    core = {name: field.part(block.core_bounds) for name, field in fields.items()}
+    return BlockResult(block, readings, core, disagreement)
+
+
+def _block_convergence_deg(grid: Grid) -> float:
+    """Bearing of grid north from true north at the middle of a block's window: one number serves all its sectors. [°]"""
+    from pyproj import Transformer
+
+    west, south, east, north = grid.bounds
+    to_lonlat = Transformer.from_crs(grid.crs, "EPSG:4326", always_xy=True)
+    lon, lat = to_lonlat.transform(0.5 * (west + east), 0.5 * (south + north))
+    return float(convergence_deg(grid.crs, np.array([lon]), np.array([lat]))[0])
+
+
+def _roses(inputs: Inputs, grid: Grid) -> tuple[list[tuple[Rose, Rose]], NDArray[np.uint8]]:
+    """The wind of each place in the table, and which place is nearest to each cell."""
+    from pyproj import Transformer
+
+    places = inputs.wind.places
+    roses = [
+        (inputs.wind.rose(VENTILATION_SLOT, lon, lat), inputs.wind.rose("year", lon, lat)) for lon, lat in places
+    ]
+    if len(places) == 1:
+        return roses, np.zeros(grid.shape, dtype=np.uint8)
+    to_grid = Transformer.from_crs("EPSG:4326", grid.crs, always_xy=True)
+    x = grid.x_centres_m()[None, :]
+    y = grid.y_centres_m()[:, None]
+    nearest = np.zeros(grid.shape, dtype=np.uint8)
+    least = np.full(grid.shape, np.inf, dtype=np.float32)
+    for number, (lon, lat) in enumerate(places):
+        east, north = to_grid.transform(lon, lat)
+        distance = np.hypot(x - east, y - north).astype(np.float32)
+        closer = distance < least
+        nearest[closer] = number
+        least[closer] = distance[closer]
+    return roses, nearest

@@ -1,0 +1,263 @@
+"""The whole run on one page."""
+
+import platform
+from collections.abc import Mapping
+from dataclasses import asdict, dataclass
+from importlib.metadata import version
+from typing import Any
+
+import numpy as np
+import pandas as pd
+
+from sitescreen.brief import Brief
+from sitescreen.climate.cold_air import deficit_k
+from sitescreen.climate.normals import climate_notes, plot_climate
+from sitescreen.climate.zones import ZoneShares, memberships, zone_shares
+from sitescreen.grid import Field, joined
+from sitescreen.inputs import Inputs, read_inputs
+from sitescreen.inputs.zone_map import zone_at
+from sitescreen.judgement.cautions import load_cautions
+from sitescreen.judgement.overall import Judged, judge
+from sitescreen.judgement.profiles import ZoneProfile, load_profiles
+from sitescreen.judgement.readings import Readings, stack
+from sitescreen.judgement.reasons import Reasons, reasons
+from sitescreen.judgement.waters import waters_disagree
+from sitescreen.measuring import BlockResult, measure, plots_by_block
+from sitescreen.notes import Note
+from sitescreen.progress import Progress
+from sitescreen.settings import Defaults, load_defaults
+
+NOT_MEASURED = (
+    "ground that screens the breeze on its way from the shore",
+    "cold air held back by narrows without a closed hollow, and cold air in motion",
+    "hours of sun and the sun's load on walls",
+    "the best bearing for a building's long axis",
+    "driving rain",
+    "how certain a rank is",
+)
+
+NOT_CHECKED = (
+    "flood levels",
+    "landslides",
+    "protected land",
+    "contaminated ground",
+    "land tenure",
+    "roads, water and power",
+)
+
+EMPTY_IN_THIS_VERSION = (
+    "rank_low",
+    "rank_high",
+    "chance_first",
+    "chance_top_quarter",
+    "shore_skyline_deg",
+    "cold_pool_chance",
+    "night_minimum_c",
+    "floor_height_m",
+    "sun_cool_morning_h",
+    "sun_year_h",
+    "west_load_kwh_m2",
+    "long_axis_deg",
+    "wind_incidence_deg",
+    "offshore_from_deg",
+    "night_flow_m2_s",
+    "night_flow_speed_m_s",
+    "clear_calm_nights",
+    "driving_rain",
+)
+"""Columns of the table whose methods are still to come."""
+
+
+def screen(brief: Brief, progress: Progress | None = None) -> "Screening":
+    """Read a brief's inputs, measure every plot's ground, judge and rank it.
+
+    Parameters
+    ----------
+    brief : Brief
+    progress : Progress, optional
+        Told when each stage begins and ends.
+
+    Returns
+    -------
+    Screening
+        Every plot that went in, ranked or set aside with its reason.
+
+    Raises
+    ------
+    SitescreenError
+        If an input cannot be used.
+    """
+    progress = progress or Progress()
+    settings = load_defaults()
+    with progress.step("Reading the inputs"):
+        inputs = read_inputs(brief)
+        profiles = load_profiles(brief.judge.profiles)
+    measured = [measure(block, rows, inputs, settings, progress) for block, rows in plots_by_block(inputs)]
+    with progress.step("Judging the plots"):
+        readings = stack([one.readings for one in measured], list(inputs.plots.table["plot"]))
+        return _judged(brief, inputs, measured, readings, profiles, settings, progress)
+
+
+@dataclass(frozen=True)
+class Screening:
+    """One finished screening.
+
+    ``table``: GeoDataFrame in EPSG:4326 with every plot that went in, by rank, those set aside last. ``fields``: what
+    was measured, by name (with several UTM zones the zone is added: ``slope_deg_utm41``). ``reasons``: by plot id.
+    """
+
+    brief: Brief
+    table: Any
+    fields: Mapping[str, Field]
+    reasons: Mapping[str, Reasons]
+    profiles: Mapping[str, ZoneProfile]
+    notes: tuple[Note, ...]
+    not_measured: tuple[str, ...]
+    not_checked: tuple[str, ...]
+    record: dict[str, Any]
+
+
+def _judged(
+    brief: Brief,
+    inputs: Inputs,
+    measured: list[BlockResult],
+    readings: Readings,
+    profiles: dict[str, ZoneProfile],
+    settings: Defaults,
+    progress: Progress,
+) -> Screening:
+    plots = inputs.plots.table
+    values = readings.values
+    values["area_ha"] = plots["area_ha"].to_numpy()
+    values["outcome"] = _outcomes(plots["outcome"].to_numpy(dtype=object), values)
+    values["share_in_water"] = inputs.shore.share_in_water(plots.geometry) if inputs.shore else np.nan
+    values["water_disagrees"] = waters_disagree(values, inputs.terrain.vertical_error_m)
+    lon, lat, height = plots["lon"].to_numpy(), plots["lat"].to_numpy(), values["elevation_m"].to_numpy()
+    climate = plot_climate(inputs.normals, lon, lat, height, settings.zones) if inputs.normals else None
+    fits = memberships(
+        values["elevation_m"], values["sea_km"], values["lake_km"], values["lake_width_km"], climate, settings.zones
+    )
+    zones = zone_shares(fits, _stated_zones(brief, inputs), settings.zones, profiles)
+    values["cold_deficit_k"] = _deficit(values, zones, settings)
+    halved = ("wind",) if inputs.wind.assumed else ()
+    judged = judge(
+        values,
+        zones,
+        profiles,
+        load_cautions(),
+        settings.judgement,
+        halved,
+    )
+    notes = inputs.notes + (climate_notes(climate, settings.zones) if climate is not None else ())
+    notes += tuple(Note("warning", "shore", one.disagreement.sentence()) for one in measured if one.disagreement.sentence())
+    if brief.not_used_yet():
+        given = ", ".join(brief.not_used_yet())
+        notes += (Note("warning", "brief", f"Read and checked, but not used by this version: {given}."),)
+    table = _table(plots, values, fits, judged)
+    return Screening(
+        brief=brief,
+        table=table,
+        fields=_fields(measured),
+        reasons=reasons(judged, readings.why_unknown, profiles, settings.judgement, halved),
+        profiles=profiles,
+        notes=notes,
+        not_measured=NOT_MEASURED,
+        not_checked=NOT_CHECKED,
+        record=_record(brief, inputs, measured, table, settings, progress),
+    )
+
+
+def _outcomes(told: Any, values: pd.DataFrame) -> list[str]:
+    """Why a plot cannot be judged: what its reading said, else that there is no ground under it."""
+    no_ground = "the terrain model has no data there"
+    return [said or (no_ground if np.isnan(height) else "") for said, height in zip(told, values["elevation_m"], strict=True)]
+
+
+def _stated_zones(brief: Brief, inputs: Inputs) -> list[str]:
+    """The zone that somebody stated for each plot: for all plots, else for the plot, else by a map of zones."""
+    plots = inputs.plots.table
+    if brief.zones.force:
+        return [brief.zones.force] * len(plots)
+    stated = list(plots["zone_given"])
+    if inputs.zone_map is None:
+        return stated
+    mapped = zone_at(inputs.zone_map, plots["lon"].to_numpy(), plots["lat"].to_numpy())
+    return [own or zone for own, zone in zip(stated, mapped, strict=True)]
+
+
+def _deficit(values: pd.DataFrame, zones: ZoneShares, settings: Defaults) -> Any:
+    """Deficit of the plots' closed pools, with the strength of the zones that share each plot. [K]"""
+    strength = settings.cold_air.strength_k
+    ordinary = float(np.median(list(strength.values())))  # for a planner's own zone, of which we know nothing
+    by_zone = np.array([strength.get(zone, ordinary) for zone in zones.shares.columns])
+    total = zones.shares.to_numpy(dtype=np.float64)
+    has_zone = total.sum(axis=1) > 0
+    plot_strength = np.where(has_zone, total @ by_zone, np.nan)
+    return deficit_k(values["cold_pool_depth_m"], plot_strength, values["sky_view"], settings.cold_air)
+
+
+def _table(plots: Any, values: pd.DataFrame, fits: pd.DataFrame, judged: Judged) -> Any:
+    """Every plot with its identity, readings, marks and geometry; by rank, those set aside last, in the file's order."""
+    import geopandas as gpd
+
+    known_zones = [name for name in fits.columns if name not in ("undecided", "missing")]
+    parts = [
+        plots[["plot", "name", "lon", "lat", "remarks"]].reset_index(drop=True),
+        values.reset_index(drop=True),
+        fits[known_zones].add_prefix("membership_").reset_index(drop=True),
+        judged.table.reset_index(drop=True),
+    ]
+    table = pd.concat(parts, axis=1)
+    for column in EMPTY_IN_THIS_VERSION:
+        table[column] = np.nan
+    table = gpd.GeoDataFrame(table, geometry=plots.geometry.to_numpy(), crs="EPSG:4326")
+    order = np.argsort(table["rank"].astype("Float64").fillna(np.inf).to_numpy(dtype=np.float64), kind="stable")
+    return table.iloc[order].reset_index(drop=True)
+
+
+def _fields(measured: list[BlockResult]) -> dict[str, Field]:
+    """The blocks' fields, joined to one a UTM zone."""
+    by_zone: dict[int, list[BlockResult]] = {}
+    for one in measured:
+        by_zone.setdefault(one.block.zone, []).append(one)
+    out: dict[str, Field] = {}
+    for zone, blocks in by_zone.items():
+        names = sorted({name for one in blocks for name in one.fields}, key=list(blocks[0].fields).index)
+        for name in names:
+            key = name if len(by_zone) == 1 else f"{name}_utm{zone:02d}"
+            out[key] = joined([one.fields[name] for one in blocks])
+    return out
+
+
+def _record(
+    brief: Brief,
+    inputs: Inputs,
+    measured: list[BlockResult],
+    table: Any,
+    settings: Defaults,
+    progress: Progress,
+) -> dict[str, Any]:
+    """What the run went by, so that somebody else can repeat and question it."""
+    packages = ("sitescreen", "numpy", "numba", "rasterio", "geopandas", "shapely", "pyproj", "exactextract")
+    return {
+        "title": brief.title,
+        "versions": {"python": platform.python_version(), **{name: version(name) for name in packages}},
+        "inputs": [asdict(stamp) for stamp in inputs.stamps],
+        "terrain": {
+            "cell_size_m": inputs.terrain.cell_size_m,
+            "surface": inputs.terrain.surface,
+            "vertical_error_m": inputs.terrain.vertical_error_m,
+            "error_range_m": inputs.terrain.error_range_m,
+        },
+        "blocks": [
+            {**asdict(one.block), "crs": one.block.crs, "water_disagreement": asdict(one.disagreement)}
+            for one in measured
+        ],
+        "plots": {
+            "read": len(table),
+            "ranked": int(table["rank"].notna().sum()),
+            "set_aside": {row.plot: row.set_aside for row in table[table["rank"].isna()].itertuples()},
+        },
+        "settings": settings.model_dump(mode="json"),
+        "seconds": {name: round(seconds, 2) for name, seconds in progress.seconds.items()},
+    }
