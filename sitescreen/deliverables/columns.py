@@ -1,0 +1,244 @@
+"""Every column of the ranking: place, unit, decimals, meaning. Table, workbook, plots layer and map read them here.
+
+The order is a contract: columns may be added at the end, none is renamed or moved without a line in the changelog.
+"""
+
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any, Literal
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+    from sitescreen.judgement.profiles import ZoneProfile
+
+Kind = Literal["text", "whole", "number"]
+
+
+@dataclass(frozen=True)
+class Column:
+    """One column.
+
+    Parameters
+    ----------
+    name : str
+        As in the files.
+    kind : "text", "whole" or "number"
+    decimals : int
+        Written with so many, always; 0 for text and whole numbers.
+    unit : str
+        "m", "°" …; "0–1" for shares, "0–100" for marks, "" for text and counts.
+    title : str
+        In a few plain words, for the map.
+    says : str
+        What it means, in one sentence for a planner.
+    """
+
+    name: str
+    kind: Kind
+    decimals: int
+    unit: str
+    title: str
+    says: str
+
+
+def _text(name: str, title: str, says: str) -> Column:
+    return Column(name, "text", 0, "", title, says)
+
+
+def _whole(name: str, title: str, says: str) -> Column:
+    return Column(name, "whole", 0, "", title, says)
+
+
+def _number(name: str, decimals: int, unit: str, title: str, says: str) -> Column:
+    return Column(name, "number", decimals, unit, title, says)
+
+
+CONTRACT: tuple[Column, ...] = (
+    _whole("rank", "rank", "Place among all ranked plots, 1 is best; empty for a plot set aside."),
+    _text("plot", "plot", "The plot's identifier, as in the file of plots."),
+    _text("name", "name", "The plot's name, as in the file of plots."),
+    _number(
+        "overall_mark", 1, "0–100", "overall mark", "Weighted mean of the plot's marks for its zone; high is good."
+    ),
+    _number(
+        "mark_low", 1, "0–100", "lowest mark", "The overall mark if everything unknown were at its worst; ranks use it."
+    ),
+    _number("mark_high", 1, "0–100", "highest mark", "The overall mark if everything unknown were at its best."),
+    _text("zone", "zone", "The climate zone the plot is judged by."),
+    _number(
+        "zone_share",
+        2,
+        "0–1",
+        "share of the zone",
+        "How much of the judgement comes from that zone; the rest from others.",
+    ),
+    _whole("rank_in_zone", "rank in zone", "Place among the ranked plots of the same zone, 1 is best."),
+    _text("cautions", "cautions", "Named alerts: a note, a concern, or a stop that sets the plot aside."),
+    _text("set_aside", "set aside", "Why the plot is not ranked; empty for ranked plots."),
+    _whole(
+        "rank_low", "best rank", "Best rank of the range that holds 90 of 100 trials (not in this version if empty)."
+    ),
+    _whole("rank_high", "worst rank", "Worst rank of that range."),
+    _number("chance_first", 2, "0–1", "chance of first", "Share of trials in which the plot is first."),
+    _number(
+        "chance_top_quarter", 2, "0–1", "chance of top quarter", "Share of trials in which it is in the best quarter."
+    ),
+    _text("weakest", "weakest", "The criterion with the plot's lowest mark."),
+    _number("elevation_m", 1, "m", "elevation", "Mean height of the ground above the terrain model's zero."),
+    _number("slope_deg", 1, "°", "slope", "Mean steepness; 0 is level, 8.5° is 15 %."),
+    _number(
+        "aspect_deg", 0, "° from true north", "faces", "Bearing the ground falls to, clockwise; empty on level ground."
+    ),
+    _number(
+        "buildable_share",
+        2,
+        "0–1",
+        "level enough",
+        "Share of the plot likely to be less steep than the limit for building.",
+    ),
+    _number("rise_m", 1, "m", "rise", "Height above the mean of the ground within 1 km; negative in a hollow."),
+    _text("shore_kind", "nearest shore", "Whether the nearest shore is of the sea or of a lake."),
+    _number("shore_distance_km", 2, "km", "to the shore", "Distance to the nearest shore that makes a breeze."),
+    _number(
+        "onshore_from_deg", 0, "° from true north", "onshore breeze from", "Bearing the daytime breeze comes from."
+    ),
+    _number(
+        "breeze_reach", 2, "0–1", "breeze reach", "How much of the daytime breeze of sea or lake gets to the plot."
+    ),
+    _number("shore_skyline_deg", 1, "°", "skyline to the shore", "Height of the skyline towards the shore."),
+    _number(
+        "ventilation",
+        2,
+        "× open ground",
+        "ventilation",
+        "Mean wind compared with open level ground, in the hot season.",
+    ),
+    _number("ridge_exposure", 2, "× open ground", "exposure", "Strong wind compared with open level ground."),
+    _number("sheltered_fraction", 2, "0–1", "sheltered", "How much of the wind the ground upwind holds off."),
+    _text(
+        "cold_pool_kind",
+        "cold air",
+        "Whether cold air lies there on calm clear nights: none, closed, leaky, moving, unknown.",
+    ),
+    _number("cold_pool_depth_m", 1, "m", "cold air depth", "Depth of the cold air below the lip that holds it."),
+    _number(
+        "cold_pool_chance", 2, "0–1", "cold air chance", "How sure the cold air is, given the terrain model's error."
+    ),
+    _number(
+        "cold_deficit_k", 1, "K", "colder by", "How much colder than open ground the air is on a calm clear night."
+    ),
+    _number(
+        "smallest_pool_seen_m",
+        1,
+        "m",
+        "smallest seen",
+        "Hollows shallower than this cannot be seen in this terrain model.",
+    ),
+    _number("night_minimum_c", 1, "°C", "night minimum", "Expected night minimum in the cool season."),
+    _number("floor_height_m", 1, "m", "above the channel", "Height above the nearest channel floor."),
+    _number("sky_view", 3, "0–1", "open sky", "Share of the sky that the ground around leaves open."),
+    _number("sun_cool_morning_h", 1, "h a day", "morning sun", "Hours of morning sun in the cool season."),
+    _number("sun_year_h", 0, "h a year", "sun", "Hours of sun in a year past the surrounding ground."),
+    _number("west_load_kwh_m2", 2, "kWh/m²", "west wall load", "Sun on a west wall on a hot-season afternoon."),
+    _number("pond_depth_m", 1, "m", "ponding", "Depth to which water could stand, by the terrain model."),
+    _number(
+        "long_axis_deg", 0, "° from true north", "long axis", "Bearing of the long axis that serves sun and wind best."
+    ),
+    _number("wind_incidence_deg", 0, "°", "wind on long face", "Angle at which the wind meets that long face."),
+    _number("area_ha", 2, "ha", "area", "Area of the plot."),
+    _number("lon", 6, "°", "longitude", "Longitude of a point inside the plot, WGS 84."),
+    _number("lat", 6, "°", "latitude", "Latitude of that point, WGS 84."),
+    _number(
+        "offshore_from_deg",
+        0,
+        "° from true north",
+        "night breeze from",
+        "Bearing the offshore breeze of the night comes from.",
+    ),
+    _number("breeze_arrival_h", 1, "h of the day", "breeze arrives", "Local solar hour when the breeze arrives."),
+    _number("night_flow_m2_s", 2, "m²/s", "night air flow", "Cold air passing through on calm clear nights."),
+    _number("night_flow_speed_m_s", 2, "m/s", "night air speed", "Speed of that air."),
+    _number(
+        "clear_calm_nights",
+        1,
+        "nights a month",
+        "calm clear nights",
+        "Nights in the cool season that are clear and calm.",
+    ),
+    _number("driving_rain", 2, "× open ground", "driving rain", "Wind-driven rain compared with open level ground."),
+)
+"""The columns that every table has, in this order. Ones this version cannot fill stay empty."""
+
+BY_NAME: Mapping[str, Column] = {column.name: column for column in CONTRACT}
+
+MORE: Mapping[str, Column] = {
+    column.name: column
+    for column in (
+        _number("cells", 1, "cells", "terrain cells", "How many cells of the terrain grid the plot covers."),
+        _number(
+            "share_in_water", 2, "0–1", "in mapped water", "Share of the plot that lies in water by the shore layer."
+        ),
+        _number(
+            "share_flat_water", 2, "0–1", "on flat water", "Share that looks like a water surface in the terrain model."
+        ),
+        _text("zone_2", "second zone", "A second zone that shares the plot."),
+        _number(
+            "zone_2_share", 2, "0–1", "share of the second", "How much of the judgement comes from the second zone."
+        ),
+        _number("mark_in_zone", 1, "0–100", "mark in its zone", "The overall mark by the profile of its zone alone."),
+        _number(
+            "mark_in_zone_2", 1, "0–100", "mark in the second", "The overall mark by the second zone's profile alone."
+        ),
+        _number("known_weight_share", 2, "0–1", "weight known", "Part of the weights whose readings are known."),
+        _text("zone_missing", "zone lacks", "The figure that is missing to tell the zone firmly."),
+        _text("remarks", "remarks", "What was mended in the plot's outline."),
+    )
+}
+"""Columns that may follow at the end."""
+
+
+def columns_of(table: "pd.DataFrame", profiles: Mapping[str, "ZoneProfile"]) -> tuple[Column, ...]:
+    """The columns a ranking is written with: the contract's, then memberships, then marks, then whatever else it holds.
+
+    Parameters
+    ----------
+    table : DataFrame
+        One row a plot; a contract column that it lacks is written empty.
+    profiles : mapping of zone name to ZoneProfile
+        For the explanations of memberships and marks.
+    """
+    rest = [name for name in table.columns if name not in BY_NAME and name != "geometry"]
+    memberships = [name for name in rest if name.startswith("membership_")]
+    marks = [name for name in rest if name.startswith("mark_")]
+    others = [name for name in rest if name not in memberships and name not in marks]
+    return (
+        *CONTRACT,
+        *(_membership(name, profiles) for name in memberships),
+        *(_mark(name, profiles.values()) for name in marks),
+        *(MORE.get(name) or _unknown_to_us(name, table[name]) for name in others),
+    )
+
+
+def _membership(name: str, profiles: Mapping[str, "ZoneProfile"]) -> Column:
+    zone = name.removeprefix("membership_")
+    title = profiles[zone].title if zone in profiles else zone.replace("_", " ")
+    return _number(
+        name, 2, "0–1", f"fits {title}", f"How well the plot fits the zone “{title}”; below 0.3 it does not."
+    )
+
+
+def _mark(name: str, profiles: Iterable["ZoneProfile"]) -> Column:
+    criterion = name.removeprefix("mark_")
+    titles = [c.title for profile in profiles for c in profile.criteria if c.name == criterion]
+    title = titles[0] if titles else criterion.replace("_", " ")
+    return _number(
+        name, 1, "0–100", f"mark: {title}", f"How well the plot does on “{title}” for its zone; high is good."
+    )
+
+
+def _unknown_to_us(name: str, values: Any) -> Column:
+    title = name.replace("_", " ")
+    if values.dtype.kind == "f":
+        return _number(name, 3, "", title, "")
+    return _whole(name, title, "") if values.dtype.kind in "iu" else _text(name, title, "")

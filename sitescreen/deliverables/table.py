@@ -1,0 +1,89 @@
+"""``ranking.csv``: one row a plot, the same bytes for the same run."""
+
+import csv
+import math
+from collections.abc import Iterator, Sequence
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from sitescreen.deliverables.columns import Column
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+STARTS_A_FORMULA = ("=", "+", "-", "@", "\t", "\n")
+"""A spreadsheet may run a cell that begins with one of these."""
+
+
+def value_of(column: Column, value: Any) -> str | int | float | None:
+    """One value as the files hold it: text, a whole number, or a number rounded to the column's decimals.
+
+    Parameters
+    ----------
+    column : Column
+    value : any
+        NaN, NA, None and empty text are unknown.
+
+    Returns
+    -------
+    str, int, float or None
+        None where unknown. Never −0.0.
+    """
+    if value is None or value is _na() or (isinstance(value, float) and math.isnan(value)):
+        return None
+    if column.kind == "text":
+        return str(value) or None
+    if not math.isfinite(value):
+        return None
+    if column.kind == "whole":
+        whole: int = round(value)
+        return whole
+    return round(float(value), column.decimals) + 0.0  # + 0.0 turns −0.0 into 0.0
+
+
+def _na() -> Any:
+    import pandas as pd
+
+    return pd.NA
+
+
+def safe_text(text: str) -> str:
+    r"""Text that no spreadsheet takes for a formula: an apostrophe goes before what looks like one.
+
+    A carriage return becomes ``\n``: unquoted it would end the row in some readers.
+    """
+    text = text.replace("\r\n", "\n").replace("\r", "\n")
+    return f"'{text}" if text.startswith(STARTS_A_FORMULA) else text
+
+
+def cell(column: Column, value: Any) -> str:
+    """One cell of the CSV: fixed decimals, empty where unknown, text made safe."""
+    known = value_of(column, value)
+    if known is None:
+        return ""
+    return safe_text(known) if isinstance(known, str) else f"{known:.{column.decimals}f}"
+
+
+def rows_of(table: "pd.DataFrame", columns: Sequence[Column]) -> Iterator[list[Any]]:
+    """The rows of a table in the order of the columns; None for a column that the table lacks."""
+    blank = [None] * len(table)
+    series = [table[column.name].tolist() if column.name in table else blank for column in columns]
+    for row in zip(*series, strict=True):
+        yield list(row)
+
+
+def write_csv(table: "pd.DataFrame", columns: Sequence[Column], path: Path) -> None:
+    r"""Write the ranking as UTF-8 with ``\n`` line ends.
+
+    Parameters
+    ----------
+    table : DataFrame
+        One row a plot, already in order.
+    columns : sequence of Column
+    path : Path
+    """
+    with path.open("w", encoding="utf-8", errors="backslashreplace", newline="") as file:
+        writer = csv.writer(file, lineterminator="\n")
+        writer.writerow([column.name for column in columns])
+        for row in rows_of(table, columns):
+            writer.writerow([cell(column, value) for column, value in zip(columns, row, strict=True)])

@@ -1,0 +1,116 @@
+"""``ranking.xlsx``: the ranking for people, with units, number formats and a sheet that explains each column."""
+
+import re
+import zipfile
+from collections.abc import Sequence
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from sitescreen.deliverables.columns import Column
+from sitescreen.deliverables.table import rows_of, value_of
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+MOST_PLOTS = 20_000
+"""Above this a workbook is too slow to open; ``ranking.csv`` has everything."""
+
+LONGEST_CELL = 32_767  # the format's own limit
+HEAD_ROWS = 2  # names and units
+
+_UNPRINTABLE = re.compile(r"[\x00-\x08\x0b\x0c\x0e-\x1f\ud800-\udfff\ufffe\uffff]")  # XML cannot hold these
+_EPOCH = (1980, 1, 1, 0, 0, 0)  # the earliest moment a zip file can name
+_MOMENT = re.compile(rb"(<dcterms:(?:created|modified)[^>]*>)[^<]*")
+
+
+def write_workbook(table: "pd.DataFrame", columns: Sequence[Column], path: Path) -> None:
+    """Write the ranking as a workbook; the same table gives the same bytes.
+
+    Parameters
+    ----------
+    table : DataFrame
+        One row a plot, already in order; :data:`MOST_PLOTS` at most.
+    columns : sequence of Column
+    path : Path
+    """
+    from openpyxl import Workbook
+    from openpyxl.cell import WriteOnlyCell
+    from openpyxl.styles import Alignment, Font
+    from openpyxl.utils import get_column_letter
+
+    book = Workbook(write_only=True)
+    ranking = book.create_sheet("Ranking")
+    ranking.freeze_panes = "D3"  # below names and units, right of rank, plot and name
+    ranking.auto_filter.ref = f"A1:{get_column_letter(len(columns))}{HEAD_ROWS + len(table)}"
+    for i, column in enumerate(columns, start=1):
+        ranking.column_dimensions[get_column_letter(i)].width = _width(column)
+
+    def made(sheet: Any, text: str, font: Font) -> Any:
+        made_cell = WriteOnlyCell(sheet)
+        _set_text(made_cell, text)
+        made_cell.font = font
+        return made_cell
+
+    bold, italic = Font(bold=True), Font(italic=True, color="666666")
+    ranking.append([made(ranking, column.name, bold) for column in columns])
+    ranking.append([made(ranking, column.unit, italic) for column in columns])
+    formats = [_number_format(column) for column in columns]
+    for row in rows_of(table, columns):
+        cells: list[Any] = []
+        for column, number_format, value in zip(columns, formats, row, strict=True):
+            known = value_of(column, value)
+            if known is None:
+                cells.append(None)
+                continue
+            made_cell = WriteOnlyCell(ranking)
+            if isinstance(known, str):
+                _set_text(made_cell, known)
+            else:
+                made_cell.value = known
+                made_cell.number_format = number_format
+            cells.append(made_cell)
+        ranking.append(cells)
+
+    meaning = book.create_sheet("Columns")
+    meaning.freeze_panes = "A2"
+    for letter, width in zip("ABCD", (26, 22, 30, 100), strict=True):
+        meaning.column_dimensions[letter].width = width
+    meaning.append([made(meaning, head, bold) for head in ("column", "unit", "in words", "what it means")])
+    for column in columns:
+        row = [made(meaning, text, Font()) for text in (column.name, column.unit, column.title, column.says)]
+        row[-1].alignment = Alignment(wrap_text=True, vertical="top")
+        meaning.append(row)
+
+    book.save(path)
+    _without_the_clock(path)
+
+
+def _set_text(made_cell: Any, text: str) -> None:
+    """Text stays text, whatever it begins with."""
+    clean = _UNPRINTABLE.sub("�", text)
+    made_cell.value = clean if len(clean) <= LONGEST_CELL else clean[: LONGEST_CELL - 1] + "…"
+    made_cell.data_type = "s"  # openpyxl takes a leading "=" for a formula and "#N/A" for an error
+
+
+def _number_format(column: Column) -> str:
+    return "0" if column.decimals == 0 else "0." + "0" * column.decimals
+
+
+def _width(column: Column) -> int:
+    if column.name in ("name", "cautions", "set_aside"):
+        return 36
+    return max(10, len(column.name) + 3)
+
+
+def _without_the_clock(path: Path) -> None:
+    """Write the archive again with its moments fixed, so that the same table gives the same bytes."""
+    with zipfile.ZipFile(path) as archive:
+        parts = [(info.filename, archive.read(info)) for info in archive.infolist()]
+    with zipfile.ZipFile(path, "w", zipfile.ZIP_DEFLATED) as archive:
+        for name, content in parts:
+            if name == "docProps/core.xml":
+                content = _MOMENT.sub(rb"\g<1>1980-01-01T00:00:00Z", content)
+            entry = zipfile.ZipInfo(name, _EPOCH)
+            entry.compress_type = zipfile.ZIP_DEFLATED
+            entry.external_attr = 0o600 << 16
+            archive.writestr(entry, content)
