@@ -169,7 +169,7 @@ def check_zone(zone: str, known: Iterable[str], where: str) -> str:
     tidy = zone.strip().lower().replace("-", "_").replace(" ", "_")
     if tidy in names:
         return tidy
-    near = difflib.get_close_matches(tidy, names, n=1, cutoff=0.5)
+    near = difflib.get_close_matches(tidy, names, n=1, cutoff=0.6)
     raise BriefError(
         f"{where} states the zone {zone!r}",
         f"one of {', '.join(names)} is needed",

@@ -61,12 +61,15 @@ class Judged:
     cautions : mapping of plot to its cautions
     facts : DataFrame
         The readings with the derived ones, which reasons speak of.
+    halved : frozenset of str
+        Criteria, readings or questions whose input is assumed.
     """
 
     table: pd.DataFrame
     by_zone: Mapping[str, ZoneMarks]
     cautions: Mapping[str, tuple[Caution, ...]]
     facts: pd.DataFrame
+    halved: frozenset[str]
 
 
 def weighted_mean(values: pd.DataFrame, weights: Mapping[str, float]) -> tuple[FloatArray, FloatArray]:
@@ -188,7 +191,7 @@ def judge(
     table["weakest"] = _weakest(by_zone, zones, profiles, len(readings))
     table["zone_provisional"] = zones.provisional.to_numpy()
     table["zone_missing"] = zones.missing.to_numpy(dtype=object)
-    return Judged(_with_marks(table, by_zone, zones, profiles), by_zone, raised, told)
+    return Judged(_with_marks(table, by_zone, zones, profiles), by_zone, raised, told, frozenset(halved))
 
 
 def _blend(by_zone: Mapping[str, ZoneMarks], zones: ZoneShares, count: int) -> pd.DataFrame:

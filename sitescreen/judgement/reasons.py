@@ -1,6 +1,6 @@
 """Reasons: what lifts a plot above an ordinary one of its zone, and what costs it most, in sentences with numbers."""
 
-from collections.abc import Collection, Iterable, Mapping
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 from functools import cache
 from pathlib import Path
@@ -114,7 +114,6 @@ def reasons(
     why_unknown: pd.DataFrame,
     profiles: Mapping[str, ZoneProfile],
     settings: JudgementSettings,
-    halved: Collection[str] = (),
     plots: Iterable[str] | None = None,
 ) -> dict[str, Reasons]:
     """The reasons of plots, from their leading zone.
@@ -126,8 +125,6 @@ def reasons(
         Why a reading is missing; "" or no column where it is not.
     profiles : mapping of zone to ZoneProfile
     settings : JudgementSettings
-    halved : collection of str
-        Criteria, readings or questions whose input is assumed, as in :func:`sitescreen.judgement.overall.judge`.
     plots : iterable of str, optional
         Which plots; all if left out.
 
@@ -138,8 +135,8 @@ def reasons(
 
     Notes
     -----
-    What a criterion gains or costs is its weight times the distance of its mark from that of an ordinary plot of the zone,
-    as a part of all weights: points of the overall mark. An unknown reading costs what its worst mark would.
+    What a criterion gains or costs is its weight times the distance of its mark from that of an ordinary plot of the
+    zone, as a part of all weights: points of the overall mark. An unknown reading costs what its worst mark would.
     """
     words = load_words()
     wanted = list(judged.table.index) if plots is None else list(plots)
@@ -167,7 +164,7 @@ def reasons(
                 if gain.is_known
                 else _unknown_sentence(one, unknown_because(one.reading, why_unknown, plot), words)
             )
-            return text + words.words.assumed if gain.is_known and one.is_among(halved) else text
+            return text + words.words.assumed if gain.is_known and one.is_among(judged.halved) else text
 
         best = [gain for gain in gains if gain.is_known and gain.points >= LEAST_POINTS][: settings.reasons_shown]
         worst = [gain for gain in reversed(gains) if gain.points <= -LEAST_POINTS][: settings.reasons_shown]
