@@ -114,6 +114,14 @@ def geometry_to_wgs84(geometries: NDArray[np.object_], datum: Datum) -> NDArray[
     return np.asarray(shapely.transform(flat, move), dtype=object)
 
 
+def finite_only(geometries: NDArray[np.object_]) -> NDArray[np.object_]:
+    """The geometries, None for those with a corner that is no number or infinite."""
+    coordinates, owner = shapely.get_coordinates(geometries, return_index=True)
+    out = geometries.copy()
+    out[np.unique(owner[~np.isfinite(coordinates).all(axis=1)])] = None
+    return out
+
+
 def _is_degrees(crs: CRS) -> bool:
     prime = crs.prime_meridian.longitude if crs.prime_meridian is not None else 0.0
     return prime == 0.0 and all(axis.unit_name == "degree" for axis in crs.axis_info[:2])
@@ -157,4 +165,4 @@ def refuse_unlike_its_system(name: str, crs: CRS, total_bounds: FloatArray, way_
         )
 
 
-__all__ = ["Datum", "geometry_to_wgs84", "named_crs", "refuse_unlike_its_system", "to_wgs84"]
+__all__ = ["Datum", "finite_only", "geometry_to_wgs84", "named_crs", "refuse_unlike_its_system", "to_wgs84"]

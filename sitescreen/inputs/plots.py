@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from pyproj import CRS
 
 from sitescreen.errors import InputError
-from sitescreen.inputs.datum import Datum, geometry_to_wgs84, named_crs, refuse_unlike_its_system, to_wgs84
+from sitescreen.inputs.datum import Datum, finite_only, geometry_to_wgs84, named_crs, refuse_unlike_its_system, to_wgs84
 from sitescreen.inputs.plot_geometry import areas_m2, earlier_twin, plot_ground
 from sitescreen.inputs.sheet_files import SHEET_ENDINGS, read_sheet
 from sitescreen.inputs.stamps import FileStamp, stamp
@@ -261,7 +261,7 @@ def _points_on(geometry: NDArray[np.object_], centre: Any) -> tuple[Any, Any]:
 
 def _swapped(geometry: NDArray[np.object_], datum: Datum) -> NDArray[np.object_]:
     turned = shapely.transform(shapely.force_2d(geometry), lambda xy: xy[:, ::-1])
-    return geometry_to_wgs84(np.asarray(turned, dtype=object), datum)
+    return finite_only(geometry_to_wgs84(np.asarray(turned, dtype=object), datum))
 
 
 def _refuse_swapped(
@@ -271,7 +271,7 @@ def _refuse_swapped(
     if outline is None:
         return
     shapely.prepare(outline)
-    if shapely.intersects(outline, lonlat).any():
+    if shapely.intersects(outline, finite_only(lonlat)).any():
         return
     meets = int(shapely.intersects(outline, _swapped(native, datum)).sum())
     if meets:
