@@ -69,7 +69,9 @@ class Grid:
 
         return Affine(self.cell_size_m, 0.0, self.west_m, 0.0, -self.cell_size_m, self.north_m)
 
-    def rows_cols(self, x_m: NDArray[np.float64], y_m: NDArray[np.float64]) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    def rows_cols(
+        self, x_m: NDArray[np.float64], y_m: NDArray[np.float64]
+    ) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
         """The cell that holds each point; indices outside the grid are returned as they fall, so check them.
 
         Parameters

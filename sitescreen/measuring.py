@@ -10,6 +10,7 @@ from sitescreen.climate.cold_air import closed_pools, smallest_pool_seen_m
 from sitescreen.climate.wind import wind_fields
 from sitescreen.grid import Field, Grid
 from sitescreen.inputs import Inputs
+from sitescreen.inputs.shore import Shore
 from sitescreen.inputs.wind import Rose
 from sitescreen.judgement.coverage import cover
 from sitescreen.judgement.readings import BlockClimate, Readings, block_readings, with_shore
@@ -18,7 +19,9 @@ from sitescreen.progress import Progress
 from sitescreen.settings import Defaults
 from sitescreen.terrain.flat_water import WaterDisagreement, water_disagreement
 from sitescreen.terrain.ground import read_ground
-from sitescreen.terrain.shore_distance import nearest_shore, shore_distance
+from sitescreen.terrain.shore_distance import ShoreDistance, nearest_shore, onshore_bearing, shore_distance
+
+FloatArray = NDArray[np.float64]
 
 BLOCK_MARGIN_M = 12_600.0
 """Ground computed round a block's core: more than any reading of this version looks. [m]"""
@@ -71,9 +74,7 @@ def measure(
         elevation = terrain.elevation(grid)
         water_kind = shore.water_kind(grid) if shore else np.zeros(grid.shape, dtype=np.uint8)
     with progress.step("Measuring slope, hollows and sky"):
-        ground = read_ground(
-            elevation, water_kind, terrain.vertical_error_m, terrain.error_range_m, settings.terrain
-        )
+        ground = read_ground(elevation, water_kind, terrain.vertical_error_m, terrain.error_range_m, settings.terrain)
         disagreement = water_disagreement(water_kind, ground.flat, elevation)
     with progress.step("Measuring wind and shelter"):
         north = _block_convergence_deg(grid)
@@ -81,7 +82,7 @@ def measure(
         wind = wind_fields(ground.elevation, ground.rise, north, roses, place, settings.wind)
     pools = closed_pools(ground.hollows, terrain.vertical_error_m, settings.cold_air)
     with progress.step("Measuring distance to the shore"):
-        near = nearest_shore(shore, lon, lat, block.crs)
+        near, onshore_from_deg = _shore(shore, lon, lat, block.crs, settings.breeze.lake_width_none_km)
         shore_km = shore_distance(shore, grid) if shore else None
     with progress.step("Reading the plots"):
         coverage = cover(plots.geometry.to_crs(block.crs), grid)
@@ -94,7 +95,7 @@ def measure(
             smallest_pool_seen_m(terrain.vertical_error_m, settings.cold_air),
             settings.readings,
         )
-        readings = with_shore(readings, near, settings)
+        readings = with_shore(readings, near, onshore_from_deg, settings.breeze)
     fields = {
         "elevation_m": ground.elevation,
         "slope_deg": ground.slope,
@@ -112,8 +113,23 @@ def measure(
     return BlockResult(block, readings, core, disagreement)
 
 
+def _shore(
+    shore: Shore | None, lon: FloatArray, lat: FloatArray, crs: str, least_lake_width_km: float
+) -> tuple[ShoreDistance | None, FloatArray]:
+    """The nearest shores of plots, and the bearing that the breeze of the nearer one comes from."""
+    if shore is None:
+        return None, np.full(len(lon), np.nan)
+    near = nearest_shore(shore, lon, lat, crs, least_lake_width_km)
+    from_deg = np.full(len(lon), np.nan)
+    for kind in ("sea", "lake"):
+        here = near.kind == kind
+        if here.any():
+            from_deg[here] = onshore_bearing(shore, lon[here], lat[here], crs, kind, least_lake_width_km).from_deg
+    return near, from_deg
+
+
 def _block_convergence_deg(grid: Grid) -> float:
-    """Bearing of grid north from true north at the middle of a block's window: one number serves all its sectors. [°]"""
+    """Bearing of grid north from true north at the middle of a block's window: one serves all sectors. [°]"""
     from pyproj import Transformer
 
     west, south, east, north = grid.bounds
@@ -127,9 +143,7 @@ def _roses(inputs: Inputs, grid: Grid) -> tuple[list[tuple[Rose, Rose]], NDArray
     from pyproj import Transformer
 
     places = inputs.wind.places
-    roses = [
-        (inputs.wind.rose(VENTILATION_SLOT, lon, lat), inputs.wind.rose("year", lon, lat)) for lon, lat in places
-    ]
+    roses = [(inputs.wind.rose(VENTILATION_SLOT, lon, lat), inputs.wind.rose("year", lon, lat)) for lon, lat in places]
     if len(places) == 1:
         return roses, np.zeros(grid.shape, dtype=np.uint8)
     to_grid = Transformer.from_crs("EPSG:4326", grid.crs, always_xy=True)

@@ -149,7 +149,11 @@ def _judged(
         halved,
     )
     notes = inputs.notes + (climate_notes(climate, settings.zones) if climate is not None else ())
-    notes += tuple(Note("warning", "shore", one.disagreement.sentence()) for one in measured if one.disagreement.sentence())
+    notes += tuple(
+        Note("warning", "shore", one.disagreement.sentence)
+        for one in measured
+        if inputs.shore and not one.disagreement.agrees
+    )
     if brief.not_used_yet():
         given = ", ".join(brief.not_used_yet())
         notes += (Note("warning", "brief", f"Read and checked, but not used by this version: {given}."),)
@@ -170,7 +174,10 @@ def _judged(
 def _outcomes(told: Any, values: pd.DataFrame) -> list[str]:
     """Why a plot cannot be judged: what its reading said, else that there is no ground under it."""
     no_ground = "the terrain model has no data there"
-    return [said or (no_ground if np.isnan(height) else "") for said, height in zip(told, values["elevation_m"], strict=True)]
+    return [
+        said or (no_ground if np.isnan(height) else "")
+        for said, height in zip(told, values["elevation_m"], strict=True)
+    ]
 
 
 def _stated_zones(brief: Brief, inputs: Inputs) -> list[str]:
@@ -197,7 +204,7 @@ def _deficit(values: pd.DataFrame, zones: ZoneShares, settings: Defaults) -> Any
 
 
 def _table(plots: Any, values: pd.DataFrame, fits: pd.DataFrame, judged: Judged) -> Any:
-    """Every plot with its identity, readings, marks and geometry; by rank, those set aside last, in the file's order."""
+    """Every plot with its identity, readings, marks and geometry; by rank, those set aside last."""
     import geopandas as gpd
 
     known_zones = [name for name in fits.columns if name not in ("undecided", "missing")]

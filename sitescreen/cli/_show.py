@@ -33,8 +33,8 @@ class TerminalProgress(Progress):
         elif time.perf_counter() - self._begun > QUIET_S or text.startswith(("Compiling", "Reading the ground")):
             click.echo(f"{text} …", err=True)
 
-    def ended(self, text: str) -> None:
-        """Clear the live line; a longer stage leaves its seconds."""
+    def ended(self, text: str) -> None:  # noqa: ARG002  (a subclass may want to know which)
+        """Clear the live line."""
         if self._status is not None:
             self._status.stop()
 

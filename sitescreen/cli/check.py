@@ -24,7 +24,7 @@ from sitescreen.cli.options import (
 def command(
     brief: Path | None, terrain: tuple[Path, ...], shore: Path | None, plots: Path | None, zone: str | None
 ) -> None:
-    """Read every input of a BRIEF, compute nothing, and say what was understood, assumed and missing.
+    r"""Read every input of a BRIEF, compute nothing, and say what was understood, assumed and missing.
 
     \b
     sitescreen check demo_region/brief.toml

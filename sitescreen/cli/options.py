@@ -25,7 +25,7 @@ zone_option = click.option("--zone", help="Climate zone of all plots, where the 
 
 
 def in_one_line(command: Callable[P, R]) -> Callable[P, R]:
-    """Print a SitescreenError as one line on stderr and end with exit code 2; let our own faults keep their traceback."""
+    """Print a SitescreenError as one line on stderr and end with code 2; our own faults keep their traceback."""
 
     @wraps(command)
     def wrapped(*args: P.args, **kwargs: P.kwargs) -> R:

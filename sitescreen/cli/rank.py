@@ -36,7 +36,7 @@ def command(
     zone: str | None,
     out: Path | None,
 ) -> None:
-    """Rank the plots of a BRIEF, or of files named by options.
+    r"""Rank the plots of a BRIEF, or of files named by options.
 
     Writes map.html, ranking.csv, ranking.xlsx, plots.gpkg, layers/*.tif and record.json into the output folder; results
     of an earlier run stay whole until the new ones are complete.
@@ -99,7 +99,9 @@ def _summary(screening: "Screening", folder: Path) -> None:
     for row in ranked.head(screening.brief.judge.shortlist).itertuples():
         gains = screening.reasons[row.plot].for_
         name = f" {row.name}" if row.name else ""
-        click.echo(f"{int(row.rank):>4}. {row.plot}{name}, {row.zone}: {row.overall_mark:.0f} of 100. {' '.join(gains[:1])}")
+        click.echo(
+            f"{int(row.rank):>4}. {row.plot}{name}, {row.zone}: {row.overall_mark:.0f} of 100. {' '.join(gains[:1])}"
+        )
     click.echo(f"Map: {folder / 'map.html'}")
     click.echo(f"Table: {folder / 'ranking.csv'}")
     click.echo("A screening, not a survey: local codes and licensed practice decide.")

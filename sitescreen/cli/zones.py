@@ -12,7 +12,7 @@ from sitescreen.cli.options import EXISTING, in_one_line
 @click.option("--profiles", type=EXISTING, help="Folder of your own profiles that replace or add to the built-in ones.")
 @in_one_line
 def command(zone: str | None, profiles: Path | None) -> None:
-    """List the climate zones, or print one ZONE's criteria with weights, curves and sources.
+    r"""List the climate zones, or print one ZONE's criteria with weights, curves and sources.
 
     \b
     sitescreen zones
@@ -35,6 +35,8 @@ def command(zone: str | None, profiles: Path | None) -> None:
     total = sum(criterion.weight for criterion in profile.criteria)
     for criterion in profile.criteria:
         share = 100.0 * criterion.weight / total
-        click.echo(f"{criterion.name}: {share:.0f} % of the mark (± {criterion.weight_spread_pct:g} %), {criterion.question}")
+        click.echo(
+            f"{criterion.name}: {share:.0f} % of the mark (± {criterion.weight_spread_pct:g} %), {criterion.question}"
+        )
         click.echo(f"    curve: {criterion.curve_in_words()}")
         click.echo(f"    source: {criterion.source}")

@@ -1,0 +1,1 @@
+"""Physics: zones, breeze, wind, cold air. Fields and numbers in, new ones out."""

@@ -14,7 +14,6 @@ from sitescreen.grid import Field
 from sitescreen.settings import WindSettings
 
 
-
 class HillFields(NamedTuple):
     """ΔS(θ) = c²·east_east + 2·c·s·east_north + s²·north_north with the wind's unit vector (c east, s north)."""
 
@@ -49,7 +48,9 @@ def shear_height_m(half_length_m: NDArray[np.float64], roughness_m: float) -> ND
 def shear_factor(wavenumber: NDArray[np.float64], height_m: float, roughness_m: float) -> NDArray[np.float64]:
     """[ln(h_m/z0)/ln(z/z0)]² for each wavenumber, at least 1, with the half-length L = π/(2k) of its wave."""
     length = np.pi / (2.0 * np.maximum(wavenumber, 1e-9))
-    above = np.log(np.maximum(shear_height_m(length, roughness_m) / roughness_m, 1.001)) / np.log(height_m / roughness_m)
+    above = np.log(np.maximum(shear_height_m(length, roughness_m) / roughness_m, 1.001)) / np.log(
+        height_m / roughness_m
+    )
     return np.maximum(above**2, 1.0)
 
 

@@ -109,9 +109,13 @@ def wind_fields(
     grid = elevation.grid
     known = np.isfinite(rise.values)
     return WindFields(
-        Field(np.where(known, air, np.nan), grid, "1", "wind speed over that of open level ground, hot-season afternoon"),
+        Field(
+            np.where(known, air, np.nan), grid, "1", "wind speed over that of open level ground, hot-season afternoon"
+        ),
         Field(np.where(known, np.cbrt(energy), np.nan), grid, "1", "energy-weighted wind speed ratio, whole year"),
-        Field(np.where(known, 1.0 - open_share, np.nan), grid, "1", "share of the year's wind kept off by upwind ground"),
+        Field(
+            np.where(known, 1.0 - open_share, np.nan), grid, "1", "share of the year's wind kept off by upwind ground"
+        ),
     )
 
 

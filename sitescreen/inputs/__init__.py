@@ -70,10 +70,16 @@ def read_inputs(brief: Brief) -> Inputs:
             notes.extend(read.notes)
     if shore is None:
         notes.append(
-            Note("assumed", "shore", "No shoreline was given, so breeze and distance to water are unknown for every plot.")
+            Note(
+                "assumed",
+                "shore",
+                "No shoreline was given, so breeze and distance to water are unknown for every plot.",
+            )
         )
     if normals is None:
         notes.append(
-            Note("assumed", "climate", "No climate normals were given: zones follow from altitude and distance to water.")
+            Note(
+                "assumed", "climate", "No climate normals were given: zones follow from altitude and distance to water."
+            )
         )
     return Inputs(terrain, plots, shore, wind, normals, cover, zone_map, tuple(notes))

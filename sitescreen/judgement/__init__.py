@@ -1,0 +1,1 @@
+"""Readings of plots, what they are worth in their zone, and why."""

@@ -3,8 +3,8 @@
 from dataclasses import dataclass
 
 import numpy as np
-from scipy import ndimage
 from numpy.typing import NDArray
+from scipy import ndimage
 
 from sitescreen.grid import Field
 from sitescreen.settings import TerrainSettings

@@ -30,7 +30,9 @@ def test_hollow_is_not_slowed_twice() -> None:
 
 def test_strong_winds_decide_the_exposure() -> None:
     """Two winds: light 2 m/s for 70 % with F 1.3, strong 8 m/s for 30 % with F 0.6 → 0.66, not 1.17 (computed)."""
-    assert energy_mean(np.array([0.7, 0.3]), np.array([2.0, 8.0]), np.array([1.3, 0.6])) == pytest.approx(0.66, abs=0.005)
+    assert energy_mean(np.array([0.7, 0.3]), np.array([2.0, 8.0]), np.array([1.3, 0.6])) == pytest.approx(
+        0.66, abs=0.005
+    )
 
 
 def _fields(elevation: Field, rose: Rose):  # type: ignore[no-untyped-def]
