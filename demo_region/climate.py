@@ -27,7 +27,7 @@ STATIONS = [
     Station("Tavrick airfield", 51.0, 17.0, 26.5, 7.4, 1.7, 2, 78, 4, 1080, 4),
     Station("Kharune post", 38.5, 10.5, 26.9, 14.6, 2.2, 11, 43, 8, 260, 14),
     Station("Yellandor school", 32.5, 31.0, 24.8, 12.8, 2.0, 11, 57, 9, 640, 11),
-    Station("Ondurwen pier", 24.3, 16.6, 22.2, 10.8, 1.0, 2, 69, 6, 1180, 7),
+    Station("Ondurwen pier", 24.3, 16.6, 22.2, 9.4, 1.0, 2, 74, 4, 1180, 7),
     Station("Brennoch mission", 18.0, 28.6, 18.2, 11.2, 1.7, 11, 70, 9, 1240, 10),
     Station("Skarrow hut", 6.5, 31.2, 14.4, 9.8, 1.8, 11, 76, 8, 1520, 9),
 ]

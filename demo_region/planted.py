@@ -32,11 +32,10 @@ HOLLOWS = {
     "high hollow": Hollow(7.9, 33.2, 0.50, 22, 120),
     "savannah hollow": Hollow(33.2, 34.4, 0.55, 12, 160),
     "coastal pan": Hollow(47.9, 12.6, 0.30, 6, 90),
-    "doubtful hollow": Hollow(16.0, 37.2, 0.20, 3, 90),
+    "doubtful hollow": Hollow(17.2, 33.8, 0.20, 1.5, 90),
 }
 BASINS = {
     "great basin": Basin(22.6, 28.4, 1.75, 135, 95, 100),
-    "small basin": Basin(17.7, 25.6, 1.15, 105, 172, 90),
 }
 
 

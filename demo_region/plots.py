@@ -61,8 +61,8 @@ def choose(ground, water, lake):
     lake_rows, lake_cols = np.nonzero(lake)
     south_shore = float(g.y[lake_rows.max(), 0])
     at_south = float(g.x[0, int(np.median(lake_cols[lake_rows > lake_rows.max() - 12]))])
-    hollow, basin = HOLLOWS, BASINS
-    great, small = basin["great basin"], basin["small basin"]
+    hollow = HOLLOWS
+    great = BASINS["great basin"]
     north_edge = float(g.y.max()) + CELL_KM / 2 + COLLAR_REACH * 3 * CELL_KM
     places = [
         ("Sandrelle Strand", *open_coast(9.6, 2.0), 8, 10, 14),
@@ -78,7 +78,7 @@ def choose(ground, water, lake):
         ("Little Mavren", *open_coast(4.2, 1.4), 0.3, 0, 18),
         ("Kharune Bench", *g.find(35.5, 7.5, 3.5, bench, 400, 560), 15, 25, 5),
         ("Issabar Wash", *g.find(37.5, 12.0, 5.0, catchment * (g.slope < 0.12), 330, 520), 6, 40, 3),
-        ("Torrak Scarp", *g.find(42.6, 8.0, 2.5, g.slope, 330, 620), 4, 0, 2),
+        ("Torrak Scarp", *g.find(43.5, 8.0, 4.0, g.slope, 330, 640), 4, 0, 2),
         ("Ammerode Flat", *g.find(36.5, 4.0, 2.0, dry_flat, 380, 520), 10, 50, 4),
         ("Nerrow Gate", *g.find(44.3, 16.9, 0.6, gentle, 120, 300), 3, 70, 2),
         ("Yellandor Terrace", *g.find(32.5, 29.0, 3.0, bench, 680, 880), 12, 15, 6),
@@ -86,7 +86,7 @@ def choose(ground, water, lake):
         ("Pemmarick Side", 36.1, 30.75, 5, 10, 7),
         ("Great Yellandor", *g.find(38.5, 33.0, 3.0, gentle, 620, 800), 30, 20, 5),
         ("Midwater Claim", 18.2, 8.9, 9, 0, 1),
-        ("Halfshore Claim", at_south, south_shore, 6, 0, 8),
+        ("Halfshore Claim", at_south, south_shore - 0.03, 6, 0, 8),
         ("Ondurwen Reach", *g.find(19.5, 18.2, 1.2, gentle, 1136, 1250), 10, 30, 13),
         ("Eastmere Rise", *g.find(27.0, 9.5, 0.8, bench, 1140, 1320), 8, 5, 9),
         ("Sorrelby Foot", *g.find(12.6, 3.6, 1.2, gentle, 1140, 1300), 9, 45, 8),
@@ -95,14 +95,14 @@ def choose(ground, water, lake):
         ("Brennoch Hollow", hollow["upland hollow"].x, hollow["upland hollow"].y, 6, 20, 7),
         ("Great Basin Floor", great.x + 0.25, great.y, 8, 0, 8),
         ("Basin Shoulder", *g.find(great.x - 1.9, great.y + 1.2, 1.3, bench, 1760, 1900), 7, 35, 10),
-        ("Narrowgate Meadow", small.x, small.y - 0.1, 5, 10, 6),
-        ("Solvane Brae", *g.find(20.0, 32.6, 2.0, -np.abs(g.fall_north - 0.07) - np.abs(g.slope - 0.07), 1600, 1950),
+        ("Narrowgate Meadow", *g.find(20.6, 31.7, 0.7, gentle, 1640, 1720), 5, 10, 6),
+        ("Solvane Brae", *g.find(15.5, 34.2, 0.8, -np.abs(g.fall_north - 0.07) - np.abs(g.slope - 0.07), 1600, 1950),
          6, 75, 11),
         ("Windhollin Crest", *g.find(14.5, 33.5, 3.0, g.rise, 1650, 2150), 3, 0, 9),
         ("Doubtful Dip", hollow["doubtful hollow"].x, hollow["doubtful hollow"].y, 2, 40, 9),
         ("Cindrel Hollow", hollow["high hollow"].x, hollow["high hollow"].y, 4, 30, 5),
         ("Skarrow Crest", *g.find(6.5, 28.0, 4.0, g.rise, 2350, 2900), 3, 0, 6),
-        ("Hethermoor Shelf", *g.find(8.5, 30.0, 3.5, bench - 4 * np.abs(g.rise), 2250, 2480), 7, 65, 8),
+        ("Hethermoor Shelf", *g.find(7.8, 26.4, 0.8, gentle - 0.002 * np.abs(g.rise - 10), 2250, 2480), 7, 65, 8),
         ("Skarrow Steeps", *g.find(7.5, 25.0, 3.5, g.slope * smooth(g.x, 4, 5), 2250, 2600), 5, 0, 3),
         ("Edgewick Claim", 20.0, north_edge + 0.02, 9, 0, 7),
         ("Farrowmisk Claim", -31.0, 18.0, 9, 0, 7),
