@@ -101,6 +101,7 @@ class ColdAirSettings(Section):
 
     least_depth_m: Annotated[float, Field(ge=0, le=100)]
     noise_factor: Annotated[float, Field(ge=0, le=10)]
+    mean_noise_factor: Annotated[float, Field(ge=0, le=10)]
     least_cells: Annotated[int, Field(ge=1, le=10_000)]
     fill_scale_m: Positive
     strength_k: Mapping[str, Annotated[float, Field(ge=0, le=30)]]
@@ -243,7 +244,9 @@ def checked(values: Mapping[str, Any], model: type[Model], file_name: str) -> Mo
 
 
 def _config_error(error: ValidationError, model: type[BaseModel], file_name: str) -> ConfigError:
-    fault = error.errors()[0]
+    faults = error.errors()
+    # a misspelt key is also a missing one: its spelling is the thing to say
+    fault = next((one for one in faults if one["type"] == "extra_forbidden"), faults[0])
     key = ".".join(str(part + 1) if isinstance(part, int) else part for part in fault["loc"])
     if fault["type"] == "extra_forbidden":
         known = _known_keys(model, fault["loc"])
@@ -252,6 +255,8 @@ def _config_error(error: ValidationError, model: type[BaseModel], file_name: str
         return ConfigError(f"{file_name} has the unknown key {key!r}", f"known keys are {', '.join(known)}", way_out)
     if fault["type"] == "missing":
         return ConfigError(f"{file_name} has no key {key!r}", "that key is needed", "Add it")
+    if not key:
+        return ConfigError(f"{file_name} does not hold together", f"{_in_words(fault)} is needed", "Correct that file")
     given = repr(fault["input"])
     given = given if len(given) <= 60 else given[:57] + "…"
     allowed = _allowed(model, fault["loc"]) or _in_words(fault)

@@ -22,7 +22,7 @@ class ClosedPools(NamedTuple):
 
 
 def smallest_pool_seen_m(vertical_error_m: float, settings: ColdAirSettings) -> float:
-    """The shallowest hollow that is not taken for noise: twice the terrain's error, at least 1 m. [m]
+    """The least greatest depth of a hollow that is not taken for noise: twice the terrain's error, at least 1 m. [m]
 
     Single pits of noise reach 2–3 standard deviations (common practice; check against Lindsay & Creed 2006, Comput.
     Geosci. 32:1192–1204, whose Monte-Carlo principle the later reading follows).
@@ -47,8 +47,11 @@ def closed_pools(hollows: Hollows, vertical_error_m: float, settings: ColdAirSet
         ``cut``: cells of hollows that run off the known ground: how deep they are cannot be said.
     """
     pools = hollows.pools
-    counts = (pools.deepest_m >= smallest_pool_seen_m(vertical_error_m, settings)) & (
-        pools.cells >= settings.least_cells
+    mean_depth_m = pools.volume_m3 / (pools.cells * hollows.depth_m.grid.cell_size_m**2)
+    counts = (
+        (pools.deepest_m >= smallest_pool_seen_m(vertical_error_m, settings))
+        & (mean_depth_m >= settings.mean_noise_factor * vertical_error_m)
+        & (pools.cells >= settings.least_cells)
     )
     # index 0 of the lookup is "no pool"
     keep = np.concatenate([[False], counts])
