@@ -106,7 +106,7 @@ def load_words(path: Path | None = None) -> Words:
     path = path or config_folder() / "reasons.toml"
     content = read_toml(path)
     common = checked(content.pop("words", {}), CommonWords, path.name)
-    return Words({name: checked(one, CriterionWords, path.name) for name, one in content.items()}, common)
+    return Words({name: checked(one, CriterionWords, f"{path.name} [{name}]") for name, one in content.items()}, common)
 
 
 def reasons(

@@ -1,0 +1,64 @@
+"""Small plots to judge."""
+
+from collections.abc import Callable
+from typing import Any
+
+import numpy as np
+import pandas as pd
+import pytest
+
+from sitescreen.climate.zones import ZoneShares, memberships, zone_shares
+from sitescreen.settings import load_defaults
+
+ZONES = load_defaults().zones
+
+GOOD_GROUND: dict[str, Any] = {
+    "elevation_m": 50.0,
+    "slope_deg": 2.0,
+    "aspect_deg": 180.0,
+    "buildable_share": 1.0,
+    "rise_m": 12.0,
+    "shore_kind": "sea",
+    "shore_distance_km": 3.0,
+    "onshore_from_deg": 135.0,
+    "breeze_reach": 0.96,
+    "ventilation": 1.2,
+    "ridge_exposure": 1.1,
+    "sheltered_fraction": 0.05,
+    "cold_pool_kind": "none",
+    "cold_pool_depth_m": 0.0,
+    "cold_deficit_k": 0.0,
+    "smallest_pool_seen_m": 3.0,
+    "sky_view": 0.995,
+    "pond_depth_m": 0.0,
+    "area_ha": 2.0,
+    "share_in_water": 0.0,
+    "water_disagrees": False,
+    "cells": 22.0,
+    "outcome": "",
+}
+"""Pleasant ground near an invented sea. The floating-point columns may be blanked."""
+
+
+@pytest.fixture
+def plots() -> Callable[..., pd.DataFrame]:
+    """Readings of plots a, b, c …, each good ground but for the values given."""
+
+    def make(*changes: dict[str, Any]) -> pd.DataFrame:
+        rows = [{**GOOD_GROUND, **change} for change in changes]
+        return pd.DataFrame(rows, index=pd.Index([chr(97 + n) for n in range(len(rows))], name="plot"))
+
+    return make
+
+
+@pytest.fixture
+def in_zone() -> Callable[..., ZoneShares]:
+    """The plots' zones, stated."""
+
+    def make(readings: pd.DataFrame, *zone: str) -> ZoneShares:
+        stated = list(zone) * len(readings) if len(zone) == 1 else list(zone)
+        nowhere = np.full(len(readings), 500.0)
+        fits = memberships(readings["elevation_m"].fillna(0.0), nowhere, nowhere, nowhere, None, ZONES)
+        return zone_shares(fits, stated, ZONES)
+
+    return make

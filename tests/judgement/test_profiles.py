@@ -1,0 +1,157 @@
+"""Zone profiles: what is shipped, and a planner's own."""
+
+from itertools import combinations
+from pathlib import Path
+
+import pytest
+
+from sitescreen.errors import ConfigError
+from sitescreen.judgement.profiles import ZoneProfile, load_profiles
+from sitescreen.judgement.reasons import load_words
+from sitescreen.settings import config_folder, load_defaults
+
+PROFILES = load_profiles()
+
+MINE = """
+zone = "{zone}"
+title = "Mine"
+wants = "Level ground."
+
+[[criteria]]
+name = "level"
+reading = "{reading}"
+question = "ground"
+title = "slope"
+unit = "°"
+weight = {weight}
+curve = {curve}
+source = "common practice, no source"
+"""
+
+
+def own(folder: Path, **changes: object) -> Path:
+    values = {"zone": "my_island", "reading": "slope_deg", "weight": 10, "curve": "[[0, 100], [10, 0]]", **changes}
+    (folder / "mine.toml").write_text(MINE.format(**values), encoding="utf-8")
+    return folder
+
+
+def test_the_six_zones_come_in_their_order() -> None:
+    assert list(PROFILES) == list(load_defaults().zones.with_normals)
+    assert len(PROFILES) == 6
+
+
+@pytest.mark.parametrize("profile", PROFILES.values(), ids=list(PROFILES))
+def test_every_criterion_says_where_it_comes_from(profile: ZoneProfile) -> None:
+    for criterion in profile.criteria:
+        named = any(char.isdigit() for char in criterion.source)  # a year
+        assert named or "no source" in criterion.source, criterion.name
+
+
+@pytest.mark.parametrize("profile", PROFILES.values(), ids=list(PROFILES))
+def test_no_two_criteria_measure_the_same_thing(profile: ZoneProfile) -> None:
+    """Readings that follow closely from one another may not both be weighed; correlations are tested elsewhere."""
+    families = [
+        {"ventilation", "ridge_exposure", "rise_m"},
+        {"cold_deficit_k", "cold_pool_depth_m", "pond_depth_m"},
+        {"slope_deg", "buildable_share"},
+        {"breeze_reach", "shore_distance_km"},
+        {"sky_view", "slope_deg"},
+    ]
+    for one, other in combinations([criterion.reading for criterion in profile.criteria], 2):
+        assert one != other
+        assert not any({one, other} <= family for family in families), (one, other)
+
+
+@pytest.mark.parametrize("profile", PROFILES.values(), ids=list(PROFILES))
+def test_curves_use_the_scale_and_an_ordinary_plot_lies_on_them(profile: ZoneProfile) -> None:
+    for criterion in profile.criteria:
+        assert criterion.best_mark == 100.0, criterion.name
+        assert criterion.worst_mark <= 55.0, criterion.name
+        assert criterion.worst_mark <= criterion.ordinary_mark <= criterion.best_mark
+
+
+def test_weights_are_parts_of_a_hundred() -> None:
+    for profile in PROFILES.values():
+        assert sum(criterion.weight for criterion in profile.criteria) == 100.0
+
+
+def test_every_criterion_has_its_sentences() -> None:
+    names = {criterion.name for profile in PROFILES.values() for criterion in profile.criteria}
+    assert names == set(load_words().criteria)
+
+
+def test_a_name_means_one_reading_in_all_profiles() -> None:
+    readings: dict[str, str] = {}
+    for profile in PROFILES.values():
+        for criterion in profile.criteria:
+            assert readings.setdefault(criterion.name, criterion.reading) == criterion.reading
+
+
+def test_the_coasts_breeze_band_ends_at_8_km() -> None:
+    """Reach at 8 km is 1 − 8/(3 m/s × 3.6 × 8 h) = 0.907, so the band that designers use has the full mark."""
+    curve = dict(PROFILES["hot_humid_coast"].by_name["breeze"].curve)
+    assert max(value for value, mark in curve.items() if mark < 100) < 0.9 <= 1 - 8 / (3 * 3.6 * 8)
+    assert curve[0.9] == 100
+
+
+def test_curve_in_words() -> None:
+    assert PROFILES["upland"].by_name["facing"].curve_in_words() == "-1 → 30, 0 → 60, 1 → 100"
+    assert PROFILES["upland"].by_name["cold"].curve_in_words().endswith("4 → 0 (K)")
+
+
+def test_a_folder_adds_and_replaces(tmp_path: Path) -> None:
+    added = load_profiles(own(tmp_path))
+    assert list(added) == [*PROFILES, "my_island"]
+    replaced = load_profiles(own(tmp_path, zone="upland"))
+    assert list(replaced) == list(PROFILES)
+    assert replaced["upland"].title == "Mine"
+    assert replaced["savannah"] == PROFILES["savannah"]
+
+
+@pytest.mark.parametrize(
+    ("change", "message"),
+    [
+        ({"weight": -1}, r"mine\.toml has criteria\.1\.weight = -1; a number above 0 to 1000 is needed"),
+        ({"curve": "[[0, 100], [10, 120]]"}, r"criteria\.1\.curve\.2\.2 = 120; .*less than or equal to 100"),
+        ({"curve": "[[5, 100], [5, 0]]"}, r"criteria\.1\.curve .*rise from point to point"),
+        ({"curve": "[[5, 100]]"}, r"criteria\.1\.curve "),
+        ({"reading": "slope"}, r"criterion 'level' look at 'slope'; one of the readings elevation_m, slope_deg"),
+        ({"zone": "My Island"}, r"mine\.toml has zone = 'My Island'"),
+    ],
+)
+def test_a_wrong_profile_is_refused(tmp_path: Path, change: dict[str, object], message: str) -> None:
+    with pytest.raises(ConfigError, match=message):
+        load_profiles(own(tmp_path, **change))
+
+
+def test_an_unknown_key_is_refused_with_the_nearest(tmp_path: Path) -> None:
+    path = own(tmp_path) / "mine.toml"
+    path.write_text(path.read_text(encoding="utf-8").replace("question =", "questions ="), encoding="utf-8")
+    with pytest.raises(ConfigError, match=r"unknown key 'criteria\.1\.questions'.*'question' was meant"):
+        load_profiles(tmp_path)
+
+
+def test_a_name_twice_is_refused(tmp_path: Path) -> None:
+    path = own(tmp_path) / "mine.toml"
+    text = path.read_text(encoding="utf-8")
+    path.write_text(text + text[text.index("[[criteria]]") :], encoding="utf-8")
+    with pytest.raises(ConfigError, match=r"mine\.toml does not hold together; a name of its own for each criterion"):
+        load_profiles(tmp_path)
+
+
+def test_empty_and_missing_folders_are_refused(tmp_path: Path) -> None:
+    with pytest.raises(ConfigError, match=r"holds no \.toml file"):
+        load_profiles(tmp_path)
+    with pytest.raises(ConfigError, match="there is no folder"):
+        load_profiles(tmp_path / "none")
+
+
+def test_two_profiles_for_one_zone_are_refused(tmp_path: Path) -> None:
+    text = (own(tmp_path) / "mine.toml").read_text(encoding="utf-8")
+    (tmp_path / "second.toml").write_text(text, encoding="utf-8")
+    with pytest.raises(ConfigError, match=r"second\.toml is a second profile for the zone 'my_island'"):
+        load_profiles(tmp_path)
+
+
+def test_the_files_are_named_after_their_zones() -> None:
+    assert sorted(path.stem for path in (config_folder() / "zones").glob("*.toml")) == sorted(PROFILES)

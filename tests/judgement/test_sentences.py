@@ -1,0 +1,48 @@
+"""Filling sentences with numbers."""
+
+import numpy as np
+import pytest
+
+from sitescreen.judgement.sentences import check_template, compass_word, facts, fill
+
+
+@pytest.mark.parametrize(
+    ("bearing", "word"), [(0, "north"), (44, "north-east"), (135, "south-east"), (337.6, "north"), (360, "north")]
+)
+def test_compass_words(bearing: float, word: str) -> None:
+    assert compass_word(bearing) == word
+
+
+def test_the_first_wording_whose_facts_are_known_is_used() -> None:
+    told = facts({"rise_m": 42.3, "breeze_reach": np.nan, "shore_kind": ""})
+    assert (
+        fill(["{shore} at {breeze_pct:.0f} %", "{stands_high}.", "else"], told)
+        == "Sits 42 m above the ground within 1 km."
+    )
+    assert fill(["{shore}"], told) == ""
+
+
+def test_facts_in_a_clients_terms() -> None:
+    told = facts({"slope_deg": 45.0, "ventilation": 1.25, "ridge_exposure": 0.8, "rise_m": -8.0, "aspect_deg": 91.0})
+    assert told["slope_pct"] == pytest.approx(100.0)
+    assert told["more_air_pct"] == pytest.approx(25.0)
+    assert told["less_wind_pct"] == pytest.approx(20.0)
+    assert told["stands_low"] == "Lies 8 m below the ground within 1 km"
+    assert "stands_high" not in told
+    assert told["aspect_word"] == "east"
+
+
+def test_unknown_readings_are_no_facts() -> None:
+    assert facts({"slope_deg": np.nan, "shore_kind": "", "rise_m": None}) == {}
+
+
+def test_no_minus_nought() -> None:
+    assert fill(["slopes {slope_pct:.0f} % here"], {"slope_pct": -0.2}) == "slopes 0 % here"
+
+
+@pytest.mark.parametrize(
+    "template", ["{}", "{0}", "{rise_m.real}", "{rise_m[0]}", "{rise_m!r}", "{rise_m:.1q}", "{rise"]
+)
+def test_templates_that_reach_too_far_are_refused(template: str) -> None:
+    with pytest.raises(ValueError, match="fields such as"):
+        check_template(template)
