@@ -1,0 +1,56 @@
+"""What a screening hands over: the only place that writes results."""
+
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from sitescreen.deliverables.folder import staged
+
+if TYPE_CHECKING:
+    from sitescreen.screening import Screening
+
+__all__ = ["write_results"]
+
+
+def write_results(screening: "Screening", folder: Path) -> None:
+    """Write map, table, workbook, plots, layers and record of a screening into a folder.
+
+    Parameters
+    ----------
+    screening : Screening
+    folder : Path
+        Made if it is not there. Results of an earlier run stay whole until all new ones are written; files that are
+        not ours stay as they are.
+
+    Raises
+    ------
+    OutputError
+        If the folder cannot be written to, or has no room left.
+    """
+    from sitescreen.deliverables import layers
+    from sitescreen.deliverables.columns import columns_of
+    from sitescreen.deliverables.map import write_map
+    from sitescreen.deliverables.plots_layer import write_plots
+    from sitescreen.deliverables.record import NAME, outputs, write_record
+    from sitescreen.deliverables.table import write_csv
+    from sitescreen.deliverables.workbook import MOST_PLOTS, write_workbook
+
+    table = screening.table
+    columns = columns_of(table, screening.profiles)
+    with staged(folder) as stage:
+        write_csv(table, columns, stage / "ranking.csv")
+        if len(table) <= MOST_PLOTS:
+            write_workbook(table, columns, stage / "ranking.xlsx")
+        write_plots(table, columns, stage / "plots.gpkg")
+        if screening.brief.output.layers:
+            (stage / layers.FOLDER).mkdir()
+            for key, field in screening.fields.items():
+                layers.write_layer(field, stage / layers.FOLDER / layers.file_name(key))
+        write_map(screening, columns, stage / "map.html")
+        record = {
+            **screening.record,
+            "notes": [{"level": note.level, "where": note.where, "text": note.text} for note in screening.notes],
+            "not_measured": screening.not_measured,
+            "not_checked": screening.not_checked,
+            "outputs": outputs(stage),
+        }
+        write_record(record, stage / NAME)

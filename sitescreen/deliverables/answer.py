@@ -1,0 +1,74 @@
+"""The answer in one sentence, and the words that say how far to trust it."""
+
+from typing import TYPE_CHECKING, Any
+
+from sitescreen.deliverables.columns import BY_NAME
+from sitescreen.deliverables.table import value_of
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+    from sitescreen.screening import Screening
+
+CAUTION = "This is a screening, not a survey: local codes and licensed practice decide."
+
+ON_SITE = (
+    "Walk the plots on the shortlist, in the afternoon and before sunrise: is the air as this page says?",
+    "Ask neighbours about flooding, frost and the worst wind.",
+    "Have levels, soil, drainage, access and title checked before buying.",
+)
+
+
+def answer(table: "pd.DataFrame") -> str:
+    """The result in one plain sentence.
+
+    Parameters
+    ----------
+    table : DataFrame
+        The ranking, best first.
+    """
+    ranked = table[table["rank"].notna()]
+    aside = len(table) - len(ranked)
+    plots = f"{len(table)} plots" if len(table) != 1 else "one plot"
+    if ranked.empty:
+        return f"Of {plots}, none could be ranked: each is set aside, with its reason below."
+    leaders = ranked[ranked["rank"] == ranked["rank"].iloc[0]]
+    mark = f"{leaders['overall_mark'].iloc[0]:.0f} of 100"
+    if len(leaders) == 1:
+        head = f"Of {plots}, {_called(leaders.iloc[0])} comes first, with {mark}"
+    else:
+        names = _list([_called(row) for _, row in leaders.head(3).iterrows()])
+        head = f"Of {plots}, {names} share the first place, with {mark}"
+    nearest = [_called(row) for _, row in ranked.iloc[len(leaders) : len(leaders) + 2].iterrows()]
+    then = f"; then {_list(nearest)}" if nearest else ""
+    shelf = {0: "", 1: " One is set aside."}.get(aside, f" {aside} are set aside.")
+    return f"{head}{then}.{shelf}"
+
+
+def _called(row: Any) -> str:
+    name, plot = value_of(BY_NAME["name"], row.get("name")), str(row["plot"])
+    return f"{name} (plot {plot})" if name else f"plot {plot}"
+
+
+def _list(words: list[str]) -> str:
+    return words[0] if len(words) == 1 else f"{', '.join(words[:-1])} and {words[-1]}"
+
+
+def trust(screening: "Screening") -> list[dict[str, Any]]:
+    """The blocks of “How far to trust this”: a heading and its lines each; blocks with nothing to say are left out."""
+
+    def noted(level: str) -> list[str]:
+        return [note.text for note in screening.notes if note.level == level]
+
+    blocks = [
+        ("Assumed, because nobody gave it", noted("assumed")),
+        ("Noticed in the inputs", noted("warning")),
+        ("Not measured in this version", [_line(text) for text in screening.not_measured]),
+        ("Not checked: silence here does not mean safe", [_line(text) for text in screening.not_checked]),
+        ("To check on site", list(ON_SITE)),
+    ]
+    return [{"heading": heading, "lines": lines} for heading, lines in blocks if lines]
+
+
+def _line(text: str) -> str:
+    return text[:1].upper() + text[1:]

@@ -1,0 +1,78 @@
+// The plot's leaf, docked beside or below the map: what speaks for it, what against, its marks and readings.
+const leaf = (() => {
+  const { data, plots, make, ruler } = page;
+  const holder = document.getElementById("leaf");
+  const readingNamed = new Map(data.readings.map((reading) => [reading.name, reading]));
+  const order = [...page.ranked, ...page.aside];
+
+  function list(heading, lines, kind) {
+    if (!lines.length) return [];
+    return [make("h3", {}, heading), make("ul", { class: kind }, ...lines.map((line) => make("li", {}, line)))];
+  }
+
+  function top(i) {
+    const place = order.indexOf(i), rank = plots.rank[i];
+    const inZone = plots.rank_in_zone[i] === null || rank === null ? "" : `, ${page.ordinal(plots.rank_in_zone[i])} in its zone`;
+    const turn = (text, to) => make("button", { type: "button", disabled: to < 0 || to >= order.length, onclick: () => page.change({ chosen: order[to] }) }, text);
+    return make("div", { class: "leaf-top" },
+      make("span", {}, rank === null ? "Set aside" : `${page.ordinal(rank)} of ${page.ranked.length}${inZone}`),
+      make("span", { class: "turn" }, turn("previous", place - 1), turn("next", place + 1)));
+  }
+
+  function markLine(i) {
+    const mark = plots.overall_mark[i], low = plots.mark_low[i], high = plots.mark_high[i];
+    if (mark === null || plots.rank[i] === null) return null;
+    const spread = low === null || high === null || high - low < 0.5 ? "of 100; nothing it needs is unknown"
+      : `of 100; ${low.toFixed(0)} to ${high.toFixed(0)}, as its unknowns may turn out`;
+    return make("div", { class: "leaf-mark" }, make("b", {}, mark.toFixed(0)), make("div", {}, ruler(mark, low, high, 300, 22), make("span", {}, spread)));
+  }
+
+  function criteria(i) {
+    const zone = data.zones[plots.zone[i]];
+    if (!zone) return [];
+    const rows = zone.criteria.map((one) => {
+      const marks = data.marks[one.name], mark = marks ? marks[i] : null, reading = readingNamed.get(one.reading);
+      return make("tr", {},
+        make("td", {}, one.title),
+        make("td", {}, reading ? page.shown(reading, reading.values[i]) : ""),
+        make("td", {}, ruler(mark, null, null, 92, 12)),
+        make("td", {}, mark === null ? "?" : mark.toFixed(0)));
+    });
+    return [make("h3", {}, "What its zone asks for, and its marks"), make("table", { class: "criteria" }, make("tbody", {}, ...rows))];
+  }
+
+  function readings(i) {
+    const items = [];
+    for (const reading of data.readings) {
+      items.push(make("dt", { title: reading.says }, reading.title), make("dd", {}, page.shown(reading, reading.values[i])));
+    }
+    return make("details", {}, make("summary", {}, "All readings"), make("dl", { class: "readings" }, ...items));
+  }
+
+  function show() {
+    const i = page.state.chosen;
+    holder.hidden = i === null;
+    if (i === null) return;
+    const isOpen = holder.querySelector("details[open]") !== null;
+    const why = data.reasons[i], zone = data.zones[plots.zone[i]];
+    const share = plots.zone_share[i];
+    const parts = [top(i), make("p", { class: "leaf-name" }, plots.name[i] === null ? `Plot ${plots.plot[i]}` : plots.name[i])];
+    const mixed = share !== null && share < 0.95 ? `, ${(100 * share).toFixed(0)} % of the judgement` : "";
+    const words = [plots.name[i] === null ? null : `Plot ${plots.plot[i]}`, page.zoneTitle(i) ? page.zoneTitle(i) + mixed : null];
+    parts.push(make("p", { class: "leaf-zone" }, words.filter((word) => word).join(" · ")));
+    if (zone) parts.push(make("p", { class: "leaf-zone" }, `What it wants: ${zone.wants}`));
+    parts.push(markLine(i));
+    if (plots.set_aside[i]) parts.push(...list("Why it is set aside", [plots.set_aside[i]], "alerts"));
+    if (why) {
+      parts.push(...list("For it", why.for, "for"), ...list("Against it", why.against, "against"),
+        ...list("Cautions", why.cautions, "alerts"), ...list("Unknown", why.unknown, "unknown"));
+    } else if (plots.rank[i] !== null) {
+      parts.push(make("p", { class: "leaf-zone" }, "This page holds the reasons of the leading plots only; its readings are below and in the table."));
+    }
+    parts.push(...criteria(i), readings(i));
+    holder.replaceChildren(...parts.filter((part) => part));
+    if (isOpen) holder.querySelector("details").open = true;
+  }
+  page.watchers.push((what) => { if (what.includes("chosen")) show(); });
+  return { show };
+})();

@@ -1,0 +1,63 @@
+// The row of questions, the legend, how far to trust it; then everything starts.
+(() => {
+  const { data, make, state } = page;
+  const row = document.getElementById("questions"), legend = document.getElementById("legend");
+
+  function questions() {
+    const all = [data.overall, ...data.questions];
+    row.hidden = false;
+    row.replaceChildren(...all.map((one) => make("button", { type: "button", "data-question": one.name, "aria-pressed": String(one.name === state.question),
+      onclick: () => page.change({ question: one.name, view: 0 }) }, one.label)));
+  }
+  function press() {
+    for (const button of row.children) button.setAttribute("aria-pressed", String(button.dataset.question === state.question));
+  }
+
+  function showLegend() {
+    const one = page.question(), view = one && one.views[state.view];
+    const items = [];
+    if (view) {
+      for (const range of view.ranges) if (range.words) items.push([page.sign(range.class), range.words]);
+    } else {
+      for (const number of [4, 3, 2, 1, 0]) items.push([page.sign(number), `${[0, ...data.edges][number]}–${[...data.edges, 100][number]}`]);
+    }
+    if (page.ranked.some((i) => page.marks()[i] === null)) items.push([page.sign("unknown"), "unknown"]);
+    if (page.aside.length) items.push([page.sign("aside"), "set aside"]);
+    const title = make("div", { class: "legend-title" });
+    if (one && one.views.length > 1) {
+      title.append(make("span", { class: "legend-views" }, ...one.views.map((each, k) => make("button", { type: "button", "aria-pressed": String(k === state.view),
+        onclick: () => page.change({ view: k }) }, `${each.title}, as wanted by ${each.wanted_by}`))));
+    } else if (view) {
+      title.append(view.wanted_by ? `${view.title}, as wanted by ${view.wanted_by}` : view.title);
+    } else {
+      title.append(one ? `Plots by their mark for ${one.column.toLowerCase()}, of 100` : "Plots by their overall mark, of 100");
+    }
+    const darker = view ? "Dark ground is better ground. Plots show their mark, 0 to 100, in the same five steps." : "Dark is better. Numbers are ranks.";
+    legend.hidden = false;
+    legend.replaceChildren(make("div", { class: "legend-row" }, title, ...items.map(([sign, words]) => make("span", { class: "legend-item" }, sign, words))),
+      make("p", {}, `${darker} ${(one || data.overall).method}`));
+  }
+
+  function trust() {
+    document.getElementById("trust").replaceChildren(...data.trust.map((block) => make("div", {}, make("h3", {}, block.heading),
+      make("ul", {}, ...block.lines.map((line) => make("li", {}, line))))));
+  }
+
+  // an @page rule in a style element would break the page's own policy
+  const paper = new CSSStyleSheet();
+  paper.replaceSync("@page { size: A4; margin: 14mm; }");
+  document.adoptedStyleSheets = [...document.adoptedStyleSheets, paper];
+
+  questions();
+  trust();
+  plan.start();
+  ranking.start();
+  page.watchers.push((what) => {
+    if (what.includes("question")) press();
+    if (what.includes("question") || what.includes("view")) showLegend();
+    if (what.includes("chosen") && state.chosen !== null) plan.reveal(state.chosen);
+  });
+  showLegend();
+  page.change({ chosen: page.ranked.length ? page.ranked[0] : page.aside.length ? page.aside[0] : null });
+  document.documentElement.dataset.ready = "yes";
+})();

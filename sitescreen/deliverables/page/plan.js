@@ -1,0 +1,316 @@
+// The map: relief, the field of the chosen question, and all plots on one canvas drawn here, in ink.
+const plan = (() => {
+  const { data, plots, count, state } = page;
+  const INK = "#2b2a27", PAPER = "#faf7f0";
+  const STEP = 100000, SIGN = 5, LARGE = 15;
+  const map = window.map_plan;
+  const holder = document.getElementById("map_plan");
+  const bounds = L.latLngBounds(data.bounds);
+  const toMercator = (lon, lat) => map.project(L.latLng(lat, lon), 0);
+
+  // corners once, in the map's own units at zoom 0; a zoom only scales them
+  const shapes = data.shapes.map((rings) => rings.map((steps) => {
+    const points = [];
+    let lon = 0, lat = 0;
+    for (let k = 0; k < steps.length; k += 2) {
+      lon += steps[k];
+      lat += steps[k + 1];
+      points.push(toMercator(lon / STEP, lat / STEP));
+    }
+    return points;
+  }));
+  const places = plots.lon.map((lon, i) => {
+    if (lon !== null && plots.lat[i] !== null) return toMercator(lon, plots.lat[i]);
+    return shapes[i].length ? shapes[i][0][0] : null;
+  });
+
+  const canvas = document.createElement("canvas");
+  canvas.className = "leaflet-zoom-hide";
+  let scale = 1, origin = L.point(0, 0), spots = [];
+
+  function hatch(context) {
+    const tile = document.createElement("canvas");
+    tile.width = tile.height = 6;
+    const pen = tile.getContext("2d");
+    pen.strokeStyle = INK;
+    pen.lineWidth = 0.8;
+    pen.beginPath();
+    pen.moveTo(-1, 7); pen.lineTo(7, -1);
+    pen.moveTo(-1, 1); pen.lineTo(1, -1);
+    pen.moveTo(5, 7); pen.lineTo(7, 5);
+    pen.stroke();
+    return context.createPattern(tile, "repeat");
+  }
+  const onScreen = (point) => L.point(point.x * scale - origin.x, point.y * scale - origin.y);
+
+  function redraw() {
+    const size = map.getSize(), ratio = Math.max(window.devicePixelRatio || 1, holder.classList.contains("printing") ? 3 : 1);
+    canvas.width = size.x * ratio;
+    canvas.height = size.y * ratio;
+    canvas.style.width = `${size.x}px`;
+    canvas.style.height = `${size.y}px`;
+    L.DomUtil.setPosition(canvas, map.containerPointToLayerPoint([0, 0]));
+    scale = map.getZoomScale(map.getZoom(), 0);
+    origin = map.project(map.containerPointToLatLng([0, 0]), map.getZoom());
+    const context = canvas.getContext("2d");
+    context.scale(ratio, ratio);
+    drawPlots(context, size);
+    drawFrame(context, size);
+  }
+
+  function drawPlots(context, size) {
+    const marks = page.marks(), stripes = hatch(context);
+    const taken = [];
+    spots = [];
+    const order = [...page.aside, ...[...page.ranked].reverse()];
+    const chosen = state.chosen;
+    if (chosen !== null) { order.splice(order.indexOf(chosen), 1); order.push(chosen); }
+    for (const i of order) {
+      if (!places[i]) continue;
+      const at = onScreen(places[i]);
+      if (at.x < -60 || at.y < -60 || at.x > size.x + 60 || at.y > size.y + 60) continue;
+      const path = outline(i, at);
+      const isAside = plots.rank[i] === null, mark = isAside ? null : marks[i];
+      const number = page.classOf(mark);
+      context.lineJoin = "round";
+      context.strokeStyle = PAPER;
+      context.lineWidth = i === chosen ? 7 : 3.6;
+      context.stroke(path.shape);
+      if (isAside) {
+        context.fillStyle = PAPER;
+        context.globalAlpha = 0.7;
+        context.fill(path.shape, "evenodd");
+        context.globalAlpha = 1;
+        context.fillStyle = stripes;
+      } else {
+        context.fillStyle = number === null ? PAPER : data.ramp[number];
+      }
+      context.fill(path.shape, "evenodd");
+      context.strokeStyle = INK;
+      context.lineWidth = 1.2;
+      context.setLineDash(isAside ? [2.6, 2] : []);
+      context.stroke(path.shape);
+      context.setLineDash([]);
+      if (!isAside && number === null) {
+        context.fillStyle = INK;
+        context.beginPath();
+        context.arc(at.x, at.y, 1.5, 0, 7);
+        context.fill();
+      }
+      if (i === chosen) {
+        const around = path.half + 4;
+        context.strokeStyle = INK;
+        context.lineWidth = 1.6;
+        context.strokeRect(at.x - around, at.y - around, 2 * around, 2 * around);
+      }
+      spots.push({ i, x: at.x, y: at.y, half: path.half, shape: path.shape });
+      taken.push([at.x - path.half, at.y - path.half, at.x + path.half, at.y + path.half]);
+    }
+    drawNumbers(context, size, taken);
+  }
+
+  function outline(i, at) {
+    const shape = new Path2D();
+    const rings = shapes[i].map((ring) => ring.map(onScreen));
+    let half = 0;
+    for (const ring of rings) for (const p of ring) half = Math.max(half, Math.abs(p.x - at.x), Math.abs(p.y - at.y));
+    if (2 * half < LARGE) {
+      shape.rect(at.x - SIGN, at.y - SIGN, 2 * SIGN, 2 * SIGN);
+      return { shape, half: SIGN };
+    }
+    for (const ring of rings) {
+      ring.forEach((p, k) => (k ? shape.lineTo(p.x, p.y) : shape.moveTo(p.x, p.y)));
+      shape.closePath();
+    }
+    return { shape, half };
+  }
+
+  // rank numbers beside their ground: the chosen plot and the shortlist always, others where there is room
+  function drawNumbers(context, size, taken) {
+    context.textBaseline = "middle";
+    const byRank = spots.filter((s) => plots.rank[s.i] !== null).sort((a, b) => plots.rank[a.i] - plots.rank[b.i]);
+    const first = byRank.filter((s) => s.i === state.chosen);
+    for (const spot of [...first, ...byRank.filter((s) => s.i !== state.chosen)]) {
+      const rank = plots.rank[spot.i], isChosen = spot.i === state.chosen, isShort = rank <= data.shortlist;
+      context.font = `${isShort || isChosen ? "bold 15" : "12"}px ${getComputedStyle(document.body).getPropertyValue("--serif")}`;
+      const text = String(rank), wide = context.measureText(text).width, tall = isShort || isChosen ? 15 : 12;
+      const gap = spot.half + (isChosen ? 8 : 4);
+      const tries = [[gap, -wide / 2 * 0], [-gap - wide, 0], [-wide / 2, -gap - tall / 2], [-wide / 2, gap + tall / 2]];
+      for (const [dx, dy] of tries) {
+        const x = spot.x + dx, y = spot.y + dy;
+        const box = [x - 2, y - tall / 2, x + wide + 2, y + tall / 2];
+        const clear = taken.every((t) => box[2] < t[0] || box[0] > t[2] || box[3] < t[1] || box[1] > t[3]);
+        if (!clear && !(isChosen && dx === gap)) continue;
+        taken.push(box);
+        if (isChosen) {
+          context.fillStyle = INK;
+          context.fillRect(x - 4, y - tall / 2 - 2, wide + 8, tall + 4);
+          context.fillStyle = PAPER;
+        } else {
+          context.strokeStyle = PAPER;
+          context.lineWidth = 3.4;
+          context.lineJoin = "round";
+          context.strokeText(text, x, y);
+          context.fillStyle = INK;
+        }
+        context.fillText(text, x, y + 0.5);
+        break;
+      }
+    }
+  }
+
+  const STEPS_DEG = [10, 5, 2, 1, 0.5, 20 / 60, 10 / 60, 5 / 60, 2 / 60, 1 / 60, 0.5 / 60];
+  function degrees(value, letters) {
+    const whole = Math.abs(value), minutes = Math.round(whole * 600) / 10;
+    const d = Math.floor(minutes / 60 + 1e-9), m = Math.round((minutes - 60 * d) * 10) / 10;
+    return `${d}°${m ? `${m}′` : ""}${value < 0 ? letters[1] : letters[0]}`;
+  }
+  // ticks along the edge, a north arrow and a scale bar, as on a plan
+  function drawFrame(context, size) {
+    const view = map.getBounds();
+    context.font = "11px " + getComputedStyle(document.body).getPropertyValue("--sans");
+    context.lineWidth = 1;
+    const label = (text, x, y, align, base) => {
+      context.textAlign = align;
+      context.textBaseline = base;
+      context.strokeStyle = "rgba(250,247,240,0.9)";
+      context.lineWidth = 3;
+      context.strokeText(text, x, y);
+      context.fillStyle = "#4b473e";
+      context.fillText(text, x, y);
+    };
+    const tick = (x0, y0, x1, y1) => {
+      context.strokeStyle = INK;
+      context.lineWidth = 1;
+      context.beginPath();
+      context.moveTo(x0, y0);
+      context.lineTo(x1, y1);
+      context.stroke();
+    };
+    const stepFor = (span, most) => STEPS_DEG.filter((s) => span / s <= most).pop() || 10;
+    const stepX = stepFor(view.getEast() - view.getWest(), Math.max(2, size.x / 150));
+    for (let lon = Math.ceil(view.getWest() / stepX) * stepX; lon < view.getEast(); lon += stepX) {
+      const x = map.latLngToContainerPoint([view.getCenter().lat, lon]).x;
+      tick(x, 0, x, 7);
+      tick(x, size.y, x, size.y - 7);
+      if (x > 40 && x < size.x - 170) label(degrees(lon, "EW"), x, 10, "center", "top");
+    }
+    const stepY = stepFor(view.getNorth() - view.getSouth(), Math.max(2, size.y / 120));
+    for (let lat = Math.ceil(view.getSouth() / stepY) * stepY; lat < view.getNorth(); lat += stepY) {
+      const y = map.latLngToContainerPoint([lat, view.getCenter().lng]).y;
+      tick(0, y, 7, y);
+      tick(size.x, y, size.x - 7, y);
+      if (y > 30 && y < size.y - 60) label(degrees(lat, "NS"), 11, y, "left", "middle");
+    }
+    const y = size.y - 16, x = 44;
+    const metres = map.distance(map.containerPointToLatLng([0, size.y / 2]), map.containerPointToLatLng([100, size.y / 2])) / 100;
+    const most = metres * Math.min(190, size.x / 3), unit = 10 ** Math.floor(Math.log10(most));
+    const long = [5, 2, 1].map((k) => k * unit).find((k) => k <= most);
+    const wide = long / metres;
+    context.fillStyle = "rgba(250,247,240,0.82)";
+    context.fillRect(12, y - 21, 44 + wide + 46, 31);
+    tick(x, y, x + wide, y);
+    for (const part of [0, 0.5, 1]) tick(x + part * wide, y - 4, x + part * wide, y);
+    label("0", x, y - 6, "center", "bottom");
+    label(long >= 1000 ? `${long / 1000} km` : `${long} m`, x + wide, y - 6, "center", "bottom");
+    context.beginPath();
+    context.moveTo(24, y - 17); context.lineTo(28, y - 2); context.lineTo(24, y - 5.5); context.lineTo(20, y - 2);
+    context.closePath();
+    context.fillStyle = INK;
+    context.fill();
+    label("N", 24, y + 8, "center", "bottom");
+    context.textAlign = "left";
+  }
+
+  function plotAt(point) {
+    let best = null, nearest = 12;
+    const context = canvas.getContext("2d"), ratio = canvas.width / map.getSize().x;
+    for (const spot of spots) {
+      const away = Math.max(Math.abs(spot.x - point.x), Math.abs(spot.y - point.y));
+      if (away < nearest && away <= Math.max(spot.half, 9)) { best = spot.i; nearest = away; }
+      else if (best === null && spot.half > 12 && context.isPointInPath(spot.shape, point.x * ratio, point.y * ratio)) best = spot.i;
+    }
+    return best;
+  }
+
+  const readout = document.getElementById("readout");
+  const idle = () => (window.matchMedia("(pointer: coarse)").matches ? "Tap a plot to read its leaf." : "Choose a plot on the map or in the table to read its leaf.");
+  function tell(i) {
+    if (i === null) { readout.textContent = idle(); return; }
+    const rank = plots.rank[i], mark = page.marks()[i], one = page.question();
+    const asked = rank === null ? "" : mark === null ? ", unknown" : `, ${mark.toFixed(0)} of 100${one ? ` for ${one.column.toLowerCase()}` : ""}`;
+    readout.textContent = page.called(i) + (rank === null ? ": set aside" : `: ${page.ordinal(rank)}${asked}`);
+  }
+
+  let overlay = null;
+  function showField() {
+    if (overlay) overlay.remove();
+    overlay = null;
+    const one = page.question(), view = one && one.views[state.view];
+    if (view) overlay = L.imageOverlay(view.picture, bounds, { className: "field", alt: view.title, interactive: false }).addTo(map);
+  }
+
+  function whole() {
+    map.fitBounds(bounds, { animate: false });
+    // fill the frame with ground: the sheet may overlap it, its plots may not
+    const inner = bounds.pad(-0.06), tight = map.getBoundsZoom(bounds, true);
+    if (map.getBoundsZoom(inner) >= tight) map.setView(bounds.getCenter(), tight, { animate: false });
+  }
+
+  function start() {
+    document.getElementById("picture").hidden = true;
+    holder.hidden = false;
+    document.getElementById("map-buttons").hidden = false;
+    readout.hidden = false;
+    map.invalidateSize({ animate: false });
+    map.setMaxZoom(18);
+    map.setMaxBounds(null);
+    L.imageOverlay(document.getElementById("relief").src, bounds, { alt: "", interactive: false }).addTo(map);
+    map.createPane("plots").style.zIndex = 450;
+    map.getPane("plots").append(canvas);
+    whole();
+    map.setMinZoom(Math.min(map.getZoom() - 1, 16));
+    map.on("move zoomend viewreset resize", redraw);
+    map.on("click", (event) => {
+      const i = plotAt(event.containerPoint);
+      if (i !== null) page.change({ chosen: i });
+    });
+    map.on("mousemove", (event) => {
+      const i = plotAt(event.containerPoint);
+      holder.style.cursor = i === null ? "" : "pointer";
+      tell(i);
+    });
+    map.on("mouseout", () => tell(null));
+    document.getElementById("closer").addEventListener("click", () => map.zoomIn());
+    document.getElementById("farther").addEventListener("click", () => map.zoomOut());
+    document.getElementById("whole").addEventListener("click", whole);
+    page.watchers.push((what) => {
+      if (what.includes("question") || what.includes("view")) showField();
+      redraw();
+    });
+    let before = null;
+    window.addEventListener("beforeprint", () => {
+      before = [map.getCenter(), map.getZoom()];
+      holder.classList.add("printing");
+      map.invalidateSize({ animate: false });
+      whole();
+      redraw();
+    });
+    window.addEventListener("afterprint", () => {
+      holder.classList.remove("printing");
+      map.invalidateSize({ animate: false });
+      if (before) map.setView(before[0], before[1], { animate: false });
+      redraw();
+    });
+    tell(null);
+    redraw();
+  }
+
+  // bring a plot into view, without moving the map when it is there already
+  function reveal(i) {
+    if (!places[i]) return;
+    const where = map.unproject(places[i], 0);
+    if (!map.getBounds().pad(-0.05).contains(where) && bounds.pad(0.5).contains(where)) map.panTo(where, { animate: false });
+  }
+  return { start, reveal, screenOf: (i) => { const s = spots.find((spot) => spot.i === i); return s ? [s.x, s.y] : null; } };
+})();

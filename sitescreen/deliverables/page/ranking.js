@@ -1,0 +1,112 @@
+// The ranked table with sort and find, and the shelf of plots set aside.
+const ranking = (() => {
+  const { data, plots, make, ruler, state } = page;
+  const PAGE_ROWS = 100;
+  const heads = document.getElementById("heads"), rows = document.getElementById("rows");
+  const more = document.getElementById("more"), found = document.getElementById("found"), find = document.getElementById("find");
+  const everything = document.getElementById("all-readings");
+  let sorted = { key: "rank", down: false }, shown = PAGE_ROWS, wide = false;
+
+  const first = (lines) => (lines && lines.length ? lines[0] : "");
+  const reason = (i, kind) => (data.reasons[i] ? first(data.reasons[i][kind]) : "");
+  const searchable = plots.plot.map((plot, i) =>
+    [plot, plots.name[i], page.zoneTitle(i), reason(i, "for"), reason(i, "against")].join(" ").toLowerCase());
+
+  function columns() {
+    const out = [
+      { key: "rank", head: "rank", kind: "rank", value: (i) => plots.rank[i], cell: (i) => String(plots.rank[i]) },
+      { key: "plot", head: "plot", kind: "plot", value: (i) => plots.name[i] || plots.plot[i], cell: plotCell },
+      { key: "zone", head: "zone", kind: "zone", value: (i) => page.zoneTitle(i), cell: (i) => page.zoneTitle(i) },
+      { key: "overall", head: "overall mark", kind: "mark", best: true, value: (i) => plots.overall_mark[i], cell: markCell },
+    ];
+    const one = page.question();
+    if (one) out.push({ key: "asked", head: one.column.toLowerCase(), kind: "asked mark", best: true, value: (i) => one.marks[i], cell: (i) => askedCell(one, i) });
+    out.push(
+      { key: "for", head: "best reason", kind: "why", value: (i) => reason(i, "for"), cell: (i) => reason(i, "for") },
+      { key: "against", head: "worst reason", kind: "why against", value: (i) => reason(i, "against"), cell: (i) => reason(i, "against") });
+    if (wide) {
+      for (const reading of data.readings) {
+        out.push({ key: reading.name, head: reading.title, unit: reading.unit === "0–1" ? "%" : reading.unit, says: reading.says, kind: "number",
+          value: (i) => reading.values[i], cell: (i) => (reading.values[i] === null ? "" : page.shown({ ...reading, unit: reading.unit === "0–1" ? "0–1" : "" }, reading.values[i])) });
+      }
+    }
+    return out;
+  }
+
+  function plotCell(i) {
+    const name = plots.name[i] === null ? `Plot ${plots.plot[i]}` : plots.name[i];
+    const button = make("button", { type: "button", onclick: () => page.change({ chosen: i }) }, name);
+    return plots.name[i] === null ? [button] : [button, " ", make("small", {}, `plot ${plots.plot[i]}`)];
+  }
+  function markCell(i) {
+    return [plots.overall_mark[i].toFixed(0), ruler(plots.overall_mark[i], plots.mark_low[i], plots.mark_high[i], 86, 14)];
+  }
+  function askedCell(one, i) {
+    return one.marks[i] === null ? "unknown" : [one.marks[i].toFixed(0), ruler(one.marks[i], null, null, 86, 14)];
+  }
+
+  function compare(column) {
+    const turn = sorted.down ? -1 : 1;
+    return (a, b) => {
+      const x = column.value(a), y = column.value(b);
+      if (x === null || y === null) return (x === null) - (y === null) || plots.rank[a] - plots.rank[b];
+      const by = typeof x === "number" ? x - y : String(x).localeCompare(String(y), "en", { numeric: true });
+      return turn * by || plots.rank[a] - plots.rank[b] || a - b;
+    };
+  }
+
+  function show() {
+    const all = columns();
+    if (!all.some((column) => column.key === sorted.key)) sorted = { key: "rank", down: false };
+    const by = all.find((column) => column.key === sorted.key);
+    const wanted = find.value.trim().toLowerCase();
+    const fits = page.ranked.filter((i) => !wanted || searchable[i].includes(wanted)).sort(compare(by));
+    heads.replaceChildren(...all.map((column) => {
+      const sort = () => {
+        sorted = { key: column.key, down: sorted.key === column.key ? !sorted.down : Boolean(column.best) };
+        show();
+        heads.querySelector(`th[data-key="${column.key}"] button`).focus();
+      };
+      const order = column.key !== sorted.key ? "none" : sorted.down ? "descending" : "ascending";
+      return make("th", { scope: "col", class: column.kind, "aria-sort": order, "data-key": column.key, title: column.says },
+        make("button", { type: "button", onclick: sort }, column.head), column.unit ? make("small", {}, column.unit) : null);
+    }));
+    rows.replaceChildren(...fits.slice(0, shown).map((i) => {
+      const row = make("tr", { class: i === state.chosen ? "chosen" : null, "data-plot": i },
+        ...all.map((column) => make("td", { class: column.kind, "data-head": column.head }, ...[column.cell(i)].flat())));
+      row.addEventListener("click", () => page.change({ chosen: i }));
+      return row;
+    }));
+    more.hidden = fits.length <= shown;
+    more.textContent = `show ${Math.min(PAGE_ROWS, fits.length - shown)} more of ${fits.length}`;
+    found.hidden = !wanted;
+    found.textContent = `${fits.length} of ${page.ranked.length} ranked plots`;
+  }
+
+  function mark() {
+    for (const row of rows.children) row.classList.toggle("chosen", Number(row.dataset.plot) === state.chosen);
+  }
+
+  function shelf() {
+    document.getElementById("shelf").replaceChildren(...page.aside.map((i) => make("li", {}, page.sign("aside"),
+      make("button", { type: "button", onclick: () => page.change({ chosen: i }) }, page.called(i)),
+      make("span", {}, plots.set_aside[i] || ""))));
+    if (!page.aside.length) document.getElementById("aside-lead").textContent = "No plot is set aside.";
+  }
+
+  function start() {
+    document.getElementById("table-holder").hidden = false;
+    document.getElementById("ranking-tools").hidden = false;
+    find.addEventListener("input", () => { shown = PAGE_ROWS; show(); });
+    more.addEventListener("click", () => { shown += PAGE_ROWS; show(); });
+    everything.addEventListener("click", () => {
+      wide = !wide;
+      everything.setAttribute("aria-pressed", String(wide));
+      show();
+    });
+    page.watchers.push((what) => { if (what.includes("question")) show(); else if (what.includes("chosen")) mark(); });
+    shelf();
+    show();
+  }
+  return { start };
+})();

@@ -1,0 +1,90 @@
+"use strict";
+// Shared by the page's scripts: the data, small makers of elements, and words. User text goes into textContent only.
+const page = (() => {
+  const data = JSON.parse(document.getElementById("data").textContent);
+  const plots = data.plots;
+  const count = plots.plot.length;
+  const ranked = [], aside = [];
+  for (let i = 0; i < count; i++) (plots.rank[i] === null ? aside : ranked).push(i);
+
+  function make(tag, attributes, ...children) {
+    const made = document.createElement(tag);
+    for (const [name, value] of Object.entries(attributes || {})) {
+      if (name === "onclick") made.addEventListener("click", value);
+      else if (value !== null && value !== undefined && value !== false) made.setAttribute(name, value === true ? "" : value);
+    }
+    made.append(...children.filter((child) => child !== null && child !== undefined));
+    return made;
+  }
+  function draw(tag, attributes, ...children) {
+    const made = document.createElementNS("http://www.w3.org/2000/svg", tag);
+    for (const [name, value] of Object.entries(attributes || {})) made.setAttribute(name, value);
+    made.append(...children);
+    return made;
+  }
+  function classOf(mark) {
+    return mark === null ? null : data.edges.filter((edge) => mark >= edge).length;
+  }
+  // a plot's sign in legend and shelf, as on the map
+  function sign(kind) {
+    const svg = draw("svg", { width: 15, height: 15, viewBox: "0 0 15 15", "aria-hidden": "true" });
+    if (kind === "aside") {
+      svg.append(draw("path", { d: "M2 9 L9 2 M2 13.4 L13.4 2 M6.5 13 L13 6.5", stroke: "#2b2a27", "stroke-width": 0.8 }));
+      svg.append(draw("rect", { x: 2, y: 2, width: 11, height: 11, fill: "none", stroke: "#2b2a27", "stroke-width": 1.3, "stroke-dasharray": "2.4 1.8" }));
+    } else if (kind === "unknown") {
+      svg.append(draw("rect", { x: 2, y: 2, width: 11, height: 11, fill: "#faf7f0", stroke: "#2b2a27", "stroke-width": 1.2 }));
+      svg.append(draw("circle", { cx: 7.5, cy: 7.5, r: 1.4, fill: "#2b2a27" }));
+    } else {
+      svg.append(draw("rect", { x: 2, y: 2, width: 11, height: 11, fill: data.ramp[kind], stroke: "#2b2a27", "stroke-width": 1.2 }));
+    }
+    return svg;
+  }
+  // a hairline 0–100 with a tick at the mark, and a bracket from its lowest to its highest
+  function ruler(mark, low, high, width, height) {
+    const svg = draw("svg", { viewBox: `0 0 ${width} ${height}`, preserveAspectRatio: "none", "aria-hidden": "true" });
+    const at = (value) => 1 + (value / 100) * (width - 2);
+    const middle = height / 2;
+    const line = (x0, y0, x1, y1, stroke, wide) =>
+      svg.append(draw("line", { x1: x0, y1: y0, x2: x1, y2: y1, stroke, "stroke-width": wide, "vector-effect": "non-scaling-stroke" }));
+    line(at(0), middle, at(100), middle, "#cfc7b6", 1);
+    for (const edge of [0, 20, 40, 60, 80, 100]) line(at(edge), middle - 2, at(edge), middle + 2, "#cfc7b6", 1);
+    if (low !== null && high !== null && high - low > 0.05) line(at(low), middle, at(high), middle, "#2b2a27", 1.4);
+    if (mark !== null) line(at(mark), 1, at(mark), height - 1, "#2b2a27", 2.6);
+    return svg;
+  }
+  function ordinal(n) {
+    const tens = n % 100;
+    return n + (tens > 10 && tens < 14 ? "th" : ["th", "st", "nd", "rd"][n % 10] || "th");
+  }
+  function called(i) {
+    return plots.name[i] === null ? `Plot ${plots.plot[i]}` : `${plots.name[i]} (plot ${plots.plot[i]})`;
+  }
+  function zoneTitle(i) {
+    const zone = data.zones[plots.zone[i]];
+    return zone ? zone.title : plots.zone[i] || "";
+  }
+  function shown(column, value) {
+    if (value === null) return "unknown";
+    if (typeof value === "string") return value;
+    if (column.unit === "0–1") return `${(100 * value).toFixed(column.decimals > 2 ? 1 : 0)} %`;
+    const number = value.toFixed(column.decimals).replace("-", "−");
+    const unit = { "°": "°", "° from true north": "°", "× open ground": " × open ground" }[column.unit];
+    return number + (unit === undefined ? (column.unit ? ` ${column.unit}` : "") : unit);
+  }
+  const state = { chosen: null, question: "overall", view: 0 };
+  const watchers = [];
+  function change(what) {
+    Object.assign(state, what);
+    for (const watch of watchers) watch(Object.keys(what));
+  }
+  function question() {
+    return data.questions.find((one) => one.name === state.question) || null;
+  }
+  // the marks that the map and its legend speak of at the moment
+  function marks() {
+    const one = question();
+    return one ? one.marks : plots.overall_mark;
+  }
+  return { data, plots, count, ranked, aside, make, draw, classOf, sign, ruler, ordinal, called, zoneTitle, shown, state, watchers,
+    change, question, marks };
+})();

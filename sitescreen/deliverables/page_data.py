@@ -1,0 +1,155 @@
+"""What the page knows: the ranking, its shapes, reasons and words, as data that the page's scripts read."""
+
+import math
+from collections.abc import Mapping, Sequence
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from sitescreen.deliverables.classes import CLASS_EDGES, RAMP
+from sitescreen.deliverables.columns import Column
+from sitescreen.deliverables.questions import OVERALL, Asked, View, question_marks
+from sitescreen.deliverables.sheet import Sheet
+from sitescreen.deliverables.table import value_of
+
+if TYPE_CHECKING:
+    from sitescreen.screening import Screening
+
+STEPS_A_DEGREE = 100_000
+"""Corners are kept to a metre."""
+
+MOST_LEAVES = 2_000
+"""Plots whose reasons go into the page, the best first; those of the others would make it too heavy to mail."""
+
+_NOT_ON_A_LEAF = ("lon", "lat")
+
+
+def page_data(
+    screening: "Screening",
+    columns: Sequence[Column],
+    sheet: Sheet,
+    questions: Sequence[Asked],
+    views: Mapping[str, Sequence[View]],
+) -> dict[str, Any]:
+    """The data of the page, ready for JSON.
+
+    Parameters
+    ----------
+    screening : Screening
+    columns : sequence of Column
+    sheet : Sheet
+    questions : sequence of Asked
+        Those that the zones of these plots ask.
+    views : mapping of question to its views
+    """
+    table = screening.table
+    west, south, east, north = sheet.bounds_deg
+    by_name = {column.name: column for column in columns}
+
+    def column_values(name: str) -> list[Any]:
+        if name not in table:
+            return [None] * len(table)
+        return [value_of(by_name[name], value) for value in table[name].tolist()]
+
+    names = [c.name for c in columns]
+    first = names.index("elevation_m")
+    measured = [c for c in columns[first:] if not c.name.startswith(("membership_", "mark_"))]
+    readings = []
+    for column in measured:
+        values = column_values(column.name)
+        if column.name not in _NOT_ON_A_LEAF and any(value is not None for value in values):
+            readings.append(_words(column) | {"values": values})
+    return {
+        "title": screening.brief.title or "",
+        "bounds": [[south, west], [north, east]],
+        "ramp": RAMP,
+        "edges": CLASS_EDGES,
+        "shortlist": screening.brief.judge.shortlist,
+        "questions": [
+            {
+                "name": one.name,
+                "label": one.label,
+                "column": one.column,
+                "method": one.method,
+                "views": [_view(view) for view in views.get(one.name, ())],
+                "marks": [_number(mark) for mark in question_marks(table, screening.profiles, one.name)],
+            }
+            for one in questions
+        ],
+        "overall": {"name": OVERALL.name, "label": OVERALL.label, "column": OVERALL.column, "method": OVERALL.method},
+        "zones": {name: _zone(profile) for name, profile in screening.profiles.items()},
+        "plots": {
+            name: column_values(name)
+            for name in (
+                "rank", "plot", "name", "overall_mark", "mark_low", "mark_high", "zone", "zone_share", "rank_in_zone",
+                "set_aside", "lon", "lat",
+            )
+        },
+        "shapes": [_shape(geometry) for geometry in table.geometry],
+        "marks": {
+            name.removeprefix("mark_"): column_values(name)
+            for name in names
+            if name.startswith("mark_") and name not in ("mark_low", "mark_high", "mark_in_zone", "mark_in_zone_2")
+        },
+        "readings": readings,
+        "reasons": [
+            _reasons(screening.reasons.get(plot)) if i < MOST_LEAVES else None
+            for i, plot in enumerate(table["plot"].tolist())
+        ],
+    }  # fmt: skip
+
+
+def _words(column: Column) -> dict[str, Any]:
+    return {"name": column.name, "title": column.title, "unit": column.unit, "decimals": column.decimals,
+            "says": column.says}  # fmt: skip
+
+
+def _view(view: View) -> dict[str, Any]:
+    return {
+        "title": view.title,
+        "wanted_by": view.wanted_by,
+        "ranges": [{"class": one.number, "words": one.words} for one in view.ranges],
+        "picture": view.picture,
+    }
+
+
+def _zone(profile: Any) -> dict[str, Any]:
+    return {
+        "title": profile.title,
+        "wants": profile.wants,
+        "criteria": [
+            {"name": c.name, "title": c.title, "question": c.question, "reading": c.reading, "weight": c.weight}
+            for c in profile.criteria
+        ],
+    }
+
+
+def _number(value: float) -> float | None:
+    return None if math.isnan(value) else round(float(value), 1)
+
+
+def _reasons(one: Any) -> dict[str, list[str]] | None:
+    if one is None:
+        return None
+    return {
+        "for": list(one.for_),
+        "against": list(one.against),
+        "cautions": list(one.cautions),
+        "unknown": list(getattr(one, "unknown", ())),
+    }
+
+
+def _shape(geometry: Any) -> list[list[int]]:
+    """Rings in whole steps: first corner, then the way to each next one."""
+    if geometry is None or geometry.is_empty:
+        return []
+    polygons = [
+        part for part in getattr(geometry, "geoms", [geometry]) if part.geom_type in ("Polygon", "MultiPolygon")
+    ]
+    polygons = [p for part in polygons for p in getattr(part, "geoms", [part])]
+    rings = [ring for polygon in polygons for ring in (polygon.exterior, *polygon.interiors)]
+    out = []
+    for ring in rings:
+        corners = np.rint(np.asarray(ring.coords)[:-1, :2] * STEPS_A_DEGREE).astype(np.int64)
+        out.append(np.vstack([corners[:1], np.diff(corners, axis=0)]).ravel().tolist())
+    return out

@@ -1,0 +1,230 @@
+"""The questions a planner asks of the map, and the field that answers each of them."""
+
+from collections import Counter
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from sitescreen.deliverables.classes import RAMP, ClassRange, Curve, class_of, class_ranges, marks_by
+from sitescreen.deliverables.columns import BY_NAME, MORE, Column
+from sitescreen.deliverables.relief import webp
+from sitescreen.deliverables.sheet import Sheet, by_quantity, on_sheet, warped
+from sitescreen.grid import Field
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+    from sitescreen.judgement.profiles import ZoneProfile
+
+
+@dataclass(frozen=True)
+class Asked:
+    """One question in words.
+
+    Parameters
+    ----------
+    name : str
+        As criteria name it; "overall" for all of them together.
+    label : str
+        The question.
+    column : str
+        The head of its column in the table.
+    method : str
+        How it is answered in this version, in a sentence or two.
+    """
+
+    name: str
+    label: str
+    column: str
+    method: str
+
+
+OVERALL = Asked(
+    "overall",
+    "Overall",
+    "Overall",
+    "The overall mark is the weighted mean of a plot’s marks, by the profile of its own climate zone. "
+    "The rank counts whatever is unknown at its worst, so a gap never helps a plot.",
+)
+
+ASKED = (
+    Asked(
+        "breeze",
+        "Breeze?",
+        "Breeze",
+        "How much of the daytime breeze of sea or lake is left by the time it arrives. "
+        "Ground that stands in its way is not yet looked at.",
+    ),
+    Asked(
+        "wind",
+        "Windy or sheltered?",
+        "Wind",
+        "Wind compared with open level ground, from height above the surroundings and the ground upwind. "
+        "A first method, for moderate wind; it says nothing about calm nights.",
+    ),
+    Asked(
+        "cold",
+        "Cold air at night?",
+        "Cold air",
+        "Hollows without an outlet, where cold air lies on calm clear nights. "
+        "Cold air held back by narrows, or passing through, is not yet seen.",
+    ),
+    Asked("sun", "Sun?", "Sun", "Open sky and the way the ground faces. Hours of sun are not yet measured."),
+    Asked("ground", "Can it be built on?", "Ground", "How steep the ground is, and whether water could stand on it."),
+    Asked("own", "Own criteria", "Own", "Criteria that were added for this screening."),
+)
+
+PLAIN: Mapping[str, tuple[tuple[str, Curve, str], ...]] = {
+    "breeze": (
+        ("shore_distance_km", ((0.0, 100.0), (2.0, 80.0), (8.0, 60.0), (16.0, 40.0), (32.0, 20.0), (64.0, 0.0)),
+         "Distance to the nearest shore"),
+    ),
+    "cold": (
+        ("hollow_depth_m", ((0.0, 100.0), (1.0, 80.0), (3.0, 60.0), (6.0, 40.0), (12.0, 20.0), (24.0, 0.0)),
+         "Depth of closed hollows"),
+    ),
+    "ground": (
+        ("slope_deg", ((0.0, 100.0), (3.0, 80.0), (6.0, 60.0), (9.0, 40.0), (14.0, 20.0), (20.0, 0.0)), "Slope"),
+    ),
+}  # fmt: skip
+"""What a question shows where no criterion's own reading is there as a field. The classes are ours, for the eye only:
+they mark nothing."""
+
+_OTHER_COLUMNS = {
+    "hollow_depth_m": Column("hollow_depth_m", "number", 1, "m", "hollow depth", ""),
+}
+
+MOST_VIEWS = 3
+"""Pictures for one question, where zones want different things."""
+
+
+@dataclass(frozen=True)
+class View:
+    """One field of a question, as it is drawn.
+
+    Parameters
+    ----------
+    reading : str
+        Name of the field.
+    title : str
+        What is drawn, in words.
+    wanted_by : str
+        Titles of the zones that judge by it so; "" where nobody's marks are drawn.
+    ranges : tuple of ClassRange
+        Best first.
+    picture : str
+        A data address.
+    """
+
+    reading: str
+    title: str
+    wanted_by: str
+    ranges: tuple[ClassRange, ...]
+    picture: str
+
+
+def asked_here(table: "pd.DataFrame", profiles: Mapping[str, "ZoneProfile"]) -> tuple[Asked, ...]:
+    """The questions that the zones of these plots ask, in their fixed order."""
+    named = {c.question for zone in zones_here(table) if zone in profiles for c in profiles[zone].criteria}
+    return tuple(one for one in ASKED if one.name in named)
+
+
+def zones_here(table: "pd.DataFrame") -> list[str]:
+    """The zones of the plots, the one with most plots first."""
+    counted = Counter(zone for zone in table["zone"] if isinstance(zone, str) and zone)
+    return sorted(counted, key=lambda zone: (-counted[zone], zone))
+
+
+def question_marks(table: "pd.DataFrame", profiles: Mapping[str, "ZoneProfile"], question: str) -> NDArray[np.float64]:
+    """Mark of each plot for one question: the weighted mean of its criteria, by the profile of the plot's zone.
+
+    Returns
+    -------
+    float64 array, shape (n,)
+        NaN where none of its marks is known, or the zone does not ask.
+    """
+    total, weights = np.zeros(len(table)), np.zeros(len(table))
+    zone = table["zone"].to_numpy(dtype=object)
+    for name, profile in profiles.items():
+        for criterion in profile.criteria:
+            column = f"mark_{criterion.name}"
+            if criterion.question != question or column not in table:
+                continue
+            marks = table[column].to_numpy(dtype=np.float64)
+            counts = (zone == name) & ~np.isnan(marks)
+            total[counts] += criterion.weight * marks[counts]
+            weights[counts] += criterion.weight
+    with np.errstate(invalid="ignore"):
+        return np.asarray(np.where(weights > 0, total / np.maximum(weights, 1e-12), np.nan))
+
+
+def views(
+    question: str,
+    table: "pd.DataFrame",
+    profiles: Mapping[str, "ZoneProfile"],
+    fields: Mapping[str, Field],
+    sheet: Sheet,
+    water: NDArray[np.bool_],
+) -> tuple[View, ...]:
+    """The pictures of one question: for each way in which the zones of these plots judge it, its weightiest field.
+
+    Parameters
+    ----------
+    question : str
+    table : DataFrame
+        The ranking.
+    profiles : mapping of zone to ZoneProfile
+    fields : mapping of name to Field
+    sheet : Sheet
+    water : bool array, shape (rows, cols)
+        Left clear, so that the map shows it as water.
+    """
+    groups = by_quantity(fields)
+    wanted: dict[tuple[str, tuple[tuple[float, float], ...]], list[str]] = {}
+    for zone in zones_here(table):
+        asked = [c for c in profiles[zone].criteria if c.question == question] if zone in profiles else []
+        drawn = [c for c in asked if c.reading in groups]
+        if drawn:
+            best = max(drawn, key=lambda c: c.weight)
+            wanted.setdefault((best.reading, tuple(best.curve)), []).append(profiles[zone].title)
+    chosen: list[tuple[str, Curve, str, str]] = [
+        (reading, curve, _column(reading).title.capitalize(), ", ".join(titles))
+        for (reading, curve), titles in list(wanted.items())[:MOST_VIEWS]
+    ]
+    if not chosen:
+        chosen = [(key, curve, title, "") for key, curve, title in PLAIN.get(question, ()) if key in groups][:1]
+    return tuple(_drawn(chosen, groups, sheet, water))
+
+
+def _drawn(
+    chosen: Sequence[tuple[str, Curve, str, str]],
+    groups: Mapping[str, list[Field]],
+    sheet: Sheet,
+    water: NDArray[np.bool_],
+) -> Iterator[View]:
+    for reading, curve, title, wanted_by in chosen:
+        parts = [part for field in groups[reading] if (part := on_sheet(field, sheet)) is not None]
+        if parts:
+            picture = field_picture(parts, curve, sheet, water)
+            yield View(reading, title, wanted_by, class_ranges(curve, _column(reading)), webp(picture, lossless=True))
+
+
+def field_picture(parts: Sequence[Field], curve: Curve, sheet: Sheet, water: NDArray[np.bool_]) -> NDArray[np.uint8]:
+    """A field in the five colours, shape (rows, cols, 4); clear where unknown and on water."""
+    is_coarser = all(sheet.pixel_m > 1.5 * part.grid.cell_size_m for part in parts)
+    classes = class_of(marks_by(curve, warped(parts, sheet, exact=not is_coarser)))
+    clear = np.isnan(classes) | water
+    colours = np.array([[int(colour[i : i + 2], 16) for i in (1, 3, 5)] for colour in RAMP], dtype=np.uint8)
+    picture = np.zeros((*classes.shape, 4), dtype=np.uint8)
+    picture[..., :3] = colours[np.nan_to_num(classes).astype(np.intp)]
+    picture[..., 3] = 255
+    picture[clear] = 0
+    return picture
+
+
+def _column(reading: str) -> Column:
+    known = BY_NAME.get(reading) or MORE.get(reading) or _OTHER_COLUMNS.get(reading)
+    return known or Column(reading, "number", 2, "", reading.replace("_", " "), "")
