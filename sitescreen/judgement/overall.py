@@ -60,7 +60,7 @@ class Judged:
     by_zone : mapping of zone to ZoneMarks
     cautions : mapping of plot to its cautions
     facts : DataFrame
-        The readings with the derived ones, which reasons speak of.
+        The readings with the derived ones and what is known of the zone, which cautions and reasons speak of.
     halved : frozenset of str
         Criteria, readings or questions whose input is assumed.
     """
@@ -181,7 +181,14 @@ def judge(
         by_zone[zone] = zone_marks(told, rows, profiles[zone], halved, settings.assumed_weight_factor)
     table = _blend(by_zone, zones, len(readings))
     table.index = readings.index
-    told = told.assign(known_weight_share=table["known_weight_share"])
+    titles = {zone: profile.title.lower() for zone, profile in profiles.items()} | {"": ""}
+    told = told.assign(
+        known_weight_share=table["known_weight_share"],
+        zone_provisional=zones.provisional.to_numpy(),
+        zone_missing=zones.missing.to_numpy(dtype=object),
+        zone_title=table["zone"].map(titles),
+        zone_2_title=table["zone_2"].map(titles),
+    )
     outcome = _words(readings, "outcome")
     measured = outcome == ""
     raised = cautions(told, zones.zone, rules, measured)

@@ -9,7 +9,7 @@ import pandas as pd
 import pytest
 
 from sitescreen.errors import ConfigError
-from sitescreen.judgement.cautions import Condition, cautions, load_cautions
+from sitescreen.judgement.cautions import CautionRule, Condition, cautions, load_cautions
 
 RULES = load_cautions()
 Plots = Callable[..., pd.DataFrame]
@@ -47,6 +47,7 @@ def test_good_ground_raises_none(plots: Plots) -> None:
         ("hot_arid", {"cells": 6.0}, "too_coarse", "note"),
         ("hot_arid", {"ventilation": np.nan}, "near_edge", "concern"),
         ("hot_arid", {"shore_distance_km": np.nan, "shore_kind": ""}, "no_shore", "note"),
+        ("hot_arid", {"zone_provisional": True}, "zone_undecided", "concern"),
         ("hot_arid", {"known_weight_share": 0.5}, "thin_evidence", "concern"),
     ],
 )
@@ -134,6 +135,20 @@ def test_sentences_that_could_not_be_filled_in_are_refused(tmp_path: Path, say: 
     path.write_text(f'{rule}say = {say}\nsource = "no source"\n', encoding="utf-8")
     with pytest.raises(ConfigError, match=r"mine\.toml has caution\.1"):
         load_cautions(path)
+
+
+def test_a_rule_is_undecided_only_where_nothing_rules_it_out() -> None:
+    """Rows: both hold; one holds, the other unknown; one is ruled out, the other unknown."""
+    rule = CautionRule(
+        name="x",
+        level="note",
+        when=(Condition(reading="rise_m", above=3.0), Condition(reading="slope_deg", below=2.0)),
+        say=("mind it",),
+        source="test, no source",
+    )
+    table = pd.DataFrame({"rise_m": [5.0, 5.0, 1.0], "slope_deg": [1.0, np.nan, np.nan]})
+    true, undecided = rule.raised(table, np.array(["upland"] * 3, dtype=object))
+    assert (true.tolist(), undecided.tolist()) == ([True, False, False], [False, True, False])
 
 
 def test_unknown_readings_leave_a_condition_open() -> None:

@@ -227,6 +227,8 @@ def test_an_undecided_zone_ranks_by_the_one_that_suits_it_least(plots: Plots) ->
     fits = memberships(readings["elevation_m"], nowhere, nowhere, nowhere, None, DEFAULTS.zones)
     row = judged(readings, zone_shares(fits, None, DEFAULTS.zones)).table.loc["a"]
     assert row["zone_provisional"]
+    said = "its rank is provisional: hot arid or savannah cannot be told without the humidity of the place"
+    assert said in row["cautions"]
     assert "humidity" in row["zone_missing"]
     assert {row["zone"], row["zone_2"]} == {"hot_arid", "savannah"}
     assert row["mark_low"] == pytest.approx(min(row["mark_in_zone"], row["mark_in_zone_2"]))

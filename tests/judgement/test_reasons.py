@@ -42,6 +42,14 @@ def test_what_gains_and_what_costs_most_comes_first(plots: Plots, in_zone: InZon
     )
 
 
+def test_an_ordinary_plot_has_nothing_to_say(plots: Plots, in_zone: InZone) -> None:
+    """Readings whose marks are the profile's ordinary ones: 60 for breeze, 65, 90 and 85."""
+    readings = plots({"breeze_reach": 0.546, "ventilation": 1.0, "pond_depth_m": 0.25, "slope_deg": 5.71})
+    one = told(readings, in_zone(readings, "hot_humid_coast"))["a"]
+    assert one.for_ == ("Nothing lifts it above an ordinary plot of its zone.",)
+    assert one.against == ("Nothing puts it below an ordinary plot of its zone.",)
+
+
 def test_no_more_than_three_are_shown(plots: Plots, in_zone: InZone) -> None:
     bad = {"slope_deg": 11.0, "cold_deficit_k": 3.0, "ridge_exposure": 1.6, "aspect_deg": 90.0, "sky_view": 0.8}
     good = {"slope_deg": 3.0, "ridge_exposure": 0.6, "sky_view": 1.0}
