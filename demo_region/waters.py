@@ -8,7 +8,7 @@ from frame import CELL, COLLAR_CELL, COLLAR_COLS, COLLAR_REACH, COLLAR_ROWS, COL
 from shapely.geometry import LineString, Polygon
 
 LAKE_LEVEL_M = 1130.0
-POND_LEVEL_M = 620.0
+POND_LEVEL_M = 722.0
 
 
 def _waves(seed, count, longest):
