@@ -88,7 +88,13 @@ def _in_words(low: float, high: float, column: Column) -> str:
     factor, sign = (100.0, " %") if column.unit == "0–1" else (1.0, "")
     if not sign:
         sign = {"°": "°", "× open ground": " ×"}.get(column.unit, f" {column.unit}" if column.unit else "")
-    numbers = [f"{factor * value:.3g}" for value in (low, high)]
+    decimals = column.decimals if factor == 1.0 else max(0, column.decimals - 2)
+    numbers = [_short(factor * value, decimals) for value in (low, high)]
     if np.isinf(low):
         return "any" if np.isinf(high) else f"under {numbers[1]}{sign}"
     return f"over {numbers[0]}{sign}" if np.isinf(high) else f"{numbers[0]}–{numbers[1]}{sign}"
+
+
+def _short(value: float, decimals: int) -> str:
+    text = f"{value:.{decimals}f}"
+    return text.rstrip("0").rstrip(".") if "." in text else text

@@ -72,6 +72,11 @@ def page_data(
                 "column": one.column,
                 "method": one.method,
                 "views": [_view(view) for view in views.get(one.name, ())],
+                "asked_by": [
+                    zone
+                    for zone, profile in screening.profiles.items()
+                    if any(c.question == one.name for c in profile.criteria)
+                ],
                 "marks": [_number(mark) for mark in question_marks(table, screening.profiles, one.name)],
             }
             for one in questions
@@ -84,6 +89,10 @@ def page_data(
                 "rank", "plot", "name", "overall_mark", "mark_low", "mark_high", "zone", "zone_share", "rank_in_zone",
                 "set_aside", "lon", "lat",
             )
+        }
+        | {
+            # the figure that would make the zone firm, where one is missing
+            "zone_missing": column_values("zone_missing") if "zone_missing" in by_name else [None] * len(table)
         },
         "shapes": [_shape(geometry) for geometry in table.geometry],
         "marks": {
@@ -107,7 +116,7 @@ def _words(column: Column) -> dict[str, Any]:
 def _view(view: View) -> dict[str, Any]:
     return {
         "title": view.title,
-        "wanted_by": view.wanted_by,
+        "zones": view.zones,
         "ranges": [{"class": one.number, "words": one.words} for one in view.ranges],
         "picture": view.picture,
     }

@@ -111,8 +111,8 @@ class View:
         Name of the field.
     title : str
         What is drawn, in words.
-    wanted_by : str
-        Titles of the zones that judge by it so; "" where nobody's marks are drawn.
+    zones : tuple of str
+        The zones that judge by it so; none where nobody's marks are drawn.
     ranges : tuple of ClassRange
         Best first.
     picture : str
@@ -121,7 +121,7 @@ class View:
 
     reading: str
     title: str
-    wanted_by: str
+    zones: tuple[str, ...]
     ranges: tuple[ClassRange, ...]
     picture: str
 
@@ -183,33 +183,39 @@ def views(
         Left clear, so that the map shows it as water.
     """
     groups = by_quantity(fields)
-    wanted: dict[tuple[str, tuple[tuple[float, float], ...]], list[str]] = {}
+    wanted: dict[tuple[str, tuple[tuple[float, float], ...]], list[tuple[str, str]]] = {}
     for zone in zones_here(table):
         asked = [c for c in profiles[zone].criteria if c.question == question] if zone in profiles else []
         drawn = [c for c in asked if c.reading in groups]
         if drawn:
             best = max(drawn, key=lambda c: c.weight)
-            wanted.setdefault((best.reading, tuple(best.curve)), []).append(profiles[zone].title)
-    chosen: list[tuple[str, Curve, str, str]] = [
-        (reading, curve, _column(reading).title.capitalize(), ", ".join(titles))
-        for (reading, curve), titles in list(wanted.items())[:MOST_VIEWS]
+            wanted.setdefault((best.reading, tuple(best.curve)), []).append((zone, best.title))
+    chosen: list[tuple[str, Curve, str, tuple[str, ...]]] = [
+        (reading, curve, zones[0][1], tuple(zone for zone, _ in zones))
+        for (reading, curve), zones in list(wanted.items())[:MOST_VIEWS]
     ]
     if not chosen:
-        chosen = [(key, curve, title, "") for key, curve, title in PLAIN.get(question, ()) if key in groups][:1]
+        chosen += [(key, curve, title, ()) for key, curve, title in PLAIN.get(question, ()) if key in groups][:1]
     return tuple(_drawn(chosen, groups, sheet, water))
 
 
 def _drawn(
-    chosen: Sequence[tuple[str, Curve, str, str]],
+    chosen: Sequence[tuple[str, Curve, str, tuple[str, ...]]],
     groups: Mapping[str, list[Field]],
     sheet: Sheet,
     water: NDArray[np.bool_],
 ) -> Iterator[View]:
-    for reading, curve, title, wanted_by in chosen:
+    for reading, curve, title, zones in chosen:
         parts = [part for field in groups[reading] if (part := on_sheet(field, sheet)) is not None]
         if parts:
             picture = field_picture(parts, curve, sheet, water)
-            yield View(reading, title, wanted_by, class_ranges(curve, _column(reading)), webp(picture, lossless=True))
+            yield View(
+                reading,
+                title[:1].upper() + title[1:],
+                zones,
+                class_ranges(curve, _column(reading)),
+                webp(picture, lossless=True),
+            )
 
 
 def field_picture(parts: Sequence[Field], curve: Curve, sheet: Sheet, water: NDArray[np.bool_]) -> NDArray[np.uint8]:

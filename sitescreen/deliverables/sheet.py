@@ -12,7 +12,6 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from numpy.typing import NDArray
-from rasterio.transform import from_bounds
 from rasterio.warp import Resampling, reproject, transform_bounds
 
 from sitescreen.errors import GridError
@@ -51,8 +50,10 @@ class Sheet:
     @property
     def transform(self) -> "Affine":
         """From pixel to EPSG:3857."""
-        made: Affine = from_bounds(*self.bounds_m, self.cols, self.rows)
-        return made
+        from affine import Affine
+
+        west, south, east, north = self.bounds_m
+        return Affine((east - west) / self.cols, 0.0, west, 0.0, (south - north) / self.rows, north)
 
     @property
     def pixel_m(self) -> float:

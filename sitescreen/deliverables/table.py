@@ -6,6 +6,8 @@ from collections.abc import Iterator, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+import numpy as np
+
 from sitescreen.deliverables.columns import Column
 
 if TYPE_CHECKING:
@@ -31,6 +33,8 @@ def value_of(column: Column, value: Any) -> str | int | float | None:
     """
     if value is None or value is _na() or (isinstance(value, float) and math.isnan(value)):
         return None
+    if isinstance(value, bool | np.bool_):
+        return "yes" if value else "no"
     if column.kind == "text":
         return str(value) or None
     if not math.isfinite(value):

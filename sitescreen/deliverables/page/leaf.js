@@ -12,10 +12,11 @@ const leaf = (() => {
 
   function top(i) {
     const place = order.indexOf(i), rank = plots.rank[i];
+    const isShared = rank !== null && plots.rank.filter((other) => other === rank).length > 1 ? ", shared" : "";
     const inZone = plots.rank_in_zone[i] === null || rank === null ? "" : `, ${page.ordinal(plots.rank_in_zone[i])} in its zone`;
     const turn = (text, to) => make("button", { type: "button", disabled: to < 0 || to >= order.length, onclick: () => page.change({ chosen: order[to] }) }, text);
     return make("div", { class: "leaf-top" },
-      make("span", {}, rank === null ? "Set aside" : `${page.ordinal(rank)} of ${page.ranked.length}${inZone}`),
+      make("span", {}, rank === null ? "Set aside" : `${page.ordinal(rank)} of ${page.ranked.length}${isShared}${inZone}`),
       make("span", { class: "turn" }, turn("previous", place - 1), turn("next", place + 1)));
   }
 
@@ -33,8 +34,7 @@ const leaf = (() => {
     const rows = zone.criteria.map((one) => {
       const marks = data.marks[one.name], mark = marks ? marks[i] : null, reading = readingNamed.get(one.reading);
       return make("tr", {},
-        make("td", {}, one.title),
-        make("td", {}, reading ? page.shown(reading, reading.values[i]) : ""),
+        make("td", {}, one.title, reading ? make("span", {}, ` ${page.shown(reading, reading.values[i])}`) : null),
         make("td", {}, ruler(mark, null, null, 92, 12)),
         make("td", {}, mark === null ? "?" : mark.toFixed(0)));
     });
@@ -60,6 +60,7 @@ const leaf = (() => {
     const mixed = share !== null && share < 0.95 ? `, ${(100 * share).toFixed(0)} % of the judgement` : "";
     const words = [plots.name[i] === null ? null : `Plot ${plots.plot[i]}`, page.zoneTitle(i) ? page.zoneTitle(i) + mixed : null];
     parts.push(make("p", { class: "leaf-zone" }, words.filter((word) => word).join(" · ")));
+    if (plots.zone_missing[i]) parts.push(make("p", { class: "leaf-zone" }, `The zone is not firm; missing: ${plots.zone_missing[i]}.`));
     if (zone) parts.push(make("p", { class: "leaf-zone" }, `What it wants: ${zone.wants}`));
     parts.push(markLine(i));
     if (plots.set_aside[i]) parts.push(...list("Why it is set aside", [plots.set_aside[i]], "alerts"));

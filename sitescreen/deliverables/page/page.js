@@ -7,7 +7,7 @@
     const all = [data.overall, ...data.questions];
     row.hidden = false;
     row.replaceChildren(...all.map((one) => make("button", { type: "button", "data-question": one.name, "aria-pressed": String(one.name === state.question),
-      onclick: () => page.change({ question: one.name, view: 0 }) }, one.label)));
+      onclick: () => page.change({ question: one.name }) }, one.label)));
   }
   function press() {
     for (const button of row.children) button.setAttribute("aria-pressed", String(button.dataset.question === state.question));
@@ -21,18 +21,20 @@
     } else {
       for (const number of [4, 3, 2, 1, 0]) items.push([page.sign(number), `${[0, ...data.edges][number]}–${[...data.edges, 100][number]}`]);
     }
-    if (page.ranked.some((i) => page.marks()[i] === null)) items.push([page.sign("unknown"), "unknown"]);
+    if (page.ranked.some((i) => page.marks()[i] === null && !page.asks(i))) items.push([page.sign("unasked"), "not asked in its zone"]);
+    if (page.ranked.some((i) => page.marks()[i] === null && page.asks(i))) items.push([page.sign("unknown"), "unknown"]);
     if (page.aside.length) items.push([page.sign("aside"), "set aside"]);
+    const judged = (each) => (each.zones.length ? `${each.title}, judged for ${each.zones.map((zone) => data.zones[zone].title.toLowerCase()).join(", ")}` : each.title);
     const title = make("div", { class: "legend-title" });
     if (one && one.views.length > 1) {
       title.append(make("span", { class: "legend-views" }, ...one.views.map((each, k) => make("button", { type: "button", "aria-pressed": String(k === state.view),
-        onclick: () => page.change({ view: k }) }, `${each.title}, as wanted by ${each.wanted_by}`))));
+        onclick: () => page.change({ view: k }) }, judged(each)))));
     } else if (view) {
-      title.append(view.wanted_by ? `${view.title}, as wanted by ${view.wanted_by}` : view.title);
+      title.append(judged(view));
     } else {
       title.append(one ? `Plots by their mark for ${one.column.toLowerCase()}, of 100` : "Plots by their overall mark, of 100");
     }
-    const darker = view ? "Dark ground is better ground. Plots show their mark, 0 to 100, in the same five steps." : "Dark is better. Numbers are ranks.";
+    const darker = view ? "Dark ground is better ground. Plots show their own mark, by their own zone, in the same five steps." : "Dark is better. Numbers are ranks.";
     legend.hidden = false;
     legend.replaceChildren(make("div", { class: "legend-row" }, title, ...items.map(([sign, words]) => make("span", { class: "legend-item" }, sign, words))),
       make("p", {}, `${darker} ${(one || data.overall).method}`));

@@ -54,8 +54,8 @@ const plan = (() => {
     origin = map.project(map.containerPointToLatLng([0, 0]), map.getZoom());
     const context = canvas.getContext("2d");
     context.scale(ratio, ratio);
-    drawPlots(context, size);
     drawFrame(context, size);
+    drawPlots(context, size);
   }
 
   function drawPlots(context, size) {
@@ -91,7 +91,7 @@ const plan = (() => {
       context.setLineDash(isAside ? [2.6, 2] : []);
       context.stroke(path.shape);
       context.setLineDash([]);
-      if (!isAside && number === null) {
+      if (!isAside && number === null && page.asks(i)) {
         context.fillStyle = INK;
         context.beginPath();
         context.arc(at.x, at.y, 1.5, 0, 7);
@@ -134,8 +134,8 @@ const plan = (() => {
       const rank = plots.rank[spot.i], isChosen = spot.i === state.chosen, isShort = rank <= data.shortlist;
       context.font = `${isShort || isChosen ? "bold 15" : "12"}px ${getComputedStyle(document.body).getPropertyValue("--serif")}`;
       const text = String(rank), wide = context.measureText(text).width, tall = isShort || isChosen ? 15 : 12;
-      const gap = spot.half + (isChosen ? 8 : 4);
-      const tries = [[gap, -wide / 2 * 0], [-gap - wide, 0], [-wide / 2, -gap - tall / 2], [-wide / 2, gap + tall / 2]];
+      const gap = spot.half + (isChosen ? 9 : 5);
+      const tries = [[gap, 0], [-gap - wide, 0], [-wide / 2, -gap - tall / 2], [-wide / 2, gap + tall / 2]];
       for (const [dx, dy] of tries) {
         const x = spot.x + dx, y = spot.y + dy;
         const box = [x - 2, y - tall / 2, x + wide + 2, y + tall / 2];
@@ -147,10 +147,8 @@ const plan = (() => {
           context.fillRect(x - 4, y - tall / 2 - 2, wide + 8, tall + 4);
           context.fillStyle = PAPER;
         } else {
-          context.strokeStyle = PAPER;
-          context.lineWidth = 3.4;
-          context.lineJoin = "round";
-          context.strokeText(text, x, y);
+          context.fillStyle = "rgba(250,247,240,0.86)";
+          context.fillRect(x - 2, y - tall / 2 - 0.5, wide + 4, tall + 1);
           context.fillStyle = INK;
         }
         context.fillText(text, x, y + 0.5);
@@ -238,7 +236,7 @@ const plan = (() => {
   function tell(i) {
     if (i === null) { readout.textContent = idle(); return; }
     const rank = plots.rank[i], mark = page.marks()[i], one = page.question();
-    const asked = rank === null ? "" : mark === null ? ", unknown" : `, ${mark.toFixed(0)} of 100${one ? ` for ${one.column.toLowerCase()}` : ""}`;
+    const asked = rank === null ? "" : mark === null ? (page.asks(i) ? ", unknown" : "") : `, ${mark.toFixed(0)} of 100${one ? ` for ${one.column.toLowerCase()}` : ""}`;
     readout.textContent = page.called(i) + (rank === null ? ": set aside" : `: ${page.ordinal(rank)}${asked}`);
   }
 

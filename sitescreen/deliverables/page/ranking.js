@@ -42,6 +42,7 @@ const ranking = (() => {
     return [plots.overall_mark[i].toFixed(0), ruler(plots.overall_mark[i], plots.mark_low[i], plots.mark_high[i], 86, 14)];
   }
   function askedCell(one, i) {
+    if (!page.asks(i)) return make("small", {}, "not asked");
     return one.marks[i] === null ? "unknown" : [one.marks[i].toFixed(0), ruler(one.marks[i], null, null, 86, 14)];
   }
 

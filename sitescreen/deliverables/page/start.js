@@ -31,6 +31,8 @@ const page = (() => {
     if (kind === "aside") {
       svg.append(draw("path", { d: "M2 9 L9 2 M2 13.4 L13.4 2 M6.5 13 L13 6.5", stroke: "#2b2a27", "stroke-width": 0.8 }));
       svg.append(draw("rect", { x: 2, y: 2, width: 11, height: 11, fill: "none", stroke: "#2b2a27", "stroke-width": 1.3, "stroke-dasharray": "2.4 1.8" }));
+    } else if (kind === "unasked") {
+      svg.append(draw("rect", { x: 2, y: 2, width: 11, height: 11, fill: "#faf7f0", stroke: "#2b2a27", "stroke-width": 1.2 }));
     } else if (kind === "unknown") {
       svg.append(draw("rect", { x: 2, y: 2, width: 11, height: 11, fill: "#faf7f0", stroke: "#2b2a27", "stroke-width": 1.2 }));
       svg.append(draw("circle", { cx: 7.5, cy: 7.5, r: 1.4, fill: "#2b2a27" }));
@@ -63,22 +65,37 @@ const page = (() => {
     const zone = data.zones[plots.zone[i]];
     return zone ? zone.title : plots.zone[i] || "";
   }
+  const SHORT = { "°": "°", "° from true north": "°", "× open ground": " ×" };
   function shown(column, value) {
     if (value === null) return "unknown";
     if (typeof value === "string") return value;
     if (column.unit === "0–1") return `${(100 * value).toFixed(column.decimals > 2 ? 1 : 0)} %`;
     const number = value.toFixed(column.decimals).replace("-", "−");
-    const unit = { "°": "°", "° from true north": "°", "× open ground": " × open ground" }[column.unit];
+    const unit = SHORT[column.unit];
     return number + (unit === undefined ? (column.unit ? ` ${column.unit}` : "") : unit);
   }
   const state = { chosen: null, question: "overall", view: 0 };
   const watchers = [];
+  // which picture of a question shows the ground as the chosen plot's zone judges it
+  function ownView() {
+    const one = question(), zone = state.chosen === null ? null : plots.zone[state.chosen];
+    return one ? Math.max(0, one.views.findIndex((view) => view.zones.includes(zone))) : 0;
+  }
   function change(what) {
     Object.assign(state, what);
+    if (!("view" in what)) {
+      const view = ownView();
+      if (view !== state.view) { state.view = view; what.view = view; }
+    }
     for (const watch of watchers) watch(Object.keys(what));
   }
   function question() {
     return data.questions.find((one) => one.name === state.question) || null;
+  }
+  // whether a plot's zone asks the chosen question at all
+  function asks(i) {
+    const one = question();
+    return !one || one.asked_by.includes(plots.zone[i]);
   }
   // the marks that the map and its legend speak of at the moment
   function marks() {
@@ -86,5 +103,5 @@ const page = (() => {
     return one ? one.marks : plots.overall_mark;
   }
   return { data, plots, count, ranked, aside, make, draw, classOf, sign, ruler, ordinal, called, zoneTitle, shown, state, watchers,
-    change, question, marks };
+    change, question, marks, asks };
 })();
