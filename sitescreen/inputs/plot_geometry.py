@@ -215,9 +215,10 @@ def areas_m2(geometry: Geometries) -> FloatArray:
 
     Notes
     -----
-    The plane area of the normal cylindrical equal-area map (Snyder 1987, *Map Projections: A Working Manual*, USGS
-    Professional Paper 1395, equations 10-14, 10-15 and 3-12), whose areas are exact. Edges run straight on that map,
-    not along geodesics: less than 1e-4 of the area for plots up to 12 km wide within 40° of the equator.
+    Inside geodesic edges for what is 1 km wide or more (Karney 2013, doi:10.1007/s00190-012-0578-z, as pyproj has it).
+    For smaller plots, ten times faster, the plane area of the normal cylindrical equal-area map (Snyder 1987, *Map
+    Projections: A Working Manual*, USGS Professional Paper 1395, equations 10-14, 10-15 and 3-12), whose areas are
+    exact; its straight edges differ from geodesics by less than 5e-5 of such a plot's area.
     """
     squared = WGS84.es
     root = np.sqrt(squared)
@@ -227,8 +228,19 @@ def areas_m2(geometry: Geometries) -> FloatArray:
         q = (1.0 - squared) * (sine / (1.0 - squared * sine**2) + np.arctanh(root * sine) / root)
         return np.column_stack([WGS84.a * np.radians(lonlat[:, 0]), WGS84.a * q / 2.0])
 
-    area = np.asarray(shapely.area(shapely.transform(geometry, equal_area)), dtype=np.float64)
-    return np.where(shapely.is_missing(geometry), np.nan, area)
+    area: FloatArray = np.full(len(geometry), np.nan)
+    width = widths_km(geometry)
+    small, large = width < 1.0, width >= 1.0
+    area[small] = shapely.area(shapely.transform(geometry[small], equal_area))
+    for row in np.flatnonzero(large):
+        area[row] = sum(_geodesic_m2(part) for part in shapely.get_parts(geometry[row]))
+    return area
+
+
+def _geodesic_m2(polygon: shapely.Geometry) -> float:
+    rings = shapely.get_rings(polygon)
+    areas = [abs(WGS84.polygon_area_perimeter(*shapely.get_coordinates(ring).T)[0]) for ring in rings]
+    return float(areas[0] - sum(areas[1:])) if areas else 0.0
 
 
 def widths_km(geometry: Geometries) -> FloatArray:

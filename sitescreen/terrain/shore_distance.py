@@ -113,8 +113,12 @@ def nearest_shore(
 def _nearest(segments: Segments, lon: FloatArray, lat: FloatArray, crs: str) -> _Nearest:
     """Nearest point on segments in the map's plane; length and bearing to it along the ellipsoid."""
     nothing = np.full(len(lon), np.nan)
-    if len(segments.water_id) == 0 or len(lon) == 0:
+    placed = np.isfinite(lon) & np.isfinite(lat)
+    if len(segments.water_id) == 0 or not placed.any():
         return _Nearest(nothing, nothing, nothing, nothing, np.full(len(lon), -1, dtype=np.int64))
+    if not placed.all():
+        part = _nearest(segments, lon[placed], lat[placed], crs)
+        return _Nearest(*(_spread(values, placed, unset) for values, unset in zip(part, _UNSET, strict=True)))
     east, north = Transformer.from_crs("EPSG:4326", crs, always_xy=True).transform(lon, lat)
     found = segments.nearest(np.column_stack([east, north]))
     back = Transformer.from_crs(crs, "EPSG:4326", always_xy=True)
@@ -122,6 +126,16 @@ def _nearest(segments: Segments, lon: FloatArray, lat: FloatArray, crs: str) -> 
     bearing, _, distance = WGS84.inv(lon, lat, there_lon, there_lat)
     bearing = np.where(np.asarray(distance) > 0.0, np.asarray(bearing) % 360.0, np.nan)
     return _Nearest(np.asarray(distance), bearing, there_lon, there_lat, segments.water_id[found.segment])
+
+
+_UNSET = (np.nan, np.nan, np.nan, np.nan, -1)
+
+
+def _spread(values: NDArray[Any], where: NDArray[np.bool_], unset: float) -> NDArray[Any]:
+    """Values of some rows as values of all, with the others left unset."""
+    out = np.full(len(where), unset, dtype=values.dtype)
+    out[where] = values
+    return out
 
 
 def _wet(nearest: _Nearest, wet: NDArray[np.bool_]) -> _Nearest:
@@ -135,7 +149,9 @@ def _in_water(shore: Shore, lon: FloatArray, lat: FloatArray) -> NDArray[np.obje
     inside = np.full(len(lon), "", dtype=object)
     if len(shore.waters) == 0:
         return inside
-    tree = shapely.STRtree(shapely.points(lon, lat))
+    points: NDArray[np.object_] = np.asarray(shapely.points(lon, lat), dtype=object)
+    points[~(np.isfinite(lon) & np.isfinite(lat))] = None
+    tree = shapely.STRtree(points)
     water, point = tree.query(np.asarray(shore.waters.geometry.values, dtype=object), predicate="contains")
     inside[point] = shore.waters["kind"].to_numpy(dtype=object)[water]
     return inside
@@ -181,14 +197,17 @@ def onshore_bearing(
     """
     lon, lat = np.asarray(lon_deg, dtype=np.float64), np.asarray(lat_deg, dtype=np.float64)
     segments = shore_segments(shore, kind, crs, least_lake_width_km)
-    if len(segments.water_id) == 0 or len(lon) == 0:
+    placed = np.isfinite(lon) & np.isfinite(lat)
+    if len(segments.water_id) == 0 or not placed.any():
         return Onshore(np.full(len(lon), np.nan), np.full(len(lon), np.nan))
+    lon, lat = lon[placed], lat[placed]
     pieces = segments.pieces(PIECE_M)
     parts = [
         _onshore(shore, lon[at : at + AT_ONCE], lat[at : at + AT_ONCE], crs, kind, pieces)
         for at in range(0, len(lon), AT_ONCE)
     ]
-    return Onshore(*(np.concatenate(values) for values in zip(*parts, strict=True)))
+    joined = (np.concatenate(values) for values in zip(*parts, strict=True))
+    return Onshore(*(_spread(values, placed, np.nan) for values in joined))
 
 
 def _onshore(shore: Shore, lon: FloatArray, lat: FloatArray, crs: str, kind: str, pieces: Pieces) -> Onshore:
