@@ -97,7 +97,7 @@ def shore_segments(shore: Shore, kinds: str | tuple[str, ...], crs: str, least_l
     rows = shore.lines["kind"].isin(wanted).to_numpy()
     if least_lake_width_km > 0.0:
         narrow = shore.waters["water_id"][shore.waters["width_km"] < least_lake_width_km]
-        rows &= ~shore.lines["water_id"].isin(narrow).to_numpy()
+        rows = rows & ~shore.lines["water_id"].isin(narrow).to_numpy()
     lines = np.asarray(shore.lines.geometry.values[rows], dtype=object)
     ids = shore.lines["water_id"].to_numpy(dtype=np.int64)[rows]
     parts, part_of = shapely.get_parts(shapely.segmentize(lines, STRAIGHT_DEG), return_index=True)
