@@ -162,7 +162,7 @@ def _judged(
         brief=brief,
         table=table,
         fields=_fields(measured),
-        reasons=reasons(judged, readings.why_unknown, profiles, settings.judgement, halved),
+        reasons=reasons(judged, readings.why_unknown, profiles, settings.judgement),
         profiles=profiles,
         notes=notes,
         not_measured=NOT_MEASURED,
