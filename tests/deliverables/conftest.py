@@ -108,7 +108,7 @@ def build(
     table["cold_pool_kind"] = np.where(table["cold_deficit_k"] > 0, "closed", "none")
     table["pond_depth_m"] = 0.0
     table["onshore_from_deg"] = 92.4
-    table.loc[1, "ventilation"] = np.nan
+    table.loc[table.index == 1, "ventilation"] = np.nan
     overall = np.full(count, np.nan)
     for i, row in table.iterrows():
         profile, sums = profiles[row["zone"]], []

@@ -1,0 +1,299 @@
+"""The page in a real browser, offline."""
+
+import json
+import os
+import shutil
+import tempfile
+import time
+from collections.abc import Callable, Iterator
+from pathlib import Path
+from typing import Any
+
+import pytest
+
+from sitescreen.deliverables.columns import columns_of
+from sitescreen.deliverables.map import write_map
+
+pytestmark = [pytest.mark.browser, pytest.mark.filterwarnings("ignore::DeprecationWarning")]
+
+FLAGS = (
+    "--headless=new", "--no-sandbox", "--disable-gpu", "--disable-quic", "--no-first-run", "--disable-sync",
+    "--disable-background-networking", "--disable-component-update", "--hide-scrollbars",
+)  # fmt: skip
+
+
+def _program(*names: str) -> str:
+    found = next((path for name in names if (path := shutil.which(name))), None)
+    if found is None:
+        said = f"{names[0]} is not installed here (.ci/run installs it)"
+        if os.environ.get("SITESCREEN_REQUIRE_ALL") == "1":
+            pytest.fail(said)
+        pytest.skip(said)
+    return found
+
+
+@pytest.fixture(scope="module")
+def browser(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Any]:
+    """Headless Chromium that is told it has no network, and notes every request."""
+    from selenium import webdriver
+    from selenium.webdriver.chrome.service import Service
+
+    options = webdriver.ChromeOptions()
+    options.binary_location = _program("chromium", "chromium-browser", "google-chrome")
+    profile = tempfile.mkdtemp(dir=tmp_path_factory.mktemp("browser"))
+    for flag in (*FLAGS, f"--user-data-dir={profile}", "--window-size=1440,900"):
+        options.add_argument(flag)
+    options.set_capability("goog:loggingPrefs", {"browser": "ALL", "performance": "ALL"})
+    driver = webdriver.Chrome(options=options, service=Service(_program("chromedriver")))
+    try:
+        yield driver
+    finally:
+        driver.quit()
+
+
+def sized(browser: Any, width: int, height: int) -> None:
+    size = {"width": width, "height": height, "deviceScaleFactor": 1, "mobile": width < 500}
+    browser.execute_cdp_cmd("Emulation.setDeviceMetricsOverride", size)
+
+
+@pytest.fixture(scope="module")
+def opened(browser: Any, tmp_path_factory: pytest.TempPathFactory) -> Callable[..., Any]:
+    """Writes a screening's page, opens it offline and waits until it is ready."""
+    count = iter(range(1000))
+
+    def open_page(screening: Any, width: int = 1440, height: int = 900) -> Any:
+        path = tmp_path_factory.mktemp("page") / f"map{next(count)}.html"
+        write_map(screening, columns_of(screening.table, screening.profiles), path)
+        browser.get_log("browser")
+        browser.get_log("performance")
+        sized(browser, width, height)
+        browser.execute_cdp_cmd("Network.enable", {})
+        nothing = {"offline": True, "latency": 0, "downloadThroughput": 0, "uploadThroughput": 0}
+        browser.execute_cdp_cmd("Network.emulateNetworkConditions", nothing)
+        browser.get(path.as_uri())
+        wait(lambda: browser.execute_script("return document.documentElement.dataset.ready") == "yes")
+        return browser
+
+    return open_page
+
+
+def wait(condition: Callable[[], bool], seconds: float = 10) -> None:
+    until = time.monotonic() + seconds
+    while not condition():
+        assert time.monotonic() < until, "waited too long"
+        time.sleep(0.02)
+
+
+def problems(browser: Any) -> list[str]:
+    return [entry["message"] for entry in browser.get_log("browser")]
+
+
+def texts(browser: Any, selector: str) -> list[str]:
+    # textContent, so that line breaks in names do not matter
+    script = "return [...document.querySelectorAll(arguments[0])].map((e) => e.textContent)"
+    return list(browser.execute_script(script, selector))
+
+
+def one(browser: Any, selector: str) -> Any:
+    return browser.find_element("css selector", selector)
+
+
+def leaf_name(browser: Any) -> str:
+    return texts(browser, "#leaf .leaf-name")[0]
+
+
+def ranked(screening: Any) -> Any:
+    return screening.table[screening.table["rank"].notna()]
+
+
+def test_opens_offline_without_a_request_or_a_complaint(opened: Any, screening: Any) -> None:
+    """Through a choice of question and plot as well: no request but the file itself, nothing in the console."""
+    page = opened(screening)
+    one(page, "[data-question=wind]").click()
+    one(page, "#rows tr:nth-child(3) button").click()
+    events = [json.loads(entry["message"])["message"] for entry in page.get_log("performance")]
+    sent = [e["params"] for e in events if e["method"] == "Network.requestWillBeSent"]
+    # the browser's own first tab may still be loading its parts
+    asked = [e["request"]["url"] for e in sent if e["documentURL"].startswith("file:")]
+    fetched = [url for url in asked if not url.startswith(("data:", "blob:"))]
+    assert len(fetched) == 1, fetched
+    assert fetched[0].startswith("file://")
+    assert problems(page) == []
+
+
+def test_every_plot_is_in_the_table_or_on_the_shelf(opened: Any, screening: Any) -> None:
+    page = opened(screening)
+    assert len(texts(page, "#rows tr")) == len(ranked(screening)) == 10
+    assert [text.split(" plot ")[0] for text in texts(page, "#rows td.plot")] == ranked(screening)["name"].tolist()
+    aside = screening.table[screening.table["rank"].isna()]
+    shelf = texts(page, "#shelf li")
+    assert len(shelf) == len(aside) == 2
+    assert all(name in line and "water could stand" in line for name, line in zip(aside["name"], shelf, strict=True))
+
+
+def test_the_first_plot_lies_open_and_others_follow_a_choice(opened: Any, screening: Any) -> None:
+    page = opened(screening)
+    names = ranked(screening)["name"].tolist()
+    assert leaf_name(page) == names[0]
+    one(page, "#rows tr:nth-child(4) td.plot button").click()
+    assert leaf_name(page) == names[3]
+    assert texts(page, "#rows tr.chosen td.rank") == ["4"]
+    one(page, "#leaf .turn button:last-child").click()
+    assert leaf_name(page) == names[4]
+    leaf = texts(page, "#leaf")[0]
+    assert "Sea breeze: 0.82 of it gets here." in leaf
+    assert "Little air moves: 0.71 times open ground." in leaf
+    one(page, "#shelf button").click()
+    assert "Why it is set aside" in texts(page, "#leaf")[0]
+
+
+def test_a_plot_is_chosen_on_the_map(opened: Any, screening: Any) -> None:
+    from selenium.webdriver import ActionChains
+
+    page = opened(screening)
+    ground = one(page, "#map_plan")
+    for i in (6, 2):
+        x, y = page.execute_script("return plan.screenOf(arguments[0])", i)
+        size = ground.rect
+        ActionChains(page).move_to_element_with_offset(
+            ground, round(x - size["width"] / 2), round(y - size["height"] / 2)
+        ).click().perform()
+        assert leaf_name(page) == screening.table["name"][i]
+        assert screening.table["name"][i] in texts(page, "#readout")[0]
+
+
+def test_plots_are_drawn_in_the_class_of_their_mark(opened: Any, screening: Any) -> None:
+    """The pixel at a plot's place has the ramp's colour for its overall mark."""
+    page = opened(screening)
+    ramp = ["f2ecde", "edc364", "b07a64", "6c6386", "282852"]
+    script = (
+        "const [x, y] = plan.screenOf(arguments[0]); const c = document.querySelector('#map_plan canvas');"
+        "return [...c.getContext('2d').getImageData(Math.round(x) + 2, Math.round(y) + 2, 1, 1).data].slice(0, 3)"
+    )
+    for i, mark in ranked(screening)["overall_mark"].items():
+        expected = ramp[min(4, int(mark // 20))]
+        got = "".join(f"{value:02x}" for value in page.execute_script(script, i))
+        assert got == expected
+
+
+def test_sort_turns_the_rows(opened: Any, screening: Any) -> None:
+    page = opened(screening)
+    names = sorted(ranked(screening)["name"])
+    one(page, "th[data-key=plot] button").click()
+    assert [text.split(" plot ")[0] for text in texts(page, "#rows td.plot")] == names
+    assert one(page, "th[data-key=plot]").get_attribute("aria-sort") == "ascending"
+    one(page, "th[data-key=plot] button").click()
+    assert [text.split(" plot ")[0] for text in texts(page, "#rows td.plot")] == names[::-1]
+    one(page, "th[data-key=overall] button").click()  # marks begin with the best
+    assert texts(page, "#rows td.rank") == [str(n) for n in range(1, 11)]
+
+
+def test_find_narrows_the_rows(opened: Any, screening: Any) -> None:
+    page = opened(screening)
+    name = ranked(screening)["name"].iloc[5]
+    one(page, "#find").send_keys(name.upper())
+    assert [text.split(" plot ")[0] for text in texts(page, "#rows td.plot")] == [name]
+    assert texts(page, "#found") == ["1 of 10 ranked plots"]
+    one(page, "#find").send_keys("no such plot")
+    assert texts(page, "#rows tr") == []
+
+
+def test_a_question_changes_map_legend_and_table_together(opened: Any, screening: Any) -> None:
+    page = opened(screening)
+    assert texts(page, "#map_plan .field") == []
+    before = len(texts(page, "#heads th"))
+    one(page, "[data-question=ground]").click()
+    assert len(texts(page, "#map_plan .field")) == 1
+    assert "Slope" in texts(page, "#legend")[0]
+    assert len(texts(page, "#heads th")) == before + 1
+    assert one(page, "[data-question=ground]").get_attribute("aria-pressed") == "true"
+    one(page, "[data-question=overall]").click()
+    assert texts(page, "#map_plan .field") == []
+
+
+def test_unknown_is_said_not_hidden(opened: Any, screening: Any) -> None:
+    """Plot 2 has no ventilation; where its zone asks for it the table says so, and the legend has a sign for it."""
+    page = opened(screening)
+    assert (screening.table.set_index("plot").loc["2", "zone"]) == "hot_humid_coast"
+    one(page, "[data-question=wind]").click()
+    place = screening.table.index[screening.table["plot"] == "2"][0]
+    assert texts(page, f"#rows tr[data-plot='{place}'] td.asked") == ["unknown"]
+    assert texts(page, "#rows td.asked").count("unknown") == 1
+    assert "unknown" in texts(page, "#legend")[0]
+
+
+def test_all_readings_open_the_rest_of_the_table(opened: Any, screening: Any) -> None:
+    page = opened(screening)
+    one(page, "#all-readings").click()
+    heads = texts(page, "#heads th")
+    assert any("elevation" in head for head in heads)
+    assert page.execute_script("return document.documentElement.scrollWidth <= window.innerWidth")
+
+
+@pytest.mark.parametrize(("width", "height"), [(390, 844), (1024, 768), (1440, 900)])
+def test_no_sideways_scroll_at_any_width(opened: Any, screening: Any, width: int, height: int) -> None:
+    page = opened(screening, width, height)
+    for question in ("overall", "wind"):
+        one(page, f"[data-question={question}]").click()
+        assert page.execute_script("return document.documentElement.scrollWidth") <= width
+    assert page.execute_script("return document.getElementById('map_plan').clientHeight") > 200
+    sized(page, 1440, 900)
+
+
+def test_hostile_text_stays_text(opened: Any, invent: Any) -> None:
+    """Shown letter by letter as it was written; nothing of it runs or becomes an element."""
+    from importlib.util import module_from_spec, spec_from_file_location
+
+    spec = spec_from_file_location("map_tests", Path(__file__).with_name("test_map.py"))
+    assert spec
+    assert spec.loader
+    tests = module_from_spec(spec)
+    spec.loader.exec_module(tests)
+    hostile = tests.hostile_screening(invent)
+    page = opened(hostile)
+    assert problems(page) == []
+    names = dict(zip(hostile.table["plot"], hostile.table["name"], strict=True))
+    shown = texts(page, "#rows td.plot button")
+    assert shown == [names[plot] for plot in ranked(hostile)["plot"]]
+    for row in range(1, len(shown) + 1, 6):
+        one(page, f"#rows tr:nth-child({row}) td.rank").click()
+        assert leaf_name(page) == shown[row - 1]
+        assert (
+            page.execute_script(
+                "return document.querySelectorAll('#leaf script, #leaf img, #leaf b:not(.leaf-mark b)').length"
+            )
+            == 0
+        )
+    assert texts(page, "title") == ["</title><script>alert(1)</script>{{ 7*7 }}"]
+    assert page.execute_script("return document.scripts.length") == 4
+    assert page.execute_script("return document.documentElement.scrollWidth") <= 1440
+    assert problems(page) == []
+
+
+def test_many_plots_come_a_hundred_at_a_time(opened: Any, invent: Any) -> None:
+    page = opened(invent(names=tuple(f"Field {i}" for i in range(230))))
+    assert len(texts(page, "#rows tr")) == 100
+    one(page, "#more").click()
+    assert len(texts(page, "#rows tr")) == 200
+    assert problems(page) == []
+
+
+def test_prints(opened: Any, screening: Any) -> None:
+    page = opened(screening)
+    printed = page.execute_cdp_cmd("Page.printToPDF", {"preferCSSPageSize": True})
+    assert len(printed["data"]) > 20_000
+    assert problems(page) == []
+
+
+def test_with_scripts_off_there_are_table_picture_and_reasons(opened: Any, screening: Any, browser: Any) -> None:
+    opened(screening)
+    browser.execute_cdp_cmd("Emulation.setScriptExecutionDisabled", {"value": True})
+    try:
+        browser.refresh()
+        source = browser.page_source
+        assert one(browser, "#relief").is_displayed()
+        assert one(browser, "noscript table").is_displayed()
+        assert len(browser.find_elements("css selector", "noscript table tbody tr")) == 10
+        assert "local codes and licensed practice decide" in source
+    finally:
+        browser.execute_cdp_cmd("Emulation.setScriptExecutionDisabled", {"value": False})
