@@ -31,7 +31,7 @@ class ZoneMarks:
     marks, lowest, highest : DataFrame, shape (m, criteria)
         ``mark_<criterion>``; the second and third with unknown readings at their worst and best.
     overall, low, high : float64 arrays
-        Weighted means: over the known marks, at the lowest and at the highest.
+        Weighted means: with unknown marks halfway between their limits, at their lowest, at their highest.
     known_weight_share : float64 array
         Part of the weight whose marks are known, 0–1.
     """
@@ -121,9 +121,11 @@ def zone_marks(
     weights = {one.name: one.weight * (factor if one.is_among(halved) else 1.0) for one in profile.criteria}
     known = marks(here, profile)
     lowest, highest = mark_limits(here, profile)
-    overall, share = weighted_mean(known, weights)
+    known_mean, share = weighted_mean(known, weights)
     low, _ = weighted_mean(lowest, weights)
     high, _ = weighted_mean(highest, weights)
+    # a gap stands halfway, so that the mark always lies between its limits; without any known mark there is none
+    overall = np.where(np.isnan(known_mean), np.nan, np.where(share < 1.0, 0.5 * (low + high), known_mean))
     return ZoneMarks(rows, weights, known, lowest, highest, overall, low, high, share)
 
 
@@ -161,10 +163,10 @@ def judge(
 
     Notes
     -----
-    Overall mark = Σ w·m / Σ w over the known marks, blended over the zones that share the plot. The rank uses the low
-    mark, in which every unknown reading stands at the worst its curve allows: a gap can cost a rank, never win one.
-    Where the zone itself is undecided, the low mark is that of the zone that suits the plot least. Marks depend on no
-    other plot, so the order of two plots never depends on a third. Plots with equal low marks share a rank.
+    Overall mark = Σ w·m / Σ w, unknown marks halfway between their limits, blended over the zones that share the plot.
+    The rank uses the low mark, in which every unknown reading stands at the worst its curve allows: a gap can cost a
+    rank, never win one. Where the zone itself is undecided, the low mark is that of the zone that suits the plot least.
+    Marks depend on no other plot, so the order of two plots never depends on a third. Plots with equal low marks share a rank.
     """
     told = with_derived(readings)
     by_zone: dict[str, ZoneMarks] = {}
