@@ -6,7 +6,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from sitescreen.grid import Field, Grid
+from sitescreen.grid import Grid
 
 FloatArray = NDArray[np.float64]
 

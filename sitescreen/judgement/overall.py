@@ -166,7 +166,8 @@ def judge(
     Overall mark = Σ w·m / Σ w, unknown marks halfway between their limits, blended over the zones that share the plot.
     The rank uses the low mark, in which every unknown reading stands at the worst its curve allows: a gap can cost a
     rank, never win one. Where the zone itself is undecided, the low mark is that of the zone that suits the plot least.
-    Marks depend on no other plot, so the order of two plots never depends on a third. Plots with equal low marks share a rank.
+    Marks depend on no other plot, so the order of two plots never depends on a third.
+    Plots with equal low marks share a rank.
     """
     told = with_derived(readings)
     by_zone: dict[str, ZoneMarks] = {}
