@@ -40,6 +40,7 @@ def profiles(
     azimuths_rad: Any,
     height_m: Any,
     bend_per_m: Any,
+    reach_m: Any,
     tangent: Any,
     seen_m: Any,
     start: Any,
@@ -77,13 +78,13 @@ def profiles(
                 if not crosses_col or to_row <= d:
                     row = np.rint(row)
                     to_row += gap_row
-                if row < 0.0 or col < 0.0 or row > rows - 1 or col > cols - 1:
+                distance = d * cell_size_m
+                if row < 0.0 or col < 0.0 or row > rows - 1 or col > cols - 1 or distance > reach_m:
                     break
                 z = _height(elevation_m, row, col)
                 if z != z:
                     unbroken = False
                     continue
-                distance = d * cell_size_m
                 if unbroken:
                     seen_m[point, k] = distance
                 best = max(best, (z - eye) / distance - bend_per_m * distance)

@@ -67,10 +67,13 @@ def horn_gradient(elevation_m: Any, cell_size_m: Any, east: Any, north: Any, sta
             hole = here[col] - here[col]
             rise = (above[col + 1] - above[col - 1]) + (below[col + 1] - below[col - 1])
             side = here[col + 1] - here[col - 1]
-            to_east[col] = (rise + (side + side)) * scale + hole
+            p = (rise + (side + side)) * scale + hole
             rise = (above[col - 1] - below[col - 1]) + (above[col + 1] - below[col + 1])
             side = above[col] - below[col]
-            to_north[col] = (rise + (side + side)) * scale + hole
+            q = (rise + (side + side)) * scale + hole
+            # either component passes over a row or column of three, and with it over a hole there
+            to_east[col] = p + (q - q)
+            to_north[col] = q + (p - p)
 
 
 @njit(nogil=True, cache=True, error_model="numpy")

@@ -116,8 +116,8 @@ def chance_buildable(elevation: Field, limit_pct: float, vertical_error_m: float
     -----
     Noise makes level ground look steep: with σ = 4.4 m at 30 m a fifth to a third of it shows over 10 %. So each
     component of the gradient is first drawn towards its neighbourhood's mean, by the share of the observed variance
-    that the known error explains; what is left uncertain is a normal scatter of variance keep·noise in both components. A
-    flat prior instead would count the noise twice. The neighbourhood reaches twice the error's range, at least two
+    that the known error explains; what is left uncertain is a normal scatter of variance keep·noise in both components.
+    A flat prior instead would count the noise twice. The neighbourhood reaches twice the error's range, at least two
     cells, each way; known cells of it count.
     """
     if not limit_pct > 0 or not vertical_error_m >= 0 or not error_range_m >= 0:

@@ -1,0 +1,333 @@
+"""Skylines and upwind angles: closed forms, exact rays, unknown ground, the lattice, the Earth's curve."""
+
+import math
+from collections.abc import Callable
+
+import numpy as np
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+from sitescreen.errors import GridError
+from sitescreen.grid import Field, Grid
+from sitescreen.terrain import _horizon_kernel as kernel
+from sitescreen.terrain import _march_kernel as march_kernel
+from sitescreen.terrain import _profile_kernel as profile_kernel
+from sitescreen.terrain.horizon import (
+    EARTH_RADIUS_M,
+    REFRACTION,
+    _lines,
+    _rays,
+    horizon_profile,
+    horizon_sweep,
+    horizon_tangent,
+    upwind_tangent,
+)
+
+EVERY_22_5 = [22.5 * k for k in range(16)]
+
+
+def field(values: object, cell_size_m: float = 30.0, west_m: float = 0.0, north_m: float = 0.0) -> Field:
+    array = np.asarray(values, dtype=np.float32)
+    return Field(array, Grid("EPSG:32637", west_m, north_m, cell_size_m, *array.shape), "m", "test ground")
+
+
+def ground(formula: Callable[..., object], cells: int, cell_size_m: float = 30.0) -> Field:
+    """Ground z(x, y), x east and y north, both 0 in the middle."""
+    across = (np.arange(cells) - cells // 2) * cell_size_m
+    x, y = np.meshgrid(across, -across)
+    return field(formula(x, y), cell_size_m)
+
+
+def hills(cells: int, seed: int, smooth_cells: float = 6.0, height_m: float = 150.0) -> np.ndarray:
+    """Rounded hills, higher than the cells are wide: slopes of about 10°."""
+    from scipy.ndimage import gaussian_filter
+
+    noise = gaussian_filter(np.random.default_rng(seed).standard_normal((cells, cells)), smooth_cells, mode="wrap")
+    return (noise / noise.std() * height_m / 2 + 800).astype(np.float32)
+
+
+def angle(f: Field, azimuth: float, earth_curvature: bool = False) -> np.ndarray:
+    return np.degrees(np.arctan(horizon_tangent(f, azimuth, earth_curvature)))
+
+
+# closed forms
+
+
+@pytest.mark.parametrize("azimuth", [0.0, 10.0, 45.0, 80.0, 90.0, 135.0, 200.0, 270.0, 333.0])
+def test_plane_shows_its_own_rise_in_every_azimuth(azimuth: float) -> None:
+    """A plane's skyline is its directional slope, up or down."""
+    f = ground(lambda x, y: 0.3 * x - 0.4 * y, 31)
+    rise = 0.3 * math.sin(math.radians(azimuth)) - 0.4 * math.cos(math.radians(azimuth))
+    assert horizon_tangent(f, azimuth, False)[5:-5, 5:-5] == pytest.approx(rise, abs=2e-5)
+
+
+@pytest.mark.parametrize("azimuth", [315.0, 337.5, 0.0, 10.0, 45.0])
+def test_wall_to_the_north(azimuth: float) -> None:
+    """A straight east–west wall, 60 m over the plain from 600 m on: tan = 0.1·cos(azimuth); nothing to the south."""
+    f = ground(lambda _, y: 60.0 * (y >= 600.0), 121)
+    got = horizon_tangent(f, azimuth, False)[60, 60]
+    assert got == pytest.approx(0.1 * math.cos(math.radians(azimuth)), abs=1e-6)
+    assert horizon_tangent(f, 180.0 - azimuth, False)[60, 60] == 0.0
+
+
+@pytest.mark.parametrize("azimuth", [60.0, 75.0, 285.0])
+def test_wall_at_a_glance_is_read_a_sample_late_at_most(azimuth: float) -> None:
+    """Rays nearer to east–west are read a column at a time: the wall's foot may lie up to one sample further."""
+    f = ground(lambda _, y: 60.0 * (y >= 600.0), 241)
+    got = horizon_tangent(f, azimuth, False)[120, 120]
+    distance = 600.0 / math.cos(math.radians(azimuth))
+    sample = 30.0 / abs(math.sin(math.radians(azimuth)))
+    assert 60.0 / (distance + sample) <= got <= 60.0 / distance + 1e-6
+
+
+@pytest.mark.parametrize("azimuth", EVERY_22_5)
+def test_cone_pit_has_one_skyline_all_round(azimuth: float) -> None:
+    """At the apex of a pit with sides of 30° the skyline stands at 30° (openness 90° − 30° = 60°).
+
+    Between the eight compass directions the ground between cells, which is what counts, stands 2° above the cone.
+    """
+    f = ground(lambda x, y: np.hypot(x, y) * math.tan(math.radians(30)), 81)
+    got = angle(f, azimuth)[40, 40]
+    middle = np.array([40.5 * 30.0]), np.array([-40.5 * 30.0])
+    exact = horizon_profile(f, *middle, np.array([azimuth]), earth_curvature=False).angle_deg[0, 0]
+    assert got == pytest.approx(exact, abs=1e-4)
+    assert got == pytest.approx(30.0, abs=1e-4 if azimuth % 45 == 0 else 2.1)
+
+
+def test_valley_floor_sees_its_walls_foreshortened() -> None:
+    """V-shaped valley from north to south, walls of 30°: 30° across, 22.2077° on the diagonals, 0° along."""
+    f = ground(lambda x, _: np.abs(x) * math.tan(math.radians(30)), 61)
+    floor = {az: angle(f, az)[30, 30] for az in (0.0, 45.0, 90.0, 135.0, 180.0, 225.0, 270.0, 315.0)}
+    assert floor[0.0] == floor[180.0] == pytest.approx(0.0, abs=1e-5)
+    assert floor[90.0] == floor[270.0] == pytest.approx(30.0, abs=1e-4)
+    assert floor[45.0] == pytest.approx(22.2077, abs=1e-4)
+    assert sum(90.0 - a for a in floor.values()) / 8 == pytest.approx(71.396, abs=1e-3)  # openness
+
+
+def test_sum_of_eight_skylines_on_a_wall() -> None:
+    """A 20° wall to the north only: 20 + 2·atan(tan 20°·cos 45°) = 48.866° over the eight compass directions."""
+    f = ground(lambda _, y: 600.0 * math.tan(math.radians(20)) * (y >= 600.0), 201)
+    total = sum(max(float(angle(f, az)[100, 100]), 0.0) for az in (0, 45, 90, 135, 180, 225, 270, 315))
+    assert total == pytest.approx(48.866, abs=1e-3)
+
+
+def test_far_ground_sinks_behind_the_curve() -> None:
+    """A 500 m summit 60 km away: tan = 500/d − d·(1 − 0.13)/2R."""
+    values = np.zeros((3, 2001))
+    values[:, 2000] = 500.0
+    got = horizon_tangent(field(values), 90.0)[1, 0]
+    assert got == pytest.approx(500 / 60_000 - 60_000 * (1 - REFRACTION) / (2 * EARTH_RADIUS_M), abs=1e-6)
+    assert horizon_tangent(field(values), 90.0, False)[1, 0] == pytest.approx(500 / 60_000, abs=1e-6)
+
+
+# against exact rays
+
+
+@pytest.mark.parametrize("azimuth", EVERY_22_5)
+def test_sweep_follows_exact_rays(azimuth: float) -> None:
+    """Over rounded hills the sweep stays within 0.15° RMS of rays over the bilinear surface."""
+    f = field(hills(160, 1))
+    rows, cols = np.mgrid[60:100, 60:100]
+    x, y = (cols.ravel() + 0.5) * 30.0, -(rows.ravel() + 0.5) * 30.0
+    exact = horizon_profile(f, x, y, np.array([azimuth])).angle_deg[:, 0]
+    off = angle(f, azimuth, True)[60:100, 60:100].ravel() - exact
+    assert np.sqrt((off**2).mean()) < 0.15
+
+
+@pytest.mark.parametrize("turns", [1, 2, 3])
+def test_turning_the_map_turns_the_skyline(turns: int) -> None:
+    """A quarter turn of the ground and of the azimuth: the same angles, but for where the lines happen to lie."""
+    values = hills(60, 2)
+    plain = angle(field(values), 22.5)
+    turned = angle(field(np.rot90(values, turns)), (22.5 - 90.0 * turns) % 360.0)
+    off = np.rot90(turned, -turns)[15:-15, 15:-15] - plain[15:-15, 15:-15]
+    assert np.abs(off).max() < 1.0
+    assert np.sqrt((off**2).mean()) < 0.2
+
+
+def test_profile_is_exact_on_a_plane_from_any_point() -> None:
+    """Points between cell centres, any azimuth: the plane's directional slope; an eye above it looks down."""
+    f = ground(lambda x, y: 0.3 * x - 0.4 * y, 41)
+    azimuths = np.arange(0.0, 360.0, 5.0)
+    rise = 0.3 * np.sin(np.radians(azimuths)) - 0.4 * np.cos(np.radians(azimuths))
+    got = horizon_profile(f, [620.0, 611.3], [-615.0, -640.7], azimuths, earth_curvature=False)
+    assert got.angle_deg == pytest.approx(np.degrees(np.arctan(np.tile(rise, (2, 1)))), abs=1e-3)
+    raised = horizon_profile(f, [620.0], [-615.0], azimuths, 10.0, earth_curvature=False)
+    assert (raised.angle_deg < got.angle_deg[0]).all()
+
+
+# unknown ground
+
+
+def test_unknown_ground_hides_nothing_and_gets_no_skyline() -> None:
+    """Holes and a missing coast on a level plain: no cell's skyline rises above 0; holes stay unknown."""
+    values = np.zeros((40, 44), dtype=np.float32)
+    values[10:14, 20:30] = np.nan
+    values[:, 40:] = np.nan
+    values[25, 25] = np.nan
+    for azimuth in (0.0, 20.0, 45.0, 70.0, 100.0, 200.0, 275.0):
+        got = horizon_tangent(field(values), azimuth, False)
+        assert np.isnan(got[np.isnan(values)]).all()
+        known = got[np.isfinite(got)]
+        assert (known == 0).all()
+        assert known.size > 1200
+
+
+def test_skyline_behind_a_hole_is_still_seen() -> None:
+    """A ridge beyond unknown ground stands as high as it does; the profile says where the unknown began."""
+    values = np.zeros((5, 40))
+    values[:, 30:] = 90.0
+    values[:, 10:20] = np.nan
+    f = field(values)
+    assert horizon_tangent(f, 90.0, False)[2, 0] == pytest.approx(90 / 900)
+    got = horizon_profile(f, [15.0], [-75.0], np.array([90.0]), earth_curvature=False)
+    assert math.tan(math.radians(got.angle_deg[0, 0])) == pytest.approx(90 / 900)
+    assert got.seen_m[0, 0] == 9 * 30.0
+
+
+def test_nothing_known_ahead_is_unknown() -> None:
+    """At the grid's end there is no skyline to tell."""
+    got = horizon_tangent(field(np.zeros((4, 5))), 0.0)
+    assert np.isnan(got[0]).all()
+    assert np.isfinite(got[1:]).all()
+    outside = horizon_profile(field(np.zeros((4, 5))), [-50.0], [-10.0], np.array([90.0]))
+    assert np.isnan(outside.angle_deg).all()
+
+
+def test_sweep_streams_degrees() -> None:
+    """One field at a time, in degrees, named by its azimuth."""
+    f = ground(lambda x, _: 0.1 * x, 9)
+    sweep = horizon_sweep(f, [90.0, 270.0], earth_curvature=False)
+    azimuth, first = next(sweep)
+    assert azimuth == 90.0
+    assert first.unit == "°"
+    assert first.values[4, 4] == pytest.approx(5.710593, abs=1e-4)
+    assert next(sweep)[1].values[4, 4] == pytest.approx(-5.710593, abs=1e-4)
+
+
+# upwind, within a distance
+
+
+@pytest.mark.parametrize(("reach_m", "expected_deg"), [(300.0, 8.5308), (200.0, 8.5308), (190.0, 0.0), (100.0, 0.0)])
+@pytest.mark.parametrize("azimuth", [0.0, 90.0, 180.0, 270.0])
+def test_ridge_upwind_counts_within_the_reach(azimuth: float, reach_m: float, expected_deg: float) -> None:
+    """A ridge 30 m high 200 m upwind on level ground: 8.5308° to 300 m, 0° to 100 m (definition of Winstral 2002)."""
+    d_col, d_row = round(math.sin(math.radians(azimuth))), -round(math.cos(math.radians(azimuth)))
+    values = np.zeros((81, 81))
+    if d_col:
+        values[:, 40 + 20 * d_col] = 30.0
+    else:
+        values[40 + 20 * d_row, :] = 30.0
+    got = upwind_tangent(field(values, 10.0), azimuth, reach_m, 0.0).values[40, 40]
+    assert math.degrees(math.atan(got)) == pytest.approx(expected_deg, abs=1e-4)
+
+
+@pytest.mark.parametrize("azimuth", EVERY_22_5)
+@pytest.mark.parametrize("reach_m", [60.0, 300.0, 900.0])
+def test_plane_upwind_is_its_rise_for_any_reach(azimuth: float, reach_m: float) -> None:
+    """Rising 10 % upwind: 5.7106°; falling: −5.7106°; oblique: the share that faces the wind."""
+    f = ground(lambda _, y: 0.1 * y, 91)
+    got = upwind_tangent(f, azimuth, reach_m, 0.0).values[45, 45]
+    assert got == pytest.approx(0.1 * math.cos(math.radians(azimuth)), abs=2e-5)
+
+
+def test_receptor_looks_from_its_height() -> None:
+    """From 10 m above level ground all of it lies below: the tangent to the end of the reach, −10/300."""
+    got = upwind_tangent(field(np.zeros((31, 31))), 0.0, 300.0, 10.0).values
+    assert got[20, 15] == pytest.approx(-10 / 300)
+
+
+@pytest.mark.parametrize("azimuth", EVERY_22_5)
+def test_upwind_angle_follows_exact_rays(azimuth: float) -> None:
+    """Within 0.15° RMS of rays over the bilinear surface, cut at the same reach, from 10 m up."""
+    f = field(hills(260, 4))
+    rows, cols = np.mgrid[105:155:5, 105:155:5]
+    x, y = (cols.ravel() + 0.5) * 30.0, -(rows.ravel() + 0.5) * 30.0
+    got = upwind_tangent(f, azimuth, 3000.0).values[rows, cols].ravel()
+    exact = horizon_profile(f, x, y, np.array([azimuth]), 10.0, False, 3000.0).angle_deg[:, 0]
+    off = np.degrees(np.arctan(got)) - exact
+    assert np.sqrt((off**2).mean()) < 0.15
+
+
+def test_upwind_angle_is_unknown_where_the_ray_meets_unknown_ground() -> None:
+    """Looking north 150 m (5 cells): unknown for the five rows at the edge and the five south of a hole, no others."""
+    values = np.zeros((30, 20), dtype=np.float32)
+    values[15, 8] = np.nan
+    got = upwind_tangent(field(values), 0.0, 150.0).values
+    expected = np.zeros(values.shape, dtype=bool)
+    expected[:5] = True
+    expected[15:21, 8] = True
+    assert (np.isnan(got) == expected).all()
+
+
+@pytest.mark.parametrize("azimuth", [0.0, 22.5, 67.5, 101.0, 190.0, 250.0])
+def test_upwind_angle_does_not_depend_on_the_window(azimuth: float) -> None:
+    """A part of the lattice, with the reach as its margin, gives the whole's bits."""
+    values = hills(90, 5)
+    whole = upwind_tangent(field(values, west_m=300_000.0, north_m=-60_000.0), azimuth, 300.0).values
+    part = field(values[13:77, 21:85], west_m=300_000.0 + 21 * 30, north_m=-60_000.0 - 13 * 30)
+    got = upwind_tangent(part, azimuth, 300.0).values
+    np.testing.assert_array_equal(got[12:-12, 12:-12], whole[25:65, 33:73])
+    assert np.isfinite(got[12:-12, 12:-12]).all()
+
+
+def test_refuses_a_reach_within_the_cell() -> None:
+    """The reach and the cell are named."""
+    with pytest.raises(GridError, match=r"20 m was asked for on cells of 30 m"):
+        upwind_tangent(field(np.zeros((9, 9))), 0.0, 20.0)
+
+
+# what must always hold
+
+
+@settings(max_examples=40, deadline=None)
+@given(st.floats(0, 360), st.integers(0, 2**32 - 1), st.integers(0, 14), st.integers(0, 14), st.floats(0.0, 500.0))
+def test_adding_ground_never_lowers_a_skyline(azimuth: float, seed: int, row: int, col: int, more_m: float) -> None:
+    """Raise one cell: no other cell's skyline falls. (Its neighbours across are left out: they are read beside it.)"""
+    values = np.random.default_rng(seed).normal(100, 30, (15, 15))
+    raised = values.copy()
+    raised[row, col] += more_m
+    for before, after in (
+        (horizon_tangent(field(values), azimuth), horizon_tangent(field(raised), azimuth)),
+        (upwind_tangent(field(values), azimuth, 150.0).values, upwind_tangent(field(raised), azimuth, 150.0).values),
+    ):
+        fell = after < before - 1e-5
+        fell[max(row - 1, 0) : row + 2, max(col - 1, 0) : col + 2] = False
+        assert not fell.any()
+
+
+def test_kernels_agree_with_their_python_forms() -> None:
+    """Compiled and interpreted, steep and flat lines, a hole: equal to float32's steps."""
+    values = hills(14, 6)[:, :12].copy()
+    values[5, 5] = np.nan
+    for azimuth in (0.0, 25.0, 110.0, 225.0):
+        lines = _lines(field(values).grid, azimuth)
+        rays = _rays(lines, 3)
+        common = (values, lines.by_row, lines.ascending, lines.whole, lines.part, lines.spacing_m)
+        outs = []
+        for form in (lambda f: f, lambda f: f.py_func):
+            skyline, upwind = np.empty(values.shape, np.float32), np.empty(values.shape, np.float32)
+            with np.errstate(all="ignore"):
+                form(march_kernel.near_tangents)(values, *rays, lines.spacing_m, 1e-7, skyline, 0, 14)
+                strips = -(-lines.lines // 4)
+                form(kernel.raise_to_horizon)(*common, 1e-7, 3, lines.first_line, 4, skyline, 0, strips)
+                form(march_kernel.reach_tangents)(values, *rays, lines.spacing_m, np.float32(10), upwind, 0, 14)
+            outs.append((skyline, upwind))
+        for compiled, plain in zip(*outs, strict=True):
+            np.testing.assert_allclose(compiled, plain, rtol=1e-5, atol=1e-6)
+            assert np.isfinite(compiled).sum() > 40
+
+
+def test_profile_kernel_agrees_with_its_python_form() -> None:
+    """Compiled and interpreted rays, one of them over a hole."""
+    values = hills(14, 7)
+    values[3, 9] = np.nan
+    outs = []
+    for form in (lambda f: f, lambda f: f.py_func):
+        tangent, seen = np.empty((2, 8)), np.empty((2, 8))
+        points = (np.array([6.3, 7.0]), np.array([6.9, 2.0]), np.radians(np.arange(8) * 45.0 + 0.5))
+        form(profile_kernel.profiles)(values, 30.0, *points, 2.0, 1e-7, 300.0, tangent, seen, 0, 2)
+        outs.append((tangent, seen))
+    for compiled, plain in zip(*outs, strict=True):
+        np.testing.assert_allclose(compiled, plain, rtol=1e-9)
