@@ -225,7 +225,6 @@ def _from_text(texts: NDArray[np.object_]) -> tuple[NDArray[np.object_], NDArray
     problems = np.full(len(texts), "", dtype=object)
     blank = np.array([not text.strip() for text in texts], dtype=bool)
     bare = np.array([re.sub(r"^\s*SRID=\d+;", "", text) for text in texts], dtype=object)
-    bare[blank] = None
     geometry: NDArray[np.object_] = np.array(shapely.from_wkt(bare, on_invalid="ignore"), dtype=object)
     missing = shapely.is_missing(geometry)
     for row in np.flatnonzero(missing):

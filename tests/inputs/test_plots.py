@@ -357,3 +357,13 @@ def test_the_stated_point_of_a_bent_plot_lies_on_it(tmp_path: Path) -> None:
 def test_a_radius_that_is_none_is_refused(tmp_path: Path, radius: float) -> None:
     with pytest.raises(InputError, match="point_radius_m"):
         read_plots(text(tmp_path / "p.csv", "id,lon,lat\n1,39.5,-4.5\n"), point_radius_m=radius)
+
+
+@pytest.mark.parametrize(("place", "shift"), [((36.0, -2.0), "(2)"), ((35.0, -9.0), "(3)")])
+def test_of_several_published_shifts_the_one_for_the_terrain_is_taken(
+    tmp_path: Path, place: tuple[float, float], shift: str
+) -> None:
+    """Arc 1960 to WGS 84 (2) is for the country north of about 4.7° south, (3) for its southern neighbour (EPSG)."""
+    file = text(tmp_path / "p.csv", f"id,lon,lat\n1,{place[0]},{place[1]}\n")
+    plots = read_plots(file, crs="EPSG:4210", outline=Point(place).buffer(0.2))
+    assert any(f"“Arc 1960 to WGS 84 {shift}”" in note.text for note in plots.notes)

@@ -101,6 +101,17 @@ def test_a_map_drawn_too_large_is_told_in_figures() -> None:
     assert "overlap 0.50" in found.sentence
 
 
+def test_the_edge_of_the_window_is_no_shore() -> None:
+    """A lake that runs on beyond the window: the cells at the window's edge are open water, whatever stands there."""
+    heights = hillside()
+    heights[10:30, :15] = 321.5
+    heights[11:29, 0] = 500.0
+    kind = np.zeros((60, 80), dtype=np.uint8)
+    kind[10:30, :15] = 2
+    found = water_disagreement(kind, flat_water(field(heights)), field(heights))
+    assert found.lake_shore_range_m == 0.0
+
+
 def test_a_sea_over_a_hill_is_told() -> None:
     heights = hillside()
     kind = np.zeros((60, 80), dtype=np.uint8)

@@ -259,7 +259,7 @@ def test_the_layer_counts_shores_outside_the_grid_and_picks_kinds(tmp_path: Path
     shore = shore_of(tmp_path, [circle(39.3, -4.5, 4000.0), box(39.9, -6, 42, -3)], ["lake", "sea"])
     grid = Grid(UTM, 560_010.0, -500_010.0, 90.0, 40, 50)
     for kinds in (("sea",), ("lake",), ("sea", "lake")):
-        np.testing.assert_allclose(shore_distance(shore, grid, kinds).values, true_km(shore, grid, kinds), atol=0.02)
+        np.testing.assert_allclose(shore_distance(shore, grid, kinds).values, true_km(shore, grid, kinds), atol=0.009)
     assert shore_distance(shore, grid, ("sea",)).values.min() > 20.0
 
 
