@@ -5,6 +5,7 @@ import tomllib
 from pathlib import Path
 from typing import Any
 
+import pandas as pd
 import pytest
 
 from sitescreen.brief import load_brief
@@ -35,10 +36,10 @@ def holds(want: dict[str, Any], row: Any, table: Any) -> bool:
         # a plot that was set aside or has no rank in the zone is behind every ranked one
         mine = row["rank_in_zone"]
         theirs = [table.loc[other, "rank_in_zone"] for other in want["ahead_of"]]
-        return not math.isnan(mine) and all(math.isnan(rank) or mine < rank for rank in theirs)
+        return not pd.isna(mine) and all(pd.isna(rank) or mine < rank for rank in theirs)
     value = row[want["reading"]]
-    if want.get("unknown"):
-        return bool(value != value)
+    if want.get("unknown") or pd.isna(value):
+        return bool(want.get("unknown", False)) and bool(pd.isna(value))
     if "is" in want:
         return bool(value == want["is"])
     if "is_not" in want:
@@ -100,21 +101,21 @@ def test_ranked_plots_come_from_all_six_zones(table: Any) -> None:
         {"reading": "kind", "is_not": "none"},
         {"reading": "slope_deg", "unknown": True},
         {"reading": "slope_deg"},
+        {"reading": "missing", "above": 0.0},
     ],
     ids=str,
 )
 def test_expectations_can_fail(want: dict[str, Any]) -> None:
     """The reader of truth.toml itself: each kind of expectation is refused by a row that breaks it."""
-    import pandas as pd
-
     rows = pd.DataFrame(
         {
             "set_aside": ["", ""],
             "cautions": ["", ""],
-            "rank_in_zone": [2.0, 1.0],
+            "rank_in_zone": pd.array([2, 1], dtype="Int64"),
             "slope_deg": [2.0, 5.0],
             "aspect_deg": [math.nan, 90.0],
             "kind": ["none", "closed"],
+            "missing": [pd.NA, 1],
         },
         index=["a", "b"],
     )
