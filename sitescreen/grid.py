@@ -89,11 +89,11 @@ class Grid:
 
     def x_centres_m(self) -> NDArray[np.float64]:
         """Eastings of the column centres. [m] Shape (cols,)."""
-        return self.west_m + (np.arange(self.cols) + 0.5) * self.cell_size_m
+        return np.asarray(self.west_m + (np.arange(self.cols) + 0.5) * self.cell_size_m, dtype=np.float64)
 
     def y_centres_m(self) -> NDArray[np.float64]:
         """Northings of the row centres, falling. [m] Shape (rows,)."""
-        return self.north_m - (np.arange(self.rows) + 0.5) * self.cell_size_m
+        return np.asarray(self.north_m - (np.arange(self.rows) + 0.5) * self.cell_size_m, dtype=np.float64)
 
     def part(self, bounds: Bounds) -> tuple["Grid", tuple[slice, slice]]:
         """The part of this grid inside bounds that lie on its cell edges, with the slices that cut it out.

@@ -36,7 +36,7 @@ def cell_size_m(source_spacing_m: float) -> float:
 
 def utm_zone(lon_deg: float) -> int:
     """UTM zone 1–60 by longitude alone (the exceptions round Norway are outside the climates served here)."""
-    return int(math.floor((lon_deg + 180.0) / 6.0)) % 60 + 1
+    return math.floor((lon_deg + 180.0) / 6.0) % 60 + 1
 
 
 @dataclass(frozen=True, order=True)

@@ -42,7 +42,7 @@ def shear_height_m(half_length_m: NDArray[np.float64], roughness_m: float) -> ND
     height = np.maximum(length / 3.0, 2.0 * roughness_m)
     for _ in range(60):
         height = length / np.sqrt(np.log(np.maximum(height / roughness_m, 1.001)))
-    return height
+    return np.asarray(height, dtype=np.float64)
 
 
 def shear_factor(wavenumber: NDArray[np.float64], height_m: float, roughness_m: float) -> NDArray[np.float64]:

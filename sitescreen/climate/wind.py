@@ -129,4 +129,4 @@ def _sector_weights(ventilation: Rose, year: Rose) -> tuple[FloatArray, FloatArr
 
 def _by_sector(rose: Rose, weight: FloatArray) -> FloatArray:
     sector = np.round(rose.direction_deg / 22.5).astype(np.int64) % 16
-    return np.bincount(sector, weights=weight, minlength=16)
+    return np.asarray(np.bincount(sector, weights=weight, minlength=16), dtype=np.float64)

@@ -34,7 +34,7 @@ class Coverage:
 
     def _total(self, per_cell: FloatArray) -> FloatArray:
         # bincount adds each plot's cells in their own order, so a plot's sum cannot depend on the other plots
-        return np.bincount(self.plot, weights=per_cell, minlength=len(self.cells))
+        return np.asarray(np.bincount(self.plot, weights=per_cell, minlength=len(self.cells)), dtype=np.float64)
 
     def known_share(self, values: NDArray[Any]) -> FloatArray:
         """The part of each plot's ground where a raster has a value, 0–1. Shape (n,); 0 where the plot has no cells."""
@@ -118,4 +118,5 @@ def cover(plots: Any, grid: Grid) -> Coverage:
     plot = np.repeat(np.arange(len(plots), dtype=np.int64), counts)
     cell = np.concatenate([np.asarray(ids, dtype=np.int64) for ids in found["cell_id"]] or [np.zeros(0, np.int64)])
     share = np.concatenate([np.asarray(part, dtype=np.float64) for part in found["coverage"]] or [np.zeros(0)])
-    return Coverage(plot, cell, share, np.bincount(plot, weights=share, minlength=len(plots)))
+    cells = np.asarray(np.bincount(plot, weights=share, minlength=len(plots)), dtype=np.float64)
+    return Coverage(plot, cell, share, cells)

@@ -10,7 +10,7 @@ BREEZE = load_defaults().breeze
 
 
 def test_arrival_lags_by_distance_over_front_speed() -> None:
-    """t = x/c with c = 3 m/s: 0.74 h at 8 km, 1.85 h at 20 km (computed from the definition)."""
+    """Lag = x/c with c = 3 m/s: 0.74 h at 8 km, 1.85 h at 20 km (computed from the definition)."""
     lag = arrival_h(np.array([1.0, 8.0, 20.0, 40.0]), BREEZE) - BREEZE.onset_h
     assert lag == pytest.approx([0.0926, 0.7407, 1.8519, 3.7037], abs=1e-4)
 

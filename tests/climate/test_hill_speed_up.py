@@ -34,13 +34,13 @@ def potential(monkeypatch: pytest.MonkeyPatch) -> WindSettings:
 
 def test_gaussian_ridge_in_potential_flow(potential: WindSettings) -> None:
     """√(2/π)·H/s at the crest: 0.939 H/L (Emeis, Wind Energy Meteorology, eq. 4.4–4.7). Within 1 %."""
-    ridge = _ground(lambda x, y: 50.0 * np.exp(-(x**2) / (2 * 400.0**2)))
+    ridge = _ground(lambda x, _: 50.0 * np.exp(-(x**2) / (2 * 400.0**2)))
     assert _at(hill_fields(ridge, potential).speed_up(270.0)) == pytest.approx(np.sqrt(2 / np.pi) * 50 / 400, rel=0.01)
 
 
 def test_bell_ridge_in_potential_flow(potential: WindSettings) -> None:
     """H/a at the crest, −H/(8a) at √3·a (Emeis, eq. 4.4–4.7). The far skirts of the bell are cut by the window: 3 %."""
-    bell = _ground(lambda x, y: 50.0 / (1 + (x / 450.0) ** 2), cells=1400)
+    bell = _ground(lambda x, _: 50.0 / (1 + (x / 450.0) ** 2), cells=1400)
     flow = hill_fields(bell, potential).speed_up(90.0)
     assert _at(flow, cells=1400) == pytest.approx(50 / 450, rel=0.03)
     assert _at(flow, np.sqrt(3) * 450.0, cells=1400) == pytest.approx(-50 / (8 * 450), rel=0.1)
@@ -55,7 +55,7 @@ def test_round_gaussian_hill_in_potential_flow_from_any_direction(potential: Win
 
 
 def test_ridge_does_nothing_to_wind_along_it(potential: WindSettings) -> None:
-    ridge = _ground(lambda x, y: 50.0 * np.exp(-(x**2) / (2 * 400.0**2)))
+    ridge = _ground(lambda x, _: 50.0 * np.exp(-(x**2) / (2 * 400.0**2)))
     assert abs(_at(hill_fields(ridge, potential).speed_up(0.0))) < 0.002
 
 
@@ -85,7 +85,7 @@ def test_crest_at_10_m_against_the_guideline(length_m: float) -> None:
     """
     spread, height = length_m / HALF, 0.2 * length_m
     step = 10.0 if length_m < 200 else 30.0
-    ridge = _ground(lambda x, y: height * np.exp(-(x**2) / (2 * spread**2)), step_m=step)
+    ridge = _ground(lambda x, _: height * np.exp(-(x**2) / (2 * spread**2)), step_m=step)
     hill = _ground(lambda x, y: height * np.exp(-(x**2 + y**2) / (2 * spread**2)), step_m=step)
     over_ridge = _at(hill_fields(ridge, NO_CUTS).speed_up(270.0)) / (2.0 * 0.2 * np.exp(-30.0 / length_m))
     over_hill = _at(hill_fields(hill, NO_CUTS).speed_up(270.0)) / (1.6 * 0.2 * np.exp(-40.0 / length_m))
