@@ -51,7 +51,7 @@ def shear_factor(wavenumber: NDArray[np.float64], height_m: float, roughness_m: 
     above = np.log(np.maximum(shear_height_m(length, roughness_m) / roughness_m, 1.001)) / np.log(
         height_m / roughness_m
     )
-    return np.maximum(above**2, 1.0)
+    return np.asarray(np.maximum(above**2, 1.0), dtype=np.float64)
 
 
 def hill_fields(elevation: Field, settings: WindSettings) -> HillFields:
