@@ -43,8 +43,7 @@ def write_results(screening: "Screening", folder: Path) -> None:
         write_plots(table, columns, stage / "plots.gpkg")
         if screening.brief.output.layers:
             (stage / layers.FOLDER).mkdir()
-            for key, field in screening.fields.items():
-                layers.write_layer(field, stage / layers.FOLDER / layers.file_name(key))
+            layers.write_layers(screening.fields, stage / layers.FOLDER)
         write_map(screening, columns, stage / "map.html")
         record = {
             **screening.record,

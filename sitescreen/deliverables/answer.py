@@ -3,7 +3,7 @@
 from typing import TYPE_CHECKING, Any
 
 from sitescreen.deliverables.columns import BY_NAME
-from sitescreen.deliverables.table import value_of
+from sitescreen.deliverables.table import value_of, whole_mark
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -33,7 +33,7 @@ def answer(table: "pd.DataFrame") -> str:
     if ranked.empty:
         return f"Of {plots}, none could be ranked: each is set aside, with its reason below."
     leaders = ranked[ranked["rank"] == ranked["rank"].iloc[0]]
-    mark = f"{leaders['overall_mark'].iloc[0]:.0f} of 100"
+    mark = f"{whole_mark(leaders['overall_mark'].iloc[0])} of 100"
     if len(leaders) == 1:
         head = f"Of {plots}, {_called(leaders.iloc[0])} comes first, with {mark}"
     else:
@@ -47,7 +47,7 @@ def answer(table: "pd.DataFrame") -> str:
 
 def _called(row: Any) -> str:
     name, plot = value_of(BY_NAME["name"], row.get("name")), str(row["plot"])
-    return f"{name} (plot {plot})" if name else f"plot {plot}"
+    return f"{name} (plot\u00a0{plot})" if name else f"plot\u00a0{plot}"
 
 
 def _list(words: list[str]) -> str:

@@ -11,6 +11,7 @@ from sitescreen.deliverables.columns import Column
 from sitescreen.deliverables.questions import OVERALL, Asked, View, question_marks
 from sitescreen.deliverables.sheet import Sheet
 from sitescreen.deliverables.table import value_of
+from sitescreen.grid import Bounds
 
 if TYPE_CHECKING:
     from sitescreen.screening import Screening
@@ -43,7 +44,6 @@ def page_data(
     views : mapping of question to its views
     """
     table = screening.table
-    west, south, east, north = sheet.bounds_deg
     by_name = {column.name: column for column in columns}
 
     def column_values(name: str) -> list[Any]:
@@ -61,7 +61,8 @@ def page_data(
             readings.append(_words(column) | {"values": values})
     return {
         "title": screening.brief.title or "",
-        "bounds": [[south, west], [north, east]],
+        "bounds": _corners(sheet.bounds_deg),
+        "focus": _corners(sheet.focus_deg),
         "ramp": RAMP,
         "edges": CLASS_EDGES,
         "shortlist": screening.brief.judge.shortlist,
@@ -108,6 +109,11 @@ def page_data(
     }  # fmt: skip
 
 
+def _corners(bounds: Bounds) -> list[list[float]]:
+    west, south, east, north = bounds
+    return [[south, west], [north, east]]
+
+
 def _words(column: Column) -> dict[str, Any]:
     return {"name": column.name, "title": column.title, "unit": column.unit, "decimals": column.decimals,
             "says": column.says}  # fmt: skip
@@ -118,6 +124,7 @@ def _view(view: View) -> dict[str, Any]:
         "title": view.title,
         "zones": view.zones,
         "ranges": [{"class": one.number, "words": one.words} for one in view.ranges],
+        "bare": view.is_best_bare,
         "picture": view.picture,
     }
 

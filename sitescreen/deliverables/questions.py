@@ -97,8 +97,13 @@ _OTHER_COLUMNS = {
     "hollow_depth_m": Column("hollow_depth_m", "number", 1, "m", "hollow depth", ""),
 }
 
-MOST_VIEWS = 3
+MOST_VIEWS = 6
 """Pictures for one question, where zones want different things."""
+
+BARE = {"cold"}
+"""Questions whose best class is left bare and the rest edged in ink: hollows are small, all other ground is well."""
+
+INK = (43, 42, 39)
 
 
 @dataclass(frozen=True)
@@ -117,6 +122,8 @@ class View:
         Best first.
     picture : str
         A data address.
+    is_best_bare : bool
+        The best class is left bare.
     """
 
     reading: str
@@ -124,6 +131,7 @@ class View:
     zones: tuple[str, ...]
     ranges: tuple[ClassRange, ...]
     picture: str
+    is_best_bare: bool
 
 
 def asked_here(table: "pd.DataFrame", profiles: Mapping[str, "ZoneProfile"]) -> tuple[Asked, ...]:
@@ -196,7 +204,7 @@ def views(
     ]
     if not chosen:
         chosen += [(key, curve, title, ()) for key, curve, title in PLAIN.get(question, ()) if key in groups][:1]
-    return tuple(_drawn(chosen, groups, sheet, water))
+    return tuple(_drawn(chosen, groups, sheet, water, question in BARE))
 
 
 def _drawn(
@@ -204,22 +212,23 @@ def _drawn(
     groups: Mapping[str, list[Field]],
     sheet: Sheet,
     water: NDArray[np.bool_],
+    is_best_bare: bool,
 ) -> Iterator[View]:
     for reading, curve, title, zones in chosen:
         parts = [part for field in groups[reading] if (part := on_sheet(field, sheet)) is not None]
         if parts:
-            picture = field_picture(parts, curve, sheet, water)
-            yield View(
-                reading,
-                title[:1].upper() + title[1:],
-                zones,
-                class_ranges(curve, _column(reading)),
-                webp(picture, lossless=True),
-            )
+            address = webp(field_picture(parts, curve, sheet, water, is_best_bare), lossless=True)
+            ranges = class_ranges(curve, _column(reading))
+            yield View(reading, title[:1].upper() + title[1:], zones, ranges, address, is_best_bare)
 
 
-def field_picture(parts: Sequence[Field], curve: Curve, sheet: Sheet, water: NDArray[np.bool_]) -> NDArray[np.uint8]:
-    """A field in the five colours, shape (rows, cols, 4); clear where unknown and on water."""
+def field_picture(
+    parts: Sequence[Field], curve: Curve, sheet: Sheet, water: NDArray[np.bool_], is_best_bare: bool = False
+) -> NDArray[np.uint8]:
+    """A field in the five colours, shape (rows, cols, 4); clear where unknown and on water.
+
+    With ``is_best_bare`` the best class is clear too, and an ink line edges the others.
+    """
     is_coarser = all(sheet.pixel_m > 1.5 * part.grid.cell_size_m for part in parts)
     classes = class_of(marks_by(curve, warped(parts, sheet, exact=not is_coarser)))
     clear = np.isnan(classes) | water
@@ -227,8 +236,23 @@ def field_picture(parts: Sequence[Field], curve: Curve, sheet: Sheet, water: NDA
     picture = np.zeros((*classes.shape, 4), dtype=np.uint8)
     picture[..., :3] = colours[np.nan_to_num(classes).astype(np.intp)]
     picture[..., 3] = 255
+    if is_best_bare:
+        worse = ~clear & (classes < len(RAMP) - 1)
+        edge = _rim(worse) & ~clear
+        picture[edge] = (*INK, 255)
+        clear |= ~worse & ~edge
     picture[clear] = 0
     return picture
+
+
+def _rim(area: NDArray[np.bool_]) -> NDArray[np.bool_]:
+    """The pixels just outside an area."""
+    grown = area.copy()
+    grown[1:] |= area[:-1]
+    grown[:-1] |= area[1:]
+    grown[:, 1:] |= area[:, :-1]
+    grown[:, :-1] |= area[:, 1:]
+    return grown & ~area
 
 
 def _column(reading: str) -> Column:

@@ -26,9 +26,12 @@ MOST_PIXELS = 1600
 """Along the longer side: sharp on a wide screen, small enough to mail."""
 
 LEAST_SIDE_M = 4_000.0
-MARGIN_SHARE = 0.07
-SHAPE = 1.55
-"""Width over height that the sheet is filled up to where there is ground, about that of the map on a wide screen."""
+MARGIN_SHARE = 0.06
+SHAPE = 1.75
+"""Width over height that the sheet is filled up to where there is ground: that of the map on a wide screen."""
+
+MORE = 1.12
+"""The sheet reaches so much farther than what the map shows at first."""
 
 
 @dataclass(frozen=True)
@@ -41,11 +44,14 @@ class Sheet:
         West, south, east, north in EPSG:3857.
     cols, rows : int
         Pixels.
+    focus_m : Bounds, optional
+        The part with the plots, which the map shows at first; the whole sheet if left out.
     """
 
     bounds_m: Bounds
     cols: int
     rows: int
+    focus_m: Bounds | None = None
 
     @property
     def transform(self) -> "Affine":
@@ -64,6 +70,12 @@ class Sheet:
     def bounds_deg(self) -> Bounds:
         """West, south, east, north. [°]"""
         west, south, east, north = transform_bounds(WEB_MERCATOR, "EPSG:4326", *self.bounds_m)
+        return west, south, east, north
+
+    @cached_property
+    def focus_deg(self) -> Bounds:
+        """West, south, east, north of the part with the plots. [°]"""
+        west, south, east, north = transform_bounds(WEB_MERCATOR, "EPSG:4326", *(self.focus_m or self.bounds_m))
         return west, south, east, north
 
     def pixels(self, lon: NDArray[np.float64], lat: NDArray[np.float64]) -> NDArray[np.float64]:
@@ -106,8 +118,9 @@ def sheet_for(table: "gpd.GeoDataFrame", ground: Sequence[Field]) -> Sheet:
     margin = max(MARGIN_SHARE * max(east - west, north - south), LEAST_SIDE_M / 4)
     width = max(east - west + 2 * margin, LEAST_SIDE_M)
     height = max(north - south + 2 * margin, LEAST_SIDE_M)
-    width, height = max(width, height * SHAPE), max(height, width / SHAPE)
     x, y = (west + east) / 2, (south + north) / 2
+    focus = (x - width / 2, y - height / 2, x + width / 2, y + height / 2)
+    width, height = MORE * max(width, height * SHAPE), MORE * max(height, width / SHAPE)
     wide = (x - width / 2, y - height / 2, x + width / 2, y + height / 2)
     if data:
         wide = _common(wide, _around(data)) or wide
@@ -116,7 +129,8 @@ def sheet_for(table: "gpd.GeoDataFrame", ground: Sequence[Field]) -> Sheet:
     pixel_m = max(side / MOST_PIXELS, finest / 2)
     cols, rows = max(2, round((wide[2] - wide[0]) / pixel_m)), max(2, round((wide[3] - wide[1]) / pixel_m))
     west, north = wide[0], wide[3]
-    return Sheet((west, north - rows * pixel_m, west + cols * pixel_m, north), cols, rows)
+    bounds = (west, north - rows * pixel_m, west + cols * pixel_m, north)
+    return Sheet(bounds, cols, rows, _common(focus, bounds))
 
 
 def _apart(bounds: Any) -> Bounds:

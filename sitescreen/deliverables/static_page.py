@@ -9,7 +9,7 @@ import numpy as np
 from sitescreen.deliverables.classes import RAMP, class_of
 from sitescreen.deliverables.columns import BY_NAME
 from sitescreen.deliverables.sheet import Sheet
-from sitescreen.deliverables.table import value_of
+from sitescreen.deliverables.table import value_of, whole_mark
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -37,7 +37,7 @@ def _ranking_row(row: Any, screening: "Screening") -> str:
         f"{int(row['rank'])}",
         _called(row),
         zone.title if zone else str(row["zone"]),
-        f"{row['overall_mark']:.0f}",
+        whole_mark(row["overall_mark"]),
         next(iter(reasons.for_), "") if reasons else "",
         next(iter(reasons.against), "") if reasons else "",
     ]

@@ -45,6 +45,11 @@ def value_of(column: Column, value: Any) -> str | int | float | None:
     return round(float(value), column.decimals) + 0.0  # + 0.0 turns −0.0 into 0.0
 
 
+def whole_mark(mark: float) -> str:
+    """A mark as people read it, without decimals; halves go up, as they do in the page's scripts."""
+    return str(math.floor(round(float(mark), 1) + 0.5))
+
+
 def _na() -> Any:
     import pandas as pd
 

@@ -17,24 +17,29 @@
     const one = page.question(), view = one && one.views[state.view];
     const items = [];
     if (view) {
-      for (const range of view.ranges) if (range.words) items.push([page.sign(range.class), range.words]);
+      for (const range of view.ranges) {
+        const isBare = view.bare && range.class === 4;
+        if (range.words) items.push([page.sign(isBare ? "bare" : range.class), isBare ? `${range.words}, left bare` : range.words]);
+      }
     } else {
       for (const number of [4, 3, 2, 1, 0]) items.push([page.sign(number), `${[0, ...data.edges][number]}–${[...data.edges, 100][number]}`]);
     }
     if (page.ranked.some((i) => page.marks()[i] === null && !page.asks(i))) items.push([page.sign("unasked"), "not asked in its zone"]);
     if (page.ranked.some((i) => page.marks()[i] === null && page.asks(i))) items.push([page.sign("unknown"), "unknown"]);
     if (page.aside.length) items.push([page.sign("aside"), "set aside"]);
-    const judged = (each) => (each.zones.length ? `${each.title}, judged for ${each.zones.map((zone) => data.zones[zone].title.toLowerCase()).join(", ")}` : each.title);
+    const zonesOf = (each) => each.zones.map((zone) => data.zones[zone].title.toLowerCase()).join(", ");
+    const judged = (each) => (each.zones.length ? `${each.title}, judged for ${zonesOf(each)}` : each.title);
     const title = make("div", { class: "legend-title" });
     if (one && one.views.length > 1) {
-      title.append(make("span", { class: "legend-views" }, ...one.views.map((each, k) => make("button", { type: "button", "aria-pressed": String(k === state.view),
-        onclick: () => page.change({ view: k }) }, judged(each)))));
+      title.append(`${view.title}, judged for `, make("span", { class: "legend-views" }, ...one.views.map((each, k) => make("button", { type: "button",
+        "aria-pressed": String(k === state.view), onclick: () => page.change({ view: k }) }, zonesOf(each)))));
     } else if (view) {
       title.append(judged(view));
     } else {
       title.append(one ? `Plots by their mark for ${one.column.toLowerCase()}, of 100` : "Plots by their overall mark, of 100");
     }
-    const darker = view ? "Dark ground is better ground. Plots show their own mark, by their own zone, in the same five steps." : "Dark is better. Numbers are ranks.";
+    const best = view && view.bare ? "Bare ground is best, then dark ground." : "Dark ground is better ground.";
+    const darker = view ? `${best} Plots show their own mark, by their own zone, in the same five steps.` : "Dark is better. Numbers are ranks.";
     legend.hidden = false;
     legend.replaceChildren(make("div", { class: "legend-row" }, title, ...items.map(([sign, words]) => make("span", { class: "legend-item" }, sign, words))),
       make("p", {}, `${darker} ${(one || data.overall).method}`));

@@ -5,7 +5,7 @@ const plan = (() => {
   const STEP = 100000, SIGN = 5, LARGE = 15;
   const map = window.map_plan;
   const holder = document.getElementById("map_plan");
-  const bounds = L.latLngBounds(data.bounds);
+  const bounds = L.latLngBounds(data.bounds), focus = L.latLngBounds(data.focus);
   const toMercator = (lon, lat) => map.project(L.latLng(lat, lon), 0);
 
   // corners once, in the map's own units at zoom 0; a zoom only scales them
@@ -249,10 +249,8 @@ const plan = (() => {
   }
 
   function whole() {
-    map.fitBounds(bounds, { animate: false });
-    // fill the frame with ground: the sheet may overlap it, its plots may not
-    const inner = bounds.pad(-0.06), tight = map.getBoundsZoom(bounds, true);
-    if (map.getBoundsZoom(inner) >= tight) map.setView(bounds.getCenter(), tight, { animate: false });
+    map.fitBounds(focus, { animate: false });
+    map.panInsideBounds(bounds, { animate: false }); // no bare paper on one side where there is ground on the other
   }
 
   function start() {

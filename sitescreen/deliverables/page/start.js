@@ -31,6 +31,8 @@ const page = (() => {
     if (kind === "aside") {
       svg.append(draw("path", { d: "M2 9 L9 2 M2 13.4 L13.4 2 M6.5 13 L13 6.5", stroke: "#2b2a27", "stroke-width": 0.8 }));
       svg.append(draw("rect", { x: 2, y: 2, width: 11, height: 11, fill: "none", stroke: "#2b2a27", "stroke-width": 1.3, "stroke-dasharray": "2.4 1.8" }));
+    } else if (kind === "bare") {
+      svg.append(draw("rect", { x: 2, y: 2, width: 11, height: 11, fill: "#ece6d9", stroke: "#cfc7b6", "stroke-width": 1 }));
     } else if (kind === "unasked") {
       svg.append(draw("rect", { x: 2, y: 2, width: 11, height: 11, fill: "#faf7f0", stroke: "#2b2a27", "stroke-width": 1.2 }));
     } else if (kind === "unknown") {
