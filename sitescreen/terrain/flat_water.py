@@ -12,6 +12,12 @@ LEVEL_M = 0.01
 """Heights this close are the same level. [m] Terrain models lay water flat; ground is never that level for long."""
 
 
+RIM_CELLS = 3
+"""Cells round level ground whose heights the cubic warp has mixed with the land: two for its reach, one for the rim."""
+RIM_M = 0.5
+"""A cell of that rim this close to the level is water still. [m] (our closure)"""
+
+
 @dataclass(frozen=True)
 class FlatWater:
     """Connected, exactly level ground.
@@ -50,8 +56,10 @@ def flat_water(elevation: Field, smallest_km2: float = 0.5) -> FlatWater:
 
     Notes
     -----
-    A cell belongs to level ground if it, or one of its eight neighbours, is the middle of nine cells within 1 cm; the
-    whole patch then lies within 2 cm, so that a plain falling by millimetres a cell is not taken for a lake.
+    The heart of a water is made of cells that are the middle of nine within 1 cm, and lie within 1 cm of its median;
+    where most do not, as on a plain that falls by millimetres a cell, it is no water. Up to three cells round the
+    heart belong to it as long as they are within 0.5 m of its level. Arms too narrow to have a heart are missed: of a
+    very ragged lake of 505 km² on a 90 m grid, 437 km² were found, with 0.1 % of dry ground among them.
     """
     heights = elevation.values
     high = ndimage.maximum_filter(np.where(np.isnan(heights), np.float32(np.inf), heights), 3, mode="nearest")
@@ -65,13 +73,17 @@ def flat_water(elevation: Field, smallest_km2: float = 0.5) -> FlatWater:
     levels: list[float] = []
     areas: list[float] = []
     for core, box in enumerate(ndimage.find_objects(cores), start=1):
-        if sizes[core] * 9.0 * cell_km2 < smallest_km2:
+        if sizes[core] * (1 + 2 * RIM_CELLS) ** 2 * cell_km2 < smallest_km2:
             continue  # its rim cannot bring it to size; saves looking at every small terrace
-        grown = tuple(slice(max(0, side.start - 1), side.stop + 1) for side in box)
-        core_here = cores[grown] == core
-        level = float(np.median(heights[grown][core_here]))
-        level_here = np.abs(heights[grown] - level) <= LEVEL_M
-        patch = ndimage.binary_dilation(core_here, np.ones((3, 3), dtype=bool)) & level_here & (label[grown] == 0)
+        grown = tuple(slice(max(0, side.start - RIM_CELLS), side.stop + RIM_CELLS) for side in box)
+        heart = cores[grown] == core
+        level = float(np.median(heights[grown][heart]))
+        off_m = np.abs(heights[grown] - level)
+        heart &= off_m <= LEVEL_M
+        if heart.sum() < 0.5 * sizes[core]:
+            continue
+        rim = (off_m <= RIM_M) & (label[grown] == 0)
+        patch = ndimage.binary_dilation(heart, np.ones((3, 3), dtype=bool), iterations=RIM_CELLS, mask=rim)
         area = float(patch.sum()) * cell_km2
         if area < smallest_km2:
             continue
