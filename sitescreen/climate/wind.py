@@ -62,9 +62,9 @@ def wind_fields(
         not slowed twice, by its own flow and by its rim. ΔS is bent towards its caps, x → cap·tanh(x/cap). Shelter
         W = 1 − 0.7·smoothstep((tan Sx − 0.10)/0.30) of the largest upwind angle Sx (Winstral & Marks 2002, Hydrol.
         Process. 16:3585–3603); the closure is ours. Then ventilation = Σ p·U·F / Σ p·U in the first slot, ridge
-        exposure = (Σ p·U³·F³ / Σ p·U³)^⅓ over the year, so that strong winds count most, and sheltered fraction = 1 − Σ p·W over
-        the year (high = sheltered). NaN where the ground upwind is unknown in any
-        sector that the rose uses, and within 1 km of unknown ground.
+        exposure = (Σ p·U³·F³ / Σ p·U³)^⅓ over the year, so that strong winds count most, and sheltered fraction
+        = 1 − Σ p·W over the year (high = sheltered). NaN where the ground upwind is unknown in any sector that the rose
+        uses, and within 1 km of unknown ground.
     """
     hills = hill_fields(elevation, settings)
     air, energy, kept_off = (np.zeros(elevation.grid.shape, dtype=np.float32) for _ in range(3))
