@@ -80,6 +80,53 @@ def _sum(
     return total, weights, missing
 
 
+@njit(cache=True)
+def _plane(
+    ground: Any, row: int, col: int, past_row: float, past_col: float, scale_v: float, scale_u: float, weights_u: Any
+) -> float:
+    """Height at a point of the plane that fits the known heights around it best, near ones counting most.
+
+    Beside a gap or the data's edge the known heights lie to one side. Their mean would be the height of their middle:
+    on a slope of 20 % half a 30 m cell makes that 3 m, a bank that is not there. Arguments as for :func:`_sum`.
+    """
+    first_u = math.ceil(past_col - 2.0 * scale_u)
+    count_u = math.floor(past_col + 2.0 * scale_u) + 1 - first_u
+    for m in range(count_u):
+        weights_u[m] = max(0.0, 1.0 - abs(first_u + m - past_col) / (2.0 * scale_u))
+    first_v = math.ceil(past_row - 2.0 * scale_v)
+    count_v = math.floor(past_row + 2.0 * scale_v) + 1 - first_v
+    at_x, at_y, at_z, weights = 0.0, 0.0, 0.0, 0.0
+    xx, xy, yy, xz, yz = 0.0, 0.0, 0.0, 0.0, 0.0
+    base = 0.0  # the first height: sums of differences keep their digits
+    for k in range(count_v):
+        y = (first_v + k - past_row) / scale_v
+        weight_v = max(0.0, 1.0 - abs(y) / 2.0)
+        for m in range(count_u):
+            weight = weight_v * weights_u[m]
+            r, c = row + first_v + k, col + first_u + m
+            if weight == 0.0 or not (0 <= r < ground.shape[0] and 0 <= c < ground.shape[1]):
+                continue
+            if math.isnan(ground[r, c]):
+                continue
+            if weights == 0.0:
+                base = float(ground[r, c])
+            x, z = (first_u + m - past_col) / scale_u, float(ground[r, c]) - base
+            weights += weight
+            at_x, at_y, at_z = at_x + weight * x, at_y + weight * y, at_z + weight * z
+            xx, xy, yy = xx + weight * x * x, xy + weight * x * y, yy + weight * y * y
+            xz, yz = xz + weight * x * z, yz + weight * y * z
+    at_x, at_y, at_z = at_x / weights, at_y / weights, at_z / weights
+    xx, xy, yy = xx / weights - at_x * at_x, xy / weights - at_x * at_y, yy / weights - at_y * at_y
+    xz, yz = xz / weights - at_x * at_z, yz / weights - at_y * at_z
+    slope_x, slope_y = 0.0, 0.0
+    determinant = xx * yy - xy * xy
+    if determinant > 1e-3:
+        slope_x, slope_y = (xz * yy - yz * xy) / determinant, (yz * xx - xz * xy) / determinant
+    elif xx + yy > 1e-3:  # the known cells lie in one line: the slope along it is all that they tell
+        slope_x, slope_y = xz / (xx + yy), yz / (xx + yy)
+    return base + at_z - slope_x * at_x - slope_y * at_y
+
+
 @njit(cache=True, parallel=True)
 def read_cells(
     ground: Any,
@@ -158,5 +205,8 @@ def read_cells(
             if missing:
                 # beside a gap the cubic's negative lobes would swing; the tent's weights are all positive
                 total, weights, missing = _sum(ground, r, c, past_v, past_u, scale_v, scale_u, False, weights_u)
-            heights[row, col] = total / weights
+            if missing:
+                heights[row, col] = _plane(ground, r, c, past_v, past_u, scale_v, scale_u, weights_u)
+            else:
+                heights[row, col] = total / weights
             under[row, col] = CLOSED if closed[at_row, at_col] else KNOWN
