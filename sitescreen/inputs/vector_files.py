@@ -67,7 +67,9 @@ def _layers(file: Path, where: str) -> list[str]:
             f"Correct the name under [{where}] in the brief, or copy the file to that place",
         )
     try:
-        listed = [(str(name), kind) for name, kind in pyogrio.list_layers(file)]
+        with warnings.catch_warnings():
+            warnings.simplefilter("ignore")  # remarks such as an odd version of GPX; what cannot be read still raises
+            listed = [(str(name), kind) for name, kind in pyogrio.list_layers(file)]
     except (DataSourceError, DataLayerError, OSError, UnicodeDecodeError) as error:
         raise InputError(
             f"the {where} file {file.name} cannot be read as a map layer ({_short(error)})",

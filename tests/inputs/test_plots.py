@@ -304,11 +304,27 @@ def test_a_row_with_too_many_values_says_so(tmp_path: Path) -> None:
         ("p.gpkg", "abc", "cannot be read"),
         ("p.xlsx", "abc", "cannot be opened"),
         ("p.geojson", '{"type":"FeatureCollection","features":[]}', "no rows|no layer"),
+        ("p.geojson", "{", "cannot be read"),
+        ("p.kml", "<kml/>", "cannot be read"),
+        ("p.gpx", "<gpx/>", "no rows"),
+        ("p.shp", "", "cannot be read"),
     ],
 )
 def test_unusable_files_are_refused_in_words(tmp_path: Path, name: str, content: str, why: str) -> None:
     with pytest.raises(InputError, match=why):
         read_plots(text(tmp_path / name, content))
+
+
+def test_odd_rows_come_out_with_their_reason(tmp_path: Path) -> None:
+    content = "plot,LONGITUDE (deg),Latitude [deg]\n1,1e999,-4.5\n2,39.5,-4.5\n3,139.5,-94.5\n4,,\n5,39.5\n"
+    table = read_plots(text(tmp_path / "p.csv", content), outline=TERRAIN).table
+    assert table["outcome"].tolist() == [
+        "its longitude “1e999” is not a number",
+        "",
+        "its coordinates lie outside ±180° of longitude or ±90° of latitude",
+        "its longitude is empty",
+        "its latitude is empty",
+    ]
 
 
 def test_a_missing_file_and_a_cut_one_are_refused(tmp_path: Path) -> None:
