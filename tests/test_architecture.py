@@ -64,9 +64,7 @@ def test_only_inputs_open_data_files() -> None:
 
 
 def test_only_deliverables_write_files() -> None:
-    writes = re.compile(
-        r"\.(to_file|to_csv|to_excel|to_parquet|write_text|write_bytes|write_dataframe|save|mkdir|rename)$"
-    )
+    writes = re.compile(r"\.(to_file|to_csv|to_excel|to_parquet|write_text|write_bytes|write_dataframe|save|mkdir)$")
     writers = {
         str(path.relative_to(PACKAGE)): name
         for path in MODULES

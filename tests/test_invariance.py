@@ -18,8 +18,8 @@ import rasterio
 from affine import Affine
 from pyproj import Transformer
 from shapely.geometry import Polygon, box
-from sitescreen.brief import load_brief
 
+from sitescreen.brief import load_brief
 from sitescreen.lattice import BLOCK_CELLS, blocks_of
 from sitescreen.screening import screen
 

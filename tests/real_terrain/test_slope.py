@@ -8,10 +8,10 @@ import numpy as np
 import pytest
 import rasterio
 from numpy.typing import NDArray
-from sitescreen.terrain.slope import aspect_deg, slope_deg
 
 from sitescreen.grid import Field
 from sitescreen.screening import Screening
+from sitescreen.terrain.slope import aspect_deg, slope_deg
 
 pytestmark = pytest.mark.real_terrain
 
