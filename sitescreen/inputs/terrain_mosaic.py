@@ -164,7 +164,7 @@ class Mosaic:
             shapely.box(col, row, col + file.cols, row + file.rows)
             for file, (row, col) in zip(self.files, self.places, strict=True)
         ]
-        polygons = shapely.get_parts(shapely.union_all(boxes))
+        polygons = shapely.get_parts(shapely.normalize(shapely.union_all(boxes)))
         return shapely.multipolygons([self._moved(one) for one in polygons])
 
     def _moved(self, polygon: Any) -> Any:
