@@ -17,6 +17,7 @@ from sitescreen.inputs.terrain import Terrain, open_terrain
 from sitescreen.inputs.wind import WindTable, assumed_wind, read_wind
 from sitescreen.inputs.zone_map import read_zone_map
 from sitescreen.notes import Note
+from sitescreen.settings import load_defaults
 
 
 @dataclass(frozen=True)
@@ -50,7 +51,8 @@ def read_inputs(brief: Brief) -> Inputs:
     """
     terrain = open_terrain(brief.terrain)
     outline = terrain.data_outline()
-    shore = read_shore(brief.shore.file, brief.shore.kind, outline) if brief.shore else None
+    smallest_km2 = load_defaults().shore.smallest_lake_km2
+    shore = read_shore(brief.shore.file, brief.shore.kind, outline, smallest_km2) if brief.shore else None
     plots = read_plots(
         brief.plots.file,
         id_column=brief.plots.id,
