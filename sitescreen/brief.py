@@ -107,7 +107,7 @@ class PlotsBrief(_Part):
     name: Text | None = None
     zone: Text | None = None
     crs: Text | None = None
-    point_radius_m: Annotated[Number, Field(gt=0, le=5000)] = 50.0
+    point_radius_m: Annotated[Number, Field(gt=0, le=5000)] = 60.0  # 12 cells of 30 m: slope needs 9
     footprint_m2: Annotated[Number, Field(gt=0, le=1e6)] = 400.0
 
 

@@ -64,7 +64,7 @@ def read_plots(
     name_column: str | None = None,
     zone_column: str | None = None,
     crs: str | None = None,
-    point_radius_m: float = 50.0,
+    point_radius_m: float = 60.0,
     outline: Any = None,
 ) -> Plots:
     """Read candidate plots from any usual file.
@@ -99,7 +99,7 @@ def read_plots(
         raise InputError(
             f"[plots] point_radius_m is {point_radius_m:g}",
             "a radius above 0 and up to 5000 m is needed",
-            "Correct it in the brief, or leave it out for 50 m",
+            "Correct it in the brief, or leave it out for 60 m",
         )
     rows = _open(file, crs)
     own = rows.table.drop(columns=rows.table.geometry.name)
