@@ -23,8 +23,8 @@ import rasterio
 from pyproj import Geod
 from shapely.geometry import Polygon, box
 from shapely.ops import unary_union
-from sitescreen.brief import load_brief
 
+from sitescreen.brief import load_brief
 from sitescreen.screening import Screening, screen
 
 LAND, LAKE, ISLAND_IN_LAKE = "1", "2", "3"

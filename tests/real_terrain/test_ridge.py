@@ -8,8 +8,8 @@ import numpy as np
 import pytest
 import rasterio
 from affine import Affine
-from sitescreen.brief import load_brief
 
+from sitescreen.brief import load_brief
 from sitescreen.screening import Screening, screen
 
 pytestmark = pytest.mark.real_terrain
