@@ -1,5 +1,6 @@
 """What a screening hands over: the only place that writes results."""
 
+from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -26,7 +27,6 @@ def write_results(screening: "Screening", folder: Path) -> None:
     OutputError
         If the folder cannot be written to, or has no room left.
     """
-    from sitescreen.deliverables import layers
     from sitescreen.deliverables.columns import columns_of
     from sitescreen.deliverables.map import write_map
     from sitescreen.deliverables.plots_layer import write_plots
@@ -41,10 +41,10 @@ def write_results(screening: "Screening", folder: Path) -> None:
         if len(table) <= MOST_PLOTS:
             write_workbook(table, columns, stage / "ranking.xlsx")
         write_plots(table, columns, stage / "plots.gpkg")
-        if screening.brief.output.layers:
-            (stage / layers.FOLDER).mkdir()
-            layers.write_layers(screening.fields, stage / layers.FOLDER)
-        write_map(screening, columns, stage / "map.html")
+        with ThreadPoolExecutor(max_workers=1) as beside:  # compressing layers leaves Python free to draw the map
+            layered = beside.submit(_write_layers, screening, stage)
+            write_map(screening, columns, stage / "map.html")
+            layered.result()
         record = {
             **screening.record,
             "notes": [{"level": note.level, "where": note.where, "text": note.text} for note in screening.notes],
@@ -53,3 +53,11 @@ def write_results(screening: "Screening", folder: Path) -> None:
             "outputs": outputs(stage),
         }
         write_record(record, stage / NAME)
+
+
+def _write_layers(screening: "Screening", stage: Path) -> None:
+    from sitescreen.deliverables import layers
+
+    if screening.brief.output.layers:
+        (stage / layers.FOLDER).mkdir()
+        layers.write_layers(screening.fields, stage / layers.FOLDER)

@@ -156,7 +156,7 @@ CONTRACT: tuple[Column, ...] = (
         "night breeze from",
         "Bearing the offshore breeze of the night comes from.",
     ),
-    _number("breeze_arrival_h", 1, "h of the day", "breeze arrives", "Local solar hour when the breeze arrives."),
+    _number("breeze_arrival_h", 1, "h", "breeze arrives at", "Local solar hour when the breeze arrives."),
     _number("night_flow_m2_s", 2, "m²/s", "night air flow", "Cold air passing through on calm clear nights."),
     _number("night_flow_speed_m_s", 2, "m/s", "night air speed", "Speed of that air."),
     _number(
@@ -192,6 +192,13 @@ MORE: Mapping[str, Column] = {
         ),
         _number("known_weight_share", 2, "0–1", "weight known", "Part of the weights whose readings are known."),
         _text("zone_missing", "zone lacks", "The figure that is missing to tell the zone firmly."),
+        _number("over_water_m", 1, "m", "above the water", "Height above the nearest water, where it could be told."),
+        _number("sea_km", 2, "km", "to the sea", "Distance to the nearest sea shore."),
+        _number("lake_km", 2, "km", "to a lake", "Distance to the nearest lake shore."),
+        _number("lake_width_km", 1, "km", "width of the lake", "Width of that lake."),
+        _text("outcome", "outcome", "Why the plot could not be judged; empty where it could."),
+        _whole("water_disagrees", "waters disagree", "1 where the map of water and the terrain model disagree."),
+        _text("zone_provisional", "zone provisional", "“yes” where a figure is missing to tell the zone firmly."),
         _text("remarks", "remarks", "What was mended in the plot's outline."),
     )
 }

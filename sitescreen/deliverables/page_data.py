@@ -22,7 +22,10 @@ STEPS_A_DEGREE = 100_000
 MOST_LEAVES = 2_000
 """Plots whose reasons go into the page, the best first; those of the others would make it too heavy to mail."""
 
-_NOT_ON_A_LEAF = ("lon", "lat")
+_NOT_ON_A_LEAF = {
+    "lon", "lat", "outcome", "water_disagrees", "zone_provisional", "zone_missing", "known_weight_share", "cells",
+    "share_flat_water", "over_water_m",
+}  # fmt: skip
 
 
 def page_data(
@@ -57,7 +60,7 @@ def page_data(
     readings = []
     for column in measured:
         values = column_values(column.name)
-        if column.name not in _NOT_ON_A_LEAF and any(value is not None for value in values):
+        if column.says and column.name not in _NOT_ON_A_LEAF and any(value is not None for value in values):
             readings.append(_words(column) | {"values": values})
     return {
         "title": screening.brief.title or "",
@@ -116,7 +119,7 @@ def _corners(bounds: Bounds) -> list[list[float]]:
 
 def _words(column: Column) -> dict[str, Any]:
     return {"name": column.name, "title": column.title, "unit": column.unit, "decimals": column.decimals,
-            "says": column.says}  # fmt: skip
+            "says": column.says, "kind": column.kind}  # fmt: skip
 
 
 def _view(view: View) -> dict[str, Any]:

@@ -2,6 +2,7 @@
 
 import base64
 import hashlib
+import io
 import json
 import re
 from html.parser import HTMLParser
@@ -11,7 +12,9 @@ from typing import Any
 
 import folium
 import numpy as np
+import pandas as pd
 import pytest
+from PIL import Image
 
 import sitescreen.deliverables.scaffold as scaffold
 from sitescreen.deliverables.answer import answer, trust
@@ -244,3 +247,22 @@ def test_folium_sees_constants_only() -> None:
     """Its script is the same whatever the screening, and names no address."""
     assert scaffold.map_script() == scaffold.map_script()
     assert scaffold.map_script().startswith("var map_plan = L.map(")
+
+
+def test_a_screening_over_two_utm_zones_has_one_map(invent: Any) -> None:
+    """The fields of both zones are drawn on one sheet, and each question keeps one picture a view."""
+    west, east = invent(), invent(zone=38)
+    both = {f"{key}_utm37": field for key, field in west.fields.items()}
+    both |= {f"{key}_utm38": field for key, field in east.fields.items()}
+    table = pd.concat([west.table, east.table.assign(plot=lambda t: "e" + t["plot"])], ignore_index=True)
+    data = data_of(page_of(west.with_(fields=both, table=table)))
+    (south, west_deg), (north, east_deg) = data["bounds"]
+    assert west_deg < west.table["lon"].min()
+    assert east_deg > east.table["lon"].max()
+    assert south < table["lat"].min() < table["lat"].max() < north
+    wind = next(one for one in data["questions"] if one["name"] == "wind")
+    assert len(wind["views"]) == 2
+    picture = Image.open(io.BytesIO(base64.b64decode(wind["views"][0]["picture"].split(",")[1])))
+    known = np.asarray(picture.convert("RGBA"))[..., 3].any(axis=0)
+    assert known[: len(known) // 3].any()
+    assert known[-len(known) // 3 :].any()

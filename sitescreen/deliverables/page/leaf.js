@@ -44,6 +44,7 @@ const leaf = (() => {
   function readings(i) {
     const items = [];
     for (const reading of data.readings) {
+      if (reading.kind === "text" && reading.values[i] === null) continue;
       items.push(make("dt", { title: reading.says }, reading.title), make("dd", {}, page.shown(reading, reading.values[i])));
     }
     return make("details", {}, make("summary", {}, "All readings"), make("dl", { class: "readings" }, ...items));

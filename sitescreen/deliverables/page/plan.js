@@ -2,7 +2,7 @@
 const plan = (() => {
   const { data, plots, count, state } = page;
   const INK = "#2b2a27", PAPER = "#faf7f0";
-  const STEP = 100000, SIGN = 5, LARGE = 15;
+  const STEP = 100000, SIGN = 5, LARGE = 16;
   const map = window.map_plan;
   const holder = document.getElementById("map_plan");
   const bounds = L.latLngBounds(data.bounds), focus = L.latLngBounds(data.focus);
@@ -26,7 +26,7 @@ const plan = (() => {
 
   const canvas = document.createElement("canvas");
   canvas.className = "leaflet-zoom-hide";
-  let scale = 1, origin = L.point(0, 0), spots = [];
+  let scale = 1, origin = L.point(0, 0), spots = [], overlay = null;
 
   function hatch(context) {
     const tile = document.createElement("canvas");
@@ -54,8 +54,24 @@ const plan = (() => {
     origin = map.project(map.containerPointToLatLng([0, 0]), map.getZoom());
     const context = canvas.getContext("2d");
     context.scale(ratio, ratio);
+    if (holder.classList.contains("printing")) drawGround(context, size);
     drawFrame(context, size);
     drawPlots(context, size);
+  }
+
+  // on paper everything goes onto the one canvas: browsers print a clear canvas as a white one
+  function drawGround(context, size) {
+    const north = map.latLngToContainerPoint(bounds.getNorthWest()), south = map.latLngToContainerPoint(bounds.getSouthEast());
+    const box = [north.x, north.y, south.x - north.x, south.y - north.y];
+    context.fillStyle = "#f5f0e5";
+    context.fillRect(0, 0, size.x, size.y);
+    context.drawImage(document.getElementById("relief"), ...box);
+    if (!overlay) return;
+    context.globalCompositeOperation = "multiply";
+    context.globalAlpha = 0.78;
+    context.drawImage(overlay.getElement(), ...box);
+    context.globalCompositeOperation = "source-over";
+    context.globalAlpha = 1;
   }
 
   function drawPlots(context, size) {
@@ -72,10 +88,13 @@ const plan = (() => {
       const path = outline(i, at);
       const isAside = plots.rank[i] === null, mark = isAside ? null : marks[i];
       const number = page.classOf(mark);
-      context.lineJoin = "round";
-      context.strokeStyle = PAPER;
-      context.lineWidth = i === chosen ? 7 : 3.6;
-      context.stroke(path.shape);
+      context.lineJoin = "miter";
+      // the chosen plot has a double outline in ink
+      for (const [colour, wide] of i === chosen ? [[PAPER, 12], [INK, 9], [PAPER, 6]] : [[PAPER, 3.6]]) {
+        context.strokeStyle = colour;
+        context.lineWidth = wide;
+        context.stroke(path.shape);
+      }
       if (isAside) {
         context.fillStyle = PAPER;
         context.globalAlpha = 0.7;
@@ -96,12 +115,6 @@ const plan = (() => {
         context.beginPath();
         context.arc(at.x, at.y, 1.5, 0, 7);
         context.fill();
-      }
-      if (i === chosen) {
-        const around = path.half + 4;
-        context.strokeStyle = INK;
-        context.lineWidth = 1.6;
-        context.strokeRect(at.x - around, at.y - around, 2 * around, 2 * around);
       }
       spots.push({ i, x: at.x, y: at.y, half: path.half, shape: path.shape });
       taken.push([at.x - path.half, at.y - path.half, at.x + path.half, at.y + path.half]);
@@ -206,7 +219,7 @@ const plan = (() => {
     const long = [5, 2, 1].map((k) => k * unit).find((k) => k <= most);
     const wide = long / metres;
     context.fillStyle = "rgba(250,247,240,0.82)";
-    context.fillRect(12, y - 21, 44 + wide + 46, 31);
+    context.fillRect(12, y - 21, 32 + wide + 28, 31);
     tick(x, y, x + wide, y);
     for (const part of [0, 0.5, 1]) tick(x + part * wide, y - 4, x + part * wide, y);
     label("0", x, y - 6, "center", "bottom");
@@ -240,7 +253,6 @@ const plan = (() => {
     readout.textContent = page.called(i) + (rank === null ? ": set aside" : `: ${page.ordinal(rank)}${asked}`);
   }
 
-  let overlay = null;
   function showField() {
     if (overlay) overlay.remove();
     overlay = null;

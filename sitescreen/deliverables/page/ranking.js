@@ -1,7 +1,7 @@
 // The ranked table with sort and find, and the shelf of plots set aside.
 const ranking = (() => {
   const { data, plots, make, ruler, state } = page;
-  const PAGE_ROWS = 100;
+  const PAGE_ROWS = window.matchMedia("(max-width: 620px)").matches ? 12 : 100;
   const heads = document.getElementById("heads"), rows = document.getElementById("rows");
   const more = document.getElementById("more"), found = document.getElementById("found"), find = document.getElementById("find");
   const everything = document.getElementById("all-readings");
