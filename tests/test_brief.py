@@ -88,7 +88,7 @@ def test_two_keys_are_enough_and_the_rest_has_defaults(tmp_path: Path) -> None:
     assert brief.output.folder == tmp_path / "out"
     assert (brief.shore, brief.wind, brief.climate, brief.cover, brief.sky) == (None,) * 5
     assert (brief.plots.point_radius_m, brief.plots.footprint_m2, brief.judge.shortlist, brief.judge.seed) == (
-        50.0,
+        60.0,
         400.0,
         5,
         20,
