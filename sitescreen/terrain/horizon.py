@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 
 from sitescreen.errors import GridError
 from sitescreen.grid import Field, Grid
-from sitescreen.terrain._horizon_kernel import raise_to_horizon
+from sitescreen.terrain._horizon_kernel import raise_to_horizon, transpose
 from sitescreen.terrain._march_kernel import near_tangents, reach_tangents
 from sitescreen.terrain._profile_kernel import profiles
 from sitescreen.terrain.threads import in_bands
@@ -23,17 +23,20 @@ EARTH_RADIUS_M = 6_371_000.0
 REFRACTION = 0.13
 """Share of the Earth's curvature that refraction takes back (Gauss's mean coefficient, common practice)."""
 
-_NEAR_STEPS = 16
-"""Ground up to this many steps ahead is read along each cell's own ray, the rest along the lines between cells."""
+_NEAR_STEPS = 24
+"""Ground up to this many steps ahead is read along each cell's own ray, the rest along lines. Even."""
 
-_STRIP = 16
-"""Cells across a strip of lines: one line of the processor's cache."""
+_GAP = 3
+"""Cells from line to line."""
+
+_STRIP = 6
+"""Lines in a strip."""
 
 
 class _Lines(NamedTuple):
     """Skewed lines along one azimuth; the words are those of the kernel's drawing."""
 
-    by_row: bool
+    transposed: bool
     ascending: bool
     side_a_step: float
     whole: NDArray[np.int64]
@@ -47,47 +50,40 @@ def _lines(grid: Grid, azimuth_deg: float) -> _Lines:
     """Lines along an azimuth whose place depends on the absolute lattice, not on where the grid's window begins."""
     azimuth = math.radians(azimuth_deg % 360.0)
     d_col, d_row = math.sin(azimuth), -math.cos(azimuth)
-    by_row = abs(d_row) >= abs(d_col) * (1.0 - 1e-12)
-    along, across = (d_row, d_col) if by_row else (d_col, d_row)
-    steps, sides = grid.shape if by_row else grid.shape[::-1]
-    origin = -grid.north_m if by_row else grid.west_m
-    first_step = round(origin / grid.cell_size_m)
-    shift = (across / along) * (first_step + np.arange(steps, dtype=np.float64))
-    whole = np.floor(shift + 1e-9)
-    part = np.maximum(shift - whole, 0.0)
-    part[part < 2e-9] = 0.0
-    whole_steps = whole.astype(np.int64)
-    # the lines' numbers shift with the window; their places do not
-    whole_steps -= whole_steps.min()
-    first_line = -1 - int(whole_steps.max())
+    transposed = sweeps_transposed(azimuth_deg)
+    along, across = (d_row, d_col) if transposed else (d_col, d_row)
+    steps, sides = (grid.rows, grid.cols) if transposed else (grid.cols, grid.rows)
+    row0, col0 = round(-grid.north_m / grid.cell_size_m), round(grid.west_m / grid.cell_size_m)
+    step0, side0 = (row0, col0) if transposed else (col0, row0)
+    shift = (across / along) * (step0 + np.arange(steps, dtype=np.float64)) - side0
+    whole, part = _whole_and_part(shift)
+    # lines are numbered within the window, but stay in their places on the lattice
+    whole -= _GAP * (whole.min() // _GAP)
+    first_line = -_GAP * (int(whole.max()) // _GAP + 1)
     return _Lines(
-        by_row=by_row,
+        transposed=transposed,
         ascending=along < 0,
         side_a_step=across / abs(along),
-        whole=whole_steps,
-        part=part.astype(np.float32),
+        whole=whole,
+        part=part,
         spacing_m=grid.cell_size_m * math.hypot(1.0, across / along),
         first_line=first_line,
-        lines=sides - 1 - first_line,
+        lines=(sides - first_line) // _GAP + 1,
     )
 
 
-class _Rays(NamedTuple):
-    """Samples 0 … n of the ray of any cell: how far aside they lie, in whole cells and the part of one."""
-
-    by_row: bool
-    ahead: int
-    whole: NDArray[np.int64]
-    part: NDArray[np.float32]
-
-
-def _rays(lines: _Lines, samples: int) -> _Rays:
-    """Rays that start at each cell's centre, one sample a row (or column)."""
-    side = lines.side_a_step * np.arange(samples + 1)
-    whole = np.floor(side + 1e-9)
-    part = np.maximum(side - whole, 0.0)
+def _whole_and_part(shift: NDArray[np.floating[Any]]) -> tuple[NDArray[np.int64], NDArray[np.float32]]:
+    """A shift in whole cells and the part of one that is left; parts that are rounding alone become 0."""
+    whole = np.floor(shift + 1e-9)
+    part = np.maximum(shift - whole, 0.0)
     part[part < 2e-9] = 0.0
-    return _Rays(lines.by_row, -1 if lines.ascending else 1, whole.astype(np.int64), part.astype(np.float32))
+    return whole.astype(np.int64), part.astype(np.float32)
+
+
+def _rays(lines: _Lines, samples: int) -> tuple[int, NDArray[np.int64], NDArray[np.float32]]:
+    """Samples 0 … n of any cell's ray, one a step: the way along the steps, and how far aside they lie."""
+    whole, part = _whole_and_part(lines.side_a_step * np.arange(samples + 1))
+    return -1 if lines.ascending else 1, whole, part
 
 
 def _bend_per_m(earth_curvature: bool) -> float:
@@ -95,9 +91,55 @@ def _bend_per_m(earth_curvature: bool) -> float:
     return (1.0 - REFRACTION) / (2.0 * EARTH_RADIUS_M) if earth_curvature else 0.0
 
 
-def horizon_tangent(
-    elevation: Field, azimuth_deg: float, earth_curvature: bool = True, out: Any = None
-) -> NDArray[np.float32]:
+def transposed(values: NDArray[np.float32]) -> NDArray[np.float32]:
+    """The array with rows and columns exchanged, in memory too."""
+    out = np.empty((values.shape[1], values.shape[0]), dtype=np.float32)
+    in_bands(transpose, out.shape[0], values, out)
+    return out
+
+
+def sweeps_transposed(azimuth_deg: float) -> bool:
+    """Whether an azimuth lies within 45° of north or south and is swept over the transposed ground."""
+    azimuth = math.radians(azimuth_deg % 360.0)
+    return abs(math.cos(azimuth)) >= abs(math.sin(azimuth)) * (1.0 - 1e-12)
+
+
+def sweep(
+    values: NDArray[np.float32], grid: Grid, azimuth_deg: float, earth_curvature: bool, out: NDArray[np.float32]
+) -> None:
+    """Write the tangents of :func:`horizon_tangent` to ``out``.
+
+    Parameters
+    ----------
+    values, out : float32 arrays
+        Heights [m] and tangents, both transposed where :func:`sweeps_transposed` says so.
+    grid : Grid
+        Of the ground as it lies.
+    azimuth_deg : float
+    earth_curvature : bool
+    """
+    lines = _lines(grid, azimuth_deg)
+    bend = _bend_per_m(earth_curvature)
+    in_bands(near_tangents, values.shape[0], values, *_rays(lines, _NEAR_STEPS), lines.spacing_m, bend, out)
+    in_bands(
+        raise_to_horizon,
+        -(-lines.lines // _STRIP),
+        values,
+        lines.ascending,
+        _GAP,
+        lines.whole,
+        lines.part,
+        lines.spacing_m,
+        bend,
+        _NEAR_STEPS,
+        lines.first_line,
+        _STRIP,
+        out,
+        bands_a_thread=8,
+    )
+
+
+def horizon_tangent(elevation: Field, azimuth_deg: float, earth_curvature: bool = True) -> NDArray[np.float32]:
     """Tangent of the horizon's elevation in one direction, for every cell.
 
     Parameters
@@ -108,8 +150,6 @@ def horizon_tangent(
         Direction looked into, clockwise from grid north. [°]
     earth_curvature : bool
         Lower far ground by d²·(1 − 0.13)/(2·6,371 km).
-    out : float32 array, shape (rows, cols), optional
-        Written to instead of a new array.
 
     Returns
     -------
@@ -121,7 +161,7 @@ def horizon_tangent(
     -----
     Sweep of Dozier & Frew [1]_ with the hull kept on a stack, as Timonen & Westerholm [2]_. Ground is mixed onto lines
     that run exactly along the azimuth and answers are mixed back to the cells, linearly; lines that jump to the nearest
-    cell instead miss oblique azimuths by most of a degree. The nearest 16 steps, where mixing would still cost a few
+    cell instead miss oblique azimuths by most of a degree. The nearest 24 steps, where mixing would still cost a few
     tenths of a degree, are read along each cell's own ray.
 
     References
@@ -131,30 +171,11 @@ def horizon_tangent(
     .. [2] V. Timonen and J. Westerholm, "Scalable height field self-shadowing," Comput. Graph. Forum, vol. 29,
        pp. 723–731, 2010.
     """
-    grid = elevation.grid
-    lines = _lines(grid, azimuth_deg)
-    rays = _rays(lines, _NEAR_STEPS)
-    bend = _bend_per_m(earth_curvature)
-    if out is None:
-        out = np.empty(grid.shape, dtype=np.float32)
-    in_bands(near_tangents, grid.rows, elevation.values, *rays, lines.spacing_m, bend, out)
-    in_bands(
-        raise_to_horizon,
-        -(-lines.lines // _STRIP),
-        elevation.values,
-        lines.by_row,
-        lines.ascending,
-        lines.whole,
-        lines.part,
-        lines.spacing_m,
-        bend,
-        _NEAR_STEPS,
-        lines.first_line,
-        _STRIP,
-        out,
-        bands_a_thread=8,
-    )
-    return np.asarray(out)
+    across = sweeps_transposed(azimuth_deg)
+    values = transposed(elevation.values) if across else elevation.values
+    out = np.empty(values.shape, dtype=np.float32)
+    sweep(values, elevation.grid, azimuth_deg, earth_curvature, out)
+    return transposed(out) if across else out
 
 
 def horizon_sweep(
@@ -226,8 +247,17 @@ def upwind_tangent(elevation: Field, azimuth_deg: float, reach_m: float, recepto
         )
     values = np.empty(grid.shape, dtype=np.float32)
     height = np.float32(receptor_height_m)
-    rays = _rays(lines, samples)
-    in_bands(reach_tangents, grid.rows, elevation.values, *rays, lines.spacing_m, height, values, bands_a_thread=4)
+    in_bands(
+        reach_tangents,
+        grid.rows,
+        elevation.values,
+        lines.transposed,
+        *_rays(lines, samples),
+        lines.spacing_m,
+        height,
+        values,
+        bands_a_thread=4,
+    )
     return Field(values, elevation.grid, "1", f"largest upwind tangent within {reach_m:g} m towards {azimuth_deg:g}°")
 
 

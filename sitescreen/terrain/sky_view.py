@@ -3,11 +3,12 @@
 import math
 
 import numpy as np
+from numpy.typing import NDArray
 
 from sitescreen.errors import GridError
-from sitescreen.grid import Field
+from sitescreen.grid import Field, Grid
 from sitescreen.terrain._sky_view_kernel import add_direction, finish
-from sitescreen.terrain.horizon import horizon_tangent
+from sitescreen.terrain.horizon import sweep, sweeps_transposed, transposed
 from sitescreen.terrain.slope import gradient
 from sitescreen.terrain.threads import in_bands
 
@@ -53,13 +54,43 @@ def sky_view(elevation: Field, azimuths: int = 36) -> Field:
         )
     grid = elevation.grid
     slope = gradient(elevation)
-    east, north = slope.east.values, slope.north.values
+    every = 360.0 / azimuths * np.arange(azimuths)
+    # azimuths near north and south are swept, and added up, over the transposed ground
     total = np.zeros(grid.shape, dtype=np.float32)
-    tangent = np.empty(grid.shape, dtype=np.float32)
-    for k in range(azimuths):
-        azimuth = 360.0 * k / azimuths
-        horizon_tangent(elevation, azimuth, out=tangent)
-        sin, cos = np.float32(math.sin(math.radians(azimuth))), np.float32(math.cos(math.radians(azimuth)))
-        in_bands(add_direction, grid.rows, tangent, east, north, sin, cos, total)
-    in_bands(finish, grid.rows, total, east, north, azimuths)
+    _add(
+        total,
+        elevation.values,
+        grid,
+        slope.east.values,
+        slope.north.values,
+        [a for a in every if not sweeps_transposed(a)],
+    )
+    other = np.zeros(grid.shape[::-1], dtype=np.float32)
+    _add(
+        other,
+        transposed(elevation.values),
+        grid,
+        transposed(slope.east.values),
+        transposed(slope.north.values),
+        [a for a in every if sweeps_transposed(a)],
+    )
+    total += transposed(other)
+    del other
+    in_bands(finish, grid.rows, total, slope.east.values, slope.north.values, azimuths)
     return Field(total, grid, "1", "sky view factor, with the slope's own horizon")
+
+
+def _add(
+    total: NDArray[np.float32],
+    values: NDArray[np.float32],
+    grid: Grid,
+    east: NDArray[np.float32],
+    north: NDArray[np.float32],
+    azimuths_deg: list[float],
+) -> None:
+    """Add the azimuths' integrands to the running total, one after the other; only one horizon is ever held."""
+    tangent = np.empty(total.shape, dtype=np.float32)
+    for azimuth in azimuths_deg:
+        sweep(values, grid, azimuth, True, tangent)
+        sin, cos = np.float32(math.sin(math.radians(azimuth))), np.float32(math.cos(math.radians(azimuth)))
+        in_bands(add_direction, total.shape[0], tangent, east, north, sin, cos, total)

@@ -20,7 +20,7 @@ def field(values: object, cell_size_m: float = 30.0) -> Field:
 
 
 def errors(cells: int, seed: int, range_m: float = RANGE_M) -> np.ndarray:
-    """Height errors with the model's correlation, on a map that closes on itself: noise coloured by Fourier transform."""
+    """Height errors with the model's correlation, on a map that closes on itself: noise coloured by Fourier."""
     apart = np.minimum(np.arange(cells), cells - np.arange(cells)) * 30.0
     power = np.maximum(np.fft.fft2(error_correlation(np.hypot(apart[:, None], apart), range_m)).real, 0.0)
     power *= cells**2 / power.sum()
