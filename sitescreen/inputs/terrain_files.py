@@ -16,7 +16,7 @@ from rasterio.windows import Window
 from sitescreen.errors import InputError
 from sitescreen.notes import Note
 
-SENTINELS = (-32768.0, -32767.0, -9999.0, -99999.0)
+SENTINELS = (-32768.0, -32767.0, -9999.0, -10000.0, -99999.0)
 """Values that stand for "no height" in many files that do not say so; ±3.4e38 and beyond do as well."""
 
 HUGE = 1e30

@@ -18,6 +18,9 @@ from sitescreen.notes import Note
 SMELLS_OF_FEET_M = 6_000.0
 """Higher than people live: where no unit is stated, feet are likely. [m]"""
 
+LOWEST_LAND_M = -450.0
+"""No dry land lies lower: the lowest shore on Earth is at about −430. [m]"""
+
 SAMPLE_BLOCKS = 9
 """Blocks of a file that are looked at before it is used, the first and the last among them."""
 
@@ -240,8 +243,24 @@ def _range_notes(file: RasterFile, known_m: NDArray[np.float32], unit_unknown: b
     if lowest < LOWEST_M or highest > HIGHEST_M:
         said = f"{file.name} holds heights from {lowest:.0f} to {highest:.0f} m; impossible ones are read as unknown."
         return [Note("warning", "terrain", said)]
-    if not unit_unknown:
-        return []
+    notes = []
+    if lowest < LOWEST_LAND_M:
+        said = (
+            f"{file.name} holds heights down to {lowest:.0f} m, lower than any land: they are sea floor, or stand for "
+            "“no height” without the file declaring it. Where no sea is mapped, they are taken as ground."
+        )
+        notes.append(Note("warning", "terrain", said))
+    return notes + (_unit_notes(file, highest) if unit_unknown else [])
+
+
+def _unit_notes(file: RasterFile, highest: float) -> list[Note]:
+    """What to say where nobody names the unit of the heights."""
+    if file.crs.is_projected and abs(file.crs.axis_info[0].unit_conversion_factor / FEET_M - 1.0) < 1e-3:
+        said = (
+            f"{file.name} says no unit for its heights, and its coordinates are in feet. Heights are taken as metres; "
+            'if they are feet as well, set vertical_unit = "ft" under [terrain].'
+        )
+        return [Note("warning", "terrain", said)]
     if highest > SMELLS_OF_FEET_M:
         said = (
             f"{file.name} says no unit and holds heights up to {highest:.0f}. Taken as metres; if they are feet, set "
