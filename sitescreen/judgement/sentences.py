@@ -17,6 +17,15 @@ def compass_word(bearing_deg: float) -> str:
     return COMPASS[round(bearing_deg / 45.0) % 8]
 
 
+def from_shore(distance_km: float) -> str:
+    """A distance from the shore as people say it: "at the shore", "300 m from the shore", "4.2 km from the shore"."""
+    if distance_km < 0.05:
+        return "at the shore"
+    if distance_km < 0.95:
+        return f"{round(distance_km * 10) * 100} m from the shore"
+    return f"{distance_km:.{1 if distance_km < 9.95 else 0}f} km from the shore"
+
+
 def facts(row: Mapping[str, Any]) -> dict[str, Any]:
     """What templates may speak of: a plot's readings, and the same in a client's terms.
 
@@ -59,6 +68,8 @@ def facts(row: Mapping[str, Any]) -> dict[str, Any]:
             told[name] = compass_word(known[bearing])
     if known.get("shore_kind") in ("sea", "lake"):
         told["shore"] = known["shore_kind"]
+    if "shore_distance_km" in known:
+        told["from_shore"] = from_shore(known["shore_distance_km"])
     return told
 
 

@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from sitescreen.judgement.sentences import check_template, compass_word, facts, fill
+from sitescreen.judgement.sentences import check_template, compass_word, facts, fill, from_shore
 
 
 @pytest.mark.parametrize(
@@ -46,3 +46,18 @@ def test_no_minus_nought() -> None:
 def test_templates_that_reach_too_far_are_refused(template: str) -> None:
     with pytest.raises(ValueError, match="fields such as"):
         check_template(template)
+
+
+@pytest.mark.parametrize(
+    ("distance_km", "said"),
+    [
+        (0.0, "at the shore"),
+        (0.06, "100 m from the shore"),
+        (0.94, "900 m from the shore"),
+        (0.96, "1.0 km from the shore"),
+        (9.94, "9.9 km from the shore"),
+        (18.2, "18 km from the shore"),
+    ],
+)
+def test_distances_from_the_shore_are_said_as_people_say_them(distance_km: float, said: str) -> None:
+    assert from_shore(distance_km) == said
