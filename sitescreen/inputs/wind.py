@@ -28,7 +28,7 @@ SLOTS = {
 SECTORS = 16
 SECTOR_DEG = 360.0 / SECTORS
 COMPASSES = (16, 12, 32, 36, 24, 72, 180, 360)
-"""Numbers of directions that tables are made for, 4 and 8 apart: those only count when all of theirs are there."""
+"""Numbers of directions that tables are made for, the likeliest first; 4 and 8 are told apart from these."""
 
 SUM_NOTE, SUM_REFUSED = 0.02, 0.20
 """Shares whose sum is this far from 1 leave a note, or are refused."""
@@ -178,7 +178,7 @@ def read_wind(path: Path) -> WindTable:
             "Correct these columns; rows that belong together have the same figures there",
         )
     notes: list[Note] = []
-    compass = _compass({wind.direction_deg for times in groups.values() for winds in times.values() for wind in winds})
+    compass = _compass([winds for times in groups.values() for winds in times.values()])
     if compass != SECTORS:
         said = f"{path.name} has {compass} directions; they were shared out over 16 sectors by angle."
         notes.append(Note("info", "wind", said))
@@ -213,11 +213,14 @@ def _wind(row: Row) -> _Wind:
     return _Wind(bearing if speed > 0 else math.nan, share, speed)
 
 
-def _compass(directions: set[float]) -> int:
+def _compass(times: Sequence[Sequence[_Wind]]) -> int:
     """How many directions the table's compass has."""
-    found = sorted(one for one in directions if not math.isnan(one))
+    by_time = [{wind.direction_deg for wind in winds if not math.isnan(wind.direction_deg)} for winds in times]
+    found = set().union(*by_time)
     for few in (4, 8):
-        if found == [k * 360.0 / few for k in range(few)]:
+        # a table for 16 directions may use some of them only: a small compass counts if one of its roses is complete
+        points = {k * 360.0 / few for k in range(few)}
+        if found == points and points in by_time:
             return few
     return next((n for n in COMPASSES if all(_is_whole(one * n / 360.0) for one in found)), SECTORS)
 
