@@ -255,15 +255,15 @@ def test_hostile_text_stays_text(opened: Any, invent: Any) -> None:
     names = dict(zip(hostile.table["plot"], hostile.table["name"], strict=True))
     shown = texts(page, "#rows td.plot button")
     assert shown == [names[plot] for plot in ranked(hostile)["plot"]]
-    for row in range(1, len(shown) + 1, 6):
-        one(page, f"#rows tr:nth-child({row}) td.rank").click()
-        assert leaf_name(page) == shown[row - 1]
-        assert (
-            page.execute_script(
-                "return document.querySelectorAll('#leaf script, #leaf img, #leaf b:not(.leaf-mark b)').length"
-            )
-            == 0
-        )
+    elements = "return document.querySelectorAll('#leaf :is(script, img, svg[onload], b b, p b, li *)').length"
+    for row, plot in enumerate(ranked(hostile)["plot"], start=1):
+        page.execute_script("arguments[0].click()", one(page, f"#rows tr:nth-child({row}) td.rank"))
+        assert leaf_name(page) == names[plot]
+        assert texts(page, "#leaf ul.for li") == list(hostile.reasons[plot].for_)
+        assert page.execute_script(elements) == 0
+    shelf = texts(page, "#shelf li span")
+    assert shelf == ["</li><script>alert(1)</script>{{ 7*7 }}"] * len(shelf)
+    assert "<b>{{ 7*7 }}" in texts(page, "#rows td.zone")[0]
     assert texts(page, "title") == ["</title><script>alert(1)</script>{{ 7*7 }}"]
     assert page.execute_script("return document.scripts.length") == 4
     assert page.execute_script("return document.documentElement.scrollWidth") <= 1440
