@@ -3,6 +3,7 @@
 import csv
 import math
 from collections.abc import Iterator, Sequence
+from functools import cache
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -50,6 +51,7 @@ def whole_mark(mark: float) -> str:
     return str(math.floor(round(float(mark), 1) + 0.5))
 
 
+@cache
 def _na() -> Any:
     import pandas as pd
 

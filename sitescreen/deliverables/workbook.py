@@ -54,21 +54,20 @@ def write_workbook(table: "pd.DataFrame", columns: Sequence[Column], path: Path)
     bold, italic = Font(bold=True), Font(italic=True, color="666666")
     ranking.append([made(ranking, column.name, bold) for column in columns])
     ranking.append([made(ranking, column.unit, italic) for column in columns])
-    formats = [_number_format(column) for column in columns]
+    # one cell a column serves all rows: each row is written out before the next is filled in
+    ready = [WriteOnlyCell(ranking) for _ in columns]
+    for made_cell, column in zip(ready, columns, strict=True):
+        if column.kind != "text":
+            made_cell.number_format = _number_format(column)
     for row in rows_of(table, columns):
         cells: list[Any] = []
-        for column, number_format, value in zip(columns, formats, row, strict=True):
+        for made_cell, column, value in zip(ready, columns, row, strict=True):
             known = value_of(column, value)
-            if known is None:
-                cells.append(None)
-                continue
-            made_cell = WriteOnlyCell(ranking)
             if isinstance(known, str):
                 _set_text(made_cell, known)
-            else:
+            elif known is not None:
                 made_cell.value = known
-                made_cell.number_format = number_format
-            cells.append(made_cell)
+            cells.append(None if known is None else made_cell)
         ranking.append(cells)
 
     meaning = book.create_sheet("Columns")

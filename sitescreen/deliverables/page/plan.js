@@ -2,7 +2,7 @@
 const plan = (() => {
   const { data, plots, count, state } = page;
   const INK = "#2b2a27", PAPER = "#faf7f0";
-  const STEP = 100000, SIGN = 5, LARGE = 16;
+  const STEP = 100000, SIGN = 5, LARGE = 16, MOST_NUMBERS = 150;
   const map = window.map_plan;
   const holder = document.getElementById("map_plan");
   const bounds = L.latLngBounds(data.bounds), focus = L.latLngBounds(data.focus);
@@ -143,7 +143,7 @@ const plan = (() => {
     context.textBaseline = "middle";
     const byRank = spots.filter((s) => plots.rank[s.i] !== null).sort((a, b) => plots.rank[a.i] - plots.rank[b.i]);
     const first = byRank.filter((s) => s.i === state.chosen);
-    for (const spot of [...first, ...byRank.filter((s) => s.i !== state.chosen)]) {
+    for (const spot of [...first, ...byRank.filter((s) => s.i !== state.chosen)].slice(0, MOST_NUMBERS)) {
       const rank = plots.rank[spot.i], isChosen = spot.i === state.chosen, isShort = rank <= data.shortlist;
       context.font = `${isShort || isChosen ? "bold 15" : "12"}px ${getComputedStyle(document.body).getPropertyValue("--serif")}`;
       const text = String(rank), wide = context.measureText(text).width, tall = isShort || isChosen ? 15 : 12;
