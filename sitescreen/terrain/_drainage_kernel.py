@@ -11,6 +11,7 @@ import numpy as np
 from numba import njit
 
 _FLAT = 10
+_INF = np.float32(math.inf)
 
 
 @njit(nogil=True, cache=True, error_model="numpy")
@@ -60,104 +61,115 @@ def flat_ways(level_m: Any, direction: Any) -> Any:
 
     The wave starts from every cell that already drains, so whatever it reaches first is nearest to an exit.
     """
-    rows, cols = level_m.shape
+    cols = level_m.shape[1]
+    # level cells are never on the outer ring, which leaves: all their neighbours exist
+    ways = np.array([-cols - 1, -cols, -cols + 1, -1, 0, 1, cols - 1, cols, cols + 1])
+    level, way = level_m.reshape(-1), direction.reshape(-1)
     count = 0
-    for row in range(rows):
-        for col in range(cols):
-            if direction[row, col] == _FLAT:
-                count += 1
+    for cell in range(way.shape[0]):
+        count += 1 if way[cell] == _FLAT else 0
     order = np.empty(count, dtype=np.int64)
     size = 0
-    for row in range(1, rows - 1):
-        for col in range(1, cols - 1):
-            if direction[row, col] != _FLAT:
-                continue
-            for code in range(9):
-                r, c = row + code // 3 - 1, col + code % 3 - 1
-                # 16 and more: reached in this pass, not an exit of its own
-                if direction[r, c] < 9 and level_m[r, c] == level_m[row, col]:
-                    direction[row, col] = 16 + code
-                    order[size] = row * cols + col
-                    size += 1
-                    break
+    for cell in range(way.shape[0]):
+        if way[cell] != _FLAT:
+            continue
+        for code in range(9):
+            other = cell + ways[code]
+            # 16 and more: reached in this pass, not an exit of its own
+            if way[other] < 9 and level[other] == level[cell]:
+                way[cell] = 16 + code
+                order[size] = cell
+                size += 1
+                break
     for k in range(size):
-        direction[order[k] // cols, order[k] % cols] -= 16
+        way[order[k]] -= 16
     done = 0
     while done < size:
-        row, col = order[done] // cols, order[done] % cols
+        cell = order[done]
         done += 1
         for code in range(9):
-            r, c = row + code // 3 - 1, col + code % 3 - 1
-            if direction[r, c] == _FLAT and level_m[r, c] == level_m[row, col]:
-                direction[r, c] = 8 - code
-                order[size] = r * cols + c
+            other = cell + ways[code]
+            if way[other] == _FLAT and level[other] == level[cell]:
+                way[other] = 8 - code
+                order[size] = other
                 size += 1
     return order[:size]
 
 
 @njit(nogil=True, cache=True, error_model="numpy")
-def accumulate(direction: Any, cells: Any) -> None:
-    """How many cells drain through each cell, itself included; unknown ground 0."""
+def count_inflows(direction: Any, inflows: Any, start: Any, stop: Any) -> None:
+    """How many of its eight neighbours drain into each cell; the outer ring receives too."""
     rows, cols = direction.shape
-    inflows = np.zeros((rows, cols), dtype=np.uint8)
-    for row in range(rows):
-        for col in range(cols):
-            code = direction[row, col]
-            cells[row, col] = 0 if code == 9 else 1
-            if code != 9 and code != 4:
-                inflows[row + code // 3 - 1, col + code % 3 - 1] += 1
-    for row0 in range(rows):
-        for col0 in range(cols):
-            if inflows[row0, col0] != 0 or direction[row0, col0] == 9:
+    for row in range(start, stop):
+        here = inflows[row]
+        here[:] = 0
+        for code in range(9):
+            # the neighbour at ``code`` drains here if its own direction is the opposite one
+            if code == 4 or not 0 <= row + code // 3 - 1 < rows:
                 continue
-            row, col = row0, col0
-            while True:
-                code = direction[row, col]
-                if code == 4:
-                    break
-                carried = cells[row, col]
-                inflows[row, col] = 255  # passed on
-                row += int(code) // 3 - 1
-                col += int(code) % 3 - 1
-                cells[row, col] += carried
-                inflows[row, col] -= 1
-                if inflows[row, col] != 0:
-                    break
+            aside = code % 3 - 1
+            low, high = max(0, -aside), min(cols, cols - aside)
+            other, opposite = direction[row + code // 3 - 1, low + aside :], np.uint8(8 - code)
+            target = here[low:]
+            for col in range(high - low):
+                target[col] += np.uint8(1) if other[col] == opposite else np.uint8(0)
+
+
+@njit(nogil=True, cache=True, error_model="numpy")
+def accumulate(direction: Any, inflows: Any, cells: Any) -> None:
+    """How many cells drain through each cell, itself included; unknown ground 0. Uses up ``inflows``."""
+    cols = direction.shape[1]
+    ways = np.array([-cols - 1, -cols, -cols + 1, -1, 0, 1, cols - 1, cols, cols + 1])
+    way, waiting_for, total = direction.reshape(-1), inflows.reshape(-1), cells.reshape(-1)
+    for cell in range(way.shape[0]):
+        total[cell] = 0 if way[cell] == 9 else 1
+    for first in range(way.shape[0]):
+        if waiting_for[first] != 0 or way[first] == 9:
+            continue
+        cell = first
+        while True:
+            waiting_for[cell] = 255  # passed on
+            if way[cell] == 4:
+                break
+            carried = total[cell]
+            cell += ways[way[cell]]
+            total[cell] += carried
+            waiting_for[cell] -= 1
+            if waiting_for[cell] != 0:
+                break
 
 
 @njit(nogil=True, cache=True, error_model="numpy")
 def heights_above_channel(elevation_m: Any, direction: Any, channel: Any, height_m: Any) -> None:
     """Height of each cell over the channel cell that it drains to; NaN where its way leaves without meeting one."""
-    rows, cols = direction.shape
-    floor_m = np.full((rows, cols), np.float32(math.inf), dtype=np.float32)
+    cols = direction.shape[1]
+    ways = np.array([-cols - 1, -cols, -cols + 1, -1, 0, 1, cols - 1, cols, cols + 1])
+    ground, way, is_channel, height = (
+        elevation_m.reshape(-1),
+        direction.reshape(-1),
+        channel.reshape(-1),
+        height_m.reshape(-1),
+    )
+    floor_m = np.full(way.shape[0], _INF, dtype=np.float32)
     path = np.empty(1024, dtype=np.int64)
-    for row0 in range(rows):
-        for col0 in range(cols):
-            row, col = row0, col0
-            size = 0
-            while True:
-                found = floor_m[row, col]
-                if found < math.inf or found != found:
-                    break
-                if channel[row, col]:
-                    found = elevation_m[row, col]
-                    floor_m[row, col] = found
-                    break
-                code = direction[row, col]
-                if code == 4 or code == 9:
-                    found = np.float32(math.nan)
-                    floor_m[row, col] = found
-                    break
-                if size == path.shape[0]:
-                    longer = np.empty(2 * size, dtype=np.int64)
-                    longer[:size] = path
-                    path = longer
-                path[size] = row * cols + col
-                size += 1
-                row += int(code) // 3 - 1
-                col += int(code) % 3 - 1
-            for k in range(size):
-                floor_m[path[k] // cols, path[k] % cols] = found
-    for row in range(rows):
-        for col in range(cols):
-            height_m[row, col] = elevation_m[row, col] - floor_m[row, col]
+    for first in range(way.shape[0]):
+        cell = first
+        size = 0
+        while floor_m[cell] == _INF:
+            if is_channel[cell]:
+                floor_m[cell] = ground[cell]
+                break
+            if way[cell] == 4 or way[cell] == 9:
+                floor_m[cell] = math.nan
+                break
+            if size == path.shape[0]:
+                longer = np.empty(2 * size, dtype=np.int64)
+                longer[:size] = path
+                path = longer
+            path[size] = cell
+            size += 1
+            cell += ways[way[cell]]
+        for k in range(size):
+            floor_m[path[k]] = floor_m[cell]
+    for cell in range(way.shape[0]):
+        height[cell] = ground[cell] - floor_m[cell]

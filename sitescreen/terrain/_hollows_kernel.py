@@ -17,8 +17,18 @@ INTERIOR, RIM, OUTLET, UNKNOWN = 0, 1, 2, 3
 def cell_kinds(elevation_m: Any, outlets: Any, kind: Any, start: Any, stop: Any) -> None:
     """0 interior, 1 known cell beside unknown ground, 2 outlet or known cell beside an unknown outlet, 3 unknown."""
     rows, cols = elevation_m.shape
+    columns = np.empty(cols, dtype=np.float32)
     for row in range(start, stop):
+        inner = 0 < row < rows - 1
+        if inner:
+            above, here, below = elevation_m[row - 1], elevation_m[row], elevation_m[row + 1]
+            for col in range(cols):
+                columns[col] = (above[col] - above[col]) + (here[col] - here[col]) + (below[col] - below[col])
         for col in range(cols):
+            # nearly every cell: inside the data, all nine of its neighbourhood known
+            if inner and 0 < col < cols - 1 and columns[col - 1] + columns[col] + columns[col + 1] == 0:
+                kind[row, col] = 2 if outlets[row, col] else 0
+                continue
             z = elevation_m[row, col]
             if z != z:
                 kind[row, col] = 3
@@ -26,14 +36,12 @@ def cell_kinds(elevation_m: Any, outlets: Any, kind: Any, start: Any, stop: Any)
             if outlets[row, col]:
                 kind[row, col] = 2
                 continue
-            here = 0
-            if row == 0 or col == 0 or row == rows - 1 or col == cols - 1:
-                here = 1
+            beside = 1 if row == 0 or col == 0 or row == rows - 1 or col == cols - 1 else 0
             for r in range(max(row - 1, 0), min(row + 2, rows)):
                 for c in range(max(col - 1, 0), min(col + 2, cols)):
                     if elevation_m[r, c] != elevation_m[r, c]:
-                        here = 2 if outlets[r, c] or here == 2 else 1
-            kind[row, col] = here
+                        beside = 2 if outlets[r, c] or beside == 2 else 1
+            kind[row, col] = beside
 
 
 @njit(nogil=True, cache=True, error_model="numpy")
@@ -104,12 +112,73 @@ def _drop_top(keys: Any, cells: Any, size: Any) -> Any:
 
 
 @njit(nogil=True, cache=True, error_model="numpy")
+def _flood_group(
+    first: Any,
+    around: Any,
+    ground: Any,
+    level: Any,
+    state: Any,
+    members: Any,
+    keys: Any,
+    cells: Any,
+) -> None:
+    """Priority-flood of one group of open cells (state 1) from its settled neighbours (state 0)."""
+    # the group, 2 = met; its cells that touch settled ones start in the heap
+    state[first] = 2
+    members[0] = first
+    count, done, size = 1, 0, 0
+    while done < count:
+        cell = members[done]
+        done += 1
+        edge = _INF
+        for k in range(8):
+            other = cell + around[k]
+            if state[other] == 1:
+                state[other] = 2
+                members[count] = other
+                count += 1
+            elif state[other] == 0 and level[other] < edge:
+                edge = level[other]
+        if edge < _INF:
+            size = _push(keys, cells, size, edge if edge > ground[cell] else ground[cell], cell)
+    wet = members  # the list is no longer needed
+    while size > 0:
+        now, cell = keys[0], cells[0]
+        size = _drop_top(keys, cells, size)
+        if state[cell] == 2:
+            state[cell] = 3
+            level[cell] = now
+        elif level[cell] < now:
+            continue
+        # cells that this level floods are next in any order: they need no heap
+        wet[0] = cell
+        waiting = 1
+        while waiting > 0:
+            waiting -= 1
+            cell = wet[waiting]
+            for k in range(8):
+                other = cell + around[k]
+                if state[other] != 2:
+                    continue
+                # lowest first: nothing that comes later can offer less, so this is final
+                state[other] = 3
+                z = ground[other]
+                if z <= now:
+                    level[other] = now
+                    wet[waiting] = other
+                    waiting += 1
+                else:
+                    level[other] = z
+                    size = _push(keys, cells, size, z, other)
+
+
+@njit(nogil=True, cache=True, error_model="numpy")
 def fill(elevation_m: Any, kind: Any, level_m: Any) -> None:
     """The lowest surface on and above the ground from which every cell drains to the rim or an outlet.
 
     Two raster sweeps, down and up, come first. Levels only ever fall to the filled surface and never pass the ground,
     so a cell whose level equals its ground is final, in any order: on real terrain about nine in ten. Each group of
-    cells left over is then flooded by itself from its settled neighbours with a heap of its own (priority-flood).
+    cells left over is then flooded by itself from its settled neighbours with a heap of its own.
     """
     rows, cols = elevation_m.shape
     for row in range(rows):
@@ -119,58 +188,21 @@ def fill(elevation_m: Any, kind: Any, level_m: Any) -> None:
     _sweep(elevation_m, level_m, True)
     _sweep(elevation_m, level_m, False)
 
-    open_ = np.zeros((rows, cols), dtype=np.uint8)
+    # open cells are never on the outer ring, which drains: all their neighbours exist
+    around = np.array([-cols - 1, -cols, -cols + 1, -1, 1, cols - 1, cols, cols + 1])
+    ground, level = elevation_m.reshape(-1), level_m.reshape(-1)
+    state = np.empty(rows * cols, dtype=np.uint8)
     left = 0
-    for row in range(rows):
-        for col in range(cols):
-            if level_m[row, col] > elevation_m[row, col]:
-                open_[row, col] = 1
-                left += 1
+    for cell in range(rows * cols):
+        state[cell] = 1 if level[cell] > ground[cell] else 0
+        left += int(state[cell])
     members = np.empty(left, dtype=np.int64)
-    # a cell enters at most once from settled neighbours and once from within
+    # a cell enters the heap at most once from settled neighbours and once from within
     keys = np.empty(2 * left + 1, dtype=np.float32)
     cells = np.empty(2 * left + 1, dtype=np.int64)
-    for row0 in range(rows):
-        for col0 in range(cols):
-            if open_[row0, col0] != 1:
-                continue
-            # the group, 2 = met
-            open_[row0, col0] = 2
-            members[0] = row0 * cols + col0
-            count, done, size = 1, 0, 0
-            while done < count:
-                cell = members[done]
-                done += 1
-                row, col = cell // cols, cell % cols
-                edge = _INF
-                for r in range(max(row - 1, 0), min(row + 2, rows)):
-                    for c in range(max(col - 1, 0), min(col + 2, cols)):
-                        if open_[r, c] == 1:
-                            open_[r, c] = 2
-                            members[count] = r * cols + c
-                            count += 1
-                        elif open_[r, c] == 0 and level_m[r, c] < edge:
-                            edge = level_m[r, c]
-                if edge < _INF:
-                    z = elevation_m[row, col]
-                    size = _push(keys, cells, size, edge if edge > z else z, cell)
-            while size > 0:
-                level, cell = keys[0], cells[0]
-                size = _drop_top(keys, cells, size)
-                row, col = cell // cols, cell % cols
-                if open_[row, col] == 2:
-                    open_[row, col] = 3
-                    level_m[row, col] = level
-                elif level_m[row, col] < level:
-                    continue
-                for r in range(max(row - 1, 0), min(row + 2, rows)):
-                    for c in range(max(col - 1, 0), min(col + 2, cols)):
-                        if open_[r, c] == 2:
-                            z = elevation_m[r, c]
-                            # lowest first: nothing that comes later can offer less, so this is final
-                            level_m[r, c] = level if level > z else z
-                            open_[r, c] = 3
-                            size = _push(keys, cells, size, level_m[r, c], r * cols + c)
+    for cell in range(rows * cols):
+        if state[cell] == 1:
+            _flood_group(cell, around, ground, level, state, members, keys, cells)
     for row in range(rows):
         for col in range(cols):
             if kind[row, col] == UNKNOWN:
@@ -184,32 +216,33 @@ def label_pools(elevation_m: Any, level_m: Any, pool_id: Any) -> Any:
     Neighbours under water share one level: each would otherwise drain to the other.
     """
     rows, cols = elevation_m.shape
+    # as in the flood, no cell under water is on the outer ring
+    around = np.array([-cols - 1, -cols, -cols + 1, -1, 1, cols - 1, cols, cols + 1])
+    ground, level, label = elevation_m.reshape(-1), level_m.reshape(-1), pool_id.reshape(-1)
+    for cell in range(rows * cols):
+        label[cell] = -1 if level[cell] > ground[cell] else 0
     stack = np.empty(1024, dtype=np.int64)
     pools = 0
-    for row in range(rows):
-        for col in range(cols):
-            pool_id[row, col] = -1 if level_m[row, col] > elevation_m[row, col] else 0
-    for row0 in range(rows):
-        for col0 in range(cols):
-            if pool_id[row0, col0] != -1:
-                continue
-            pools += 1
-            pool_id[row0, col0] = pools
-            stack[0] = row0 * cols + col0
-            size = 1
-            while size > 0:
-                size -= 1
-                row, col = stack[size] // cols, stack[size] % cols
-                if size + 8 > stack.shape[0]:
-                    longer = np.empty(2 * stack.shape[0], dtype=np.int64)
-                    longer[:size] = stack[:size]
-                    stack = longer
-                for r in range(max(row - 1, 0), min(row + 2, rows)):
-                    for c in range(max(col - 1, 0), min(col + 2, cols)):
-                        if pool_id[r, c] == -1:
-                            pool_id[r, c] = pools
-                            stack[size] = r * cols + c
-                            size += 1
+    for first in range(rows * cols):
+        if label[first] != -1:
+            continue
+        pools += 1
+        label[first] = pools
+        stack[0] = first
+        size = 1
+        while size > 0:
+            size -= 1
+            cell = stack[size]
+            if size + 8 > stack.shape[0]:
+                longer = np.empty(2 * stack.shape[0], dtype=np.int64)
+                longer[:size] = stack[:size]
+                stack = longer
+            for k in range(8):
+                other = cell + around[k]
+                if label[other] == -1:
+                    label[other] = pools
+                    stack[size] = other
+                    size += 1
     return pools
 
 
@@ -249,33 +282,29 @@ def first_stop(pool_id: Any, direction: Any, stop_at: Any) -> None:
 
     Cells of a pool rest in it.
     """
-    rows, cols = pool_id.shape
+    cols = pool_id.shape[1]
+    ways = np.array([-cols - 1, -cols, -cols + 1, -1, 0, 1, cols - 1, cols, cols + 1])
+    pool, way, found_at = pool_id.reshape(-1), direction.reshape(-1), stop_at.reshape(-1)
+    for cell in range(pool.shape[0]):
+        found_at[cell] = pool[cell]
     path = np.empty(1024, dtype=np.int64)
-    for row in range(rows):
-        for col in range(cols):
-            stop_at[row, col] = pool_id[row, col]
-    for row0 in range(rows):
-        for col0 in range(cols):
-            row, col = row0, col0
-            size = 0
-            while stop_at[row, col] == 0:
-                code = direction[row, col]
-                if code == 9:
-                    break
-                if code == 4:
-                    stop_at[row, col] = -1 - (row * cols + col)
-                    break
-                if size == path.shape[0]:
-                    longer = np.empty(2 * size, dtype=np.int64)
-                    longer[:size] = path
-                    path = longer
-                path[size] = row * cols + col
-                size += 1
-                row += int(code) // 3 - 1
-                col += int(code) % 3 - 1
-            found = stop_at[row, col]
-            for k in range(size):
-                stop_at[path[k] // cols, path[k] % cols] = found
+    for first in range(pool.shape[0]):
+        cell = first
+        size = 0
+        while found_at[cell] == 0 and way[cell] != 9:
+            if way[cell] == 4:
+                found_at[cell] = -1 - cell
+                break
+            if size == path.shape[0]:
+                longer = np.empty(2 * size, dtype=np.int64)
+                longer[:size] = path
+                path = longer
+            path[size] = cell
+            size += 1
+            cell += ways[way[cell]]
+        found = found_at[cell]
+        for k in range(size):
+            found_at[path[k]] = found
 
 
 @njit(nogil=True, cache=True, error_model="numpy")

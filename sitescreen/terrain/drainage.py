@@ -8,7 +8,13 @@ from numpy.typing import NDArray
 
 from sitescreen.errors import GridError
 from sitescreen.grid import Field
-from sitescreen.terrain._drainage_kernel import accumulate, flat_ways, heights_above_channel, steepest_ways
+from sitescreen.terrain._drainage_kernel import (
+    accumulate,
+    count_inflows,
+    flat_ways,
+    heights_above_channel,
+    steepest_ways,
+)
 from sitescreen.terrain._hollows_kernel import cell_kinds, fill
 from sitescreen.terrain.threads import in_bands
 
@@ -100,8 +106,11 @@ def drainage(elevation: Field, outlets: NDArray[np.bool_] | None = None) -> Drai
 
 def catchment_cells(drained: Drainage) -> NDArray[np.int32]:
     """How many cells drain through each cell, itself included; 0 where unknown. Shape (rows, cols)."""
-    cells = np.empty(drained.direction.shape, dtype=np.int32)
-    accumulate(drained.direction, cells)
+    shape = drained.direction.shape
+    inflows = np.empty(shape, dtype=np.uint8)
+    in_bands(count_inflows, shape[0], drained.direction, inflows)
+    cells = np.empty(shape, dtype=np.int32)
+    accumulate(drained.direction, inflows, cells)
     return cells
 
 

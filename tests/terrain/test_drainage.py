@@ -111,9 +111,12 @@ def test_kernels_agree_with_their_python_forms() -> None:
         height = np.empty(values.shape, dtype=np.float32)
         form(kernel.steepest_ways)(level, kind, direction, 0, 12)
         order = form(kernel.flat_ways)(level, direction)
-        form(kernel.accumulate)(direction, cells)
+        inflows = np.empty(values.shape, dtype=np.uint8)
+        form(kernel.count_inflows)(direction, inflows, 0, 12)
+        counted = inflows.copy()
+        form(kernel.accumulate)(direction, inflows, cells)
         form(kernel.heights_above_channel)(values, direction, cells > 8, height)
-        results.append((direction, order, cells, height))
+        results.append((direction, order, counted, cells, height))
     for compiled, plain in zip(*results, strict=True):
         np.testing.assert_array_equal(compiled, plain)
     assert len(results[0][1]) > 0
