@@ -266,7 +266,6 @@ class Brief(_Part):
             "[plots] footprint_m2": "footprint_m2" in self.plots.model_fields_set,
             "[cover]": self.cover is not None,
             "[sky]": self.sky is not None,
-            "[judge] pairs": bool(self.judge.pairs),
             "[[constraint]]": bool(self.constraint),
             "[[criterion]]": bool(self.criterion),
             "[[context]]": bool(self.context),

@@ -18,6 +18,7 @@ from sitescreen.inputs import Inputs, read_inputs
 from sitescreen.inputs.zone_map import zone_at
 from sitescreen.judgement.cautions import load_cautions
 from sitescreen.judgement.overall import Judged, judge
+from sitescreen.judgement.pairs import Compared, compare_for, with_weights
 from sitescreen.judgement.profiles import ZoneProfile, load_profiles
 from sitescreen.judgement.readings import Readings, stack
 from sitescreen.judgement.reasons import Reasons, reasons
@@ -91,11 +92,11 @@ def screen(brief: Brief, progress: Progress | None = None) -> "Screening":
     settings = load_defaults()
     with progress.step("Reading the inputs"):
         inputs = read_inputs(brief)
-        profiles = load_profiles(brief.judge.profiles)
+        profiles, compared = _profiles(brief)
     measured = [measure(block, rows, inputs, settings, progress) for block, rows in plots_by_block(inputs)]
     with progress.step("Judging the plots"):
         readings = stack([one.readings for one in measured], list(inputs.plots.table["plot"]))
-        return _judged(brief, inputs, measured, readings, profiles, settings, progress)
+        return _judged(brief, inputs, measured, readings, profiles, compared, settings, progress)
 
 
 @dataclass(frozen=True)
@@ -123,6 +124,7 @@ def _judged(
     measured: list[BlockResult],
     readings: Readings,
     profiles: dict[str, ZoneProfile],
+    compared: Compared | None,
     settings: Defaults,
     progress: Progress,
 ) -> Screening:
@@ -149,6 +151,7 @@ def _judged(
         halved,
     )
     notes = inputs.notes + (climate_notes(climate, settings.zones) if climate is not None else ())
+    notes += compared.notes() if compared else ()
     notes += tuple(
         Note("warning", "shore", one.disagreement.sentence)
         for one in measured
@@ -167,8 +170,18 @@ def _judged(
         notes=notes,
         not_measured=NOT_MEASURED,
         not_checked=NOT_CHECKED,
-        record=_record(brief, inputs, measured, table, settings, progress),
+        record=_record(brief, inputs, measured, table, settings, progress)
+        | ({"pairs": compared.for_record()} if compared else {}),
     )
+
+
+def _profiles(brief: Brief) -> tuple[dict[str, ZoneProfile], Compared | None]:
+    """What each zone wants, and the weights that the brief's comparisons amount to, where it has any."""
+    profiles = load_profiles(brief.judge.profiles)
+    if not brief.judge.pairs:
+        return profiles, None
+    compared = compare_for(profiles, brief.judge.pairs)
+    return with_weights(profiles, compared), compared
 
 
 def _outcomes(told: Any, values: pd.DataFrame) -> list[str]:
