@@ -49,7 +49,7 @@ def test_cells_of_the_same_grid_keep_their_classes(tmp_path: Path) -> None:
 
 
 def test_a_grid_beyond_the_map_is_of_no_class(tmp_path: Path) -> None:
-    opened = cover(raster(tmp_path / "c.tif", classes()), "10", "20", "30")
+    opened = cover(raster(tmp_path / "c.tif", classes()), "10", "20", "30", "0")
     beyond = Grid("EPSG:32637", WEST - 300.0, NORTH + 300.0, 30.0, 20, 20)
     found = opened.classes(beyond)
     assert (found[:10] == 0).all()

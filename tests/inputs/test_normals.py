@@ -26,8 +26,7 @@ def read(folder: Path, rows: list[dict[str, Any]], more: tuple[str, ...] = ()) -
 
 def test_stations_and_months_come_out_in_order(tmp_path: Path) -> None:
     """However the file has them."""
-    rows = [*months("B"), *months("A", lon=37.0)]
-    found = read(tmp_path, rows[::-1])
+    found = read(tmp_path, [*months("B")[::-1], *months("A", lon=37.0)[::-1]])
     assert found.stations["station"].tolist() == ["A"] * 12 + ["B"] * 12
     assert found.stations["month"].tolist() == [*range(1, 13)] * 2
     assert found.stations.loc[0, ["lon", "lat", "t_max_c", "t_min_c", "rh_mean", "rain_mm"]].tolist() == [

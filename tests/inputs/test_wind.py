@@ -64,7 +64,7 @@ def test_two_speeds_from_one_side_are_kept_apart(tmp_path: Path) -> None:
 @pytest.mark.parametrize("count", [4, 8, 12, 16, 32, 36, 72])
 def test_an_even_wind_stays_even_whatever_compass_it_was_written_with(tmp_path: Path, count: int) -> None:
     """In 10° steps, counting into the nearest sector would give 3 rows to one sector and 2 to the next."""
-    found = table(tmp_path, year(*[(360.0 * k / count, 1.0 / count, 3.0) for k in range(count)]))
+    found = table(tmp_path, year(*[(360.0 * (k + 1) / count, 1.0 / count, 3.0) for k in range(count)]))
     assert by_sector(found.rose("year", 0.0, 0.0)) == pytest.approx(np.full(16, 1 / 16))
     assert (count == 16) == ("shared out" not in notes(found, "info"))
 
