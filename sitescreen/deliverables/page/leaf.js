@@ -23,7 +23,8 @@ const leaf = (() => {
   function markLine(i) {
     const mark = plots.overall_mark[i], low = plots.mark_low[i], high = plots.mark_high[i];
     if (mark === null || plots.rank[i] === null) return null;
-    const spread = low === null || high === null || high - low < 0.5 ? "of 100; nothing it needs is unknown"
+    const spread = low === null || high === null || high - low < 0.05 ? "of 100; nothing it needs is unknown"
+      : low.toFixed(0) === high.toFixed(0) ? "of 100; its unknowns hardly matter"
       : `of 100; ${low.toFixed(0)} to ${high.toFixed(0)}, as its unknowns may turn out`;
     return make("div", { class: "leaf-mark" }, make("b", {}, mark.toFixed(0)), make("div", {}, ruler(mark, low, high, 300, 22), make("span", {}, spread)));
   }
