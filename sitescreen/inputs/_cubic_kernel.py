@@ -83,11 +83,10 @@ def _sum(
 @njit(cache=True)
 def _plane(
     ground: Any, row: int, col: int, past_row: float, past_col: float, scale_v: float, scale_u: float, weights_u: Any
-) -> float:
-    """Height at a point of the plane that fits the known heights around it best, near ones counting most.
+) -> tuple[float, float, float]:
+    """The plane that fits the known heights around a point best, near ones counting most.
 
-    Beside a gap or the data's edge the known heights lie to one side. Their mean would be the height of their middle:
-    on a slope of 20 % half a 30 m cell makes that 3 m, a bank that is not there. Arguments as for :func:`_sum`.
+    Its height at the point and its rise per ``scale_u`` columns and ``scale_v`` rows. Arguments as for :func:`_sum`.
     """
     first_u = math.ceil(past_col - 2.0 * scale_u)
     count_u = math.floor(past_col + 2.0 * scale_u) + 1 - first_u
@@ -124,7 +123,32 @@ def _plane(
         slope_x, slope_y = (xz * yy - yz * xy) / determinant, (yz * xx - xz * xy) / determinant
     elif xx + yy > 1e-3:  # the known cells lie in one line: the slope along it is all that they tell
         slope_x, slope_y = xz / (xx + yy), yz / (xx + yy)
-    return base + at_z - slope_x * at_x - slope_y * at_y
+    return base + at_z - slope_x * at_x - slope_y * at_y, slope_x, slope_y
+
+
+@njit(cache=True)
+def _beside_gap(
+    ground: Any, row: int, col: int, past_row: float, past_col: float, scale_v: float, scale_u: float, weights_u: Any
+) -> float:
+    """Height at a point some of whose neighbours are unknown: the tent's mean, a plane standing in for those.
+
+    Left out, they would pull the mean to the known side: on a slope of 20 % half a 30 m cell makes that 3 m, a bank
+    along every gap and seam that is not there. Arguments as for :func:`_sum`.
+    """
+    height, slope_x, slope_y = _plane(ground, row, col, past_row, past_col, scale_v, scale_u, weights_u)
+    first_u = math.ceil(past_col - scale_u)
+    count_u = math.floor(past_col + scale_u) + 1 - first_u
+    total, weights = 0.0, 0.0
+    for k in range(math.ceil(past_row - scale_v), math.floor(past_row + scale_v) + 1):
+        y = (k - past_row) / scale_v
+        for m in range(count_u):
+            x = (first_u + m - past_col) / scale_u
+            weight = max(0.0, 1.0 - abs(y)) * max(0.0, 1.0 - abs(x))
+            r, c = row + k, col + first_u + m
+            known = 0 <= r < ground.shape[0] and 0 <= c < ground.shape[1] and not math.isnan(ground[r, c])
+            total += weight * (float(ground[r, c]) if known else height + slope_x * x + slope_y * y)
+            weights += weight
+    return total / weights
 
 
 @njit(cache=True, parallel=True)
@@ -206,7 +230,7 @@ def read_cells(
                 # beside a gap the cubic's negative lobes would swing; the tent's weights are all positive
                 total, weights, missing = _sum(ground, r, c, past_v, past_u, scale_v, scale_u, False, weights_u)
             if missing:
-                heights[row, col] = _plane(ground, r, c, past_v, past_u, scale_v, scale_u, weights_u)
+                heights[row, col] = _beside_gap(ground, r, c, past_v, past_u, scale_v, scale_u, weights_u)
             else:
                 heights[row, col] = total / weights
             under[row, col] = CLOSED if closed[at_row, at_col] else KNOWN
