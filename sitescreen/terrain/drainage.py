@@ -98,10 +98,14 @@ def drainage(elevation: Field, outlets: NDArray[np.bool_] | None = None) -> Drai
     .. [1] J. F. O'Callaghan and D. M. Mark, "The extraction of drainage networks from digital elevation data," Comput.
        Vis. Graph. Image Process., vol. 28, pp. 323–344, 1984.
     """
-    level, kind = filled(elevation, outlets)
-    direction = np.empty(level.shape, dtype=np.uint8)
-    in_bands(steepest_ways, level.shape[0], level, kind, direction)
-    return Drainage(level, kind, direction, flat_ways(level, direction))
+    return ways_down(*filled(elevation, outlets))
+
+
+def ways_down(level_m: NDArray[np.float32], kind: NDArray[np.uint8]) -> Drainage:
+    """The second half of :func:`drainage`: directions on a surface that :func:`filled` has made."""
+    direction = np.empty(level_m.shape, dtype=np.uint8)
+    in_bands(steepest_ways, level_m.shape[0], level_m, kind, direction)
+    return Drainage(level_m, kind, direction, flat_ways(level_m, direction))
 
 
 def catchment_cells(drained: Drainage) -> NDArray[np.int32]:

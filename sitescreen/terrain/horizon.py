@@ -92,9 +92,13 @@ def _bend_per_m(earth_curvature: bool) -> float:
 
 
 def transposed(values: NDArray[np.float32]) -> NDArray[np.float32]:
-    """The array with rows and columns exchanged, in memory too."""
+    """The array with rows and columns exchanged, in memory too; read-only, as a field's is.
+
+    Kernels are compiled anew for arrays that may be written to.
+    """
     out = np.empty((values.shape[1], values.shape[0]), dtype=np.float32)
     in_bands(transpose, out.shape[0], values, out)
+    out.flags.writeable = False
     return out
 
 
@@ -201,7 +205,8 @@ def horizon_sweep(
     """
     for azimuth in azimuths_deg:
         tangent = horizon_tangent(elevation, azimuth, earth_curvature)
-        angle = np.degrees(np.arctan(tangent, out=tangent), out=tangent)
+        angle = np.arctan(tangent)
+        np.degrees(angle, out=angle)
         yield azimuth, Field(angle, elevation.grid, "°", f"elevation of the horizon towards {azimuth:g}°")
 
 
