@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 import rasterio
 from affine import Affine
-from shapely.geometry import box
+from shapely.geometry import Point, Polygon, box
 
 from sitescreen.brief import CoverBrief
 from sitescreen.errors import InputError
@@ -116,3 +116,53 @@ def test_the_map_is_stamped(tmp_path: Path) -> None:
     found = cover(raster(tmp_path / "c.tif", classes()), "10", "20", "30", "0")
     assert (found.stamp.name, found.stamp.crs) == ("c.tif", "EPSG:32637")
     assert found.notes == ()
+
+
+def test_classes_that_the_map_lacks_are_told_even_if_one_lies_in_a_corner(tmp_path: Path) -> None:
+    values = np.full((600, 700), 10, np.uint8)
+    values[599, 699] = 30
+    path = raster(tmp_path / "c.tif", values, tiled=True, blockxsize=16, blockysize=16, compress="deflate")
+    (said,) = cover(path, "10", "20", "30").notes
+    assert (said.level, said.text) == ("info", "c.tif does not hold the classes 20 of [cover.classes].")
+
+
+@pytest.mark.parametrize("dtype", ["uint8", "int16", "uint16", "int32"])
+def test_classes_of_every_whole_type_are_found(tmp_path: Path, dtype: str) -> None:
+    path = raster(tmp_path / "c.tif", classes().astype(dtype), nodata=0)
+    found = cover(path, "20", "30", "10")
+    assert found.notes == ()
+    assert (found.classes(GRID) == np.choose(classes() // 10, [0, 3, 1, 2])).all()
+
+
+def test_a_map_cut_off_anywhere_is_refused(tmp_path: Path) -> None:
+    values = np.random.default_rng(1).integers(1, 4, (300, 300)).astype(np.uint8)
+    path = raster(tmp_path / "c.tif", values, tiled=True, blockxsize=16, blockysize=16, compress="deflate")
+    whole = path.read_bytes()
+    for kept in np.linspace(10, len(whole) - 1, 12).astype(int):
+        path.write_bytes(whole[:kept])
+        with pytest.raises(InputError, match=r"c\.tif cannot be read as a raster"):
+            cover(path, "1", "2", "3")
+
+
+def test_a_map_of_gaps_or_tied_to_no_place_is_refused(tmp_path: Path) -> None:
+    with pytest.raises(InputError, match=r"a\.tif holds no class at all"):
+        cover(raster(tmp_path / "a.tif", np.zeros((9, 9), np.uint8), nodata=0), "10")
+    local = 'LOCAL_CS["site grid",UNIT["metre",1]]'
+    with pytest.raises(InputError, match=r"b\.tif does not say.*“site grid” is tied to no place"):
+        cover(raster(tmp_path / "b.tif", classes(), local), "10")
+
+
+def test_rows_that_are_no_polygons_with_a_class_are_counted_and_whole_numbers_stay_whole(tmp_path: Path) -> None:
+    """An empty cell turns a column of whole numbers into 10.0, 20.0 …; a bow-tie is mended."""
+    tie = Polygon([(WEST, NORTH), (WEST + 600, NORTH - 600), (WEST + 600, NORTH), (WEST, NORTH - 600)])
+    shapes = [tie, box(WEST + 900, NORTH - 1200, WEST + 1500, NORTH), Point(WEST, NORTH), box(0, 0, 1, 1)]
+    values = [10, 20, 10, None]
+    gpd.GeoDataFrame({"class": values}, geometry=shapes, crs="EPSG:32637").to_file(tmp_path / "c.gpkg")
+    found = cover(tmp_path / "c.gpkg", "10", "20")
+    (said,) = found.notes
+    assert said.text == "c.gpkg: 2 of 4 rows are no polygons with a class. They were left out."
+    laid = found.classes(GRID)
+    assert (laid[:, 30:] == 2).all()
+    # a bow-tie of 20 × 20 cells: its two triangles, left and right, are half of the square
+    assert abs(int((laid[:20, :20] == 1).sum()) - 200) <= 20
+    assert (laid[10, 1], laid[10, 18], laid[1, 10], laid[18, 10]) == (1, 1, 0, 0)
