@@ -12,14 +12,16 @@ def running_sums(elevation_m: Any, steps_per_m: Any, sum_steps: Any, sum_unknown
     """Sums of each row from its west end, in whole steps of height, and how many cells were unknown.
 
     Whole numbers, because their sum is the same whatever the order: a disc's mean then does not depend on where the
-    window begins.
+    window begins. Where no ground is unknown, ``sum_unknown`` may have no rows: nothing is counted.
     """
+    counting = sum_unknown.shape[0] > 0
     cols = elevation_m.shape[1]
     for row in range(start, stop):
         total = np.int64(0)
         unknown = np.int32(0)
         sum_steps[row, 0] = 0
-        sum_unknown[row, 0] = 0
+        if counting:
+            sum_unknown[row, 0] = 0
         for col in range(cols):
             z = elevation_m[row, col]
             if math.isnan(z):
@@ -27,7 +29,8 @@ def running_sums(elevation_m: Any, steps_per_m: Any, sum_steps: Any, sum_unknown
             else:
                 total += np.int64(np.rint(np.float64(z) * steps_per_m))
             sum_steps[row, col + 1] = total
-            sum_unknown[row, col + 1] = unknown
+            if counting:
+                sum_unknown[row, col + 1] = unknown
 
 
 @njit(nogil=True, cache=True, error_model="numpy")
@@ -57,6 +60,8 @@ def disc_means(
             west = sum_steps[here, reach - half : reach - half + inside]
             for i in range(inside):
                 total[i] += east[i] - west[i]
+            if sum_unknown.shape[0] == 0:
+                continue
             east_unknown = sum_unknown[here, reach + half + 1 : reach + half + 1 + inside]
             west_unknown = sum_unknown[here, reach - half : reach - half + inside]
             for i in range(inside):

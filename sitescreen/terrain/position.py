@@ -56,7 +56,8 @@ def disc_mean(elevation: Field, radius_m: float) -> Field:
     grid = elevation.grid
     half_widths = disc_half_widths(radius_m, grid.cell_size_m)
     sums = np.empty((grid.rows, grid.cols + 1), dtype=np.int64)
-    unknown = np.empty((grid.rows, grid.cols + 1), dtype=np.int32)
+    gaps = grid.rows if np.isnan(elevation.values).any() else 0
+    unknown = np.empty((gaps, grid.cols + 1), dtype=np.int32)
     in_bands(running_sums, grid.rows, elevation.values, _STEPS_PER_M, sums, unknown)
     mean = np.empty(grid.shape, dtype=np.float32)
     in_bands(disc_means, grid.rows, sums, unknown, half_widths, _STEPS_PER_M, mean)

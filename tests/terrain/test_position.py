@@ -87,9 +87,15 @@ def test_kernels_agree_with_their_python_forms() -> None:
         out = np.empty((9, 10), dtype=np.float32)
         sums_of(values, 16384.0, sums, unknown, 0, 9)
         means_of(sums, unknown, half_widths, 16384.0, out, 0, 9)
-        outs.append(out)
-    np.testing.assert_array_equal(outs[0], outs[1])
-    assert np.isfinite(outs[0]).any()
+        whole = np.empty((9, 10), dtype=np.float32)
+        sums_of(np.nan_to_num(values), 16384.0, sums, unknown[:0], 0, 9)
+        means_of(sums, unknown[:0], half_widths, 16384.0, whole, 0, 9)
+        outs.append((out, whole))
+    for compiled, plain in zip(*outs, strict=True):
+        np.testing.assert_array_equal(compiled, plain)
+    holed, whole = outs[0]
+    assert np.isfinite(holed).sum() == 5 * 6 - 1  # the disc of two cells round (2, 2) alone reaches (1, 1)
+    assert np.isfinite(whole).sum() == 5 * 6
 
 
 def test_refuses_a_disc_without_radius() -> None:
