@@ -17,6 +17,7 @@ from sitescreen.grid import Field, joined
 from sitescreen.inputs import Inputs, read_inputs
 from sitescreen.inputs.zone_map import zone_at
 from sitescreen.judgement.cautions import load_cautions
+from sitescreen.judgement.certainty import Certainty, certainty
 from sitescreen.judgement.overall import Judged, judge
 from sitescreen.judgement.pairs import Compared, compare_for, with_weights
 from sitescreen.judgement.profiles import ZoneProfile, load_profiles
@@ -34,7 +35,7 @@ NOT_MEASURED = (
     "hours of sun and the sun's load on walls",
     "the best bearing for a building's long axis",
     "driving rain",
-    "how certain a rank is",
+    "how certain a rank is given the terrain model's error and the wind (the ranges and chances vary the weights only)",
 )
 
 NOT_CHECKED = (
@@ -47,10 +48,6 @@ NOT_CHECKED = (
 )
 
 EMPTY_IN_THIS_VERSION = (
-    "rank_low",
-    "rank_high",
-    "chance_first",
-    "chance_top_quarter",
     "shore_skyline_deg",
     "cold_pool_chance",
     "night_minimum_c",
@@ -150,8 +147,9 @@ def _judged(
         settings.judgement,
         halved,
     )
+    sure = certainty(judged, zones, profiles, brief.judge.seed, brief.judge.shortlist, settings.judgement)
     notes = inputs.notes + (climate_notes(climate, settings.zones) if climate is not None else ())
-    notes += compared.notes() if compared else ()
+    notes += (compared.notes() if compared else ()) + sure.notes()
     notes += tuple(
         Note("warning", "shore", one.disagreement.sentence)
         for one in measured
@@ -160,7 +158,7 @@ def _judged(
     if brief.not_used_yet():
         given = ", ".join(brief.not_used_yet())
         notes += (Note("warning", "brief", f"Read and checked, but not used by this version: {given}."),)
-    table = _table(plots, values, fits, judged)
+    table = _table(plots, values, fits, judged, sure)
     return Screening(
         brief=brief,
         table=table,
@@ -171,6 +169,7 @@ def _judged(
         not_measured=NOT_MEASURED,
         not_checked=NOT_CHECKED,
         record=_record(brief, inputs, measured, table, settings, progress)
+        | {"certainty": sure.for_record()}
         | ({"pairs": compared.for_record()} if compared else {}),
     )
 
@@ -216,7 +215,7 @@ def _deficit(values: pd.DataFrame, zones: ZoneShares, settings: Defaults) -> Any
     return deficit_k(values["cold_pool_depth_m"], plot_strength, values["sky_view"], settings.cold_air)
 
 
-def _table(plots: Any, values: pd.DataFrame, fits: pd.DataFrame, judged: Judged) -> Any:
+def _table(plots: Any, values: pd.DataFrame, fits: pd.DataFrame, judged: Judged, sure: Certainty) -> Any:
     """Every plot with its identity, readings, marks and geometry; by rank, those set aside last."""
     import geopandas as gpd
 
@@ -226,6 +225,7 @@ def _table(plots: Any, values: pd.DataFrame, fits: pd.DataFrame, judged: Judged)
         values.reset_index(drop=True),
         fits[known_zones].add_prefix("membership_").reset_index(drop=True),
         judged.table.reset_index(drop=True),
+        sure.table.reset_index(drop=True),
     ]
     table = pd.concat(parts, axis=1)
     for column in EMPTY_IN_THIS_VERSION:

@@ -167,6 +167,10 @@ class JudgementSettings(Section):
     assumed_weight_factor: Share
     mark_tie: Annotated[float, Field(ge=0, le=0.1)]
     reasons_shown: Annotated[int, Field(ge=1, le=10)]
+    trials: Annotated[int, Field(ge=100, le=100_000)]
+    told_apart: Annotated[float, Field(ge=0.5, le=1)]
+    trials_plots_most: Annotated[int, Field(ge=1, le=20_000)]
+    trials_plots_least: Annotated[int, Field(ge=1, le=20_000)]
 
 
 class Defaults(Section):

@@ -77,12 +77,18 @@ CONTRACT: tuple[Column, ...] = (
     _text("cautions", "cautions", "Named alerts: a note, a concern, or a stop that sets the plot aside."),
     _text("set_aside", "set aside", "Why the plot is not ranked; empty for ranked plots."),
     _whole(
-        "rank_low", "best rank", "Best rank of the range that holds 90 of 100 trials (not in this version if empty)."
+        "rank_low",
+        "best rank",
+        "Best rank of the range that holds 90 of 100 trials; the trials vary the weights, not the terrain or the wind.",
     ),
     _whole("rank_high", "worst rank", "Worst rank of that range."),
-    _number("chance_first", 2, "0–1", "chance of first", "Share of trials in which the plot is first."),
+    _number("chance_first", 2, "0–1", "chance of first", "Share of the trials in which the plot is first."),
     _number(
-        "chance_top_quarter", 2, "0–1", "chance of top quarter", "Share of trials in which it is in the best quarter."
+        "chance_top_quarter",
+        2,
+        "0–1",
+        "chance of top quarter",
+        "Share of the trials in which it is in the best quarter.",
     ),
     _text("weakest", "weakest", "The criterion with the plot's lowest mark."),
     _number("elevation_m", 1, "m", "elevation", "Mean height of the ground above the terrain model's zero."),
@@ -200,6 +206,39 @@ MORE: Mapping[str, Column] = {
         _whole("water_disagrees", "waters disagree", "1 where the map of water and the terrain model disagree."),
         _text("zone_provisional", "zone provisional", "“yes” where a figure is missing to tell the zone firmly."),
         _text("remarks", "remarks", "What was mended in the plot's outline."),
+        _number(
+            "chance_shortlist",
+            2,
+            "0–1",
+            "chance of shortlist",
+            "Share of the trials, which vary the weights only, in which it is on the shortlist.",
+        ),
+        _number(
+            "chance_first_in_zone",
+            2,
+            "0–1",
+            "chance of first in zone",
+            "Share of those trials in which it is first in its zone.",
+        ),
+        _number(
+            "chance_first_any_weights",
+            2,
+            "0–1",
+            "chance of first, any weights",
+            "The chance of being first if nothing at all were known of the weights.",
+        ),
+        _number(
+            "chance_beats_next",
+            2,
+            "0–1",
+            "beats the next",
+            "Share of those trials in which it has a higher mark than the plot next in rank; below 0.8 they are alike.",
+        ),
+        _whole(
+            "group",
+            "group",
+            "Plots with the same number cannot be told apart: the best of them beats each other one in under 8 of 10.",
+        ),
     )
 }
 """Columns that may follow at the end."""
