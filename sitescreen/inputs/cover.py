@@ -194,7 +194,7 @@ def _polygon_map(path: Path, column: str | None, table: tuple[tuple[str, CoverCl
     notes += _compared(set(values), table, path.name)
     places = {key: number for number, (key, _) in enumerate(table, start=1)}
     datum = to_wgs84(system, path.name, None)
-    geometry = geometry_to_wgs84(shapely.make_valid(np.asarray(table_of.geometry.values, dtype=object)), datum)
+    geometry = geometry_to_wgs84(np.asarray(table_of.geometry.values, dtype=object), datum)
     numbers = np.array([places.get(value, 0) for value in values], dtype=np.uint8)
     code = datum.crs.to_epsg()
     polygons = (geometry, numbers)

@@ -118,7 +118,11 @@ def test_the_map_is_stamped(tmp_path: Path) -> None:
     assert found.notes == ()
 
 
-def test_classes_that_the_map_lacks_are_told_even_if_one_lies_in_a_corner(tmp_path: Path) -> None:
+@pytest.mark.parametrize("at_once", [1, 20_000, 1 << 24])
+def test_classes_that_the_map_lacks_are_told_even_if_one_lies_in_a_corner(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, at_once: int
+) -> None:
+    monkeypatch.setattr("sitescreen.inputs.cover.STRIP_CELLS", at_once)
     values = np.full((600, 700), 10, np.uint8)
     values[599, 699] = 30
     path = raster(tmp_path / "c.tif", values, tiled=True, blockxsize=16, blockysize=16, compress="deflate")
@@ -153,7 +157,7 @@ def test_a_map_of_gaps_or_tied_to_no_place_is_refused(tmp_path: Path) -> None:
 
 
 def test_rows_that_are_no_polygons_with_a_class_are_counted_and_whole_numbers_stay_whole(tmp_path: Path) -> None:
-    """An empty cell turns a column of whole numbers into 10.0, 20.0 …; a bow-tie is mended."""
+    """An empty cell turns a column of whole numbers into 10.0, 20.0 …; a bow-tie is its two triangles."""
     tie = Polygon([(WEST, NORTH), (WEST + 600, NORTH - 600), (WEST + 600, NORTH), (WEST, NORTH - 600)])
     shapes = [tie, box(WEST + 900, NORTH - 1200, WEST + 1500, NORTH), Point(WEST, NORTH), box(0, 0, 1, 1)]
     values = [10, 20, 10, None]
