@@ -2,10 +2,12 @@
 
 from collections.abc import Iterator
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
+from sitescreen.climate.breeze import PlotBreeze, lake_reach, plot_breeze
 from sitescreen.climate.cold_air import closed_pools, smallest_pool_seen_m
 from sitescreen.climate.wind import wind_fields
 from sitescreen.grid import Field, Grid
@@ -13,13 +15,16 @@ from sitescreen.inputs import Inputs
 from sitescreen.inputs.shore import Shore
 from sitescreen.inputs.wind import Rose
 from sitescreen.judgement.coverage import cover
-from sitescreen.judgement.readings import BlockClimate, Readings, block_readings, with_shore
+from sitescreen.judgement.readings import BlockClimate, Readings, block_readings
+from sitescreen.judgement.shore_readings import with_shore
 from sitescreen.lattice import Block, blocks_of, convergence_deg
 from sitescreen.progress import Progress
-from sitescreen.settings import Defaults
+from sitescreen.settings import BreezeSettings, Defaults
 from sitescreen.terrain.flat_water import WaterDisagreement, water_disagreement
 from sitescreen.terrain.ground import read_ground
 from sitescreen.terrain.shore_distance import ShoreDistance, nearest_shore, onshore_bearing, shore_distance
+from sitescreen.terrain.shore_fetch import OpenRule, OpenShore, open_segments, open_shores
+from sitescreen.terrain.shore_segments import Segments
 
 FloatArray = NDArray[np.float64]
 
@@ -71,19 +76,22 @@ def measure(
     lon, lat = plots["lon"].to_numpy(), plots["lat"].to_numpy()
     with progress.step("Reading the ground"):
         grid = block.window(BLOCK_MARGIN_M, terrain.data_bounds(block.crs))
-        elevation = terrain.elevation(grid)
+        heights = terrain.read(grid)
         water_kind = shore.water_kind(grid) if shore else np.zeros(grid.shape, dtype=np.uint8)
     with progress.step("Measuring slope, hollows and sky"):
-        ground = read_ground(elevation, water_kind, terrain.vertical_error_m, terrain.error_range_m, settings.terrain)
-        disagreement = water_disagreement(water_kind, ground.flat, elevation)
+        ground = read_ground(*heights, water_kind, terrain.vertical_error_m, terrain.error_range_m, settings.terrain)
+        # only the core is this block's to report: neighbours would count the margin twice
+        core, inside = grid.part(block.core_bounds)
+        disagreement = water_disagreement(
+            water_kind[inside], ground.flat.part(core, inside), heights.ground.part(block.core_bounds)
+        )
     with progress.step("Measuring wind and shelter"):
         north = _block_convergence_deg(grid)
         roses, place = _roses(inputs, grid)
         wind = wind_fields(ground.elevation, ground.rise, north, roses, place, settings.wind)
     pools = closed_pools(ground.hollows, terrain.vertical_error_m, settings.cold_air)
-    with progress.step("Measuring distance to the shore"):
-        near, onshore_from_deg = _shore(shore, lon, lat, block.crs, settings.breeze.lake_width_none_km)
-        shore_km = shore_distance(shore, grid) if shore else None
+    with progress.step("Measuring distance and way to the shore"):
+        coast = _coast(shore, lon, lat, block, ground.elevation, settings.breeze)
     with progress.step("Reading the plots"):
         coverage = cover(plots.geometry.to_crs(block.crs), grid)
         readings = block_readings(
@@ -95,7 +103,7 @@ def measure(
             smallest_pool_seen_m(terrain.vertical_error_m, settings.cold_air),
             settings.readings,
         )
-        readings = with_shore(readings, near, onshore_from_deg, settings.breeze)
+        readings = with_shore(readings, coast.near, coast.lake, coast.breeze, coast.onshore_from_deg, settings.breeze)
     fields = {
         "elevation_m": ground.elevation,
         "slope_deg": ground.slope,
@@ -107,25 +115,52 @@ def measure(
         "ventilation": wind.ventilation,
         "ridge_exposure": wind.ridge_exposure,
         "sheltered_fraction": wind.sheltered_fraction,
-        **({"shore_distance_km": shore_km} if shore_km is not None else {}),
+        **({"shore_distance_km": coast.distance} if coast.distance is not None else {}),
     }
-    core = {name: field.part(block.core_bounds) for name, field in fields.items()}
-    return BlockResult(block, readings, core, disagreement)
+    own = {name: field.part(block.core_bounds) for name, field in fields.items()}
+    return BlockResult(block, readings, own, disagreement)
 
 
-def _shore(
-    shore: Shore | None, lon: FloatArray, lat: FloatArray, crs: str, least_lake_width_km: float
-) -> tuple[ShoreDistance | None, FloatArray]:
-    """The nearest shores of plots, and the bearing that the breeze of the nearer one comes from."""
-    if shore is None:
-        return None, np.full(len(lon), np.nan)
-    near = nearest_shore(shore, lon, lat, crs, least_lake_width_km)
+class _Coast(NamedTuple):
+    """What the shore gives a block; all None, and no bearing known, without a shoreline."""
+
+    near: ShoreDistance | None
+    lake: OpenShore | None
+    breeze: PlotBreeze | None
+    onshore_from_deg: FloatArray
+    distance: Field | None
+
+
+def _coast(
+    shore: Shore | None,
+    lon: FloatArray,
+    lat: FloatArray,
+    block: Block,
+    elevation: Field,
+    settings: BreezeSettings,
+) -> _Coast:
+    """The nearest waters of plots, the breeze of the open ones, and the bearing that it comes from."""
     from_deg = np.full(len(lon), np.nan)
-    for kind in ("sea", "lake"):
-        here = near.kind == kind
+    if shore is None:
+        return _Coast(None, None, None, from_deg, None)
+    crs, least_km = block.crs, settings.lake_width_none_km
+    rule = OpenRule(settings.open_fetch_m, settings.open_sector_deg, settings.open_share)
+    sea_open = open_segments(shore, "sea", crs, block.core_bounds, rule)
+    lake_open = open_segments(shore, "lake", crs, block.core_bounds, rule, least_km)
+    sea = open_shores(shore, sea_open, "sea", lon, lat, crs)
+    lake = open_shores(shore, lake_open, "lake", lon, lat, crs, lambda km, width_km: lake_reach(km, width_km, settings))
+    breeze = plot_breeze(elevation, lon, lat, sea, lake, settings)
+    for kind, segments in (("sea", sea_open), ("lake", lake_open)):
+        here = breeze.kind == kind
         if here.any():
-            from_deg[here] = onshore_bearing(shore, lon[here], lat[here], crs, kind, least_lake_width_km).from_deg
-    return near, from_deg
+            from_deg[here] = onshore_bearing(shore, lon[here], lat[here], crs, kind, 0.0, segments).from_deg
+    return _Coast(
+        nearest_shore(shore, lon, lat, crs, least_km),
+        lake,
+        breeze,
+        from_deg,
+        shore_distance(shore, elevation.grid, open_shores=Segments.joined(sea_open, lake_open)),
+    )
 
 
 def _block_convergence_deg(grid: Grid) -> float:

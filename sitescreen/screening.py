@@ -28,9 +28,9 @@ from sitescreen.measuring import BlockResult, measure, plots_by_block
 from sitescreen.notes import Note
 from sitescreen.progress import Progress
 from sitescreen.settings import Defaults, load_defaults
+from sitescreen.terrain.flat_water import together
 
 NOT_MEASURED = (
-    "ground that screens the breeze on its way from the shore",
     "cold air held back by narrows without a closed hollow, and cold air in motion",
     "hours of sun and the sun's load on walls",
     "the best bearing for a building's long axis",
@@ -48,7 +48,6 @@ NOT_CHECKED = (
 )
 
 EMPTY_IN_THIS_VERSION = (
-    "shore_skyline_deg",
     "cold_pool_chance",
     "night_minimum_c",
     "floor_height_m",
@@ -57,7 +56,6 @@ EMPTY_IN_THIS_VERSION = (
     "west_load_kwh_m2",
     "long_axis_deg",
     "wind_incidence_deg",
-    "offshore_from_deg",
     "night_flow_m2_s",
     "night_flow_speed_m_s",
     "clear_calm_nights",
@@ -150,11 +148,9 @@ def _judged(
     sure = certainty(judged, zones, profiles, brief.judge.seed, brief.judge.shortlist, settings.judgement)
     notes = inputs.notes + (climate_notes(climate, settings.zones) if climate is not None else ())
     notes += (compared.notes() if compared else ()) + sure.notes()
-    notes += tuple(
-        Note("warning", "shore", one.disagreement.sentence)
-        for one in measured
-        if inputs.shore and not one.disagreement.agrees
-    )
+    waters = together([one.disagreement for one in measured])
+    if inputs.shore and not waters.agrees:
+        notes += (Note("warning", "shore", waters.sentence),)
     if brief.not_used_yet():
         given = ", ".join(brief.not_used_yet())
         notes += (Note("warning", "brief", f"Read and checked, but not used by this version: {given}."),)
@@ -269,6 +265,7 @@ def _record(
             "vertical_error_m": inputs.terrain.vertical_error_m,
             "error_range_m": inputs.terrain.error_range_m,
         },
+        "water_disagreement": asdict(together([one.disagreement for one in measured])),
         "blocks": [
             {**asdict(one.block), "crs": one.block.crs, "water_disagreement": asdict(one.disagreement)}
             for one in measured

@@ -167,8 +167,9 @@ def read_cells(
     widest: int,
     heights: Any,
     under: Any,
+    stored: Any,
 ) -> None:
-    """Fill ``heights`` and ``under`` where a grid cell is ``wanted``.
+    """Fill ``heights``, ``under`` and ``stored`` (the nearest height as it is) where a grid cell is ``wanted``.
 
     ``ground`` starts at source row and column ``first_row`` and ``first_col``; positions ``u_nodes`` (column) and
     ``v_nodes`` (row) are in source cells from their outer edges, at every ``step``-th grid cell; the first cell lies
@@ -215,6 +216,7 @@ def read_cells(
             if math.isnan(ground[at_row, at_col]):
                 under[row, col] = VOID
                 continue
+            stored[row, col] = ground[at_row, at_col]
             # cells of the source under one cell of the grid, along each axis of the source; the kernel widens with them
             across_u = (u_nodes[node_row, n + 1] - u_nodes[node_row, n]) / step
             down_u = (u_nodes[node_row + 1, n] - u_nodes[node_row, n]) / step

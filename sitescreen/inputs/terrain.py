@@ -2,7 +2,7 @@
 
 import math
 from dataclasses import dataclass, field
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 import shapely
@@ -31,6 +31,15 @@ NEAR_DEG = 15.0
 
 INTERPOLATED_FROM = 1.5
 """Cells of a file this many times the grid's deserve a note."""
+
+
+class Heights(NamedTuple):
+    """The same ground twice, on one grid. [m]"""
+
+    ground: Field
+    """Interpolated: smooth, for slopes and horizons."""
+    stored: Field
+    """Of the model's own cell under each centre: exact, for telling level water."""
 
 
 @dataclass
@@ -101,6 +110,10 @@ class Terrain:
         return parts[0] if len(parts) == 1 else shapely.union_all(parts)
 
     def elevation(self, grid: Grid) -> Field:
+        """Heights at the cell centres of a grid: the ground of :meth:`read`. [m]"""
+        return self.read(grid).ground
+
+    def read(self, grid: Grid) -> "Heights":
         """Heights at the cell centres of a grid.
 
         Parameters
@@ -109,7 +122,7 @@ class Terrain:
 
         Returns
         -------
-        Field
+        Heights
             Height above the files' vertical datum. [m] NaN outside the files and in their gaps, save gaps up to three
             cells wide, which are closed from their rims.
 
@@ -120,13 +133,16 @@ class Terrain:
         """
         heights: NDArray[np.float32] = np.full(grid.shape, np.nan, dtype=np.float32)
         under: NDArray[np.uint8] = np.full(grid.shape, OUTSIDE, dtype=np.uint8)
+        stored: NDArray[np.float32] = np.full(grid.shape, np.nan, dtype=np.float32)
         for mosaic in self.mosaics:
-            warped(mosaic, _datum(mosaic), grid, heights, under)
+            warped(mosaic, _datum(mosaic), grid, heights, under, stored)
         cell_km2 = (grid.cell_size_m / 1000.0) ** 2
         self._closed_km2 += cell_km2 * float(np.count_nonzero(under == CLOSED))
         self._void_km2 += cell_km2 * float(np.count_nonzero(under == VOID))
         self._read_km2 += cell_km2 * float(np.count_nonzero(under != OUTSIDE))
-        return Field(heights, grid, "m", "height of the ground")
+        return Heights(
+            Field(heights, grid, "m", "height of the ground"), Field(stored, grid, "m", "height as the model holds it")
+        )
 
     @property
     def findings(self) -> tuple[Note, ...]:

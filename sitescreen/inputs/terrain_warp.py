@@ -100,7 +100,14 @@ def central_meridian_deg(crs: str, to_lonlat: Transformer, x: FloatArray, y: Flo
     return float(to_lonlat.transform(x[0], y[0])[0])
 
 
-def warped(mosaic: Mosaic, datum: Datum, grid: Grid, heights: NDArray[np.float32], under: NDArray[np.uint8]) -> None:
+def warped(
+    mosaic: Mosaic,
+    datum: Datum,
+    grid: Grid,
+    heights: NDArray[np.float32],
+    under: NDArray[np.uint8],
+    stored: NDArray[np.float32],
+) -> None:
     """Fill the cells of a grid that have no height yet, where a mosaic has one.
 
     Parameters
@@ -113,6 +120,8 @@ def warped(mosaic: Mosaic, datum: Datum, grid: Grid, heights: NDArray[np.float32
         [m] NaN where unknown so far; changed in place.
     under : uint8 array, shape of the grid
         OUTSIDE, KNOWN, CLOSED or VOID; changed in place.
+    stored : float32 array, shape of the grid
+        The height of the source cell under each centre, not interpolated. [m] Changed in place.
     """
     sources: dict[str, Any] = {}
     try:
@@ -126,9 +135,10 @@ def warped(mosaic: Mosaic, datum: Datum, grid: Grid, heights: NDArray[np.float32
                 found = _tile(mosaic, datum, grid, rows, cols, open_cells, sources)
                 if found is None:
                     continue
-                new, kind = found
+                new, kind, nearest = found
                 better = kind != OUTSIDE  # only open cells were asked for
                 heights[rows, cols][better] = new[better]
+                stored[rows, cols][better] = nearest[better]
                 under[rows, cols][better] = kind[better]
     finally:
         for source in sources.values():
@@ -143,7 +153,7 @@ def _tile(
     cols: slice,
     wanted: NDArray[np.bool_],
     sources: dict[str, Any],
-) -> tuple[NDArray[np.float32], NDArray[np.uint8]] | None:
+) -> tuple[NDArray[np.float32], NDArray[np.uint8], NDArray[np.float32]] | None:
     u, v, offset_row, offset_col = positions(grid, rows, cols, mosaic.lattice, datum)
     if not (np.isfinite(u).any() and np.isfinite(v).any()):
         return None
@@ -167,6 +177,7 @@ def _tile(
     shape = (rows.stop - rows.start, cols.stop - cols.start)
     heights = np.full(shape, np.nan, dtype=np.float32)
     under = np.full(shape, OUTSIDE, dtype=np.uint8)
+    stored = np.full(shape, np.nan, dtype=np.float32)
     read_cells(
         ground,
         found[1],
@@ -182,5 +193,6 @@ def _tile(
         2 * pad,
         heights,
         under,
+        stored,
     )
-    return heights, under
+    return heights, under, stored

@@ -26,8 +26,8 @@ def waters_disagree(readings: pd.DataFrame, vertical_error_m: float) -> NDArray[
     -------
     float64 array, shape (n,)
         1 where they disagree: water is mapped on ground that is not level and stands more than two standard deviations
-        over that water, or the ground is as level as water and none is mapped. 0 where they agree; NaN where nobody
-        mapped water and the terrain shows none.
+        over that water, or half of the plot is as level as water and not mapped as such. 0 where they agree; NaN where
+        nobody mapped water and the terrain shows none.
 
     Notes
     -----
@@ -37,6 +37,8 @@ def waters_disagree(readings: pd.DataFrame, vertical_error_m: float) -> NDArray[
     flat = readings["share_flat_water"].to_numpy(dtype=np.float64)
     clear = readings["over_water_m"].to_numpy(dtype=np.float64) > 2.0 * vertical_error_m
     map_only = (mapped > MAPPED_SHARE) & (flat < FLAT_SHARE) & clear
-    terrain_only = (flat >= FLAT_SHARE) & ~(mapped > MAPPED_SHARE)
+    # where most of the plot is mapped as water too, both say water, and nothing may call it dry
+    unmapped = flat - np.nan_to_num(mapped)
+    terrain_only = (flat >= FLAT_SHARE) & (unmapped >= FLAT_SHARE - MAPPED_SHARE) & ~(mapped > 0.5)
     disagree = np.where(map_only | terrain_only, 1.0, 0.0)
     return np.where(np.isnan(mapped) & ~terrain_only, np.nan, disagree)

@@ -80,6 +80,7 @@ def with_level_water(elevation: Field, water_kind: NDArray[np.uint8], level_m: N
 
 def read_ground(
     elevation: Field,
+    stored: Field,
     water_kind: NDArray[np.uint8],
     vertical_error_m: float,
     error_range_m: float,
@@ -91,6 +92,8 @@ def read_ground(
     ----------
     elevation : Field
         Height as read. [m] NaN where unknown.
+    stored : Field
+        The same, not interpolated: water is told by its being exactly level.
     water_kind : uint8 array, shape (rows, cols)
         0 land, 1 sea, 2 lake, as mapped; all 0 without a shoreline.
     vertical_error_m : float
@@ -100,7 +103,7 @@ def read_ground(
     """
     level = water_level_m(elevation, water_kind)
     ground = with_level_water(elevation, water_kind, level)
-    flat = flat_water(ground, settings.smallest_water_km2)
+    flat = flat_water(with_level_water(stored, water_kind, level), settings.smallest_water_km2)
     outlets = (water_kind > 0) | (flat.label > 0)
     return Ground(
         elevation=ground,

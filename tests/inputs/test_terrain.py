@@ -176,6 +176,10 @@ def test_four_tiles_are_one_to_the_bit(tmp_path: Path, name: str, overlap: int) 
         assert four.data_outline().symmetric_difference(one.data_outline()).area < 1e-15
 
 
+NEAR_GAPS = [(54 + k, 17, 9, 9) for k in (0, 3, 6)] + [(70 + 4 * k, 55, 8, 8) for k in range(4)]
+"""Windows whose edges pass by narrow gaps, which look like wide ones to whoever sees no further."""
+
+
 @pytest.mark.parametrize("name", AWKWARD)
 def test_a_cell_has_the_same_bits_in_every_window(tmp_path: Path, name: str) -> None:
     """Windows of odd sizes and corners, also ones whose corner lies outside the data."""
@@ -184,7 +188,14 @@ def test_a_cell_has_the_same_bits_in_every_window(tmp_path: Path, name: str) -> 
     grid = whole_window(found, target)
     whole = found.elevation(grid).values
     step = grid.cell_size_m
-    for row, col, rows, cols in [(0, 0, 7, 90), (13, 31, 50, 41), (60, 70, 45, 60), (-40, -50, 90, 90), (55, 2, 1, 1)]:
+    for row, col, rows, cols in [
+        (0, 0, 7, 90),
+        (13, 31, 50, 41),
+        (60, 70, 45, 60),
+        (-40, -50, 90, 90),
+        (55, 2, 1, 1),
+        *NEAR_GAPS,
+    ]:
         part = Grid(grid.crs, grid.west_m + col * step, grid.north_m - row * step, step, rows, cols)
         heights = found.elevation(part).values
         r0, c0 = max(row, 0), max(col, 0)
@@ -615,6 +626,19 @@ def test_outline_and_bounds_cover_the_files(tmp_path: Path) -> None:
     assert found.data_outline().bounds == pytest.approx((39.0, 2.0 - 60 * SECOND, 39.0 + 90 * SECOND, 2.0))
     west, south, east, north = found.data_bounds("EPSG:32637")
     assert (east - west, north - south) == pytest.approx((90 * 30.9, 60 * 30.7), rel=0.01)
+
+
+def test_bounds_follow_the_bend_of_a_long_edge(tmp_path: Path) -> None:
+    """A parallel is no straight line on the grid: over 0.5° at 10° S it bulges by 10 m, a third of a cell."""
+    step = 7.5 * SECOND
+    values = np.full((240, 240), 1.0, np.float32)
+    found = terrain(write(tmp_path / "t.tif", values, Affine(step, 0, 38.75, 0, -step, -9.5)))
+    to_utm = Transformer.from_crs("EPSG:4326", "EPSG:32637", always_xy=True)
+    corners = to_utm.transform([38.75, 39.25, 38.75, 39.25], [-9.5, -9.5, -10.0, -10.0])
+    dense = to_utm.transform_bounds(38.75, -10.0, 39.25, -9.5, densify_pts=501)
+    assert dense[3] - max(corners[1]) > 9.0
+    # points at every 64th cell, 15 km apart, leave under a metre of the bulge
+    assert found.data_bounds("EPSG:32637") == pytest.approx(dense, abs=1.0)
 
 
 def test_the_antimeridian_is_no_edge(tmp_path: Path) -> None:

@@ -74,6 +74,7 @@ def run(
     u, v = np.meshgrid(u0 + nodes * step, v0 + nodes * step)
     heights = np.full(shape, np.nan, np.float32)
     under = np.zeros(shape, np.uint8)
+    stored = np.full(shape, np.nan, np.float32)
     everywhere = np.ones(ground.shape, bool)
     function = kernel.read_cells if compiled else kernel.read_cells.py_func
     function(
@@ -91,7 +92,16 @@ def run(
         64,
         heights,
         under,
+        stored,
     )
+    known = under == kernel.KNOWN
+    rows = np.floor(v0 + step * np.arange(shape[0])).astype(int)
+    cols = np.floor(u0 + step * np.arange(shape[1])).astype(int)
+    rr, cc = np.meshgrid(rows, cols, indexing="ij")
+    assert (stored[known] == ground.astype(np.float32)[rr[known], cc[known]]).all(), (
+        "the cell under each centre, as it is"
+    )
+    assert np.isnan(stored[~known]).all()
     return heights, under
 
 

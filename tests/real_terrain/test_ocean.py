@@ -39,7 +39,6 @@ def test_plots_at_the_rim_carry_a_caution_or_are_set_aside(ocean_screening: Scre
         assert table.loc[plot, "set_aside"] + table.loc[plot, "cautions"] != ""
 
 
-@pytest.mark.xfail(reason="waters_disagree asks for hardly any mapped water before the terrain's sea counts")
 def test_open_sea_of_the_terrain_on_mapped_land_is_told(ocean_screening: Screening) -> None:
     """Plot 05 is level at 0 m all over, and four fifths of it are mapped as land."""
     (plot,) = ocean_screening.table.set_index("plot").loc[["05"]].itertuples()

@@ -6,7 +6,8 @@ import numpy as np
 import pytest
 
 from sitescreen.grid import Field, Grid
-from sitescreen.terrain.flat_water import flat_water, water_disagreement
+from sitescreen.terrain._flat_water_kernel import level_patches
+from sitescreen.terrain.flat_water import flat_water, together, water_disagreement
 
 CELL_M = 90.0
 CELL_KM2 = 0.0081
@@ -50,23 +51,56 @@ def test_a_level_patch_must_be_large() -> None:
     assert len(flat_water(field(heights), smallest_km2=0.52).level_m) == 0
 
 
-def test_a_rim_mixed_with_the_land_counts_as_far_as_the_warp_reaches() -> None:
-    """Cells within 0.5 m of the level belong to the lake up to three cells from its heart, not beyond."""
+def test_narrow_arms_belong_to_their_lake_and_lone_level_strips_to_none() -> None:
+    """An arm one cell wide is part of the lake it leads to; a terrace of two cells' width is no water anywhere."""
     heights = hillside()
     heights[10:30, 10:25] = 321.5
-    heights[10:30, 25:32] = 321.7 + 0.2 * (np.indices((20, 7)).sum(axis=0) % 2)
+    heights[20, 25:60] = 321.5
+    heights[21, 60] = 321.5  # touches by a corner only
+    heights[40:42, :] = 77.0
     found = flat_water(field(heights))
     expected = np.zeros((60, 80), dtype=int)
-    expected[10:30, 10:27] = 1  # the heart ends at column 23, one inside the level ones
+    expected[10:30, 10:25] = expected[20, 25:60] = 1
     np.testing.assert_array_equal(found.label, expected)
 
 
 def test_gentle_ground_is_no_water() -> None:
-    """A plain that falls 4 mm a cell is level to 1 cm over any nine cells, and yet no lake as a whole."""
+    """A plain that falls by less than a millimetre a cell is not level."""
     col = np.mgrid[:60, :200][1]
-    assert len(flat_water(field(100.0 - 0.004 * col)).level_m) == 0
+    assert len(flat_water(field(100.0 - 0.0005 * col)).level_m) == 0
     noise = np.random.default_rng(1).normal(0.0, 0.05, (60, 80))
     assert len(flat_water(field(100.0 + noise)).level_m) == 0
+
+
+@pytest.mark.parametrize("number", [level_patches, level_patches.py_func])
+def test_patches_are_numbered_from_the_north_west(number: Any) -> None:
+    heights = np.arange(120, dtype=np.float32).reshape(10, 12)
+    heights[6:9, 1:4] = -1.0
+    heights[1:4, 6:9] = -2.0
+    label = np.zeros(heights.shape, dtype=np.int32)
+    assert number(heights, label) == 2
+    assert label[2, 7] == 1
+    assert label[7, 2] == 2
+    assert (label > 0).sum() == 18
+
+
+def test_pieces_of_ground_add_up() -> None:
+    heights = hillside()
+    heights[10:30, 10:25] = 321.5
+    kind = np.zeros((60, 80), dtype=np.uint8)
+    kind[10:30, 5:20] = 2
+    whole_water = flat_water(field(heights))
+    whole = water_disagreement(kind, whole_water, field(heights))
+    halves = []
+    for rows in (slice(0, 20), slice(20, 60)):
+        part = field(heights[rows])
+        halves.append(water_disagreement(kind[rows], whole_water.part(part.grid, (rows, slice(None))), part))
+    both = together(halves)
+    assert both.overlap == pytest.approx(whole.overlap) == pytest.approx(0.5)
+    assert both.mapped_km2 == pytest.approx(whole.mapped_km2)
+    assert both.mapped_not_flat_share == pytest.approx(whole.mapped_not_flat_share)
+    assert both.lake_shore_range_m == max(one.lake_shore_range_m for one in halves)
+    assert np.isnan(both.sea_high_m)
 
 
 def test_water_at_the_rim_and_holes_in_the_data() -> None:
