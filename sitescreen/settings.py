@@ -78,6 +78,16 @@ class BreezeSettings(Section):
     tail_length_km: Positive
     lake_width_none_km: Annotated[float, Field(ge=0, le=100)]
     lake_width_full_km: Annotated[float, Field(gt=0, le=500)]
+    open_fetch_m: Annotated[float, Field(ge=100, le=50_000)]
+    open_sector_deg: Annotated[float, Field(ge=5, le=180)]
+    open_share: Annotated[float, Field(gt=0, le=1)]
+    path_most_m: Annotated[float, Field(ge=1000, le=12_000)]
+    path_eye_m: Annotated[float, Field(ge=0, le=100)]
+    sea_depth_m: Annotated[float, Field(ge=50, le=5000)]
+    lake_depth_m: Annotated[float, Field(ge=50, le=5000)]
+    screen_from_tangent: Share
+    screen_span_tangent: Annotated[float, Field(gt=0, le=2)]
+    screen_most: Share
 
 
 class WindSettings(Section):

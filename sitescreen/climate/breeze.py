@@ -1,15 +1,15 @@
-"""How much of the day's sea or lake breeze reaches a plot, by its distance from the shore alone.
+"""How much of the day's sea or lake breeze reaches a plot: by its distance, the lake's width and the ground between."""
 
-First version: distance and the width of the lake. Ground that stands between plot and shore is not looked at yet, and
-every sea and every lake above the stated size counts as open water.
-"""
-
-from typing import Any
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
+from pyproj import Transformer
 
+from sitescreen.climate.breeze_path import Way, screen_share, ways
+from sitescreen.grid import Field
 from sitescreen.settings import BreezeSettings
+from sitescreen.terrain.shore_fetch import OpenShore
 
 FloatArray = NDArray[np.float64]
 
@@ -64,12 +64,110 @@ def lake_reach(distance_km: FloatArray, width_km: FloatArray, settings: BreezeSe
     return lake_weight(width, settings) * within * sea_reach(distance, settings)
 
 
-def breeze_reach(sea_km: Any, lake_km: Any, lake_width_km: Any, settings: BreezeSettings) -> FloatArray:
-    """The stronger of the sea's and the lake's breeze at each plot, 0–1.
+class PlotBreeze(NamedTuple):
+    """The breeze of plots, and the shore that it comes from; arrays of shape (n,).
 
-    NaN where no shore is known at all: nobody has said that there is none.
+    Of sea and lake the one whose breeze reaches the plot most; where neither's does, the one whose breeze would over
+    level ground; else the nearer.
     """
-    sea = np.asarray(sea_km, dtype=np.float64)
-    lake = np.asarray(lake_km, dtype=np.float64)
-    reach = np.fmax(sea_reach(sea, settings), lake_reach(lake, np.asarray(lake_width_km), settings))
-    return np.where(np.isnan(sea) & np.isnan(lake), np.nan, reach)
+
+    kind: NDArray[np.object_]
+    """"sea", "lake", or "" without an open shore."""
+    distance_m: FloatArray
+    bearing_deg: FloatArray
+    """From the plot to the nearest point of that shore, from true north. [°] NaN in the water."""
+    reach: FloatArray
+    """Share of a full breeze that reaches the plot, 0–1; NaN where the ground on the way is not known."""
+    screen: FloatArray
+    """Share of it that the ground on the way takes, 0–1; NaN likewise."""
+    way: Way
+
+
+def plot_breeze(
+    elevation: Field,
+    lon_deg: FloatArray,
+    lat_deg: FloatArray,
+    sea: OpenShore,
+    lake: OpenShore,
+    settings: BreezeSettings,
+) -> PlotBreeze:
+    """The breeze that reaches each plot: what distance and the lake's width leave, times 1 − screen.
+
+    Parameters
+    ----------
+    elevation : Field
+        Height, in the UTM system of the block. [m]
+    lon_deg, lat_deg : array, shape (n,)
+        Plots. [°]
+    sea, lake : OpenShore
+        Their nearest open sea, and the lake whose breeze is strongest.
+    settings : BreezeSettings
+    """
+    to_grid = Transformer.from_crs("EPSG:4326", elevation.grid.crs, always_xy=True)
+    x, y = to_grid.transform(lon_deg, lat_deg)
+    found = []
+    for kind, shore in (("sea", sea), ("lake", lake)):
+        km = shore.distance_m / 1000.0
+        level_ground = sea_reach(km, settings) if kind == "sea" else lake_reach(km, shore.width_km, settings)
+        # in the water there is no way to look along
+        away = shore.distance_m != 0.0
+        to_x, to_y = to_grid.transform(np.where(away, shore.lon, lon_deg), np.where(away, shore.lat, lat_deg))
+        some = np.isfinite(to_x)
+        way = ways(elevation, x, y, np.where(some, to_x, np.nan), np.where(some, to_y, np.nan), settings)
+        if kind == "sea":
+            screen = screen_share(way, np.zeros(len(km)), settings.sea_depth_m, settings)
+        else:
+            # the ground at a lake's shore is its level; where the shore is too far to see, the lowest on the way
+            level = np.where(np.isnan(way.shore_m), way.lowest_m, way.shore_m)
+            screen = screen_share(way, level, settings.lake_depth_m, settings)
+        # a lake of unknown width may be as good as the sea; and nothing stays nothing behind unknown ground
+        most = np.where(np.isnan(level_ground), sea_reach(km, settings), level_ground)
+        reach = np.where(level_ground == 0.0, 0.0, level_ground * (1.0 - screen))
+        found.append(_Found(shore, most, reach, screen, way))
+    return _stronger(*found)
+
+
+class _Found(NamedTuple):
+    """The breeze of one kind of water; ``most``: over level ground, NaN without a shore; ``reach``: NaN if unknown."""
+
+    shore: OpenShore
+    most: FloatArray
+    reach: FloatArray
+    screen: FloatArray
+    way: Way
+
+
+def _stronger(sea: _Found, lake: _Found) -> PlotBreeze:
+    """Of two breezes the stronger at each plot; one that is unknown is given the benefit, and stays unknown."""
+
+    def prefer(one: _Found, other: _Found) -> NDArray[np.bool_]:
+        """Whether the one is at least as good: by what reaches, then over level ground, then by distance."""
+        by = [
+            (np.where(np.isnan(each.reach), each.most, each.reach), each.most, -each.shore.distance_m)
+            for each in (one, other)
+        ]
+        better = np.zeros(len(one.most), dtype=bool)
+        level = np.ones(len(one.most), dtype=bool)
+        for mine, theirs in zip(*by, strict=True):
+            mine, theirs = (np.where(np.isnan(values), -np.inf, values) for values in (mine, theirs))
+            better |= level & (mine > theirs)
+            level &= mine == theirs
+        return better | level
+
+    sea_first = prefer(sea, lake)
+    dry = np.isnan(sea.shore.distance_m) & np.isnan(lake.shore.distance_m)
+
+    def of(one: FloatArray, other: FloatArray) -> FloatArray:
+        return np.where(sea_first, one, other)
+
+    return PlotBreeze(
+        kind=np.where(dry, "", np.where(sea_first, "sea", "lake")).astype(object),
+        distance_m=of(sea.shore.distance_m, lake.shore.distance_m),
+        bearing_deg=of(sea.shore.bearing_deg, lake.shore.bearing_deg),
+        reach=of(sea.reach, lake.reach),
+        screen=of(sea.screen, lake.screen),
+        way=Way(*(np.where(sea_first, one, other) for one, other in zip(sea.way, lake.way, strict=True))),
+    )
+
+
+__all__ = ["PlotBreeze", "arrival_h", "lake_reach", "lake_weight", "plot_breeze", "sea_reach"]

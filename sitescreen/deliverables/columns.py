@@ -104,15 +104,15 @@ CONTRACT: tuple[Column, ...] = (
         "Share of the plot likely to be less steep than the limit for building.",
     ),
     _number("rise_m", 1, "m", "rise", "Height above the mean of the ground within 1 km; negative in a hollow."),
-    _text("shore_kind", "nearest shore", "Whether the nearest shore is of the sea or of a lake."),
-    _number("shore_distance_km", 2, "km", "to the shore", "Distance to the nearest shore that makes a breeze."),
+    _text("shore_kind", "shore", "Whether the breeze that reaches the plot most is of the sea or of a lake."),
+    _number("shore_distance_km", 2, "km", "to the shore", "Distance to its nearest shore on open water."),
     _number(
         "onshore_from_deg", 0, "° from true north", "onshore breeze from", "Bearing the daytime breeze comes from."
     ),
     _number(
         "breeze_reach", 2, "0–1", "breeze reach", "How much of the daytime breeze of sea or lake gets to the plot."
     ),
-    _number("shore_skyline_deg", 1, "°", "skyline to the shore", "Height of the skyline towards the shore."),
+    _number("shore_skyline_deg", 1, "°", "skyline to the shore", "Skyline on the way to the shore, from 10 m up."),
     _number(
         "ventilation",
         2,
@@ -199,8 +199,12 @@ MORE: Mapping[str, Column] = {
         _number("known_weight_share", 2, "0–1", "weight known", "Part of the weights whose readings are known."),
         _text("zone_missing", "zone lacks", "The figure that is missing to tell the zone firmly."),
         _number("over_water_m", 1, "m", "above the water", "Height above the nearest water, where it could be told."),
-        _number("sea_km", 2, "km", "to the sea", "Distance to the nearest sea shore."),
-        _number("lake_km", 2, "km", "to a lake", "Distance to the nearest lake shore."),
+        _number("breeze_screen", 2, "0–1", "breeze screened", "Share of the breeze that the ground on its way takes."),
+        _number("crest_bearing_deg", 0, "° from true north", "screen lies", "Bearing of the ground that screens most."),
+        _number("crest_distance_m", 0, "m", "screen at", "Distance to that ground."),
+        _number("crest_above_plot_m", 0, "m", "screen stands", "How high that ground stands above the plot."),
+        _number("sea_km", 2, "km", "to the sea", "Distance to the nearest sea shore, creeks included."),
+        _number("lake_km", 2, "km", "to a lake", "Distance to the lake whose breeze reaches the plot most."),
         _number("lake_width_km", 1, "km", "width of the lake", "Width of that lake."),
         _text("outcome", "outcome", "Why the plot could not be judged; empty where it could."),
         _whole("water_disagrees", "waters disagree", "1 where the map of water and the terrain model disagree."),

@@ -7,13 +7,11 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
-from sitescreen.climate.breeze import arrival_h, breeze_reach
 from sitescreen.climate.cold_air import ClosedPools
 from sitescreen.climate.wind import WindFields
 from sitescreen.judgement.coverage import Coverage
-from sitescreen.settings import BreezeSettings, ReadingSettings
+from sitescreen.settings import ReadingSettings
 from sitescreen.terrain.ground import Ground
-from sitescreen.terrain.shore_distance import ShoreDistance
 
 FloatArray = NDArray[np.float64]
 
@@ -148,51 +146,4 @@ def stack(parts: list[Readings], plot_ids: list[str]) -> Readings:
     why = pd.concat([part.why_unknown for part in parts]) if parts else pd.DataFrame(index=pd.Index([], name="plot"))
     values = values.reindex(plot_ids)
     why = why.reindex(plot_ids).astype(object).fillna("")
-    return Readings(values, why)
-
-
-def with_shore(
-    readings: Readings, near: ShoreDistance | None, onshore_from_deg: FloatArray, settings: BreezeSettings
-) -> Readings:
-    """The readings with the shore's added: kind, distance, bearing, breeze.
-
-    Parameters
-    ----------
-    readings : Readings, n rows
-    near : ShoreDistance, of the same plots, or None
-        None where no shoreline was given: the shore's readings are unknown then, and say so.
-    onshore_from_deg : float64 array, shape (n,)
-        Bearing that the day's breeze comes from. [°] NaN between opposite shores.
-    settings : BreezeSettings
-    """
-    values, why = readings.values.copy(), readings.why_unknown.copy()
-    count = len(values)
-    nothing = np.full(count, np.nan)
-    if near is None:
-        kind = np.full(count, "", dtype=object)
-        sea = lake = width = nothing
-        reason = "no shoreline was given"
-    else:
-        kind = near.kind
-        sea, lake, width = near.sea_distance_m / 1000.0, near.lake_distance_m / 1000.0, near.lake_width_km
-        reason = "the shoreline given has neither a sea nor a lake wide enough to make a breeze"
-    values["shore_kind"] = kind
-    values["shore_distance_km"] = np.fmin(sea, lake)
-    values["onshore_from_deg"] = onshore_from_deg
-    values["breeze_reach"] = breeze_reach(sea, lake, width, settings)
-    values["breeze_arrival_h"] = arrival_h(values["shore_distance_km"].to_numpy(), settings)
-    values["sea_km"], values["lake_km"], values["lake_width_km"] = sea, lake, width
-    dry = np.isnan(values["shore_distance_km"].to_numpy())
-    between = np.isnan(onshore_from_deg) & ~dry
-    late = np.isnan(values["breeze_arrival_h"].to_numpy()) & ~dry
-    for column in ("shore_distance_km", "onshore_from_deg", "breeze_reach", "breeze_arrival_h"):
-        if dry.any():
-            why[column] = np.where(dry, reason, "")
-    for column, missing, text in (
-        ("onshore_from_deg", between, "it lies between shores that face one another, or in the water"),
-        ("breeze_arrival_h", late, "it lies too far from the shore for the day's breeze to arrive"),
-    ):
-        if missing.any():
-            already = why[column].to_numpy(dtype=object) if column in why else np.full(count, "", dtype=object)
-            why[column] = np.where(missing, text, already)
     return Readings(values, why)

@@ -12,6 +12,15 @@ LEVEL_WITH_M = 5.0
 """Heights within this of the surroundings are level with them: our choice, no source. [m]"""
 
 
+SCREENED_SHARE = 0.1
+"""From this share taken by the ground on its way a breeze is called screened: our choice, no source."""
+
+SEEN_FROM_DEG = 1.5
+"""A lower skyline is not worth naming: high ground in general holds the breeze back there. (our choice) [°]"""
+
+_CREST = ("crest_above_plot_m", "crest_distance_m", "crest_bearing_deg")
+
+
 def compass_word(bearing_deg: float) -> str:
     """The nearest of the eight compass points, as in “from the south-east”."""
     return COMPASS[round(bearing_deg / 45.0) % 8]
@@ -70,7 +79,18 @@ def facts(row: Mapping[str, Any]) -> dict[str, Any]:
         told["shore"] = known["shore_kind"]
     if "shore_distance_km" in known:
         told["from_shore"] = from_shore(known["shore_distance_km"])
+    if known.get("breeze_screen", 0.0) >= SCREENED_SHARE:
+        told["held_back_pct"] = 100.0 * known["breeze_screen"]
+        if {*_CREST, "shore_skyline_deg"} <= known.keys() and known["shore_skyline_deg"] >= SEEN_FROM_DEG:
+            above_m, away_m, bearing_deg = (known[name] for name in _CREST)
+            told["screened_by"] = _ridge(above_m, away_m, bearing_deg, known["shore_skyline_deg"])
     return told
+
+
+def _ridge(above_m: float, away_m: float, bearing_deg: float, skyline_deg: float) -> str:
+    away = f"{away_m / 1000.0:.1f} km" if away_m >= 950.0 else f"{max(round(away_m, -1), 10.0):.0f} m"
+    where = f"{away} to the {compass_word(bearing_deg)}"
+    return f"a {above_m:.0f} m ridge {where} stands {skyline_deg:.0f}° above the plot"
 
 
 def is_known(value: Any) -> bool:

@@ -53,7 +53,9 @@ class ShoreDistance(NamedTuple):
     """"sea", "lake" or "": the mapped water that the point itself lies in."""
 
 
-class _Nearest(NamedTuple):
+class Nearest(NamedTuple):
+    """Nearest points of a shoreline: distance [m], bearing from true north [°], where [°], and of which water."""
+
     distance_m: FloatArray
     bearing_deg: FloatArray
     lon: FloatArray
@@ -84,13 +86,13 @@ def nearest_shore(
         distance (the scale of the map differs that much from place to place); the length to it is exact.
     """
     lon, lat = np.asarray(lon_deg, dtype=np.float64), np.asarray(lat_deg, dtype=np.float64)
-    in_water = _in_water(shore, lon, lat)
-    sea = _nearest(shore_segments(shore, "sea", crs), lon, lat, crs)
-    lake = _nearest(shore_segments(shore, "lake", crs, least_lake_width_km), lon, lat, crs)
+    in_water = points_in(shore, lon, lat)
+    sea = nearest_on(shore_segments(shore, "sea", crs), lon, lat, crs)
+    lake = nearest_on(shore_segments(shore, "lake", crs, least_lake_width_km), lon, lat, crs)
     sea, lake = _wet(sea, in_water == "sea"), _wet(lake, in_water == "lake")
     with np.errstate(invalid="ignore"):
         sea_first = ~np.isnan(sea.distance_m) & ~(lake.distance_m < sea.distance_m)
-    first = _Nearest(*(np.where(sea_first, one, other) for one, other in zip(sea, lake, strict=True)))
+    first = Nearest(*(np.where(sea_first, one, other) for one, other in zip(sea, lake, strict=True)))
     kind = np.where(np.isnan(first.distance_m), "", np.where(sea_first, "sea", "lake")).astype(object)
     widths = dict(zip(shore.waters["water_id"].tolist(), shore.waters["width_km"].tolist(), strict=True))
     return ShoreDistance(
@@ -110,22 +112,22 @@ def nearest_shore(
     )
 
 
-def _nearest(segments: Segments, lon: FloatArray, lat: FloatArray, crs: str) -> _Nearest:
+def nearest_on(segments: Segments, lon: FloatArray, lat: FloatArray, crs: str) -> Nearest:
     """Nearest point on segments in the map's plane; length and bearing to it along the ellipsoid."""
     nothing = np.full(len(lon), np.nan)
     placed = np.isfinite(lon) & np.isfinite(lat)
     if len(segments.water_id) == 0 or not placed.any():
-        return _Nearest(nothing, nothing, nothing, nothing, np.full(len(lon), -1, dtype=np.int64))
+        return Nearest(nothing, nothing, nothing, nothing, np.full(len(lon), -1, dtype=np.int64))
     if not placed.all():
-        part = _nearest(segments, lon[placed], lat[placed], crs)
-        return _Nearest(*(_spread(values, placed, unset) for values, unset in zip(part, _UNSET, strict=True)))
+        part = nearest_on(segments, lon[placed], lat[placed], crs)
+        return Nearest(*(_spread(values, placed, unset) for values, unset in zip(part, _UNSET, strict=True)))
     east, north = Transformer.from_crs("EPSG:4326", crs, always_xy=True).transform(lon, lat)
     found = segments.nearest(np.column_stack([east, north]))
     back = Transformer.from_crs(crs, "EPSG:4326", always_xy=True)
     there_lon, there_lat = back.transform(found.xy[:, 0], found.xy[:, 1])
     bearing, _, distance = WGS84.inv(lon, lat, there_lon, there_lat)
     bearing = np.where(np.asarray(distance) > 0.0, np.asarray(bearing) % 360.0, np.nan)
-    return _Nearest(np.asarray(distance), bearing, there_lon, there_lat, segments.water_id[found.segment])
+    return Nearest(np.asarray(distance), bearing, there_lon, there_lat, segments.water_id[found.segment])
 
 
 _UNSET = (np.nan, np.nan, np.nan, np.nan, -1)
@@ -138,14 +140,15 @@ def _spread(values: NDArray[Any], where: NDArray[np.bool_], unset: float) -> NDA
     return out
 
 
-def _wet(nearest: _Nearest, wet: NDArray[np.bool_]) -> _Nearest:
+def _wet(nearest: Nearest, wet: NDArray[np.bool_]) -> Nearest:
     """Distance 0 and no bearing for points in that water."""
     return nearest._replace(
         distance_m=np.where(wet, 0.0, nearest.distance_m), bearing_deg=np.where(wet, np.nan, nearest.bearing_deg)
     )
 
 
-def _in_water(shore: Shore, lon: FloatArray, lat: FloatArray) -> NDArray[np.object_]:
+def points_in(shore: Shore, lon: FloatArray, lat: FloatArray) -> NDArray[np.object_]:
+    """The mapped water that each point lies in: "sea", "lake" or ""."""
     inside = np.full(len(lon), "", dtype=object)
     if len(shore.waters) == 0:
         return inside
@@ -167,7 +170,13 @@ class Onshore(NamedTuple):
 
 
 def onshore_bearing(
-    shore: Shore, lon_deg: FloatArray, lat_deg: FloatArray, crs: str, kind: str, least_lake_width_km: float = 0.0
+    shore: Shore,
+    lon_deg: FloatArray,
+    lat_deg: FloatArray,
+    crs: str,
+    kind: str,
+    least_lake_width_km: float = 0.0,
+    open_shores: Segments | None = None,
 ) -> Onshore:
     """The bearing that an onshore breeze comes from: down the slope of the smoothed distance to the shore.
 
@@ -182,6 +191,8 @@ def onshore_bearing(
         "sea" or "lake".
     least_lake_width_km : float
         As in :func:`nearest_shore`.
+    open_shores : Segments, optional
+        The shorelines of that kind that count, where not all of them do: a creek then turns nothing.
 
     Returns
     -------
@@ -196,21 +207,25 @@ def onshore_bearing(
     told, and such places are left out if the shoreline lies between them and the plot.
     """
     lon, lat = np.asarray(lon_deg, dtype=np.float64), np.asarray(lat_deg, dtype=np.float64)
-    segments = shore_segments(shore, kind, crs, least_lake_width_km)
+    whole = shore_segments(shore, kind, crs, least_lake_width_km)
+    segments = whole if open_shores is None else open_shores
     placed = np.isfinite(lon) & np.isfinite(lat)
     if len(segments.water_id) == 0 or not placed.any():
         return Onshore(np.full(len(lon), np.nan), np.full(len(lon), np.nan))
     lon, lat = lon[placed], lat[placed]
     pieces = segments.pieces(PIECE_M)
+    banks = None if open_shores is None else whole.pieces(PIECE_M)
     parts = [
-        _onshore(shore, lon[at : at + AT_ONCE], lat[at : at + AT_ONCE], crs, kind, pieces)
+        _onshore(shore, lon[at : at + AT_ONCE], lat[at : at + AT_ONCE], crs, kind, pieces, banks)
         for at in range(0, len(lon), AT_ONCE)
     ]
     joined = (np.concatenate(values) for values in zip(*parts, strict=True))
     return Onshore(*(_spread(values, placed, np.nan) for values in joined))
 
 
-def _onshore(shore: Shore, lon: FloatArray, lat: FloatArray, crs: str, kind: str, pieces: Pieces) -> Onshore:
+def _onshore(
+    shore: Shore, lon: FloatArray, lat: FloatArray, crs: str, kind: str, pieces: Pieces, banks: Pieces | None
+) -> Onshore:
     east, north = Transformer.from_crs("EPSG:4326", crs, always_xy=True).transform(lon, lat)
     here = np.column_stack([east, north])
     places = here + _OFFSETS_M[:, None, :]  # (places, n, 2); the first is the plot itself
@@ -221,7 +236,11 @@ def _onshore(shore: Shore, lon: FloatArray, lat: FloatArray, crs: str, kind: str
     if len(shore.waters):
         back = Transformer.from_crs(crs, "EPSG:4326", always_xy=True)
         place_lon, place_lat = back.transform(places[..., 0].ravel(), places[..., 1].ravel())
-        wet = (_in_water(shore, place_lon, place_lat) == kind).reshape(length.shape)
+        wet = (points_in(shore, place_lon, place_lat) == kind).reshape(length.shape)
+        if banks is not None:
+            # out in a creek is not across the open shore
+            to_bank = banks.nearest(places.reshape(-1, 2)).distance_m.reshape(length.shape)
+            wet &= length <= to_bank + PIECE_M
         wet_here = wet[0]
         sign[wet != wet_here] = -1.0
     else:
@@ -248,7 +267,9 @@ def _offsets_m() -> FloatArray:
 _OFFSETS_M = _offsets_m()
 
 
-def shore_distance(shore: Shore, grid: Grid, kinds: tuple[str, ...] = ("sea", "lake")) -> Field:
+def shore_distance(
+    shore: Shore, grid: Grid, kinds: tuple[str, ...] = ("sea", "lake"), open_shores: Segments | None = None
+) -> Field:
     """Distance from each cell's centre to the nearest shore, for looking at; plots are measured by nearest_shore.
 
     Parameters
@@ -257,6 +278,8 @@ def shore_distance(shore: Shore, grid: Grid, kinds: tuple[str, ...] = ("sea", "l
     grid : Grid
     kinds : tuple of str
         Of "sea" and "lake", those that count.
+    open_shores : Segments, optional
+        The shorelines of those kinds that count, where not all of them do.
 
     Returns
     -------
@@ -271,7 +294,7 @@ def shore_distance(shore: Shore, grid: Grid, kinds: tuple[str, ...] = ("sea", "l
     nowhere too high by more than half a cell. Lengths are the map's, within 0.1 % of those on the ground inside a UTM
     zone. A cell's value does not depend on the grid's window by more than a tenth of a cell.
     """
-    segments = shore_segments(shore, kinds, grid.crs)
+    segments = shore_segments(shore, kinds, grid.crs) if open_shores is None else open_shores
     values = np.full(grid.shape, np.nan)
     if len(segments.water_id):
         pieces = segments.pieces(_spacing_m(segments, grid))

@@ -31,6 +31,11 @@ class Segments(NamedTuple):
     end: FloatArray
     water_id: NDArray[np.int64]
 
+    @staticmethod
+    def joined(*several: "Segments") -> "Segments":
+        """Several lots of segments as one."""
+        return Segments(*(np.concatenate(parts) for parts in zip(*several, strict=True)))
+
     def nearest(self, points: FloatArray) -> Found:
         """The nearest segment of each point, shape (n, 2), and the nearest point on it: exact."""
         tree = shapely.STRtree(shapely.linestrings(np.stack([self.start, self.end], axis=1)))

@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from sitescreen.climate.breeze import arrival_h, breeze_reach, lake_reach, lake_weight, sea_reach
+from sitescreen.climate.breeze import arrival_h, lake_reach, lake_weight, sea_reach
 from sitescreen.settings import load_defaults
 
 BREEZE = load_defaults().breeze
@@ -42,10 +42,3 @@ def test_lake_breeze_never_reaches_further_than_the_lake_is_wide() -> None:
     reach = lake_reach(np.array([19.0, 20.0, 25.0]), width, BREEZE)
     assert reach[0] > 0
     assert reach[1:].tolist() == [0.0, 0.0]
-
-
-def test_stronger_water_wins_and_no_shore_is_unknown() -> None:
-    reach = breeze_reach([2.0, np.nan, np.nan], [1.0, 1.0, np.nan], [30.0, 30.0, np.nan], BREEZE)
-    assert reach[0] == pytest.approx(max(sea_reach(np.array([1.0]), BREEZE)[0], reach[0]))
-    assert reach[1] == pytest.approx(sea_reach(np.array([1.0]), BREEZE)[0])
-    assert np.isnan(reach[2])

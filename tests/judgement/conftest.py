@@ -20,6 +20,7 @@ GOOD_GROUND: dict[str, Any] = {
     "rise_m": 12.0,
     "shore_kind": "sea",
     "shore_distance_km": 3.0,
+    "sea_km": 3.0,
     "onshore_from_deg": 135.0,
     "breeze_reach": 0.96,
     "ventilation": 1.2,
