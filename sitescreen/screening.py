@@ -146,7 +146,8 @@ def _judged(
         halved,
     )
     sure = certainty(judged, zones, profiles, brief.judge.seed, brief.judge.shortlist, settings.judgement)
-    notes = inputs.notes + inputs.terrain.findings + (climate_notes(climate, settings.zones) if climate is not None else ())
+    notes = inputs.notes + inputs.terrain.findings
+    notes += climate_notes(climate, settings.zones) if climate is not None else ()
     notes += (compared.notes() if compared else ()) + sure.notes()
     waters = together([one.disagreement for one in measured])
     if inputs.shore and not waters.agrees:
