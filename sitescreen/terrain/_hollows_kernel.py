@@ -123,7 +123,7 @@ def _flood_group(
     cells: Any,
 ) -> None:
     """Priority-flood of one group of open cells (state 1) from its settled neighbours (state 0)."""
-    # the group, 2 = met; its cells that touch settled ones start in the heap
+    # the group, 2 = met, each cell at the lowest level that its settled neighbours let it drain at
     state[first] = 2
     members[0] = first
     count, done, size = 1, 0, 0
@@ -139,8 +139,21 @@ def _flood_group(
                 count += 1
             elif state[other] == 0 and level[other] < edge:
                 edge = level[other]
-        if edge < _INF:
-            size = _push(keys, cells, size, edge if edge > ground[cell] else ground[cell], cell)
+        level[cell] = edge if edge > ground[cell] else ground[cell]
+    # the flood starts from the lowest of them: a cell beside a lower one will be offered that one's level, or its own
+    # height, which is no more than it has
+    for k in range(count):
+        cell = members[k]
+        offered = level[cell]
+        lowest = offered < _INF
+        if lowest:
+            for j in range(8):
+                other = cell + around[j]
+                if level[other] <= offered and state[other] == 2 and (level[other] < offered or other < cell):
+                    lowest = False
+                    break
+        if lowest:
+            size = _push(keys, cells, size, level[cell], cell)
     wet = members  # the list is no longer needed
     while size > 0:
         now, cell = keys[0], cells[0]

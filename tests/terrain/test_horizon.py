@@ -125,6 +125,30 @@ def test_far_ground_sinks_behind_the_curve() -> None:
     assert horizon_tangent(field(values), 90.0, False)[1, 0] == pytest.approx(500 / 60_000, abs=1e-6)
 
 
+@pytest.mark.parametrize("cells_away", [7, 8, 23, 24, 25, 26])
+def test_near_and_far_ground_sink_alike(cells_away: int) -> None:
+    """A 500 m summit on cells of 2 km, as near as rays are followed and further: the same closed form."""
+    values = np.full((3, 60), -2000.0)
+    values[:, 5] = 0.0
+    values[:, 5 + cells_away] = 500.0
+    distance = cells_away * 2000.0
+    got = horizon_tangent(field(values, 2000.0), 90.0)[1, 5]
+    assert got == pytest.approx(500 / distance - distance * (1 - REFRACTION) / (2 * EARTH_RADIUS_M), abs=1e-7)
+
+
+@pytest.mark.parametrize("azimuth", [10.0, 22.5, 67.5, 101.0, 190.0, 250.0])
+def test_skyline_does_not_depend_on_the_window(azimuth: float) -> None:
+    """Hills inside a high ring, read in a wide window and in one that just holds the ring: the same bits inside it."""
+    values = np.zeros((150, 160), dtype=np.float32)
+    values[40:110, 40:120] = 3000.0
+    values[48:102, 48:112] = hills(80, 8)[:54, :64]
+    whole = horizon_tangent(field(values, west_m=300_000.0, north_m=-60_000.0), azimuth)
+    part = field(values[35:115, 36:124], west_m=300_000.0 + 36 * 30, north_m=-60_000.0 - 35 * 30)
+    # from four cells off the ring the lines beside a cell meet it too
+    np.testing.assert_array_equal(horizon_tangent(part, azimuth)[17:-17, 16:-16], whole[52:98, 52:108])
+    assert whole[52:98, 52:108].min() > 0
+
+
 # against exact rays
 
 
