@@ -49,9 +49,8 @@ def flat_water(stored: Field, smallest_km2: float = 0.5) -> FlatWater:
     Returns
     -------
     FlatWater
-        Numbered from the north-west: cells of one height that share sides, at least one of them the middle of nine. Salt
-        pans and other ground that a model in whole metres shows as level are found as well: the terrain alone cannot
-        tell.
+        Numbered from the north-west: cells of one height that share sides, at least one of them the middle of nine. The
+        terrain alone cannot tell salt pans, and other ground that a model in whole metres shows as level, from water.
     """
     patches = np.zeros(stored.grid.shape, dtype=np.int32)
     count = int(level_patches(stored.values, patches))

@@ -1,0 +1,175 @@
+"""The whole run on small invented ground: what happens when an input is missing, forced or odd."""
+
+import json
+from collections.abc import Callable
+from pathlib import Path
+from typing import Any
+
+import geopandas as gpd
+import numpy as np
+import pytest
+import rasterio
+from affine import Affine
+from shapely.geometry import Point, box
+
+from sitescreen.brief import load_brief
+from sitescreen.deliverables.columns import CONTRACT
+from sitescreen.errors import BriefError
+from sitescreen.screening import Screening, screen
+
+WEST, SOUTH, SIDE = 40.10, -3.30, 0.14  # about 15 km, inside one block of 90 m cells
+STEP = 3.0 / 3600.0
+
+Run = Callable[..., Screening]
+
+
+@pytest.fixture(scope="module")
+def country(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """A slope that rises 60 m to the west from a sea in the east; eight plots; a shoreline; a zone map."""
+    folder = tmp_path_factory.mktemp("country")
+    count = round(SIDE / STEP)
+    lon = WEST + (np.arange(count) + 0.5) * STEP
+    height = np.maximum((WEST + SIDE - 0.02 - lon) * 500.0, 0.0)
+    ground = np.repeat(height[None, :], count, axis=0).astype(np.float32)
+    profile = {"driver": "GTiff", "width": count, "height": count, "count": 1, "dtype": "float32", "crs": "EPSG:4326"}
+    transform = Affine(STEP, 0, WEST, 0, -STEP, SOUTH + SIDE)
+    with rasterio.open(folder / "ground.tif", "w", transform=transform, nodata=-9999, **profile) as out:
+        out.write(ground, 1)
+    sea = box(WEST + SIDE - 0.02, SOUTH - 1, WEST + SIDE + 1, SOUTH + SIDE + 1)
+    gpd.GeoDataFrame({"kind": ["sea"]}, geometry=[sea], crs="EPSG:4326").to_file(folder / "shore.gpkg")
+    middle = SOUTH + SIDE / 2
+    spots = [(WEST + 0.05 + 0.01 * k, middle) for k in range(6)] + [(WEST + SIDE - 0.01, middle), (WEST - 0.5, middle)]
+    plots = gpd.GeoDataFrame(
+        {"plot": list("abcdefgh"), "name": [""] * 8}, geometry=[Point(*spot) for spot in spots], crs="EPSG:4326"
+    )
+    plots.geometry = [point.buffer(0.0015) for point in plots.geometry]
+    plots.to_file(folder / "plots.gpkg")
+    halves = [box(WEST, SOUTH, WEST + 0.075, SOUTH + SIDE), box(WEST + 0.075, SOUTH, WEST + SIDE, SOUTH + SIDE)]
+    gpd.GeoDataFrame({"zone": ["savannah", "upland"]}, geometry=halves, crs="EPSG:4326").to_file(folder / "zones.gpkg")
+    (folder / "wind.csv").write_text(
+        "season,part,direction_deg,share,speed_m_s\nyear,all,90,0.8,4\nyear,all,,0.2,0\n", encoding="utf-8"
+    )
+    return folder
+
+
+@pytest.fixture(scope="module")
+def run(country: Path) -> Run:
+    """Run the brief of the given sections."""
+
+    def go(*sections: str) -> Screening:
+        text = '[terrain]\nfiles = ["ground.tif"]\nvertical_error_m = 1\n[plots]\nfile = "plots.gpkg"\nid = "plot"\n'
+        brief = country / f"brief_{abs(hash(sections))}.toml"
+        brief.write_text(text + "\n".join(sections), encoding="utf-8")
+        return screen(load_brief(brief))
+
+    return go
+
+
+SHORE = '[shore]\nfile = "shore.gpkg"\nkind = "kind"'
+
+
+@pytest.fixture(scope="module")
+def plain(run: Run) -> Screening:
+    """Terrain, shore and plots; nothing else."""
+    return run(SHORE)
+
+
+def _table(screening: Screening) -> Any:
+    return screening.table.set_index("plot")
+
+
+def _assumed(screening: Screening) -> set[str]:
+    return {note.where for note in screening.notes if note.level == "assumed"}
+
+
+def test_every_plot_comes_out_ranked_or_with_its_reason(plain: Screening) -> None:
+    table = _table(plain)
+    assert sorted(table.index) == list("abcdefgh")
+    assert "water" in table.at["g", "set_aside"]
+    assert "outside the terrain" in table.at["h", "set_aside"]
+    assert ((table["rank"].notna()) == (table["set_aside"] == "")).all()
+
+
+def test_the_table_has_the_columns_of_the_contract(plain: Screening) -> None:
+    assert {column.name for column in CONTRACT} <= set(plain.table.columns)
+
+
+def test_the_plane_reads_as_it_was_drawn(plain: Screening) -> None:
+    """500 m a degree is 0.449 % to the east: 0.2576°, no direction; 1 km is 0.00900° of longitude at 3.2° south."""
+    table = _table(plain)
+    assert table.at["c", "slope_deg"] == pytest.approx(0.257, abs=0.003)
+    assert np.isnan(table.at["c", "aspect_deg"])
+    assert table.at["c", "elevation_m"] == pytest.approx((SIDE - 0.02 - 0.07) * 500.0, abs=0.05)
+    assert table.at["c", "shore_distance_km"] == pytest.approx(0.05 * 111.15, abs=0.02)
+    assert table.at["c", "onshore_from_deg"] == pytest.approx(90.0, abs=1.0)
+    assert (table.loc[list("bcdef"), "breeze_reach"].diff().dropna() > 0).all()
+
+
+def test_level_ground_has_the_wind_of_level_ground(plain: Screening) -> None:
+    assert _table(plain).at["c", "ventilation"] == pytest.approx(1.0, abs=0.05)
+    assert _table(plain).at["c", "sheltered_fraction"] == pytest.approx(0.0, abs=0.01)
+
+
+def test_what_nobody_gave_is_said_to_be_assumed(plain: Screening) -> None:
+    assert {"wind", "climate"} <= _assumed(plain)
+    assert "shore" not in _assumed(plain)
+
+
+def test_without_a_shore_the_breeze_is_unknown_and_says_so(run: Run) -> None:
+    screening = run()
+    table = _table(screening)
+    assert table["breeze_reach"].isna().all()
+    assert "shore" in _assumed(screening)
+    assert any("no shoreline was given" in text for text in screening.reasons["c"].unknown)
+    assert "shore_distance_km" not in screening.fields
+
+
+def test_a_missing_shore_never_lifts_a_plot(run: Run, plain: Screening) -> None:
+    """All plots stand in one zone: without the breeze's reading, no low mark is above what it was with it."""
+    force = '[zones]\nforce = "hot_humid_coast"'
+    with_shore, without = _table(run(SHORE, force)), _table(run(force))
+    ranked = with_shore.index[with_shore["rank"].notna()]
+    assert (without.loc[ranked, "mark_low"] <= with_shore.loc[ranked, "mark_low"] + 1e-9).all()
+
+
+def test_a_zone_for_all_is_taken(run: Run) -> None:
+    assert set(_table(run(SHORE, '[zones]\nforce = "upland"'))["zone"]) >= {"upland"}
+
+
+def test_an_unknown_zone_is_refused_with_the_nearest(run: Run) -> None:
+    with pytest.raises(BriefError, match=r"uplnd.*Perhaps 'upland'"):
+        run(SHORE, '[zones]\nforce = "uplnd"')
+
+
+def test_a_map_of_zones_is_taken_where_it_reaches(run: Run) -> None:
+    table = _table(run(SHORE, '[zones]\npolygons = "zones.gpkg"'))
+    assert table.at["a", "zone"] == "savannah"
+    assert table.at["e", "zone"] == "upland"
+
+
+def test_a_wind_table_takes_the_assumption_away(run: Run, plain: Screening) -> None:
+    screening = run(SHORE, '[wind]\nfile = "wind.csv"')
+    said = [note.text for note in (*screening.notes, *plain.notes) if note.where == "wind"]
+    assert "from all sides" in said[-1]
+    assert not any("from all sides" in text for text in said[:-1])
+    # 1.2 km behind a shore that rises by 0.4 % to the west, the wind comes off open water in both runs
+    assert _table(screening).at["f", "sheltered_fraction"] == pytest.approx(0.0, abs=0.01)
+
+
+def test_the_record_can_be_written_and_names_what_went_in(plain: Screening) -> None:
+    record = json.loads(json.dumps(plain.record, allow_nan=True))
+    assert {stamp["name"] for stamp in record["inputs"]} == {"ground.tif", "shore.gpkg", "plots.gpkg"}
+    assert all(len(stamp["sha256"]) == 64 for stamp in record["inputs"])
+    assert record["plots"]["read"] == 8
+
+
+def test_fields_lie_on_the_lattice(plain: Screening) -> None:
+    grid = plain.fields["elevation_m"].grid
+    assert grid.crs == "EPSG:32637"
+    assert grid.cell_size_m == 90.0
+    assert grid.west_m % 90.0 == grid.north_m % 90.0 == 0.0
+
+
+def test_two_runs_give_the_same_table(run: Run, plain: Screening) -> None:
+    again = run(SHORE)
+    assert again.table.drop(columns="geometry").equals(plain.table.drop(columns="geometry"))
