@@ -23,6 +23,7 @@ from sitescreen.judgement.pairs import Compared, compare_for, with_weights
 from sitescreen.judgement.profiles import ZoneProfile, load_profiles
 from sitescreen.judgement.readings import Readings, stack
 from sitescreen.judgement.reasons import Reasons, reasons
+from sitescreen.judgement.sway import sway_notes, sways
 from sitescreen.judgement.waters import waters_disagree
 from sitescreen.measuring import BlockResult, measure, plots_by_block
 from sitescreen.notes import Note
@@ -146,9 +147,10 @@ def _judged(
         halved,
     )
     sure = certainty(judged, zones, profiles, brief.judge.seed, brief.judge.shortlist, settings.judgement)
+    found = sways(judged, zones, profiles)
     notes = inputs.notes + inputs.terrain.findings
     notes += climate_notes(climate, settings.zones) if climate is not None else ()
-    notes += (compared.notes() if compared else ()) + sure.notes()
+    notes += (compared.notes() if compared else ()) + sure.notes() + sway_notes(found)
     waters = together([one.disagreement for one in measured])
     if inputs.shore and not waters.agrees:
         notes += (Note("warning", "shore", waters.sentence),)
@@ -166,7 +168,7 @@ def _judged(
         not_measured=NOT_MEASURED,
         not_checked=NOT_CHECKED,
         record=_record(brief, inputs, measured, table, settings, progress)
-        | {"certainty": sure.for_record()}
+        | {"certainty": sure.for_record(), "what_would_change": [one.for_record() for one in found]}
         | ({"pairs": compared.for_record()} if compared else {}),
     )
 
