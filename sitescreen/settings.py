@@ -117,6 +117,28 @@ class ColdAirSettings(Section):
     strength_k: Mapping[str, Annotated[float, Field(ge=0, le=30)]]
 
 
+class ColdLayerSettings(Section):
+    """The night's cold air as a layer in motion."""
+
+    night_h: Annotated[float, Field(gt=0, le=24)]
+    heat_w_m2: Annotated[float, Field(gt=0, le=200)]
+    deficit_k: Annotated[float, Field(ge=1, le=30)]
+    fill_m: Annotated[float, Field(ge=5, le=500)]
+    friction: Annotated[float, Field(ge=0.001, le=1)]
+    depth_bound_m: Annotated[float, Field(ge=100, le=1000)]
+    step_share: Annotated[float, Field(ge=0.05, le=0.7)]
+    temperature_k: Annotated[float, Field(ge=220, le=330)]
+    gorge_depth_m: Annotated[float, Field(gt=0, le=100)]
+    section_m: Annotated[float, Field(ge=5, le=200)]
+    edge_differ_m: Annotated[float, Field(gt=0, le=50)]
+    edge_differ_share: Annotated[float, Field(gt=0, le=1)]
+    surroundings_m: Annotated[float, Field(ge=500, le=20_000)]
+    least_excess_m: Annotated[float, Field(ge=0, le=50)]
+    stagnant_froude: Annotated[float, Field(gt=0, le=1)]
+    moving_speed_m_s: Annotated[float, Field(gt=0, le=10)]
+    moving_discharge_m2_s: Annotated[float, Field(gt=0, le=1000)]
+
+
 class ZoneFit(Section):
     """One zone's ramps. Each is a condition; a condition left out does not limit the zone."""
 
@@ -192,6 +214,7 @@ class Defaults(Section):
     breeze: BreezeSettings
     wind: WindSettings
     cold_air: ColdAirSettings
+    cold_layer: ColdLayerSettings
     zones: ZoneSettings
     judgement: JudgementSettings
 

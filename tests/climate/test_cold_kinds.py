@@ -1,0 +1,190 @@
+"""Kinds of cold air, their depth on the fine ground, and the deficit."""
+
+import numpy as np
+import pytest
+
+from sitescreen.climate.cold_air import ClosedPools
+from sitescreen.climate.cold_kinds import (
+    CLOSED,
+    KINDS,
+    LEAKY,
+    MOVING,
+    NONE,
+    UNKNOWN,
+    ColdKinds,
+    cold_kinds,
+    heat_cap_k,
+    on_fine,
+    pool_deficit_k,
+)
+from sitescreen.climate.cold_layer import ColdLayer, Source, cold_layer
+from sitescreen.grid import Field, Grid
+from sitescreen.settings import load_defaults
+from sitescreen.terrain.hollows import hollows
+
+SETTINGS = load_defaults().cold_layer
+GRID = Grid("EPSG:32641", 0.0, 330 * 30.0, 30.0, 330, 330)
+
+
+INSIDE = (slice(144, 174), slice(159, 189))
+"""Well within the basin, whole coarse cells."""
+
+
+def _no_hollows(grid: Grid) -> ClosedPools:
+    return ClosedPools(Field(np.zeros(grid.shape), grid, "m", ""), np.zeros(grid.shape, dtype=bool))
+
+
+def _basin() -> np.ndarray:
+    """A basin 2.1 km wide, its floor falling at 0.3 % to a gap of 90 m through its rim; beyond, ground falls at 6 %."""
+    y, x = np.mgrid[164.5:-165.5:-1, -164.5:165.5:1] * 30.0
+    away = np.maximum(abs(x), abs(y))
+    floor = 300.0 - 0.003 * x
+    height = np.where(away < 1050.0, floor, 310.0 + 0.15 * (away - 1050.0))
+    height = np.where(away > 2000.0, 452.5 - 0.06 * (away - 2000.0), height)
+    beyond = 300.0 - 0.003 * 1050.0 - 0.03 * (x - 1050.0) - 0.03 * np.maximum(x - 2000.0, 0.0)
+    gap = (x > 1050.0) & (abs(y + 15.0) < 45.0)
+    return np.where(gap | (x > 2000.0), beyond, height)
+
+
+@pytest.fixture(scope="module")
+def basin() -> tuple[Field, ColdLayer, ColdKinds]:
+    ground = Field(_basin(), GRID, "m", "a basin behind a gap")
+    layer = cold_layer(ground, np.zeros(GRID.shape, dtype=bool), None, SETTINGS)
+    return ground, layer, cold_kinds(layer, _no_hollows(GRID), ground, 1.0, SETTINGS)
+
+
+def test_a_basin_behind_a_gap_is_leaky(basin: tuple[Field, ColdLayer, ColdKinds]) -> None:
+    """No hollow in it, so flooding sees nothing; the layer stands deeper there than on level ground."""
+    ground, layer, kinds = basin
+    assert hollows(ground).depth_m.values[130:200, 130:200].max() < 0.01
+    assert (kinds.kind[INSIDE] == LEAKY).all()
+    assert (kinds.excess_m.values[INSIDE] > 5.0).all()
+    level = layer.level_m.values[50, 50]
+    assert kinds.depth_m.values[INSIDE] == pytest.approx(kinds.excess_m.values[INSIDE] + level, abs=0.2)
+
+
+def test_beside_the_basin_there_is_none(basin: tuple[Field, ColdLayer, ColdKinds]) -> None:
+    kinds = basin[2]
+    rim = (slice(98, 106), slice(110, 180))
+    assert (kinds.kind[rim] == NONE).all()
+    assert (kinds.excess_m.values[rim] == 0.0).all()
+    assert (kinds.depth_m.values[rim] == 0.0).all()
+
+
+def test_the_surface_of_a_leaky_pool_is_level_within_a_coarse_cell(
+    basin: tuple[Field, ColdLayer, ColdKinds],
+) -> None:
+    ground, layer, kinds = basin
+    top = (ground.values + kinds.depth_m.values)[INSIDE]
+    assert np.ptp(top.reshape(10, 3, 10, 3), axis=(1, 3)).max() < 1e-3
+    # and its volume is the layer's
+    coarse = layer.depth_m.values[48:58, 53:63]
+    assert kinds.depth_m.values[INSIDE].mean() == pytest.approx(coarse.mean(), abs=0.05)
+
+
+def test_near_the_end_of_the_ground_a_pool_is_unknown(basin: tuple[Field, ColdLayer, ColdKinds]) -> None:
+    """Where the surroundings are unknown, nobody can say whether deep air is a pool or lies on a plain."""
+    ground, layer, _ = basin
+    nowhere = layer._replace(rise_m=Field(np.full(layer.rise_m.grid.shape, np.nan), layer.rise_m.grid, "m", ""))
+    kinds = cold_kinds(nowhere, _no_hollows(GRID), ground, 1.0, SETTINGS)
+    assert (kinds.kind[INSIDE] == UNKNOWN).all()
+    assert (kinds.kind[98:106, 110:180] == NONE).all()
+
+
+def test_closed_hollows_stay_closed_and_cut_ones_unknown(basin: tuple[Field, ColdLayer, ColdKinds]) -> None:
+    ground, layer, _ = basin
+    depth = np.zeros(GRID.shape)
+    depth[150:154, 170:174] = 6.0
+    depth[102:106, 120:124] = 4.0
+    cut = np.zeros(GRID.shape, dtype=bool)
+    cut[102:106, 120:124] = True
+    kinds = cold_kinds(layer, ClosedPools(Field(depth, GRID, "m", ""), cut), ground, 1.0, SETTINGS)
+    assert (kinds.kind[150:154, 170:174] == CLOSED).all()
+    assert (kinds.depth_m.values[150:154, 170:174] == 6.0).all()
+    assert (kinds.excess_m.values[150:154, 170:174] > 5.0).all()
+    assert (kinds.kind[102:106, 120:124] == UNKNOWN).all()
+    assert np.isnan(kinds.depth_m.values[102:106, 120:124]).all()
+    assert np.isnan(kinds.excess_m.values[102:106, 120:124]).all()
+
+
+def _layer_of(depth: float, froude: float, speed: float, discharge: float, below: bool) -> ColdLayer:
+    """A layer of one coarse cell repeated, with level ground at 38 m."""
+    grid = Grid("EPSG:32641", 0.0, 180.0, 90.0, 2, 2)
+
+    def field(value: float) -> Field:
+        return Field(np.full(grid.shape, value), grid, "", "")
+
+    flat = Field(np.full(grid.shape, 100.0), grid, "m", "")
+    real = cold_layer(flat, np.zeros(grid.shape, dtype=bool), None, SETTINGS)
+    return real._replace(
+        depth_m=field(depth),
+        level_m=field(38.0),
+        discharge_m2_s=field(discharge),
+        froude=field(froude),
+        speed_m_s=field(speed),
+        rise_m=field(-10.0 if below else 10.0),
+    )
+
+
+@pytest.mark.parametrize(
+    ("depth", "froude", "speed", "discharge", "below", "kind"),
+    [
+        (50.0, 0.1, 0.2, 5.0, True, "leaky"),
+        (50.0, 0.1, 0.2, 5.0, False, "none"),  # not below its surroundings
+        (38.5, 0.1, 0.2, 5.0, True, "none"),  # not deeper than on level ground
+        (50.0, 0.3, 0.2, 5.0, True, "none"),  # neither stands nor moves to speak of
+        (50.0, 0.3, 1.5, 40.0, True, "moving"),
+        (15.0, 0.4, 1.5, 40.0, False, "moving"),  # need not exceed level ground
+        (15.0, 0.4, 0.9, 40.0, False, "none"),
+        (15.0, 0.4, 1.5, 9.0, False, "none"),
+        (np.nan, np.nan, np.nan, np.nan, True, "unknown"),
+    ],
+)
+def test_kinds_are_told_apart(
+    depth: float, froude: float, speed: float, discharge: float, below: bool, kind: str
+) -> None:
+    grid = Grid("EPSG:32641", 0.0, 180.0, 30.0, 6, 6)
+    ground = Field(np.full(grid.shape, 100.0), grid, "m", "")
+    layer = _layer_of(depth, froude, speed, discharge, below)
+    kinds = cold_kinds(layer, _no_hollows(grid), ground, 1.0, SETTINGS)
+    assert {KINDS[code] for code in np.unique(kinds.kind)} == {kind}
+
+
+def test_moving_air_keeps_the_layers_depth() -> None:
+    """A V-shaped valley's floor gets no metres of air that the layer does not have."""
+    grid = Grid("EPSG:32641", 0.0, 180.0, 30.0, 6, 6)
+    ground = Field(100.0 + 9.0 * abs(np.arange(6) - 2.5)[None] + np.zeros(grid.shape), grid, "m", "")
+    kinds = cold_kinds(_layer_of(20.0, 0.5, 2.0, 60.0, True), _no_hollows(grid), ground, 1.0, SETTINGS)
+    assert (kinds.kind == MOVING).all()
+    assert (kinds.depth_m.values == 20.0).all()
+
+
+def test_what_the_terrains_error_hides_is_no_leaky_pool() -> None:
+    grid = Grid("EPSG:32641", 0.0, 180.0, 30.0, 6, 6)
+    ground = Field(np.full(grid.shape, 100.0), grid, "m", "")
+    layer = _layer_of(41.0, 0.1, 0.2, 5.0, True)
+    assert (cold_kinds(layer, _no_hollows(grid), ground, 1.0, SETTINGS).kind == LEAKY).all()
+    assert (cold_kinds(layer, _no_hollows(grid), ground, 4.0, SETTINGS).kind == NONE).all()
+
+
+def test_coarse_values_lie_under_their_own_fine_cells() -> None:
+    """A window that begins a fine cell inside a coarse one, and reaches less far than the coarse grid."""
+    coarse = Grid("EPSG:32641", 900.0, 0.0, 90.0, 2, 2)
+    fine = Grid("EPSG:32641", 930.0, -60.0, 30.0, 3, 4)
+    spread = on_fine(np.array([[1, 2], [3, 4]]), coarse, fine)
+    assert spread.tolist() == [[1, 1, 2, 2], [3, 3, 4, 4], [3, 3, 4, 4]]
+
+
+def test_deficit_and_its_caps() -> None:
+    # ΔT·(1 − e^(−1)) of a pool one scale deep, under an open sky on a calm night
+    one = pool_deficit_k(15.0, 6.0, 1.0, 1.0, np.inf, 15.0)
+    assert one == pytest.approx(6.0 * 0.632121, abs=1e-5)
+    assert pool_deficit_k(15.0, 6.0, 0.8, 0.5, np.inf, 15.0) == pytest.approx(0.4 * one)
+    assert pool_deficit_k(-3.0, 6.0, 1.0, 1.0, np.inf, 15.0) == 0.0
+    assert pool_deficit_k(80.0, 6.0, 1.0, 1.0, 2.0, 15.0) == 2.0
+    assert np.isnan(pool_deficit_k(np.nan, 6.0, 1.0, 1.0, 8.0, 15.0))
+
+
+def test_heat_of_a_catchment_caps_its_pool() -> None:
+    """30 W/m² over 6 h is 648 kJ/m²: with the standard 1.225 kg/m³ it cools 52.6 m of air by 10 K."""
+    assert heat_cap_k(1e6, 52.634e6, 0.0, Source(30.0, 8.0), 6.0) == pytest.approx(10.0, rel=1e-4)

@@ -1,0 +1,282 @@
+"""The night's cold air as a layer in motion: level ground, basins, gaps, the ledger of air, edges."""
+
+import math
+
+import numpy as np
+import pytest
+
+from sitescreen.climate import cold_layer as module
+from sitescreen.climate._cold_layer_kernel import night as kernel
+from sitescreen.climate.cold_layer import (
+    CRITICAL,
+    Night,
+    Source,
+    cold_layer,
+    level_depth_m,
+    reduced_gravity_m_s2,
+    run_night,
+    supply_m_s,
+    time_step_s,
+)
+from sitescreen.errors import GridError
+from sitescreen.grid import Field, Grid
+from sitescreen.settings import load_defaults
+from sitescreen.terrain import threads
+from sitescreen.terrain.coarse import CoarseGround, coarse_ground
+
+SETTINGS = load_defaults().cold_layer
+SOURCE = Source(SETTINGS.heat_w_m2, SETTINGS.deficit_k)
+GRAVITY = reduced_gravity_m_s2(SOURCE.deficit_k, SETTINGS)
+
+
+def _field(values: np.ndarray, cell_m: float = 90.0) -> Field:
+    rows, cols = values.shape
+    return Field(values, Grid("EPSG:32641", 0.0, rows * cell_m, cell_m, rows, cols), "m", "ground")
+
+
+def _coarse(values: np.ndarray, cell_m: float = 90.0) -> CoarseGround:
+    return coarse_ground(_field(values, cell_m), SETTINGS.gorge_depth_m, SETTINGS.section_m)
+
+
+def _dry(values: np.ndarray) -> np.ndarray:
+    return np.zeros(values.shape, dtype=bool)
+
+
+def _hills(rows: int = 40, cols: int = 50) -> np.ndarray:
+    y, x = np.mgrid[0:rows, 0:cols]
+    return 300.0 + 90.0 * np.sin(x / 5.0) * np.cos(y / 7.0) + 2.0 * x
+
+
+def _run(values: np.ndarray, edge: module.Edge = "open", hours: float = 1.0) -> Night:
+    ground = _coarse(values)
+    supply = supply_m_s(SOURCE, np.nan_to_num(ground.bed_m))
+    return run_night(ground, _dry(values), supply, SOURCE.deficit_k, edge, SETTINGS, 3600.0 * hours)
+
+
+@pytest.mark.parametrize(
+    ("heat_w_m2", "deficit_k", "elevation_m", "m3_m2_h"),
+    # q = 3600·Q_H/(ρ c_p ΔT), worked by hand at the standard atmosphere's density (1.225; 1.058 kg/m³ at 1,500 m)
+    [(30.0, 9.0, 0.0, 9.75), (40.0, 10.0, 0.0, 11.70), (30.0, 8.0, 1500.0, 12.70)],
+)
+def test_supply_follows_from_the_heat(heat_w_m2: float, deficit_k: float, elevation_m: float, m3_m2_h: float) -> None:
+    made = 3600.0 * supply_m_s(Source(heat_w_m2, deficit_k), np.array([elevation_m]))[0]
+    assert made == pytest.approx(m3_m2_h, abs=0.006)
+
+
+@pytest.mark.parametrize("window_km", [24, 48, 84])
+@pytest.mark.parametrize("turned", [False, True])
+def test_level_ground_is_the_reference(window_km: int, turned: bool) -> None:
+    """A plain of 0.05 % slope, three cells wide (nothing crosses it): depth h_s(1 − e^(−q·t/h_s)), whatever the window.
+
+    The depth itself is compared, not the clipped deficit. The walled edge piles air up and starves; it must not
+    reach the middle, nor make anything unknown that lies 12 km from the edge.
+    """
+    cells = round(window_km * 1000 / 90)
+    height = np.repeat(0.0005 * 90.0 * np.arange(cells)[None], 3, axis=0)
+    height = height.T.copy() if turned else height
+    layer = cold_layer(_field(height), _dry(height), None, SETTINGS)
+    q = 3600.0 * 30.0 / (1.225 * 1005.0 * 8.0)
+    level = 50.0 * (1.0 - math.exp(-q * 6.0 / 50.0))
+    opened, walled = (run.depth_m.T if turned else run.depth_m for run in layer.runs)
+    assert opened == pytest.approx(level, abs=0.1)  # the plain's own 42 m of rise thin the air a little
+    assert walled[1, cells // 2] == pytest.approx(level, abs=1.0)
+    differs = layer.edge_differs.T if turned else layer.edge_differs
+    inner = round(11_950 / 90)
+    assert not differs[:, inner : cells - inner].any()
+    reported = layer.depth_m.values.T if turned else layer.depth_m.values
+    assert reported[:, inner : cells - inner] == pytest.approx(level, abs=0.1)
+
+
+def test_level_depth_is_the_models_own() -> None:
+    """The closed form and the model must not drift apart: flat, no slope, open."""
+    height = np.full((4, 4), 1500.0)
+    depth = _run(height, hours=SETTINGS.night_h).depth_m
+    assert depth == pytest.approx(level_depth_m(supply_m_s(SOURCE, height), SETTINGS), abs=0.01)
+
+
+def test_no_pool_on_a_mesa() -> None:
+    y, x = np.mgrid[-40:41, -40:41] * 90.0
+    height = 300.0 * (np.maximum(abs(x), abs(y)) < 1500.0) + 0.0
+    layer = cold_layer(_field(height), _dry(height), None, SETTINGS)
+    top = height == 300.0
+    assert (layer.runs[0].depth_m[top] < layer.level_m.values[top].min()).all()
+    assert (layer.rise_m.values[38:43, 38:43] > 100.0).all()
+
+
+@pytest.mark.parametrize("first", [45, 46])
+@pytest.mark.parametrize("gap_m", [30, 90, 300])
+def test_head_behind_a_gap_is_the_published_weirs(gap_m: int, first: int) -> None:
+    """Broad-crested weir, Q = (2/3)^1.5·B·√g'·H^1.5 (e.g. Chow 1959, Open-Channel Hydraulics; from memory).
+
+    A flat basin at 30 m cells behind a wall of 270 m, supplied at a steady rate; beyond the gap the ground falls away.
+    """
+    cells, gap = 99, gap_m // 30
+    height = np.full((cells, cells), 150.0)
+    height[12:87, 12:57] = 0.0
+    fall = np.maximum(np.arange(cells) - 60, 0) * 30.0 * 0.05
+    height[first : first + gap, 57:66] = -fall[57:66]
+    height[:, 66:] = -fall[66:]
+    ground = _coarse(height, 30.0)
+    basin = np.zeros(ground.grid.shape, dtype=bool)
+    basin[4:29, 4:19] = True
+    head = 20.0
+    flow = 0.544 * gap_m * math.sqrt(GRAVITY) * head**1.5
+    area = basin.sum() * 90.0**2
+    sea = np.zeros_like(basin)
+    sea[:, -2:] = True
+    endless = SETTINGS.model_copy(update={"fill_m": 1e9})
+    supply = np.where(basin, flow / area, 0.0)
+    run = run_night(ground, sea, supply, SOURCE.deficit_k, "walled", endless, 4.0 * area * head / flow)
+    assert run.depth_m[16, 6] == pytest.approx(head, rel=0.10)
+    assert run.balance.error < 1e-6
+
+
+def test_a_closed_bowl_fills_level() -> None:
+    y, x = np.mgrid[-15:16, -15:16] * 90.0
+    height = 100.0 + np.hypot(x, y) * 0.1
+    run = _run(height, "walled", hours=6.0)
+    top = height + run.depth_m
+    wet = run.depth_m > 20.0
+    assert wet.sum() > 100
+    assert np.ptp(top[wet]) < 1.0
+    assert run.balance.stored_m3 == pytest.approx(run.balance.supplied_m3, rel=1e-9)
+
+
+@pytest.mark.parametrize("edge", ["open", "walled"])
+def test_no_air_is_lost(edge: module.Edge) -> None:
+    height = _hills()
+    height[10:14, 20:30] = np.nan
+    height[30:, :4] = np.nan
+    ground = _coarse(height)
+    sea = _dry(height)
+    sea[:12, 40:] = True
+    supply = supply_m_s(SOURCE, np.nan_to_num(ground.bed_m)) * 3.0
+    run = run_night(ground, sea, supply, SOURCE.deficit_k, edge, SETTINGS)
+    assert run.balance.error < 1e-6
+    assert run.balance.supplied_m3 > 0
+    assert run.balance.sunk_m3 > 0
+    assert (run.balance.came_in_m3 != 0.0) == (edge == "open")
+    # the ledger's store is the map's
+    known = ~np.isnan(height)
+    assert np.nansum(run.depth_m) * 90.0**2 == pytest.approx(run.balance.stored_m3, rel=1e-12)
+    assert (np.isnan(run.depth_m) == ~known).all()
+    assert (run.depth_m[known] >= 0.0).all()
+    assert (run.depth_m[sea] == 0.0).all()
+
+
+def test_thin_air_on_steep_ground_never_goes_below_nothing() -> None:
+    """Flow that would take more than there is, is cut to it: here the step is far too long for the depth of the air."""
+    rows, cols = np.mgrid[0:20, 0:20]
+    height = 150.0 * ((rows + cols) % 2) + 2000.0 - 60.0 * rows
+    ground = _coarse(height)
+    long_steps = SETTINGS.model_copy(update={"depth_bound_m": 100.0})
+    supply = 40.0 * supply_m_s(SOURCE, ground.bed_m)
+    run = run_night(ground, _dry(height), supply, SOURCE.deficit_k, "walled", long_steps)
+    assert (run.depth_m >= 0.0).all()
+    assert np.isfinite(run.depth_m).all()
+    assert run.balance.error < 1e-6
+
+
+def test_threads_and_the_cache_change_nothing(monkeypatch: pytest.MonkeyPatch) -> None:
+    height = _hills()
+    results = []
+    for processors, cache_bytes in ((1, 600_000), (2, 600_000), (2, 1)):
+        monkeypatch.setattr(threads, "thread_count", lambda processors=processors: processors)
+        monkeypatch.setattr(module, "CACHE_BYTES", cache_bytes)
+        layer = cold_layer(_field(height), _dry(height), None, SETTINGS)
+        results.append([part for run in layer.runs for part in run[:3]] + [layer.depth_m.values])
+    for other in results[1:]:
+        assert all(np.array_equal(a, b, equal_nan=True) for a, b in zip(results[0], other, strict=True))
+
+
+def test_the_kernel_says_the_same_uncompiled() -> None:
+    outcome = []
+    for run in (kernel, kernel.py_func):
+        rows, cols = 4, 5
+        bed = 10.0 * np.random.default_rng(2).random((rows, cols))
+        sill_x, sill_y = np.full((rows, cols + 1), np.inf), np.full((rows + 1, cols), np.inf)
+        sill_x[:, 1:-1], sill_y[1:-1] = np.maximum(bed[:, 1:], bed[:, :-1]), np.maximum(bed[1:], bed[:-1])
+        supply = np.full((rows, cols), 0.03)
+        supply[0, 0], supply[3, 4] = -1.0, -2.0
+        depth, x, y = np.zeros((rows, cols)), np.zeros((rows, cols + 1)), np.zeros((rows + 1, cols))
+        supplied, sunk = np.zeros(cols), np.zeros(cols)
+        edges = (np.array([0, 0, 1, 1, 2]), np.array([4, 0]), np.array([1, 3]))
+        came_in = run(depth, x, y, bed, sill_x, sill_y, np.ones(x.shape), np.ones(y.shape), supply, *edges, 50, 8.5,
+                      90.0, GRAVITY, 0.02, 200.0, CRITICAL, 50.0, 3, supplied, sunk)  # fmt: skip
+        outcome.append((depth, x, y, supplied, sunk, came_in))
+    for compiled, plain in zip(*outcome, strict=True):
+        assert plain == pytest.approx(compiled, rel=1e-12, abs=1e-15)
+    assert outcome[0][0].max() > 0.5
+
+
+def test_turned_ground_gives_turned_air() -> None:
+    height = _hills()
+    run, turned = _run(height), _run(np.rot90(height).copy())
+    assert np.rot90(run.depth_m) == pytest.approx(turned.depth_m, abs=1e-6)
+    # a quarter turn counter-clockwise makes east of it north
+    assert np.rot90(run.east_m2_s) == pytest.approx(turned.north_m2_s, abs=1e-6)
+
+
+def test_flow_runs_downhill() -> None:
+    rows, cols = np.mgrid[0:10, 0:30]
+    run = _run(2000.0 - 5.0 * cols + 0.0 * rows)
+    assert (run.east_m2_s > 0.0).all()
+    assert run.north_m2_s == pytest.approx(0.0, abs=1e-9)
+
+
+def test_the_time_step_is_the_bounds_own() -> None:
+    """Neither a canyon in the window nor its size may change the step, or far ground would change a plot's reading."""
+    flat, canyon = np.zeros((6, 40)), np.zeros((6, 40))
+    canyon[:, 35:37] = -600.0
+    assert _run(flat).step_s == _run(canyon).step_s == _run(flat[:, :20]).step_s
+    assert time_step_s(GRAVITY, 90.0, SETTINGS) == pytest.approx(0.7 * 90.0 / math.sqrt(GRAVITY * 200.0))
+    assert _run(flat).step_s <= time_step_s(GRAVITY, 90.0, SETTINGS)
+
+
+def test_a_wall_of_unknown_ground_is_a_wall() -> None:
+    height = _hills(12, 20)
+    walled, unknown = height.copy(), height.copy()
+    walled[:, 9], unknown[:, 9] = 5000.0, np.nan
+    beside = np.ones(height.shape, dtype=bool)
+    beside[:, 9] = False
+    one, other = _run(walled, "walled"), _run(unknown, "walled")
+    # up to what slides off the wall's own top
+    assert one.depth_m[:, :9].max() > 1.0
+    assert np.isnan(other.depth_m[:, 9]).all()
+    assert not np.isnan(other.depth_m[beside]).any()
+    only_left = _run(height[:, :9].copy(), "walled")
+    assert np.array_equal(other.depth_m[:, :9], only_left.depth_m)
+
+
+def test_a_slope_cut_by_the_edge_is_unknown_there() -> None:
+    """At the foot of a long slope walled air piles up and open air runs off: nobody can say. At its head both agree."""
+    height = np.repeat(500.0 - 2.7 * abs(np.arange(201) - 100.0)[None], 3, axis=0)
+    layer = cold_layer(_field(height), _dry(height), None, SETTINGS)
+    opened, walled = (run.depth_m for run in layer.runs)
+    assert (walled[:, 0] > 2.0 * opened[:, 0]).all()
+    assert layer.edge_differs[:, [0, 1, 2, -3, -2, -1]].all()
+    assert np.isnan(layer.depth_m.values[:, 0]).all()
+    assert not layer.edge_differs[:, 80:121].any()
+    assert np.isfinite(layer.depth_m.values[:, 80:121]).all()
+
+
+def test_sky_and_water_reach_the_coarse_cells() -> None:
+    height = np.zeros((30, 30))
+    sea = np.zeros(height.shape, dtype=bool)
+    sea[:, :9] = True
+    half = Field(np.full(height.shape, 0.5), _field(height, 30.0).grid, "1", "sky view")
+    layer = cold_layer(_field(height, 30.0), sea, half, SETTINGS)
+    whole = cold_layer(_field(height, 30.0), sea, None, SETTINGS)
+    assert layer.runs[1].balance.supplied_m3 < 0.7 * whole.runs[1].balance.supplied_m3
+    assert (layer.runs[1].depth_m[:, :3] == 0.0).all()
+    assert (layer.runs[1].depth_m[:, 3:] > 0.0).all()
+
+
+def test_what_does_not_fit_is_refused() -> None:
+    height = np.zeros((6, 6))
+    with pytest.raises(GridError, match=r"\(6, 5\)"):
+        run_night(_coarse(height), _dry(height)[:, :5], height, 8.0, "open", SETTINGS)
+    with pytest.raises(GridError, match="supply"):
+        run_night(_coarse(height), _dry(height), np.full((6, 6), np.nan), 8.0, "open", SETTINGS)
+    with pytest.raises(GridError, match="different grids"):
+        cold_layer(_field(height), _dry(height), _field(height, 30.0), SETTINGS)
