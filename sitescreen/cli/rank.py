@@ -92,16 +92,16 @@ def asked(
 
 def _summary(screening: "Screening", folder: Path) -> None:
     """The head of the ranking on stdout, and where the rest is."""
+    from sitescreen.deliverables.table import whole_mark
+
     table = screening.table
     ranked = table[table["rank"].notna()]
-    aside = table[table["rank"].isna()]
-    click.echo(f"{len(table)} plots: {len(ranked)} ranked, {len(aside)} set aside.")
+    click.echo(f"{len(table)} plots: {len(ranked)} ranked, {len(table) - len(ranked)} set aside.")
     for row in ranked.head(screening.brief.judge.shortlist).itertuples():
-        gains = screening.reasons[row.plot].for_
-        name = f" {row.name}" if row.name else ""
-        click.echo(
-            f"{int(row.rank):>4}. {row.plot}{name}, {row.zone}: {row.overall_mark:.0f} of 100. {' '.join(gains[:1])}"
-        )
+        called = f"{row.name} (plot {row.plot})" if row.name else f"Plot {row.plot}"
+        zone = screening.profiles[row.zone].title
+        reason = next(iter(screening.reasons[row.plot].for_), "")
+        click.echo(f"{int(row.rank):>4}. {called}, {zone}: {whole_mark(row.overall_mark)} of 100. {reason}".rstrip())
     click.echo(f"Map: {folder / 'map.html'}")
     click.echo(f"Table: {folder / 'ranking.csv'}")
     click.echo("A screening, not a survey: local codes and licensed practice decide.")
