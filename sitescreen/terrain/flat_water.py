@@ -64,7 +64,7 @@ def flat_water(stored: Field, smallest_km2: float = 0.5) -> FlatWater:
     places = np.flatnonzero(patches.ravel())[::-1]
     first[patches.ravel()[places]] = places  # the first cell of each patch is written last
     level = stored.values.ravel()[first[kept]].astype(np.float64)
-    return FlatWater(number[patches], level, area[kept], stored.grid)
+    return FlatWater(number[patches], level, np.asarray(area[kept], dtype=np.float64), stored.grid)
 
 
 @dataclass(frozen=True)
