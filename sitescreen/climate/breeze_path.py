@@ -4,6 +4,7 @@ from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
+from pyproj import Geod, Transformer
 
 from sitescreen.climate._breeze_path_kernel import height_m, walk
 from sitescreen.grid import Field, Grid
@@ -160,39 +161,48 @@ def _smoothstep(x: FloatArray) -> FloatArray:
 
 
 def section(
-    elevation: Field, x_m: float, y_m: float, to_x_m: float, to_y_m: float, most_m: float, most_points: int = 120
+    elevation: Field,
+    lon_deg: float,
+    lat_deg: float,
+    shore_bearing_deg: float,
+    shore_distance_m: float,
+    most_m: float = 12_000.0,
+    most_points: int = 120,
 ) -> Section:
-    """The ground from one plot towards its shore, for drawing. Computed on request: few plots are ever drawn.
+    """The ground from one plot towards its shore, for drawing. Made on request, for few plots are ever drawn.
 
     Parameters
     ----------
     elevation : Field
-        Height. [m]
-    x_m, y_m, to_x_m, to_y_m : float
-        The plot and the nearest point of its shore, in the grid's system. [m]
+        Height. [m] A ranking's own field of elevation will do.
+    lon_deg, lat_deg : float
+        The plot. [°]
+    shore_bearing_deg, shore_distance_m : float
+        From the plot to the nearest point of its shore: from true north [°], and on the ground [m].
     most_m : float
         Where to end if the shore is farther. [m]
     most_points : int
-        Every so many cells are left out that no more points remain; the highest of each group is kept.
+        With more cells on the way, only the highest of every few is kept, so that no crest is lost.
 
     Returns
     -------
     Section
         From the plot (0 m) outwards; heights NaN where unknown. No points without a shore.
     """
-    row, col, row_step, col_step, length = (
-        float(v[0]) for v in _steps(elevation.grid, *np.c_[x_m, y_m, to_x_m, to_y_m].T)
-    )
-    if np.isnan(length):
+    if np.isnan(shore_distance_m) or (np.isnan(shore_bearing_deg) and shore_distance_m > 0.0):
         return Section(np.empty(0), np.empty(0))
-    cell = elevation.grid.cell_size_m
+    grid = elevation.grid
+    bearing = shore_bearing_deg if shore_distance_m > 0.0 else 0.0
+    to_lon, to_lat, _ = Geod(ellps="WGS84").fwd(lon_deg, lat_deg, bearing, shore_distance_m)
+    to_grid = Transformer.from_crs("EPSG:4326", grid.crs, always_xy=True)
+    ends = (np.array([value]) for value in (*to_grid.transform(lon_deg, lat_deg), *to_grid.transform(to_lon, to_lat)))
+    row, col, row_step, col_step, length = (float(values[0]) for values in _steps(grid, *ends))
     end = min(length, most_m)
-    distance = np.append(np.arange(0.0, end - 1e-6 * cell, cell), end)
-    steps = distance / cell
+    distance = np.append(np.arange(0.0, end - 1e-6 * grid.cell_size_m, grid.cell_size_m), end)
+    steps = distance / grid.cell_size_m
     ground = np.array([height_m(elevation.values, row + s * row_step, col + s * col_step) for s in steps])
     if len(distance) <= most_points:
         return Section(distance, ground)
-    # the ends stay; between them the highest of each group, so that no crest is lost
     groups = np.array_split(np.arange(1, len(distance) - 1), most_points - 2)
     tops = [group[np.argmax(np.where(np.isnan(ground[group]), -np.inf, ground[group]))] for group in groups]
     kept = np.array([0, *tops, len(distance) - 1])

@@ -62,7 +62,7 @@ def with_shore(
     count = len(values)
     if near is None or lake is None or breeze is None:
         values["shore_kind"] = np.full(count, "", dtype=object)
-        for column in (*SHORE_COLUMNS, *CREST_COLUMNS, "sea_km", "lake_km", "lake_width_km"):
+        for column in (*SHORE_COLUMNS, *CREST_COLUMNS, "shore_bearing_deg", "sea_km", "lake_km", "lake_width_km"):
             values[column] = np.nan
         for column in (*SHORE_COLUMNS, *CREST_COLUMNS):
             why[column] = NOT_GIVEN
@@ -71,6 +71,7 @@ def with_shore(
     way = breeze.way
     values["shore_kind"] = breeze.kind
     values["shore_distance_km"] = breeze.distance_m / 1000.0
+    values["shore_bearing_deg"] = breeze.bearing_deg
     values["onshore_from_deg"] = onshore_from_deg
     values["offshore_from_deg"] = (onshore_from_deg + 180.0) % 360.0
     values["breeze_reach"] = breeze.reach

@@ -6,12 +6,14 @@ from typing import Any
 import numpy as np
 import pytest
 from pyproj import Transformer
+from scipy import ndimage
 
 from sitescreen.climate._breeze_path_kernel import walk
 from sitescreen.climate.breeze import PlotBreeze, lake_reach, plot_breeze, sea_reach
 from sitescreen.climate.breeze_path import Way, screen_share, section, ways
 from sitescreen.grid import Field, Grid
 from sitescreen.settings import load_defaults
+from sitescreen.terrain.horizon import horizon_profile
 from sitescreen.terrain.shore_fetch import OpenShore
 
 BREEZE = load_defaults().breeze
@@ -166,16 +168,38 @@ def test_a_higher_crest_never_screens_less() -> None:
 
 
 def test_a_section_keeps_its_ends_and_its_crest() -> None:
-    ground = ridge(64.0, 333, cells=420)
-    whole = section(ground, 10.0, -30.0, 10.0 + 400 * CELL, -30.0, 12_000.0, 1000)
-    drawn = section(ground, 10.0, -30.0, 10.0 + 400 * CELL, -30.0, 12_000.0)
-    assert (len(whole.distance_m), len(drawn.distance_m)) == (401, 120)
-    assert (drawn.distance_m[0], drawn.distance_m[-1]) == (0.0, 8000.0)
+    """A crest 64 m high on the 332nd of 399 cells on the way east; the map's scale on its middle is 0.9996."""
+    ground = ground_to_the_west(lambda away: np.where(np.abs(away - 1350.0) < 10.0, 64.0, 0.0), 20.0)
+    lon, lat = (float(value[0]) for value in places(EAST - 7990.0, NORTH))
+    to_shore = (lon, lat, 90.0, 7975.0 / 0.9996)
+    whole = section(ground, *to_shore, most_points=1000)
+    drawn = section(ground, *to_shore)
+    assert (len(whole.distance_m), len(drawn.distance_m)) == (400, 120)
+    assert drawn.distance_m[[0, -1]] == pytest.approx([0.0, 7975.0], abs=0.5)
     assert (np.diff(drawn.distance_m) > 0.0).all()
-    assert drawn.ground_m.max() == pytest.approx(64.0)
-    assert drawn.distance_m[np.argmax(drawn.ground_m)] == pytest.approx(333 * CELL)
-    assert section(ground, 10.0, -30.0, 10.0 + 400 * CELL, -30.0, 3000.0).distance_m[-1] == 3000.0
-    assert len(section(ground, 10.0, -30.0, math.nan, math.nan, 3000.0).distance_m) == 0
+    assert drawn.ground_m.max() == pytest.approx(64.0, abs=0.01)
+    assert drawn.distance_m[np.argmax(drawn.ground_m)] == pytest.approx(332 * 20.0)
+    assert section(ground, *to_shore, most_m=3000.0).distance_m[-1] == 3000.0
+    assert len(section(ground, lon, lat, math.nan, math.nan).distance_m) == 0
+    assert section(ground, lon, lat, math.nan, 0.0).distance_m.tolist() == [0.0]
+
+
+def test_the_skyline_is_that_of_the_exact_profile() -> None:
+    """Against the horizon's own rays, which are read where they cross the cells' lines instead of once a cell."""
+    rng = np.random.default_rng(8)
+    middle = 130.5 * CELL
+    off = (np.arange(260) + 0.5) * CELL - middle
+    # hills that end before the ways do, whose last samples lie up to a cell apart
+    ends = np.clip((1900.0 - np.hypot(off[None, :], off[:, None])) / 300.0, 0.0, 1.0)
+    ground = field(ndimage.gaussian_filter(rng.normal(0.0, 1.0, (260, 260)), 8.0) * 2500.0 * ends)
+    azimuths = rng.uniform(0.0, 360.0, 40)
+    x, y = np.full(40, middle), np.full(40, -middle)
+    to_x, to_y = x + 2000.0 * np.sin(np.radians(azimuths)), y + 2000.0 * np.cos(np.radians(azimuths))
+    exact = horizon_profile(ground, x[:1], y[:1], azimuths, 10.0, earth_curvature=False, reach_m=2000.0).angle_deg[0]
+    way = ways(ground, x, y, to_x, to_y, BREEZE)
+    assert (exact > 0.0).sum() > 10
+    # a sample lies within 10 m of the crest; hills this round (0.005 a metre) fall 0.25 m there, 0.1° at 150 m
+    assert way.skyline_deg == pytest.approx(np.maximum(exact, 0.0), abs=0.1)
 
 
 def test_compiled_and_plain_walk_agree() -> None:
@@ -215,9 +239,9 @@ def no_shore(count: int) -> OpenShore:
 
 
 def ground_to_the_west(rise: Any, cell_m: float = 100.0) -> Field:
-    """Ground 40 km deep west of a coast through EAST, its height a function of the distance from it."""
-    x = np.arange(-400, 400) * cell_m + 0.5 * cell_m
-    return field(np.tile(rise(-x), (21, 1)), cell_m, EAST - 40_000.0, NORTH + 10.5 * cell_m)
+    """Ground 400 cells deep west of a coast through EAST, its height a function of the distance from it."""
+    x = (np.arange(-400, 400) + 0.5) * cell_m
+    return field(np.tile(rise(-x), (21, 1)), cell_m, EAST - 400 * cell_m, NORTH + 10.5 * cell_m)
 
 
 def by_distance(km: Any, rise: Any, sea: OpenShore | None = None, lake: OpenShore | None = None) -> PlotBreeze:
