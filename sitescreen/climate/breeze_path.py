@@ -198,6 +198,8 @@ def section(
     ends = (np.array([value]) for value in (*to_grid.transform(lon_deg, lat_deg), *to_grid.transform(to_lon, to_lat)))
     row, col, row_step, col_step, length = (float(values[0]) for values in _steps(grid, *ends))
     end = min(length, most_m)
+    if end < 1e-6 * grid.cell_size_m:  # in the water itself
+        end = 0.0
     distance = np.append(np.arange(0.0, end - 1e-6 * grid.cell_size_m, grid.cell_size_m), end)
     steps = distance / grid.cell_size_m
     ground = np.array([height_m(elevation.values, row + s * row_step, col + s * col_step) for s in steps])

@@ -199,7 +199,9 @@ MORE: Mapping[str, Column] = {
         _number("known_weight_share", 2, "0–1", "weight known", "Part of the weights whose readings are known."),
         _text("zone_missing", "zone lacks", "The figure that is missing to tell the zone firmly."),
         _number("over_water_m", 1, "m", "above the water", "Height above the nearest water, where it could be told."),
-        _number("shore_bearing_deg", 1, "° from true north", "shore lies", "Bearing of the nearest point of that shore."),
+        _number(
+            "shore_bearing_deg", 1, "° from true north", "shore lies", "Bearing of the nearest point of that shore."
+        ),
         _number("breeze_screen", 2, "0–1", "breeze screened", "Share of the breeze that the ground on its way takes."),
         _number("crest_bearing_deg", 0, "° from true north", "screen lies", "Bearing of the ground that screens most."),
         _number("crest_distance_m", 0, "m", "screen at", "Distance to that ground."),
