@@ -136,7 +136,7 @@ class ColdLayerSettings(Section):
     least_excess_m: Annotated[float, Field(ge=0, le=50)]
     stagnant_froude: Annotated[float, Field(gt=0, le=1)]
     moving_speed_m_s: Annotated[float, Field(gt=0, le=10)]
-    moving_discharge_m2_s: Annotated[float, Field(gt=0, le=1000)]
+    moving_share: Annotated[float, Field(gt=0, le=10)]
 
 
 class ZoneFit(Section):

@@ -58,7 +58,8 @@ def cold_kinds(
     -----
     A closed hollow is told from the fine ground, so it stays closed where the layer is unknown. A leaky pool is
     stagnant, deeper than level ground, and below its surroundings; its surface is level within a 90 m cell, so that
-    fine cells differ in depth. Elsewhere the fine depth is the layer's: a level surface would invent metres of air on
+    fine cells differ in depth. Air moves where more passes than air as deep as on level ground could: on a long open
+    slope the layer slips downhill too, but that is no stream. Elsewhere the fine depth is the layer's: a level surface would invent metres of air on
     the floors of V-shaped valleys.
     """
     grid = elevation.grid
@@ -74,7 +75,7 @@ def cold_kinds(
         moves = (
             ~stagnant
             & (layer.speed_m_s.values >= settings.moving_speed_m_s)
-            & (layer.discharge_m2_s.values >= settings.moving_discharge_m2_s)
+            & (layer.discharge_m2_s.values > settings.moving_share * layer.level_most_m2_s.values)
         )
     fine_depth = on_fine(depth, coarse, grid)
     fine_level = on_fine(level, coarse, grid)

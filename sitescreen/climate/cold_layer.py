@@ -27,7 +27,7 @@ HEAT_CAPACITY_J_KG_K = 1005.0
 CRITICAL = (2.0 / 3.0) ** 1.5
 """0.544: the most that passes over a sill is this × √g' × head^1.5 for each metre of width (broad-crested weir)."""
 
-CACHE_BYTES = 600_000
+CACHE_BYTES = 1_500_000
 """Rows kept at work in the processor's cache. Speed only, never results. [bytes]"""
 
 FloatArray = NDArray[np.float64]
@@ -80,8 +80,9 @@ class ColdLayer(NamedTuple):
 
     ``depth_m``; ``level_m``: depth that the same night gives on endless level ground; ``discharge_m2_s``: what passes
     each metre of width; ``froude``: flux over depth over wave speed; ``speed_m_s``: of the moving air,
-    (g'·q·sin α/C)^⅓; ``rise_m``: height over the mean within 3 km, unknown where any of that is; ``edge_differs``:
-    cells whose depth depends on what lies beyond the known ground; ``runs``: the open and the walled run.
+    (g'·q·sin α/C)^⅓; ``level_most_m2_s``: the most that air of ``level_m`` can pass; ``rise_m``: height over the mean
+    within 3 km, unknown where any of that is; ``edge_differs``: cells whose depth depends on what lies beyond the known
+    ground; ``runs``: the open and the walled run.
     """
 
     ground: CoarseGround
@@ -90,6 +91,7 @@ class ColdLayer(NamedTuple):
     discharge_m2_s: Field
     froude: Field
     speed_m_s: Field
+    level_most_m2_s: Field
     rise_m: Field
     edge_differs: NDArray[np.bool_]
     runs: tuple[Night, Night]
@@ -208,7 +210,8 @@ def run_night(
     )
     area = grid.cell_size_m**2
     balance = Balance(*(float(np.sum(one)) * area for one in (supplied, came_in, depth, sunk)))
-    x, y = flux_x * ground.width_x, flux_y * ground.width_y
+    per_second = grid.cell_size_m / step
+    x, y = flux_x * per_second, flux_y * per_second
     unknown = np.where(known, 0.0, np.nan)
     return Night(
         depth + unknown,
@@ -327,6 +330,9 @@ def _layer(
         discharge_m2_s=field(discharge, "m²/s", "cold air that passes each metre of width"),
         froude=field(froude, "1", "speed of the cold air over the speed of its waves"),
         speed_m_s=field(speed, "m/s", "speed of the night air"),
+        level_most_m2_s=field(
+            CRITICAL * np.sqrt(gravity * level**3), "m²/s", "the most that level ground's air can pass"
+        ),
         rise_m=Field((ground.bed_m - surroundings).astype(np.float32), grid, "m", "height over the wider surroundings"),
         edge_differs=differs,
         runs=(opened, walled),

@@ -122,6 +122,7 @@ def _layer_of(depth: float, froude: float, speed: float, discharge: float, below
         discharge_m2_s=field(discharge),
         froude=field(froude),
         speed_m_s=field(speed),
+        level_most_m2_s=field(66.0),
         rise_m=field(-10.0 if below else 10.0),
     )
 
@@ -133,10 +134,10 @@ def _layer_of(depth: float, froude: float, speed: float, discharge: float, below
         (50.0, 0.1, 0.2, 5.0, False, "none"),  # not below its surroundings
         (38.5, 0.1, 0.2, 5.0, True, "none"),  # not deeper than on level ground
         (50.0, 0.3, 0.2, 5.0, True, "none"),  # neither stands nor moves to speak of
-        (50.0, 0.3, 1.5, 40.0, True, "moving"),
-        (15.0, 0.4, 1.5, 40.0, False, "moving"),  # need not exceed level ground
-        (15.0, 0.4, 0.9, 40.0, False, "none"),
-        (15.0, 0.4, 1.5, 9.0, False, "none"),
+        (50.0, 0.3, 1.5, 110.0, True, "moving"),
+        (15.0, 0.4, 1.5, 110.0, False, "moving"),  # need not exceed level ground
+        (15.0, 0.4, 0.9, 110.0, False, "none"),
+        (15.0, 0.4, 1.5, 90.0, False, "none"),
         (np.nan, np.nan, np.nan, np.nan, True, "unknown"),
     ],
 )
@@ -150,11 +151,26 @@ def test_kinds_are_told_apart(
     assert {KINDS[code] for code in np.unique(kinds.kind)} == {kind}
 
 
+@pytest.mark.parametrize(("east", "south"), [(0.0005, 0.0), (0.005, 0.0), (0.03, 0.0), (0.02, 0.02)])
+def test_air_of_an_open_plain_is_no_stream(east: float, south: float) -> None:
+    """Whatever its slope and the way it falls: an endless plain is the reference, of no kind and without excess."""
+    row, col = np.mgrid[0:210, 0:300] * 30.0
+    height = 2000.0 - east * col - south * row
+    grid = Grid("EPSG:32641", 0.0, 6300.0, 30.0, 210, 300)
+    ground = Field(height, grid, "m", "a plain")
+    layer = cold_layer(ground, np.zeros(grid.shape, dtype=bool), None, SETTINGS)
+    endless = layer._replace(depth_m=Field(layer.runs[0].depth_m, layer.depth_m.grid, "m", ""))
+    kinds = cold_kinds(endless, _no_hollows(grid), ground, 1.0, SETTINGS)
+    middle = (slice(102, 108), slice(105, 195))
+    assert (kinds.kind[middle] == NONE).all()
+    assert (kinds.excess_m.values[middle] == 0.0).all()
+
+
 def test_moving_air_keeps_the_layers_depth() -> None:
     """A V-shaped valley's floor gets no metres of air that the layer does not have."""
     grid = Grid("EPSG:32641", 0.0, 180.0, 30.0, 6, 6)
     ground = Field(100.0 + 9.0 * abs(np.arange(6) - 2.5)[None] + np.zeros(grid.shape), grid, "m", "")
-    kinds = cold_kinds(_layer_of(20.0, 0.5, 2.0, 60.0, True), _no_hollows(grid), ground, 1.0, SETTINGS)
+    kinds = cold_kinds(_layer_of(20.0, 0.5, 2.0, 120.0, True), _no_hollows(grid), ground, 1.0, SETTINGS)
     assert (kinds.kind == MOVING).all()
     assert (kinds.depth_m.values == 20.0).all()
 

@@ -180,7 +180,7 @@ def test_thin_air_on_steep_ground_never_goes_below_nothing() -> None:
 def test_threads_and_the_cache_change_nothing(monkeypatch: pytest.MonkeyPatch) -> None:
     height = _hills()
     results = []
-    for processors, cache_bytes in ((1, 600_000), (2, 600_000), (2, 1)):
+    for processors, cache_bytes in ((1, 1_500_000), (2, 1_500_000), (2, 1)):
         monkeypatch.setattr(threads, "thread_count", lambda processors=processors: processors)
         monkeypatch.setattr(module, "CACHE_BYTES", cache_bytes)
         layer = cold_layer(_field(height), _dry(height), None, SETTINGS)
