@@ -125,6 +125,30 @@ def test_values_do_not_depend_on_the_window() -> None:
     np.testing.assert_array_equal(part[7:-7, 7:-7], whole[16:44, 11:42])
 
 
+def test_chance_follows_from_the_neighbourhood_written_out() -> None:
+    """Every cell of a rough little field, rim and hole included, from its window's mean and variance, cell by cell."""
+    from scipy.special import chndtr
+
+    values = np.cumsum(np.random.default_rng(4).normal(0, 4, (16, 18)), axis=1)
+    values[6, 7] = np.nan
+    f = field(values)
+    east, north = (g.values.astype(np.float64) for g in gradient(f))
+    noise = gradient_error(3.0, 60.0, 30.0) ** 2
+    expected = np.full(values.shape, np.nan)
+    for row, col in np.argwhere(np.isfinite(east)):
+        window = np.s_[max(row - 4, 0) : row + 5, max(col - 4, 0) : col + 5]
+        p, q = east[window][np.isfinite(east[window])], north[window][np.isfinite(east[window])]
+        observed = (p.var() + q.var()) / 2
+        keep = max(1 - noise / observed, 0.0)
+        mean = np.hypot(p.mean() + keep * (east[row, col] - p.mean()), q.mean() + keep * (north[row, col] - q.mean()))
+        scatter = keep * noise
+        expected[row, col] = chndtr(0.15**2 / scatter, 2, mean**2 / scatter) if scatter > 0 else mean <= 0.15
+    got = chance_buildable(f, 15.0, 3.0, 60.0).values
+    # the table is read linearly between its 257 × 193 entries
+    np.testing.assert_allclose(got, expected, atol=2e-3)
+    assert 0.05 < np.nanmean(got) < 0.95
+
+
 def test_kernel_agrees_with_its_python_form() -> None:
     """Compiled and interpreted, with a hole, at the rim and inside."""
     east, north = np.random.default_rng(3).normal(0, 0.1, (2, 9, 10)).astype(np.float32)
