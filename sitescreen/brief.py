@@ -269,8 +269,6 @@ class Brief(_Part):
             "[plots] footprint_m2": "footprint_m2" in self.plots.model_fields_set,
             "[cover]": self.cover is not None,
             "[sky]": self.sky is not None,
-            "[[constraint]]": bool(self.constraint),
-            "[[criterion]]": bool(self.criterion),
             "[[context]]": bool(self.context),
         }
         return [key for key, is_given in given.items() if is_given]

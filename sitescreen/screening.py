@@ -19,6 +19,14 @@ from sitescreen.inputs.zone_map import zone_at
 from sitescreen.judgement.cautions import load_cautions
 from sitescreen.judgement.certainty import Certainty, certainty
 from sitescreen.judgement.overall import Judged, judge
+from sitescreen.judgement.own import (
+    OwnReadings,
+    check_names,
+    own_readings,
+    own_rules,
+    still_unchecked,
+    with_own_criteria,
+)
 from sitescreen.judgement.pairs import Compared, compare_for, with_weights
 from sitescreen.judgement.profiles import ZoneProfile, load_profiles
 from sitescreen.judgement.readings import Readings, stack
@@ -88,11 +96,12 @@ def screen(brief: Brief, progress: Progress | None = None) -> "Screening":
     settings = load_defaults()
     with progress.step("Reading the inputs"):
         inputs = read_inputs(brief)
-        profiles, compared = _profiles(brief)
+        profiles, compared = profiles_of(brief, settings)
+        own = own_readings(brief, inputs.plots.table)
     measured = [measure(block, rows, inputs, settings, progress) for block, rows in plots_by_block(inputs)]
     with progress.step("Judging the plots"):
         readings = stack([one.readings for one in measured], list(inputs.plots.table["plot"]))
-        return _judged(brief, inputs, measured, readings, profiles, compared, settings, progress)
+        return _judged(brief, inputs, measured, readings, own, profiles, compared, settings, progress)
 
 
 @dataclass(frozen=True)
@@ -119,6 +128,7 @@ def _judged(
     inputs: Inputs,
     measured: list[BlockResult],
     readings: Readings,
+    own: OwnReadings,
     profiles: dict[str, ZoneProfile],
     compared: Compared | None,
     settings: Defaults,
@@ -126,6 +136,8 @@ def _judged(
 ) -> Screening:
     plots = inputs.plots.table
     values = readings.values
+    values[own.values.columns] = own.values
+    why_unknown = readings.why_unknown.join(own.why_unknown)
     values["area_ha"] = plots["area_ha"].to_numpy()
     values["outcome"] = _outcomes(plots["outcome"].to_numpy(dtype=object), values)
     values["share_in_water"] = inputs.shore.share_in_water(plots.geometry) if inputs.shore else np.nan
@@ -142,7 +154,7 @@ def _judged(
         values,
         zones,
         profiles,
-        load_cautions(),
+        (*load_cautions(), *own_rules(brief.constraint)),
         settings.judgement,
         halved,
     )
@@ -154,6 +166,8 @@ def _judged(
     waters = together([one.disagreement for one in measured])
     if inputs.shore and not waters.agrees:
         notes += (Note("warning", "shore", waters.sentence),)
+    unchecked, checked = still_unchecked(NOT_CHECKED, brief.constraint)
+    notes += own.notes + checked
     if brief.not_used_yet():
         given = ", ".join(brief.not_used_yet())
         notes += (Note("warning", "brief", f"Read and checked, but not used by this version: {given}."),)
@@ -162,20 +176,29 @@ def _judged(
         brief=brief,
         table=table,
         fields=_fields(measured),
-        reasons=reasons(judged, readings.why_unknown, profiles, settings.judgement),
+        reasons=reasons(judged, why_unknown, profiles, settings.judgement),
         profiles=profiles,
         notes=notes,
         not_measured=NOT_MEASURED,
-        not_checked=NOT_CHECKED,
-        record=_record(brief, inputs, measured, table, settings, progress)
+        not_checked=unchecked,
+        record=_record(brief, inputs, own, measured, table, settings, progress)
         | {"certainty": sure.for_record(), "what_would_change": [one.for_record() for one in found]}
         | ({"pairs": compared.for_record()} if compared else {}),
     )
 
 
-def _profiles(brief: Brief) -> tuple[dict[str, ZoneProfile], Compared | None]:
-    """What each zone wants, and the weights that the brief's comparisons amount to, where it has any."""
+def profiles_of(brief: Brief, settings: Defaults) -> tuple[dict[str, ZoneProfile], Compared | None]:
+    """What each zone and the planner want, and the weights that the brief's comparisons amount to, if it has any.
+
+    Raises
+    ------
+    SitescreenError
+        If a profile, a criterion of the brief or a comparison cannot be used.
+    """
     profiles = load_profiles(brief.judge.profiles)
+    check_names(brief, profiles)
+    if brief.criterion:
+        profiles = with_own_criteria(profiles, brief.criterion, settings.judgement.own_weight_spread_pct)
     if not brief.judge.pairs:
         return profiles, None
     compared = compare_for(profiles, brief.judge.pairs)
@@ -251,6 +274,7 @@ def _fields(measured: list[BlockResult]) -> dict[str, Field]:
 def _record(
     brief: Brief,
     inputs: Inputs,
+    own: OwnReadings,
     measured: list[BlockResult],
     table: Any,
     settings: Defaults,
@@ -261,7 +285,7 @@ def _record(
     return {
         "title": brief.title,
         "versions": {"python": platform.python_version(), **{name: version(name) for name in packages}},
-        "inputs": [asdict(stamp) for stamp in inputs.stamps],
+        "inputs": [asdict(stamp) for stamp in (*inputs.stamps, *own.stamps)],
         "terrain": {
             "cell_size_m": inputs.terrain.cell_size_m,
             "surface": inputs.terrain.surface,

@@ -201,6 +201,7 @@ class JudgementSettings(Section):
     reasons_shown: Annotated[int, Field(ge=1, le=10)]
     trials: Annotated[int, Field(ge=100, le=100_000)]
     told_apart: Annotated[float, Field(ge=0.5, le=1)]
+    own_weight_spread_pct: Annotated[float, Field(ge=0, le=100)]
     trials_plots_most: Annotated[int, Field(ge=1, le=20_000)]
     trials_plots_least: Annotated[int, Field(ge=1, le=20_000)]
 

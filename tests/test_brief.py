@@ -121,8 +121,6 @@ def test_keys_without_effect_are_named_as_they_are_written(tmp_path: Path) -> No
         "[plots] footprint_m2",
         "[cover]",
         "[sky]",
-        "[[constraint]]",
-        "[[criterion]]",
         "[[context]]",
     ]
 

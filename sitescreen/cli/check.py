@@ -31,10 +31,15 @@ def command(
     """
     from sitescreen.cli.rank import asked
     from sitescreen.inputs import read_inputs
+    from sitescreen.judgement.own import own_readings
     from sitescreen.lattice import blocks_of
+    from sitescreen.screening import profiles_of
+    from sitescreen.settings import load_defaults
 
     the_brief = asked(brief, terrain, shore, plots, zone, None)
     inputs = read_inputs(the_brief)
+    _, compared = profiles_of(the_brief, load_defaults())
+    own = own_readings(the_brief, inputs.plots.table)
     table = inputs.plots.table
     fit = table[table["outcome"] == ""]
     click.echo(f"Terrain: {len(inputs.terrain.stamps)} file(s), read at {inputs.terrain.cell_size_m:g} m cells.")
@@ -43,6 +48,6 @@ def command(
         click.echo(f"  {outcome}: {', '.join(group['plot'].head(8))}{' …' if len(group) > 8 else ''}")
     blocks = set(blocks_of(fit["lon"].to_numpy(), fit["lat"].to_numpy(), inputs.terrain.cell_size_m))
     click.echo(f"Blocks of ground to compute: {len(blocks)}.")
-    for note in inputs.notes:
+    for note in (*inputs.notes, *own.notes, *(compared.notes() if compared else ())):
         word = {"info": "Understood", "assumed": "Assumed", "warning": "Warning"}[note.level]
         click.echo(f"{word} ({note.where}): {note.text}")

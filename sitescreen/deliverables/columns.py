@@ -269,7 +269,7 @@ def columns_of(table: "pd.DataFrame", profiles: Mapping[str, "ZoneProfile"]) -> 
         *CONTRACT,
         *(_membership(name, profiles) for name in memberships),
         *(_mark(name, profiles.values()) for name in marks),
-        *(MORE.get(name) or _unknown_to_us(name, table[name]) for name in others),
+        *(MORE.get(name) or _own(name) or _unknown_to_us(name, table[name]) for name in others),
     )
 
 
@@ -288,6 +288,19 @@ def _mark(name: str, profiles: Iterable["ZoneProfile"]) -> Column:
     return _number(
         name, 1, "0–100", f"mark: {title}", f"How well the plot does on “{title}” for its zone; high is good."
     )
+
+
+def _own(name: str) -> Column | None:
+    """The columns of a planner's own constraints and criteria, whose names the brief gives."""
+    if name.startswith("constraint_"):
+        title = name.removeprefix("constraint_").removesuffix("_m").replace("_", " ")
+        if name.endswith("_m"):
+            return _number(name, 0, "m", f"to: {title}", f"Distance from the plot's edge to your layer “{title}”.")
+        return _whole(name, f"own: {title}", f"1 where your constraint “{title}” speaks against the plot.")
+    if name.startswith("own_"):
+        title = name.removeprefix("own_").replace("_", " ")
+        return _number(name, 2, "", f"own: {title}", f"What your criterion “{title}” looks at: a column, or metres.")
+    return None
 
 
 def _unknown_to_us(name: str, values: Any) -> Column:

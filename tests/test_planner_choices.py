@@ -1,0 +1,129 @@
+"""A planner's own weights, constraints and criteria, from the brief to the results."""
+
+import csv
+import json
+from pathlib import Path
+from typing import Any
+
+import geopandas as gpd
+import numpy as np
+import pytest
+import rasterio
+from affine import Affine
+from click.testing import CliRunner
+from shapely.geometry import LineString, box
+
+from sitescreen.cli.main import run
+
+WEST, NORTH, CELL, N = 500_000.0, 500_000.0, 90.0, 60
+
+BRIEF = """
+[terrain]
+files = ["terrain.tif"]
+[plots]
+file = "plots.gpkg"
+id = "plot"
+[zones]
+force = "upland"
+[judge]
+shortlist = 2
+pairs = ["cold over slope = 3", "road over slope = 2"]
+[[constraint]]
+name = "flood zone"
+file = "flood.gpkg"
+level = "stop"
+say = "in the flood zone of the river"
+[[constraint]]
+name = "mast"
+file = "road.gpkg"
+buffer_m = 1500
+level = "note"
+[[criterion]]
+name = "road"
+file = "road.gpkg"
+curve = [[0, 100], [2000, 50], [6000, 0]]
+weight = 20
+[[criterion]]
+name = "price"
+column = "price"
+curve = [[10, 100], [60, 0]]
+weight = 10
+"""
+
+
+@pytest.fixture(scope="module")
+def job(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """Four plots on rolling ground, a road west of them, a flood zone over the third; one price is not known."""
+    folder = tmp_path_factory.mktemp("job")
+    y, x = np.indices((N, N))
+    heights = (1800.0 + 30.0 * np.sin(x / 7.0) + 20.0 * np.cos(y / 5.0)).astype(np.float32)
+    how = {"driver": "GTiff", "width": N, "height": N, "count": 1, "crs": "EPSG:32637", "dtype": "float32"}
+    with rasterio.open(folder / "terrain.tif", "w", transform=Affine(CELL, 0, WEST, 0, -CELL, NORTH), **how) as out:
+        out.write(heights, 1)
+    at = [(WEST + 1600.0 + 700.0 * k, NORTH - CELL * 30) for k in range(4)]
+    plots = [box(x - 200, y - 200, x + 200, y + 200) for x, y in at]
+    table = {"plot": ["A", "B", "C", "D"], "price": [20.0, 25.0, 10.0, np.nan]}
+    gpd.GeoDataFrame(table, geometry=plots, crs="EPSG:32637").to_file(folder / "plots.gpkg")
+    road = LineString([(WEST + 400, NORTH), (WEST + 400, NORTH - N * CELL)])
+    gpd.GeoDataFrame(geometry=[road], crs="EPSG:32637").to_file(folder / "road.gpkg")
+    gpd.GeoDataFrame(geometry=[plots[2].buffer(20)], crs="EPSG:32637").to_file(folder / "flood.gpkg")
+    (folder / "brief.toml").write_text(BRIEF, encoding="utf-8")
+    done = CliRunner().invoke(run, ["rank", str(folder / "brief.toml")], catch_exceptions=False)
+    assert done.exit_code == 0, done.output
+    return folder
+
+
+@pytest.fixture(scope="module")
+def rows(job: Path) -> dict[str, dict[str, str]]:
+    with (job / "out" / "ranking.csv").open(encoding="utf-8", newline="") as file:
+        return {row["plot"]: row for row in csv.DictReader(file)}
+
+
+@pytest.fixture(scope="module")
+def record(job: Path) -> Any:
+    return json.loads((job / "out" / "record.json").read_text(encoding="utf-8"))
+
+
+def test_a_constraint_sets_aside_with_the_planners_words(rows: dict[str, dict[str, str]]) -> None:
+    assert rows["C"]["set_aside"] == "in the flood zone of the river"
+    assert [rows[plot]["constraint_flood_zone"] for plot in "ABCD"] == ["0", "0", "1", "0"]
+    assert rows["C"]["rank"] == rows["C"]["chance_first"] == ""
+    # 1,000 and 1,700 m on the map from the plots' edges
+    assert [rows[plot]["constraint_mast_m"] for plot in "AB"] == ["1000", "1701"]
+    assert "note: within 1500 m of mast" in rows["A"]["cautions"]
+    assert "mast" not in rows["B"]["cautions"]
+
+
+def test_criteria_earn_marks_and_gaps_stand_at_their_worst(rows: dict[str, dict[str, str]]) -> None:
+    assert [rows[plot]["mark_price"] for plot in "ABD"] == ["80.0", "70.0", ""]
+    assert [rows[plot]["mark_road"] for plot in "AB"] == ["75.0", "57.5"]
+    d = rows["D"]
+    assert float(d["mark_low"]) < float(d["overall_mark"]) < float(d["mark_high"])
+
+
+def test_hazards_named_by_a_constraint_are_no_longer_unchecked(record: Any) -> None:
+    assert "flood levels" not in record["not_checked"]
+    assert "landslides" in record["not_checked"]
+    said = " ".join(note["text"] for note in record["notes"])
+    assert "Of flood levels only what your own layer shows was checked: “flood zone”." in said
+    assert "not used by this version" not in said
+    assert {"road.gpkg", "flood.gpkg"} <= {one["name"] for one in record["inputs"]}
+
+
+def test_weights_follow_the_comparisons(record: Any) -> None:
+    """A chain cold = 3 slope, road = 2 slope: 3/6, 2/6, 1/6; criteria, since road is no question."""
+    assert record["pairs"]["compared"] == "criterion"
+    assert record["pairs"]["weights"] == pytest.approx({"cold": 1 / 2, "slope": 1 / 6, "road": 1 / 3})
+    assert record["certainty"]["plots_in_trials"] == 3
+    assert record["what_would_change"][0]["among"] == "all"
+
+
+def test_check_reads_the_planners_layers_too(job: Path) -> None:
+    good = CliRunner().invoke(run, ["check", str(job / "brief.toml")])
+    assert good.exit_code == 0, good.output
+    assert "Weights come from the comparisons" in good.output
+    spoilt = job / "spoilt.toml"
+    spoilt.write_text(BRIEF.replace("flood.gpkg", "nowhere.gpkg"), encoding="utf-8")
+    bad = CliRunner().invoke(run, ["check", str(spoilt)])
+    assert bad.exit_code == 2
+    assert "nowhere.gpkg does not exist" in bad.output
