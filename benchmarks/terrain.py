@@ -251,19 +251,27 @@ def others_s(f: Field) -> dict[str, float]:
 # the whole stage, and starting
 
 
+def every_quantity(f: Field, sky_azimuths: int = 36) -> list[Any]:
+    """What the main job asks of the terrain, but for the water, with the shipped settings."""
+    from sitescreen.terrain.buildable import chance_buildable
+    from sitescreen.terrain.hollows import hollows
+    from sitescreen.terrain.position import rise_m
+    from sitescreen.terrain.sky_view import sky_view
+    from sitescreen.terrain.slope import aspect_deg, gradient, slope_deg
+
+    found = [quantity(f) for quantity in (gradient, slope_deg, aspect_deg, rise_m, hollows)]
+    return [*found, chance_buildable(f, 15.0, 2.5, 90.0), sky_view(f, sky_azimuths)]
+
+
 def stage(tile: str) -> None:
     """Read a tile and derive everything; print seconds and the highest memory. Runs in a process of its own."""
     import rasterio
 
-    from sitescreen.settings import load_defaults
-    from sitescreen.terrain.ground import read_ground
-
-    settings = load_defaults().terrain
     begun, used = time.perf_counter(), time.process_time()
     with rasterio.open(tile) as file:
         values = file.read(1)
         grid = Grid(file.crs.to_string(), file.transform.c, file.transform.f, CELL_M, *values.shape)
-    read_ground(Field(values, grid, "m", "tile"), np.zeros(values.shape, dtype=np.uint8), 2.5, 90.0, settings)
+    every_quantity(Field(values, grid, "m", "tile"))
     seconds = time.perf_counter() - begun
     print(seconds, resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1e6, time.process_time() - used)
 
@@ -288,19 +296,11 @@ def first_use() -> None:
     """Import and call every terrain quantity of the main job once on little ground; print the seconds."""
     f = ground(80)
     begun = time.perf_counter()
-    from sitescreen.terrain.buildable import chance_buildable
-    from sitescreen.terrain.hollows import hollows
+    every_quantity(f, 8)
     from sitescreen.terrain.horizon import upwind_tangent
-    from sitescreen.terrain.position import rise_m
-    from sitescreen.terrain.sky_view import sky_view
-    from sitescreen.terrain.slope import aspect_deg, gradient, slope_deg
 
-    for quantity in (gradient, slope_deg, aspect_deg, rise_m, hollows):
-        quantity(f)
-    chance_buildable(f, 15.0, 2.5, 90.0)
-    sky_view(f, 8)
     upwind_tangent(f, 30.0, 300.0)
-    print(time.perf_counter() - begun)
+    print(time.perf_counter() - begun, time.process_time())
 
 
 def start_figures() -> None:
@@ -310,7 +310,10 @@ def start_figures() -> None:
         for name in ("first run, compiling", "second run, from the cache"):
             call = [sys.executable, __file__, "--first-use"]
             out = subprocess.run(call, check=True, capture_output=True, text=True, env=environment).stdout
-            print(f"{name}: {float(out):.2f} s")
+            seconds, cpu_s = (float(figure) for figure in out.split())
+            print(
+                f"{name}: {seconds:.2f} s; processor {cpu_s:.2f} s, with starting Python; load {os.getloadavg()[0]:.1f}"
+            )
 
 
 # the tables
@@ -333,7 +336,8 @@ BESIDE = {
 def table(cells: int) -> None:
     f = ground(cells)
     print(f"{cells}² cells, {os.cpu_count()} processors, load {os.getloadavg()[0]:.1f} before; best of a few, warm\n")
-    ours, theirs = own_figures(f), others_s(f)
+    ours = own_figures(f)
+    theirs = others_s(f)
     covered, layer_by_layer = coverage_figures(f)
     ours |= covered
     theirs |= layer_by_layer
