@@ -25,7 +25,11 @@ from shapely.geometry import Polygon, box
 from shapely.ops import unary_union
 
 from sitescreen.brief import load_brief
+from sitescreen.inputs.shore import read_shore
+from sitescreen.inputs.terrain import open_terrain
+from sitescreen.lattice import utm_zone
 from sitescreen.screening import Screening, screen
+from sitescreen.terrain.shore_distance import nearest_shore
 
 LAND, LAKE, ISLAND_IN_LAKE = "1", "2", "3"
 
@@ -102,29 +106,51 @@ def shoreline_points(shore: gpd.GeoDataFrame, kind: str, around: tuple[float, fl
     return np.concatenate(points)
 
 
-def walk_to(points: np.ndarray, lon: float, lat: float) -> tuple[float, float]:
-    """Distance [km] and bearing from true north [°] to the nearest point, along the ellipsoid."""
-    bearing, _, metres = Geod(ellps="WGS84").inv(
+def walk_to(points: np.ndarray, lon: float, lat: float) -> float:
+    """Distance [m] to the nearest point, along the ellipsoid."""
+    _, _, metres = Geod(ellps="WGS84").inv(
         np.full(len(points), lon), np.full(len(points), lat), points[:, 0], points[:, 1]
     )
-    return float(metres.min()) / 1000.0, float(bearing[metres.argmin()]) % 360.0
+    return float(metres.min())
 
 
 @pytest.fixture(scope="session")
 def by_geodesics() -> Callable[[gpd.GeoDataFrame, str, pd.DataFrame], pd.DataFrame]:
-    """Distance and bearing from plots to a shoreline, calculated apart from the program.
+    """Distance from plots to a shoreline, calculated apart from the program, and how far off the shore it ends up.
 
     The program finds the nearest point of the segments in a metric projection. Here every point of the rims, 20 m
-    apart, is walked to along the ellipsoid, and the shortest walk counts.
+    apart, is walked to along the ellipsoid, and the shortest walk counts: ``km``. Then the program's own bearing and
+    distance are walked from the plot; ``off_m`` is how far from the rim that walk ends.
     """
 
     def walk(shore: gpd.GeoDataFrame, kind: str, plots: pd.DataFrame) -> pd.DataFrame:
         lon, lat = plots["lon"], plots["lat"]
         points = shoreline_points(shore, kind, (lon.min() - 1, lat.min() - 1, lon.max() + 1, lat.max() + 1))
-        walked = [walk_to(points, x, y) for x, y in zip(lon, lat, strict=True)]
-        return pd.DataFrame(walked, index=plots.index, columns=["km", "bearing_deg"])
+        there_lon, there_lat, _ = Geod(ellps="WGS84").fwd(
+            lon.to_numpy(), lat.to_numpy(), plots["shore_bearing_deg"].to_numpy(), plots["shore_distance_km"] * 1000.0
+        )
+        walked = pd.DataFrame(index=plots.index)
+        walked["km"] = [walk_to(points, x, y) / 1000.0 for x, y in zip(lon, lat, strict=True)]
+        walked["off_m"] = [walk_to(points, x, y) for x, y in zip(there_lon, there_lat, strict=True)]
+        return walked
 
     return walk
+
+
+@pytest.fixture(scope="session")
+def nearest_km() -> Callable[[Path, str, pd.DataFrame], pd.Series]:
+    """The program's distance to the nearest shore of any kind, open or not, for the plots of a brief."""
+
+    def measure(brief: Path, kind: str, plots: pd.DataFrame) -> pd.Series:
+        asked = load_brief(brief)
+        assert asked.shore is not None
+        shore = read_shore(asked.shore.file, asked.shore.kind, open_terrain(asked.terrain).data_outline())
+        lon, lat = plots["lon"].to_numpy(), plots["lat"].to_numpy()
+        near = nearest_shore(shore, lon, lat, f"EPSG:{32600 + utm_zone(lon[0])}")
+        metres = near.sea_distance_m if kind == "sea" else near.lake_distance_m
+        return pd.Series(metres / 1000.0, index=plots.index)
+
+    return measure
 
 
 @pytest.fixture(scope="session")
