@@ -73,6 +73,10 @@ EMPTY_IN_THIS_VERSION = (
 """Columns of the table whose methods are still to come."""
 
 
+REASONS_RECORDED = 2000
+"""The record keeps the reasons of so many plots, the first in rank; more would make it too large to mail."""
+
+
 def screen(brief: Brief, progress: Progress | None = None) -> "Screening":
     """Read a brief's inputs, measure every plot's ground, judge and rank it.
 
@@ -172,16 +176,19 @@ def _judged(
         given = ", ".join(brief.not_used_yet())
         notes += (Note("warning", "brief", f"Read and checked, but not used by this version: {given}."),)
     table = _table(plots, values, fits, judged, sure)
+    why = reasons(judged, why_unknown, profiles, settings.judgement)
     return Screening(
         brief=brief,
         table=table,
         fields=_fields(measured),
-        reasons=reasons(judged, why_unknown, profiles, settings.judgement),
+        reasons=why,
         profiles=profiles,
         notes=notes,
         not_measured=NOT_MEASURED,
         not_checked=unchecked,
         record=_record(brief, inputs, own, measured, table, settings, progress)
+        | {"profiles": {zone: profile.model_dump(mode="json") for zone, profile in profiles.items()}}
+        | {"reasons": _recorded(table, why)}
         | {"certainty": sure.for_record(), "what_would_change": [one.for_record() for one in found]}
         | ({"pairs": compared.for_record()} if compared else {}),
     )
@@ -255,6 +262,15 @@ def _table(plots: Any, values: pd.DataFrame, fits: pd.DataFrame, judged: Judged,
     table = gpd.GeoDataFrame(table, geometry=plots.geometry.to_numpy(), crs="EPSG:4326")
     order = np.argsort(table["rank"].astype("Float64").fillna(np.inf).to_numpy(dtype=np.float64), kind="stable")
     return table.iloc[order].reset_index(drop=True)
+
+
+def _recorded(table: Any, why: Mapping[str, Reasons]) -> dict[str, dict[str, Any]]:
+    """The reasons of the first plots, as ``sitescreen why`` reads them."""
+    return {
+        plot: {"for": one.for_, "against": one.against, "cautions": one.cautions, "unknown": one.unknown}
+        for plot in table["plot"].head(REASONS_RECORDED)
+        for one in (why[plot],)
+    }
 
 
 def _fields(measured: list[BlockResult]) -> dict[str, Field]:

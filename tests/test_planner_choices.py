@@ -127,3 +127,69 @@ def test_check_reads_the_planners_layers_too(job: Path) -> None:
     bad = CliRunner().invoke(run, ["check", str(spoilt)])
     assert bad.exit_code == 2
     assert "nowhere.gpkg does not exist" in bad.output
+
+
+# --- sitescreen why --------------------------------------------------------------------------------------------------
+
+
+def why(folder: Path, plot: str) -> tuple[int, str]:
+    done = CliRunner().invoke(run, ["why", str(folder), plot])
+    return done.exit_code, done.output
+
+
+def test_why_tells_place_marks_and_reasons(job: Path, rows: dict[str, dict[str, str]], record: Any) -> None:
+    code, said = why(job / "out", "A")
+    assert code == 0, said
+    lines = said.splitlines()
+    assert lines[0] == "Plot A"
+    assert f"Rank {rows['A']['rank']} of 3; {rows['A']['rank_in_zone']} in upland." in lines
+    assert any(line.startswith("Under 2,000 other sets of weights mostly rank") for line in lines)
+    assert "     80.0  price (8 % of the mark)" in lines, "10 of 100 + 20 + 10"
+    assert "  - 1,000 m from the nearest road, a mark of 75 out of 100." in lines
+    for kind in ("for", "against", "cautions"):
+        assert all(f"  - {sentence}" in lines for sentence in record["reasons"]["A"][kind])
+
+
+def test_why_tells_what_is_unknown_and_what_was_set_aside(job: Path) -> None:
+    _, unknown = why(job / "out", "D")
+    assert "with what is unknown at its worst and best" in unknown
+    assert "  unknown  price" in unknown
+    assert "because its “price” is empty" in unknown
+    _, aside = why(job / "out", "C")
+    assert "Set aside: in the flood zone of the river." in aside
+    assert "Rank" not in aside
+
+
+def test_why_refuses_what_it_cannot_find(job: Path, tmp_path: Path) -> None:
+    for folder, plot, says in (
+        (job / "out", "AA", "Perhaps 'A' was meant"),
+        (job, "A", "a folder that “sitescreen rank” wrote is needed"),
+        (tmp_path, "A", "record.json cannot be read"),
+    ):
+        code, said = why(folder, plot)
+        assert code == 2
+        assert says in said
+        assert said.count("\n") == 1
+    (tmp_path / "record.json").write_text("{}", encoding="utf-8")
+    (tmp_path / "ranking.csv").write_text("plot,name\nA,\n", encoding="utf-8")
+    code, said = why(tmp_path, "A")
+    assert code == 2
+    assert "do not hold together" in said
+
+
+def test_why_finds_a_plot_by_a_name_that_is_its_own(tmp_path: Path, job: Path) -> None:
+    """Cells that look like formulas carry an apostrophe in the table, and none in the plot's name."""
+    for name in ("record.json", "ranking.csv"):
+        (tmp_path / name).write_bytes((job / "out" / name).read_bytes())
+    with (tmp_path / "ranking.csv").open(encoding="utf-8", newline="") as file:
+        table = list(csv.DictReader(file))
+    for row in table:
+        row["name"] = {"A": "'=Hill", "B": "Brook", "C": "brook", "D": ""}[row["plot"]]
+    with (tmp_path / "ranking.csv").open("w", encoding="utf-8", newline="") as file:
+        writer = csv.DictWriter(file, list(table[0]))
+        writer.writeheader()
+        writer.writerows(table)
+    assert why(tmp_path, "=hill")[1].startswith("Plot A, =Hill\n")
+    code, said = why(tmp_path, "brook")
+    assert code == 2
+    assert "2 plots are called 'brook': " in said

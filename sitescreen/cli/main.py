@@ -8,6 +8,7 @@ _COMMANDS = {
     "rank": "Rank candidate plots by the climate their ground gives them.",
     "check": "Read every input, compute nothing, say what was understood, assumed and missing.",
     "zones": "Print the climate zones, or one zone's profile with weights and sources.",
+    "why": "Say why a plot stands where it does, from the results of a run.",
 }
 
 
