@@ -297,8 +297,8 @@ def _from_lines(
             WAY_OUT,
         )
     text = (
-        f"{file.name} holds lines: distances are measured to them, but plots in the water and the width of a lake "
-        "cannot be told. Polygons of water would say."
+        f"{file.name} holds lines: distances are measured to them, but plots in the water, the width of a lake and "
+        "creeks, which are not the open sea, cannot be told. Polygons of water would say."
     )
     notes.append(Note("warning", "shore", text))
     waters = gpd.GeoDataFrame(
