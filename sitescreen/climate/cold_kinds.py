@@ -59,8 +59,8 @@ def cold_kinds(
     A closed hollow is told from the fine ground, so it stays closed where the layer is unknown. A leaky pool is
     stagnant, deeper than level ground, and below its surroundings; its surface is level within a 90 m cell, so that
     fine cells differ in depth. Air moves where more passes than air as deep as on level ground could: on a long open
-    slope the layer slips downhill too, but that is no stream. Elsewhere the fine depth is the layer's: a level surface would invent metres of air on
-    the floors of V-shaped valleys.
+    slope the layer slips downhill too, but that is no stream. Elsewhere the fine depth is the layer's: a level surface
+    would invent metres of air on the floors of V-shaped valleys.
     """
     grid = elevation.grid
     coarse = layer.depth_m.grid

@@ -164,17 +164,34 @@ def test_no_air_is_lost(edge: module.Edge) -> None:
     assert (run.depth_m[sea] == 0.0).all()
 
 
-def test_thin_air_on_steep_ground_never_goes_below_nothing() -> None:
-    """Flow that would take more than there is, is cut to it: here the step is far too long for the depth of the air."""
-    rows, cols = np.mgrid[0:20, 0:20]
-    height = 150.0 * ((rows + cols) % 2) + 2000.0 - 60.0 * rows
-    ground = _coarse(height)
-    long_steps = SETTINGS.model_copy(update={"depth_bound_m": 100.0})
-    supply = 40.0 * supply_m_s(SOURCE, ground.bed_m)
-    run = run_night(ground, _dry(height), supply, SOURCE.deficit_k, "walled", long_steps)
-    assert (run.depth_m >= 0.0).all()
-    assert np.isfinite(run.depth_m).all()
-    assert run.balance.error < 1e-6
+def test_a_tower_of_air_gives_no_more_than_it_holds() -> None:
+    """180 m on one cell want to leave it over four sides in one step; what comes from unknown ground comes whole."""
+    rows, cols = 5, 8
+    bed = np.repeat(-2.0 * np.arange(cols)[None], rows, axis=0)
+    bed[:, 3:] = -6.0
+    depth, x, y = np.zeros((rows, cols)), np.zeros((rows, cols + 1)), np.zeros((rows + 1, cols))
+    depth[2, 5], depth[2, 1] = 180.0, 10.0
+    sill_x, sill_y = np.full(x.shape, np.inf), np.full(y.shape, np.inf)
+    sill_x[:, 1:-1], sill_y[1:-1] = np.maximum(bed[:, 1:], bed[:, :-1]), np.maximum(bed[1:], bed[:-1])
+    supply = np.zeros((rows, cols))
+    supply[2, 0], sill_x[2, 1] = -2.0, np.inf
+    edges = (np.array([0, 0, 0, 1, 1, 1]), np.array([1]), np.array([0]))
+    came_in = kernel(depth, x, y, bed, sill_x, sill_y, np.ones(x.shape), np.ones(y.shape), supply, *edges, 1, 8.5,
+                     90.0, GRAVITY, 0.02, 200.0, CRITICAL, 50.0, 1, np.zeros(cols), np.zeros(cols))  # fmt: skip
+    assert depth[2, 5] == pytest.approx(0.0, abs=1e-12)
+    assert depth[[1, 3, 2, 2], [5, 5, 4, 6]] == pytest.approx(45.0)
+    assert came_in == x[2, 1] == x[2, 2] > 0.0
+    assert depth.sum() == pytest.approx(190.0 + came_in, rel=1e-14)
+
+
+def test_steady_flow_on_a_slope_is_drag_against_weight() -> None:
+    """q² = g'·h³·s/C once neither depth nor flow changes: 24 h on 0.03 %, where the flow stays below critical."""
+    height = np.repeat(-0.0003 * 90.0 * np.arange(12)[None], 3, axis=0)
+    run = _run(height, hours=24.0)
+    depth = run.depth_m[1, 6]
+    assert depth > 0.95 * SETTINGS.fill_m
+    steady = math.sqrt(GRAVITY * depth**3 * 0.0003 / SETTINGS.friction)
+    assert run.east_m2_s[1, 6] == pytest.approx(steady, rel=0.02)
 
 
 def test_threads_and_the_cache_change_nothing(monkeypatch: pytest.MonkeyPatch) -> None:
