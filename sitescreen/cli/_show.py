@@ -1,7 +1,9 @@
 """What a command says on the terminal while it works: progress and notes, on stderr."""
 
+import os
 import sys
 import time
+from pathlib import Path
 
 import click
 
@@ -47,3 +49,13 @@ def show_notes(notes: tuple[Note, ...]) -> None:
     for note in notes:
         if note.level == "assumed":
             click.echo(f"Assumed ({note.where}): {note.text}", err=True)
+
+
+def say_if_first_run() -> None:
+    """Say that the first run takes longer: it compiles the measuring code, and keeps it for later runs.
+
+    Numba keeps it beside the code; where that folder is read-only it goes to the user's cache, and nothing is said.
+    """
+    package = Path(__file__).parents[1]
+    if os.access(package, os.W_OK) and not any(package.glob("terrain/__pycache__/*.nbi")):
+        click.echo("First run: the measuring code is compiled once, which takes about half a minute more.", err=True)

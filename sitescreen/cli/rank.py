@@ -45,7 +45,7 @@ def command(
     sitescreen rank demo_region/brief.toml
     sitescreen rank --terrain tile.tif --shore shore.gpkg --plots plots.gpkg --out results
     """
-    from sitescreen.cli._show import TerminalProgress, show_notes
+    from sitescreen.cli._show import TerminalProgress, say_if_first_run, show_notes
     from sitescreen.deliverables import write_results
     from sitescreen.deliverables.folder import check_writable
     from sitescreen.screening import screen
@@ -53,6 +53,7 @@ def command(
     the_brief = asked(brief, terrain, shore, plots, zone, out)
     folder = the_brief.output.folder
     check_writable(folder)  # before the work, not after it
+    say_if_first_run()
     progress = TerminalProgress()
     screening = screen(the_brief, progress)
     with progress.step("Writing the results"):
