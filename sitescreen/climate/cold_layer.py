@@ -256,7 +256,7 @@ def cold_layer(
     water : bool array, shape (rows, cols)
         Sea and lakes.
     sky_view : Field, optional
-        0–1; where unknown, and without it everywhere, the open sky.
+        0–1, on the same grid or a part of it; where it is unknown or does not reach, the open sky.
     settings : ColdLayerSettings
     source : Source, optional
         The settings' own without it.
@@ -273,10 +273,10 @@ def cold_layer(
     GridError
         If the arrays are not on one grid of the lattice.
     """
-    if water.shape != elevation.grid.shape or (sky_view is not None and sky_view.grid != elevation.grid):
+    if water.shape != elevation.grid.shape or (sky_view is not None and not _lies_in(sky_view.grid, elevation.grid)):
         raise GridError(
             "ground, water and sky view on different grids were given",
-            "one grid is needed",
+            "one grid is needed, or a sky view on a part of it",
             "Compute them from the same elevation field",
         )
     source = source or Source(settings.heat_w_m2, settings.deficit_k)
@@ -285,11 +285,12 @@ def cold_layer(
     known = ~np.isnan(ground.bed_m)
     per_cell = round(grid.cell_size_m / elevation.grid.cell_size_m)
 
-    def averaged(values: NDArray[np.float32]) -> FloatArray:
-        return block_means(on_coarse_edges(Field(values, elevation.grid, "1", ""), grid), per_cell)
+    def averaged(field: Field) -> FloatArray:
+        return block_means(on_coarse_edges(field, grid), per_cell)
 
-    wet = np.nan_to_num(averaged(water.astype(np.float32)), nan=0.0) >= 0.5
-    sky = np.ones(grid.shape) if sky_view is None else np.nan_to_num(averaged(sky_view.values), nan=1.0)
+    wet_share = averaged(Field(water.astype(np.float32), elevation.grid, "1", "share of water"))
+    wet = np.nan_to_num(wet_share, nan=0.0) >= 0.5
+    sky = np.ones(grid.shape) if sky_view is None else np.nan_to_num(averaged(sky_view), nan=1.0)
     open_supply = supply_m_s(source, np.where(known, ground.bed_m, 0.0))
     edges: tuple[Edge, Edge] = ("open", "walled")
     runs: dict[Edge, Night] = {}
@@ -300,6 +301,14 @@ def cold_layer(
 
     in_bands(run, len(edges))
     return _layer(ground, runs["open"], runs["walled"], level_depth_m(open_supply, settings), source, settings)
+
+
+def _lies_in(part: Grid, whole: Grid) -> bool:
+    """True for a window of the same cells."""
+    west, south, east, north = part.bounds
+    return (part.crs, part.cell_size_m) == (whole.crs, whole.cell_size_m) and (
+        whole.bounds[0] <= west and whole.bounds[1] <= south and east <= whole.bounds[2] and north <= whole.bounds[3]
+    )
 
 
 def _layer(

@@ -285,6 +285,8 @@ def test_sky_and_water_reach_the_coarse_cells() -> None:
     layer = cold_layer(_field(height, 30.0), sea, half, SETTINGS)
     whole = cold_layer(_field(height, 30.0), sea, None, SETTINGS)
     assert layer.runs[1].balance.supplied_m3 < 0.7 * whole.runs[1].balance.supplied_m3
+    part = cold_layer(_field(height, 30.0), sea, half.part((450.0, 0.0, 900.0, 900.0)), SETTINGS)
+    assert layer.runs[1].balance.supplied_m3 < part.runs[1].balance.supplied_m3 < whole.runs[1].balance.supplied_m3
     assert (layer.runs[1].depth_m[:, :3] == 0.0).all()
     assert (layer.runs[1].depth_m[:, 3:] > 0.0).all()
 
