@@ -1,5 +1,6 @@
 """The answer in one sentence, and the words that say how far to trust it."""
 
+import re
 from typing import TYPE_CHECKING, Any
 
 from sitescreen.deliverables.columns import BY_NAME
@@ -58,9 +59,10 @@ def trust(screening: "Screening") -> list[dict[str, Any]]:
     """The blocks of “How far to trust this”: a heading and its lines each; blocks with nothing to say are left out."""
 
     def noted(level: str) -> list[str]:
-        return [note.text for note in screening.notes if note.level == level]
+        return [counted(note.text) for note in screening.notes if note.level == level]
 
     blocks = [
+        ("How sure the order is", _on_the_order(screening)),
         ("Assumed, because nobody gave it", noted("assumed")),
         ("Noticed in the inputs", noted("warning")),
         ("Not measured in this version", [_line(text) for text in screening.not_measured]),
@@ -68,6 +70,24 @@ def trust(screening: "Screening") -> list[dict[str, Any]]:
         ("To check on site", list(ON_SITE)),
     ]
     return [{"heading": heading, "lines": lines} for heading, lines in blocks if lines]
+
+
+def _on_the_order(screening: "Screening") -> list[str]:
+    """What the trials varied, and the smallest change of a weight that takes the first place from its plot."""
+    lines = [note.text for note in screening.notes if note.level == "info" and note.where == "judgement"]
+    for one in screening.record.get("what_would_change") or ():
+        if one.get("among") == "all" and one["says"] not in lines:
+            lines.append(one["says"])
+    for zone, profile in screening.profiles.items():
+        lines = [re.sub(rf"\b{re.escape(zone)}\b", lambda _, to=profile.title: f"“{to}”", line) for line in lines]
+    return lines
+
+
+def counted(text: str) -> str:
+    """“1 lake(s)” as one lake and “3 lake(s)” as three, “1 plots” as one plot."""
+    text = re.sub(r"\b1 ([\w ]+?)\(s\)", r"1 \1", text)
+    text = re.sub(r"(\d ?[\w ]*?)\(s\)", r"\1s", text)
+    return re.sub(r"(?<![\d.,])\b1 plots\b", "1 plot", text)
 
 
 def _line(text: str) -> str:

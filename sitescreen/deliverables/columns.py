@@ -79,9 +79,9 @@ CONTRACT: tuple[Column, ...] = (
     _whole(
         "rank_low",
         "best rank",
-        "Best rank of the range that holds 90 of 100 trials; the trials vary the weights, not the terrain or the wind.",
+        "The best rank of the range that holds 90 of 100 trials, so the smaller number; only the weights vary in them.",
     ),
-    _whole("rank_high", "worst rank", "Worst rank of that range."),
+    _whole("rank_high", "worst rank", "The worst rank of that range, so the larger number."),
     _number("chance_first", 2, "0–1", "chance of first", "Share of the trials in which the plot is first."),
     _number(
         "chance_top_quarter",
@@ -103,7 +103,13 @@ CONTRACT: tuple[Column, ...] = (
         "level enough",
         "Share of the plot likely to be less steep than the limit for building.",
     ),
-    _number("rise_m", 1, "m", "rise", "Height above the mean of the ground within 1 km; negative in a hollow."),
+    _number(
+        "rise_m",
+        1,
+        "m",
+        "height above surroundings within 1 km",
+        "Height above the mean of the ground within 1 km; negative in a hollow.",
+    ),
     _text("shore_kind", "shore", "Whether the breeze that reaches the plot most is of the sea or of a lake."),
     _number("shore_distance_km", 2, "km", "to the shore", "Distance to its nearest shore on open water."),
     _number(
@@ -132,7 +138,7 @@ CONTRACT: tuple[Column, ...] = (
         "cold_pool_chance", 2, "0–1", "cold air chance", "How sure the cold air is, given the terrain model's error."
     ),
     _number(
-        "cold_deficit_k", 1, "K", "colder by", "How much colder than open ground the air is on a calm clear night."
+        "cold_deficit_k", 1, "°C", "colder by", "How much colder than open ground the air is on a calm clear night."
     ),
     _number(
         "smallest_pool_seen_m",
@@ -162,7 +168,7 @@ CONTRACT: tuple[Column, ...] = (
         "night breeze from",
         "Bearing the offshore breeze of the night comes from.",
     ),
-    _number("breeze_arrival_h", 1, "h", "breeze arrives at", "Local solar hour when the breeze arrives."),
+    _number("breeze_arrival_h", 1, "h", "breeze arrives at", "Hour of the day, by the sun, when the breeze arrives."),
     _number("night_flow_m2_s", 2, "m²/s", "night air flow", "Cold air passing through on calm clear nights."),
     _number("night_flow_speed_m_s", 2, "m/s", "night air speed", "Speed of that air."),
     _number(
@@ -205,7 +211,13 @@ MORE: Mapping[str, Column] = {
         _number("breeze_screen", 2, "0–1", "breeze screened", "Share of the breeze that the ground on its way takes."),
         _number("crest_bearing_deg", 0, "° from true north", "screen lies", "Bearing of the ground that screens most."),
         _number("crest_distance_m", 0, "m", "screen at", "Distance to that ground."),
-        _number("crest_above_plot_m", 0, "m", "screen stands", "How high that ground stands above the plot."),
+        _number(
+            "crest_above_plot_m",
+            0,
+            "m",
+            "screen stands",
+            "How high that ground stands above the plot; empty where none does.",
+        ),
         _number("sea_km", 2, "km", "to the sea", "Distance to the nearest sea shore, creeks included."),
         _number("lake_km", 2, "km", "to a lake", "Distance to the lake whose breeze reaches the plot most."),
         _number("lake_width_km", 1, "km", "width of the lake", "Width of that lake."),
@@ -268,7 +280,7 @@ def columns_of(table: "pd.DataFrame", profiles: Mapping[str, "ZoneProfile"]) -> 
     return (
         *CONTRACT,
         *(_membership(name, profiles) for name in memberships),
-        *(_mark(name, profiles.values()) for name in marks),
+        *(MORE.get(name) or _mark(name, profiles.values()) for name in marks),
         *(MORE.get(name) or _own(name) or _unknown_to_us(name, table[name]) for name in others),
     )
 

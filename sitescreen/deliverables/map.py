@@ -23,6 +23,7 @@ from sitescreen.deliverables.relief import relief_picture, water_on, webp
 from sitescreen.deliverables.scaffold import leaflet, map_script
 from sitescreen.deliverables.sheet import Sheet, by_quantity, sheet_for
 from sitescreen.deliverables.static_page import plot_signs, ranking_rows, shelf_rows, trust_blocks
+from sitescreen.deliverables.sureness import sureness
 
 if TYPE_CHECKING:
     from sitescreen.screening import Screening
@@ -73,6 +74,7 @@ def _page(screening: "Screening", sheet: Sheet, relief: str, data: Mapping[str, 
         "title": html.escape(title),
         "style": style,
         "answer": html.escape(str(data["answer"])),
+        "sure": html.escape(sureness(screening.table, screening.brief.judge.shortlist)),
         "caution": html.escape(CAUTION),
         "relief": relief,
         "width": str(sheet.cols),

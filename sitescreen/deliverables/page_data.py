@@ -10,6 +10,7 @@ from sitescreen.deliverables.classes import CLASS_EDGES, RAMP
 from sitescreen.deliverables.columns import Column
 from sitescreen.deliverables.questions import OVERALL, Asked, View, question_marks
 from sitescreen.deliverables.sheet import Sheet
+from sitescreen.deliverables.sureness import above_breeze, alike
 from sitescreen.deliverables.table import value_of
 from sitescreen.grid import Bounds
 
@@ -96,7 +97,11 @@ def page_data(
         }
         | {
             # the figure that would make the zone firm, where one is missing
-            "zone_missing": column_values("zone_missing") if "zone_missing" in by_name else [None] * len(table)
+            "zone_missing": column_values("zone_missing") if "zone_missing" in by_name else [None] * len(table),
+            "rank_low": column_values("rank_low"),
+            "rank_high": column_values("rank_high"),
+            "alike": alike(table),
+            "above_breeze": above_breeze(table),
         },
         "shapes": [_shape(geometry) for geometry in table.geometry],
         "marks": {

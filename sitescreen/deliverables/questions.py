@@ -47,7 +47,7 @@ OVERALL = Asked(
     "Overall",
     "Overall",
     "The overall mark is the weighted mean of a plot’s marks, by the profile of its own climate zone. "
-    "The rank counts whatever is unknown at its worst, so a gap never helps a plot.",
+    "Ranks go by the mark with everything unknown at its worst, so a gap never helps a plot.",
 )
 
 ASKED = (
@@ -55,8 +55,8 @@ ASKED = (
         "breeze",
         "Breeze?",
         "Breeze",
-        "How much of the daytime breeze of sea or lake is left by the time it arrives. "
-        "Ground that stands in its way is not yet looked at.",
+        "How much of the daytime breeze of sea or lake is left by the time it arrives, "
+        "and how much of that the ground on its way from the shore lets through.",
     ),
     Asked(
         "wind",

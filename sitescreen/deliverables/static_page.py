@@ -9,7 +9,8 @@ import numpy as np
 from sitescreen.deliverables.classes import RAMP, class_of
 from sitescreen.deliverables.columns import BY_NAME
 from sitescreen.deliverables.sheet import Sheet
-from sitescreen.deliverables.table import value_of, whole_mark
+from sitescreen.deliverables.sureness import ordinal
+from sitescreen.deliverables.table import mark_words, value_of
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -37,7 +38,7 @@ def _ranking_row(row: Any, screening: "Screening") -> str:
         f"{int(row['rank'])}",
         _called(row),
         zone.title if zone else str(row["zone"]),
-        whole_mark(row["overall_mark"]),
+        mark_words(row["overall_mark"], row["mark_low"]),
         next(iter(reasons.for_), "") if reasons else "",
         next(iter(reasons.against), "") if reasons else "",
     ]
@@ -93,4 +94,4 @@ def _signs(table: "pd.DataFrame", sheet: Sheet, shortlist: int) -> Iterator[str]
         fill = "#faf7f0" if np.isnan(classes[i]) else RAMP[int(classes[i])]
         yield f'<rect {box} fill="{fill}" stroke="#2b2a27" stroke-width="2"/>'
         if int(rank) <= shortlist:
-            yield f'<text x="{x + 2 * HALF:.1f}" y="{y + HALF:.1f}">{rank}</text>'
+            yield f'<text x="{x + 2 * HALF:.1f}" y="{y + HALF:.1f}">{ordinal(int(rank))}</text>'

@@ -51,6 +51,12 @@ def whole_mark(mark: float) -> str:
     return str(math.floor(round(float(mark), 1) + 0.5))
 
 
+def mark_words(mark: float, low: float) -> str:
+    """A mark as people read it, with the one that ranks go by where that is lower by 1 or more: "89 (at worst 66)"."""
+    at_worst = f" (at worst {whole_mark(low)})" if round(mark, 1) - round(low, 1) >= 1.0 else ""
+    return whole_mark(mark) + at_worst
+
+
 @cache
 def _na() -> Any:
     import pandas as pd

@@ -18,6 +18,9 @@ MOST_PLOTS = 20_000
 LONGEST_CELL = 32_767  # the format's own limit
 HEAD_ROWS = 2  # names and units
 
+HIDDEN = "Empty in this run, so the column is hidden."
+_EMPTY_SPEAKS = {"rank", "name", "cautions", "set_aside"}  # none ranked, named, cautioned, set aside
+
 _UNPRINTABLE = re.compile(r"[\x00-\x08\x0b\x0c\x0e-\x1f\ud800-\udfff\ufffe\uffff]")  # XML cannot hold these
 _EPOCH = (1980, 1, 1, 0, 0, 0)  # the earliest moment a zip file can name
 _MOMENT = re.compile(rb"(<dcterms:(?:created|modified)[^>]*>)[^<]*")
@@ -42,8 +45,10 @@ def write_workbook(table: "pd.DataFrame", columns: Sequence[Column], path: Path)
     ranking = book.create_sheet("Ranking")
     ranking.freeze_panes = "D3"  # below names and units, right of rank, plot and name
     ranking.auto_filter.ref = f"A1:{get_column_letter(len(columns))}{HEAD_ROWS + len(table)}"
+    empty = _empty(table, columns)
     for i, column in enumerate(columns, start=1):
         ranking.column_dimensions[get_column_letter(i)].width = _width(column)
+        ranking.column_dimensions[get_column_letter(i)].hidden = column.name in empty
 
     def made(sheet: Any, text: str, font: Font) -> Any:
         made_cell = WriteOnlyCell(sheet)
@@ -51,8 +56,8 @@ def write_workbook(table: "pd.DataFrame", columns: Sequence[Column], path: Path)
         made_cell.font = font
         return made_cell
 
-    bold, italic = Font(bold=True), Font(italic=True, color="666666")
-    ranking.append([made(ranking, column.name, bold) for column in columns])
+    bold, italic, grey = Font(bold=True), Font(italic=True, color="666666"), Font(color="999999")
+    ranking.append([made(ranking, column.name, grey if column.name in empty else bold) for column in columns])
     ranking.append([made(ranking, column.unit, italic) for column in columns])
     # one cell a column serves all rows: each row is written out before the next is filled in
     ready = [WriteOnlyCell(ranking) for _ in columns]
@@ -76,12 +81,23 @@ def write_workbook(table: "pd.DataFrame", columns: Sequence[Column], path: Path)
         meaning.column_dimensions[letter].width = width
     meaning.append([made(meaning, head, bold) for head in ("column", "unit", "in words", "what it means")])
     for column in columns:
-        row = [made(meaning, text, Font()) for text in (column.name, column.unit, column.title, column.says)]
+        says, font = (f"{HIDDEN} {column.says}", grey) if column.name in empty else (column.says, Font())
+        row = [made(meaning, text, font) for text in (column.name, column.unit, column.title, says)]
         row[-1].alignment = Alignment(wrap_text=True, vertical="top")
         meaning.append(row)
 
     book.save(path)
     _without_the_clock(path)
+
+
+def _empty(table: "pd.DataFrame", columns: Sequence[Column]) -> set[str]:
+    """The columns without a single value, but those where emptiness says something."""
+    return {
+        column.name
+        for column in columns
+        if column.name not in _EMPTY_SPEAKS
+        and (column.name not in table or all(value_of(column, value) is None for value in table[column.name].tolist()))
+    }
 
 
 def _set_text(made_cell: Any, text: str) -> None:

@@ -26,12 +26,21 @@ const leaf = (() => {
     const spread = low === null || high === null || high - low < 0.05 ? "of 100; nothing it needs is unknown"
       : low.toFixed(0) === high.toFixed(0) ? "of 100; its unknowns hardly matter"
       : `of 100; ${low.toFixed(0)} to ${high.toFixed(0)}, as its unknowns may turn out`;
-    return make("div", { class: "leaf-mark" }, make("b", {}, mark.toFixed(0)), make("div", {}, ruler(mark, low, high, 300, 22), make("span", {}, spread)));
+    const [whole, ...atWorst] = page.markWords(i).split(/(?= )/), words = [whole, make("small", {}, atWorst.join(""))];
+    return make("div", { class: "leaf-mark" }, make("b", {}, ...words), make("div", {}, ruler(mark, low, high, 300, 22), make("span", {}, spread)));
+  }
+
+  function sureLine(i) {
+    const rank = plots.rank[i], best = plots.rank_low[i], worst = plots.rank_high[i];
+    if (rank === null || best === null || worst === null) return null;
+    const range = best === worst ? `${best === rank ? "the same" : page.ordinal(best)} in at least 90 of 100 trials` : `${page.ordinal(best)} to ${page.ordinal(worst)} in 90 of 100 trials`;
+    const alike = plots.alike[i] ? ` ${plots.alike[i]} cannot be told apart.` : "";
+    return make("p", { class: "leaf-zone leaf-sure" }, `${page.ordinal(rank)}; ${range}, which vary the weights only.${alike}`);
   }
 
   function criteria(i) {
     const zone = data.zones[plots.zone[i]];
-    if (!zone) return [];
+    if (!zone || zone.criteria.every((one) => !data.marks[one.name] || data.marks[one.name][i] === null)) return [];
     const rows = zone.criteria.map((one) => {
       const marks = data.marks[one.name], mark = marks ? marks[i] : null, reading = readingNamed.get(one.reading);
       return make("tr", {},
@@ -45,8 +54,11 @@ const leaf = (() => {
   function readings(i) {
     const items = [];
     for (const reading of data.readings) {
-      if (reading.kind === "text" && reading.values[i] === null) continue;
-      items.push(make("dt", { title: reading.says }, reading.title), make("dd", {}, page.shown(reading, reading.values[i])));
+      const words = page.readingWords(reading, i);
+      if (words !== null) items.push(make("dt", { title: reading.says }, reading.title), make("dd", {}, words));
+    }
+    if (data.readings.every((reading) => reading.values[i] === null || reading.name === "area_ha")) {
+      return make("p", { class: "leaf-zone" }, "It has no readings.");
     }
     return make("details", {}, make("summary", {}, "All readings"), make("dl", { class: "readings" }, ...items));
   }
@@ -64,7 +76,7 @@ const leaf = (() => {
     parts.push(make("p", { class: "leaf-zone" }, words.filter((word) => word).join(" · ")));
     if (plots.zone_missing[i]) parts.push(make("p", { class: "leaf-zone" }, `The zone is not firm; missing: ${plots.zone_missing[i]}.`));
     if (zone) parts.push(make("p", { class: "leaf-zone" }, `What it wants: ${zone.wants}`));
-    parts.push(markLine(i));
+    parts.push(markLine(i), sureLine(i));
     if (plots.set_aside[i]) parts.push(...list("Why it is set aside", [plots.set_aside[i]], "alerts"));
     if (why) {
       parts.push(...list("For it", why.for, "for"), ...list("Against it", why.against, "against"),
@@ -74,7 +86,7 @@ const leaf = (() => {
     }
     parts.push(...criteria(i), readings(i));
     holder.replaceChildren(...parts.filter((part) => part));
-    if (isOpen) holder.querySelector("details").open = true;
+    if (isOpen && holder.querySelector("details")) holder.querySelector("details").open = true;
   }
   page.watchers.push((what) => { if (what.includes("chosen")) show(); });
   return { show };

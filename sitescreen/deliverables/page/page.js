@@ -39,10 +39,10 @@
       title.append(one ? `Plots by their mark for ${one.column.toLowerCase()}, of 100` : "Plots by their overall mark, of 100");
     }
     const best = view && view.bare ? "Bare ground is best, then dark ground." : "Dark ground is better ground.";
-    const darker = view ? `${best} Plots show their own mark, by their own zone, in the same five steps.` : "Dark is better. Numbers are ranks.";
+    const darker = view ? `${best} Plots show their own mark, by their own zone, in the same five steps.` : "Dark is better.";
     legend.hidden = false;
     legend.replaceChildren(make("div", { class: "legend-row" }, title, ...items.map(([sign, words]) => make("span", { class: "legend-item" }, sign, words))),
-      make("p", {}, `${darker} ${(one || data.overall).method}`));
+      make("p", {}, `${darker} 1st, 2nd … on the map are ranks; a plot’s own number stands in its leaf. ${(one || data.overall).method}`));
   }
 
   function trust() {

@@ -3,6 +3,7 @@ const plan = (() => {
   const { data, plots, count, state } = page;
   const INK = "#2b2a27", PAPER = "#faf7f0";
   const STEP = 100000, SIGN = 5, LARGE = 16, MOST_NUMBERS = 150;
+  const ROOM = [34, 30, 40, 52]; // left, top, right, bottom: no plot under a rank's edge or the scale bar at first [px]
   const map = window.map_plan;
   const holder = document.getElementById("map_plan");
   const bounds = L.latLngBounds(data.bounds), focus = L.latLngBounds(data.focus);
@@ -138,15 +139,16 @@ const plan = (() => {
     return { shape, half };
   }
 
-  // rank numbers beside their ground: the chosen plot and the shortlist always, others where there is room
+  // ranks beside their ground: the chosen plot and the shortlist always, others where there is room
   function drawNumbers(context, size, taken) {
     context.textBaseline = "middle";
     const byRank = spots.filter((s) => plots.rank[s.i] !== null).sort((a, b) => plots.rank[a.i] - plots.rank[b.i]);
     const first = byRank.filter((s) => s.i === state.chosen);
     for (const spot of [...first, ...byRank.filter((s) => s.i !== state.chosen)].slice(0, MOST_NUMBERS)) {
       const rank = plots.rank[spot.i], isChosen = spot.i === state.chosen, isShort = rank <= data.shortlist;
+      if (!isShort && !isChosen && size.x < 600) continue;
       context.font = `${isShort || isChosen ? "bold 15" : "12"}px ${getComputedStyle(document.body).getPropertyValue("--serif")}`;
-      const text = String(rank), wide = context.measureText(text).width, tall = isShort || isChosen ? 15 : 12;
+      const text = page.ordinal(rank), wide = context.measureText(text).width, tall = isShort || isChosen ? 15 : 12;
       const gap = spot.half + (isChosen ? 9 : 5);
       const tries = [[gap, 0], [-gap - wide, 0], [-wide / 2, -gap - tall / 2], [-wide / 2, gap + tall / 2]];
       for (const [dx, dy] of tries) {
@@ -247,10 +249,12 @@ const plan = (() => {
   const readout = document.getElementById("readout");
   const idle = () => (window.matchMedia("(pointer: coarse)").matches ? "Tap a plot to read its leaf." : "Choose a plot on the map or in the table to read its leaf.");
   function tell(i) {
-    if (i === null) { readout.textContent = idle(); return; }
+    readout.textContent = i === null ? idle() : told(i);
+  }
+  function told(i) {
     const rank = plots.rank[i], mark = page.marks()[i], one = page.question();
     const asked = rank === null ? "" : mark === null ? (page.asks(i) ? ", unknown" : "") : `, ${mark.toFixed(0)} of 100${one ? ` for ${one.column.toLowerCase()}` : ""}`;
-    readout.textContent = page.called(i) + (rank === null ? ": set aside" : `: ${page.ordinal(rank)}${asked}`);
+    return page.called(i) + (rank === null ? ": set aside" : `: ${page.ordinal(rank)}${asked}`);
   }
 
   function showField() {
@@ -263,6 +267,11 @@ const plan = (() => {
   function whole() {
     map.fitBounds(focus, { animate: false });
     map.panInsideBounds(bounds, { animate: false }); // no bare paper on one side where there is ground on the other
+    const shown = places.filter((place) => place && focus.contains(map.unproject(place, 0))).map((place) => map.unproject(place, 0));
+    const size = map.getSize(), [left, top, right, bottom] = ROOM;
+    const hasRoom = shown.map((where) => map.latLngToContainerPoint(where))
+      .every((at) => at.x >= left && at.y >= top && at.x <= size.x - right && at.y <= size.y - bottom);
+    if (!hasRoom) map.fitBounds(L.latLngBounds(shown), { animate: false, paddingTopLeft: [left, top], paddingBottomRight: [right, bottom], maxZoom: map.getZoom() });
   }
 
   function start() {
@@ -282,10 +291,12 @@ const plan = (() => {
     map.on("click", (event) => {
       const i = plotAt(event.containerPoint);
       if (i !== null) page.change({ chosen: i });
+      tell(i);
     });
     map.on("mousemove", (event) => {
       const i = plotAt(event.containerPoint);
       holder.style.cursor = i === null ? "" : "pointer";
+      holder.title = i === null ? "" : told(i);
       tell(i);
     });
     map.on("mouseout", () => tell(null));

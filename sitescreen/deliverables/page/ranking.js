@@ -14,7 +14,7 @@ const ranking = (() => {
 
   function columns() {
     const out = [
-      { key: "rank", head: "rank", kind: "rank", value: (i) => plots.rank[i], cell: (i) => String(plots.rank[i]) },
+      { key: "rank", head: "rank", kind: "rank", value: (i) => plots.rank[i], cell: rankCell },
       { key: "plot", head: "plot", kind: "plot", value: (i) => plots.name[i] || plots.plot[i], cell: plotCell },
       { key: "zone", head: "zone", kind: "zone", value: (i) => page.zoneTitle(i), cell: (i) => page.zoneTitle(i) },
       { key: "overall", head: "overall mark", kind: "mark", best: true, value: (i) => plots.overall_mark[i], cell: markCell },
@@ -26,20 +26,23 @@ const ranking = (() => {
       { key: "against", head: "worst reason", kind: "why against", value: (i) => reason(i, "against"), cell: (i) => reason(i, "against") });
     if (wide) {
       for (const reading of data.readings) {
-        out.push({ key: reading.name, head: reading.title, unit: reading.unit === "0–1" ? "%" : reading.unit, says: reading.says, kind: "number",
-          value: (i) => reading.values[i], cell: (i) => (reading.values[i] === null ? "" : page.shown({ ...reading, unit: reading.unit === "0–1" ? "0–1" : "" }, reading.values[i])) });
+        out.push({ key: reading.name, head: reading.title, unit: reading.name === "breeze_arrival_h" ? "" : reading.unit === "0–1" ? "%" : reading.unit, says: reading.says, kind: "number",
+          value: (i) => reading.values[i], cell: (i) => (reading.values[i] === null || page.readingWords(reading, i) === null ? "" : page.shown({ ...reading, unit: reading.unit === "0–1" ? "0–1" : "" }, reading.values[i])) });
       }
     }
     return out;
   }
 
+  function rankCell(i) {
+    return plots.alike[i] ? [String(plots.rank[i]), " ", make("small", {}, `alike: ${plots.alike[i]}`)] : String(plots.rank[i]);
+  }
   function plotCell(i) {
     const name = plots.name[i] === null ? `Plot ${plots.plot[i]}` : plots.name[i];
     const button = make("button", { type: "button", onclick: () => page.change({ chosen: i }) }, name);
     return plots.name[i] === null ? [button] : [button, " ", make("small", {}, `plot ${plots.plot[i]}`)];
   }
   function markCell(i) {
-    return [plots.overall_mark[i].toFixed(0), ruler(plots.overall_mark[i], plots.mark_low[i], plots.mark_high[i], 86, 14)];
+    return [page.markWords(i), ruler(plots.overall_mark[i], plots.mark_low[i], plots.mark_high[i], 86, 14)];
   }
   function askedCell(one, i) {
     if (!page.asks(i)) return make("small", {}, "not asked");
@@ -89,8 +92,10 @@ const ranking = (() => {
   }
 
   function shelf() {
-    document.getElementById("shelf").replaceChildren(...page.aside.map((i) => make("li", {}, page.sign("aside"),
-      make("button", { type: "button", onclick: () => page.change({ chosen: i }) }, page.called(i)),
+    // the leaf lies above, maybe out of sight, so that a choice here has to bring it into view
+    const open = (i) => { page.change({ chosen: i }); document.getElementById("leaf").scrollIntoView({ block: "nearest" }); };
+    document.getElementById("shelf").replaceChildren(...page.aside.map((i) => make("li", { onclick: () => open(i) }, page.sign("aside"),
+      make("button", { type: "button" }, page.called(i)),
       make("span", {}, plots.set_aside[i] || ""))));
     if (!page.aside.length) document.getElementById("aside-lead").textContent = "No plot is set aside.";
   }

@@ -71,10 +71,33 @@ const page = (() => {
   function shown(column, value) {
     if (value === null) return "unknown";
     if (typeof value === "string") return value;
+    if (column.name === "breeze_arrival_h") return clock(value);
     if (column.unit === "0–1") return `${(100 * value).toFixed(column.decimals > 2 ? 1 : 0)} %`;
     const number = value.toFixed(column.decimals).replace("-", "−");
     const unit = SHORT[column.unit];
     return number + (unit === undefined ? (column.unit ? ` ${column.unit}` : "") : unit);
+  }
+  // an hour of the day to ten minutes: 10.3 is about 10:20
+  function clock(hours) {
+    const tens = Math.round(hours * 6);
+    return `about ${Math.floor(tens / 6)}:${tens % 6}0`;
+  }
+  // a mark as people read it, with the lower one that ranks go by where it differs by 1 or more
+  function markWords(i) {
+    const mark = plots.overall_mark[i], low = plots.mark_low[i];
+    const atWorst = low !== null && Math.round(10 * mark) - Math.round(10 * low) >= 10;
+    return whole(mark) + (atWorst ? ` (at worst ${whole(low)})` : "");
+  }
+  const whole = (mark) => String(Math.floor(mark + 0.5));
+  // one reading of a plot in words; null where it does not come up
+  function readingWords(reading, i) {
+    const value = reading.values[i];
+    if (reading.name === "breeze_screen" && plots.above_breeze[i]) return `${shown(reading, value)}: the plot itself lies above the breeze`;
+    if (!reading.name.startsWith("crest_")) return reading.kind === "text" && value === null ? null : shown(reading, value);
+    const screen = data.readings.find((one) => one.name === "breeze_screen"), share = screen ? screen.values[i] : null;
+    if (share === null || share < 0.005 || (value === null && plots.above_breeze[i])) return null;
+    if (value === null) return reading.name === "crest_bearing_deg" ? "none" : null;
+    return shown(reading, value);
   }
   const state = { chosen: null, question: "overall", view: 0 };
   const watchers = [];
@@ -105,5 +128,5 @@ const page = (() => {
     return one ? one.marks : plots.overall_mark;
   }
   return { data, plots, count, ranked, aside, make, draw, classOf, sign, ruler, ordinal, called, zoneTitle, shown, state, watchers,
-    change, question, marks, asks };
+    change, question, marks, asks, markWords, readingWords };
 })();
