@@ -8,10 +8,12 @@ from pathlib import Path
 from typing import Any
 
 from sitescreen.brief import Brief
+from sitescreen.inputs.agreement import edge_notes, refuse_land_as_sea, refuse_without_plots
 from sitescreen.inputs.cover import Cover, read_cover
 from sitescreen.inputs.normals import Normals, read_normals
 from sitescreen.inputs.plots import Plots, read_plots
 from sitescreen.inputs.shore import Shore, read_shore
+from sitescreen.inputs.shore_kinds import kind_of
 from sitescreen.inputs.stamps import FileStamp
 from sitescreen.inputs.terrain import Terrain, open_terrain
 from sitescreen.inputs.wind import WindTable, assumed_wind, read_wind
@@ -51,7 +53,8 @@ def read_inputs(brief: Brief) -> Inputs:
     """
     terrain = open_terrain(brief.terrain)
     outline = terrain.data_outline()
-    smallest_km2 = load_defaults().shore.smallest_lake_km2
+    settings = load_defaults()
+    smallest_km2 = settings.shore.smallest_lake_km2
     shore = read_shore(brief.shore.file, brief.shore.kind, outline, smallest_km2) if brief.shore else None
     plots = read_plots(
         brief.plots.file,
@@ -62,6 +65,9 @@ def read_inputs(brief: Brief) -> Inputs:
         point_radius_m=brief.plots.point_radius_m,
         outline=outline,
     )
+    refuse_without_plots(plots, outline)
+    if shore is not None and brief.shore is not None:
+        refuse_land_as_sea(shore, terrain, outline, kind_of(brief.shore.kind or "") == "land")
     wind = read_wind(brief.wind.file) if brief.wind else assumed_wind()
     normals = read_normals(brief.climate.stations) if brief.climate else None
     cover = read_cover(brief.cover) if brief.cover else None
@@ -70,6 +76,7 @@ def read_inputs(brief: Brief) -> Inputs:
     for read in (terrain, shore, plots, wind, normals, cover):
         if read is not None:
             notes.extend(read.notes)
+    notes.extend(edge_notes(plots, outline, settings.wind.shelter_reach_m))
     if shore is None:
         notes.append(
             Note(

@@ -295,9 +295,9 @@ def _outside(geometry: NDArray[np.object_], remarks: NDArray[np.object_], outlin
     for row in np.flatnonzero(meets & ~shapely.covers(outline, geometry)):
         beyond = 1.0 - shapely.area(shapely.intersection(outline, geometry[row])) / shapely.area(geometry[row])
         if beyond > OUTSIDE_SHARE_MOST:
-            outcome[row] = f"it lies partly outside the terrain ({beyond:.0%} of it)"
+            outcome[row] = f"{100.0 * beyond:.0f} % of it lies outside the terrain"
         elif beyond >= 0.005:
-            remarks[row].append(f"{beyond:.0%} of it lies outside the terrain")
+            remarks[row].append(f"{100.0 * beyond:.0f} % of it lies outside the terrain")
     return outcome
 
 

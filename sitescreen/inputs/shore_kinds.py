@@ -20,7 +20,10 @@ _WORDS = {
 _KIND_OF = {word: kind for kind, words in _WORDS.items() for word in words.split()}
 _USUAL_COLUMNS = ("kind", "type", "class", "water", "water_type", "fclass", "natural", "featurecla")
 
-WAY_OUT = 'Set [shore] kind in the brief to the column that holds sea or lake, or to the word itself: kind = "sea"'
+WAY_OUT = (
+    'Write kind = "sea" or "lake" under [shore] if they are water, kind = "land" if they are land (what is not land is '
+    "then sea), or the column that holds these words; on the command line --shore-kind"
+)
 
 
 class Kinds(NamedTuple):
@@ -61,8 +64,8 @@ def shore_kinds(table: Any, kind: str | None, file: Path) -> Kinds:
                 read = _from_column(table, found[0], file)
                 return Kinds(read.kinds, (said, *read.notes))
         raise InputError(
-            f"{file.name} does not say whether its water is sea or lake",
-            "that is needed, since the two make different breezes",
+            f"{file.name} does not say whether it holds sea, lakes or land",
+            "that is needed, since sea and lakes make different breezes",
             WAY_OUT,
         )
     if kind in columns or (kind_of(kind) is None):

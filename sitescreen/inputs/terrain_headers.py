@@ -267,4 +267,10 @@ def _unit_notes(file: RasterFile, highest: float) -> list[Note]:
             'vertical_unit = "ft" under [terrain].'
         )
         return [Note("warning", "terrain", said)]
-    return [Note("assumed", "terrain", f"{file.name} says no unit: its heights are taken as metres.")]
+    return [
+        Note(
+            "assumed",
+            "terrain",
+            f'{file.name} says no unit: its heights are taken as metres (for feet set vertical_unit = "ft").',
+        )
+    ]

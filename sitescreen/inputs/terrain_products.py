@@ -93,7 +93,9 @@ def terrain_error(brief: TerrainBrief) -> TerrainError:
     range_m = brief.error_range_m
     if range_m is None:
         range_m = presets.assumed.error_range_m
-        notes.append(_note("assumed", f"Errors of the heights are taken to hang together over about {range_m:g} m."))
+        notes.append(
+            _note("assumed", f"Where a height is wrong, those within about {range_m:g} m are taken to be wrong alike.")
+        )
     surface: Surface = brief.surface or (product.surface if product is not None else "bare")
     if brief.surface is None and product is None:
         notes.append(

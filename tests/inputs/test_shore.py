@@ -227,7 +227,7 @@ def test_common_words_are_understood_and_said(tmp_path: Path) -> None:
 @pytest.mark.parametrize(
     ("columns", "kind", "why"),
     [
-        ({"a": ["x"]}, None, "sea or lake"),
+        ({"a": ["x"]}, None, 'sea, lakes or land.*kind = "land" if they are land.*--shore-kind'),
         ({"kind": ["blue"]}, "kind", "“blue”"),
         ({"kind": [None]}, "kind", "nothing"),
         ({"kinds": ["sea"]}, "kynds", "Did you mean “kinds”"),

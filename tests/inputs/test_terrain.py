@@ -680,7 +680,10 @@ def test_error_and_surface_come_from_the_brief_the_product_or_are_assumed(tmp_pa
     assert preset.surface == "canopy"
     own = opened(product="srtm_1", vertical_error_m=1.25, error_range_m=60.0, surface="bare")
     assert (own.vertical_error_m, own.error_range_m, own.surface) == (1.25, 60.0, "bare")
-    assert said(own, "assumed") == "t.tif says no unit: its heights are taken as metres."
+    assert (
+        said(own, "assumed")
+        == 't.tif says no unit: its heights are taken as metres (for feet set vertical_unit = "ft").'
+    )
     with pytest.raises(BriefError, match="Perhaps “nasadem” was meant"):
         opened(product="nasa dem 1")
 

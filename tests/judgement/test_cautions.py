@@ -34,6 +34,7 @@ def test_good_ground_raises_none(plots: Plots) -> None:
         ("upland", {"share_in_water": 0.6}, "in_water", "stop"),
         ("upland", {"share_in_water": 0.5}, "partly_in_water", "concern"),
         ("upland", {"share_in_water": 0.9, "water_disagrees": True}, "waters_disagree", "concern"),
+        ("upland", {"share_flat_water": 1.0, "water_disagrees": True}, "level_as_water", "concern"),
         ("upland", {"buildable_share": 0.4}, "little_gentle_ground", "concern"),
         ("upland", {"cold_pool_kind": "closed", "cold_deficit_k": 0.5}, "cold_hollow", "concern"),
         ("high_upland", {"cold_pool_kind": "leaky"}, "cold_hollow", "concern"),
@@ -80,6 +81,17 @@ def test_disagreeing_waters_do_not_put_a_plot_in_water(plots: Plots) -> None:
     assert "in_water" not in raised(plots({"share_in_water": 1.0, "water_disagrees": True}))
     no_word = plots({"share_in_water": 1.0}).drop(columns="water_disagrees")
     assert raised(no_word) == {"in_water": "stop"}, "nobody compared the two waters"
+
+
+def test_who_disagrees_is_said(plots: Plots) -> None:
+    """Level ground without any map of water is not said to be mapped as water."""
+    level = plots({"share_in_water": np.nan, "share_flat_water": 1.0, "water_disagrees": True})
+    (found,) = cautions(level, ["upland"], RULES)["a"]
+    assert "perfectly level" in found.text
+    assert "map" not in found.text
+    dry = plots({"share_in_water": 0.9, "share_flat_water": 0.1, "water_disagrees": True})
+    (found,) = cautions(dry, ["upland"], RULES)["a"]
+    assert found.text.startswith("the map shows water where the terrain shows dry ground")
 
 
 def test_true_and_false_may_come_as_objects(plots: Plots) -> None:
