@@ -79,7 +79,8 @@ def _on_the_order(screening: "Screening") -> list[str]:
         if one.get("among") == "all" and one["says"] not in lines:
             lines.append(one["says"])
     for zone, profile in screening.profiles.items():
-        lines = [re.sub(rf"\b{re.escape(zone)}\b", lambda _, to=profile.title: f"“{to}”", line) for line in lines]
+        title = f"“{profile.title}”"
+        lines = [title.join(re.split(rf"\b{re.escape(zone)}\b", line)) for line in lines]
     return lines
 
 

@@ -25,7 +25,7 @@ MOST_LEAVES = 2_000
 
 _NOT_ON_A_LEAF = {
     "lon", "lat", "outcome", "water_disagrees", "zone_provisional", "zone_missing", "known_weight_share", "cells",
-    "share_flat_water", "over_water_m",
+    "share_flat_water", "over_water_m", "group",
 }  # fmt: skip
 
 

@@ -87,7 +87,8 @@ def sureness(table: "pd.DataFrame", shortlist: int) -> str:
         head = f"First place is open: other weights change it easily (this plot is first only {trials})"
     near = ranked[ranked["rank"] <= shortlist]
     ties = list(dict.fromkeys(words for words in alike(ranked)[: len(near)] if words))
-    told = f"; {' and '.join(ties) if len(ties) == 1 else ', nor '.join(ties)} cannot be told apart" if ties else ""
+    told = f"; {ties[0]} cannot be told apart" if ties else ""
+    told += "".join(f", nor can {more}" for more in ties[1:])
     return f"{head}{told}. {NOT_IN_IT}"
 
 

@@ -168,3 +168,27 @@ def invent() -> Callable[..., Invented]:
 def screening() -> Invented:
     """The usual one."""
     return build()
+
+
+def unsure(made: Invented) -> Invented:
+    """The same as after the trials: ranks 2 to 4 alike, plot of rank 3 with a mark that may fall by 22.6."""
+    table = made.table.copy()
+    ranked = table["rank"].notna()
+    rank = table["rank"].astype("float64")
+    table["chance_first"] = np.where(ranked, np.where(rank == 1, 0.97, 0.0), np.nan)
+    table["rank_low"] = np.where(ranked, np.maximum(rank - 1, 1), np.nan)
+    table["rank_high"] = np.where(ranked, rank + 2, np.nan)
+    table["group"] = np.where(ranked, np.where(rank.isin([2, 3, 4]), 2, rank), np.nan)
+    table["mark_low"] = table["overall_mark"] - np.where(rank == 3, 22.6, 0.4)
+    table["breeze_arrival_h"] = 10.3
+    table["breeze_screen"] = np.where(rank == 1, 0.0, np.where(rank == 2, 0.4, 1.0))
+    table["elevation_m"] = np.where(rank == 3, 1200.0, 100.0)
+    for column, value in (("crest_bearing_deg", 92.0), ("crest_distance_m", 1020.0), ("crest_above_plot_m", 42.0)):
+        table[column] = np.where(rank == 4, value, np.nan)
+    return made.with_(table=table)
+
+
+@pytest.fixture(scope="session")
+def tried() -> Invented:
+    """The usual one with chances, ties and a screened breeze."""
+    return unsure(build())

@@ -17,9 +17,10 @@ import pytest
 from PIL import Image
 
 import sitescreen.deliverables.scaffold as scaffold
-from sitescreen.deliverables.answer import answer, trust
+from sitescreen.deliverables.answer import answer, counted, trust
 from sitescreen.deliverables.columns import columns_of
 from sitescreen.deliverables.map import filled, json_for_html, map_page, write_map
+from sitescreen.deliverables.table import mark_words
 from sitescreen.errors import ConfigError
 from sitescreen.notes import Note
 
@@ -266,3 +267,46 @@ def test_a_screening_over_two_utm_zones_has_one_map(invent: Any) -> None:
     known = np.asarray(picture.convert("RGBA"))[..., 3].any(axis=0)
     assert known[: len(known) // 3].any()
     assert known[-len(known) // 3 :].any()
+
+
+def test_how_sure_the_order_is_stands_under_the_answer(tried: Any, screening: Any) -> None:
+    said = re.search(r'<p id="sure" class="lead">(.*?)</p>', page_of(tried))
+    assert said
+    assert said.group(1).startswith("First place is firm as far as the weights go (first in 97 of 100 trials); 2nd to")
+    assert '<p id="sure" class="lead"></p>' in page_of(screening)  # nothing was tried, nothing is claimed
+
+
+def test_ranks_on_the_static_picture_cannot_be_taken_for_plot_ids(page: str) -> None:
+    plain = "".join(re.findall(r"<noscript>(.*?)</noscript>", page, re.S))
+    assert sorted(re.findall(r"<text [^>]*>(.*?)</text>", plain)) == ["1st", "2nd", "3rd"]
+
+
+def test_the_mark_that_ranks_go_by_is_shown_where_it_differs(tried: Any) -> None:
+    plain = "".join(re.findall(r"<noscript>(.*?)</noscript>", page_of(tried), re.S))
+    assert len(re.findall(r"<td>\d+ \(at worst \d+\)</td>", plain)) == 1
+    assert mark_words(88.9, 66.3) == "89 (at worst 66)"
+    assert mark_words(88.9, 88.0) == "89"
+    assert mark_words(88.9, float("nan")) == "89"
+
+
+def test_what_would_change_the_first_place_is_part_of_the_trust(screening: Any) -> None:
+    says = "The smallest change takes the first place in the profile upland."
+    record = screening.record | {"what_would_change": [{"among": "all", "says": says}, {"among": "x", "says": "no"}]}
+    trials = Note("info", "judgement", "Rank ranges come from 2,000 trials.")
+    made = screening.with_(record=record, notes=(*screening.notes, trials))
+    lines = next(block["lines"] for block in trust(made) if block["heading"] == "How sure the order is")
+    title = screening.profiles["upland"].title
+    assert lines == [trials.text, says.replace("upland", f"“{title}”")]
+    assert all(block["heading"] != "How sure the order is" for block in trust(screening))
+
+
+def test_counts_are_written_as_people_do() -> None:
+    assert counted("1 lake(s) under 1 km²") == "1 lake under 1 km²"
+    assert counted("11 plot outline(s) mended") == "11 plot outlines mended"
+    assert counted("1 plots, 21 plots, 0.1 plots") == "1 plot, 21 plots, 0.1 plots"
+
+
+def test_no_question_claims_that_the_way_of_the_breeze_is_not_looked_at(page: str) -> None:
+    breeze = next(one for one in data_of(page)["questions"] if one["name"] == "breeze")
+    assert "not yet" not in breeze["method"]
+    assert "the ground on its way" in breeze["method"]

@@ -9,6 +9,7 @@ from collections.abc import Callable, Iterator
 from pathlib import Path
 from typing import Any
 
+import numpy as np
 import pytest
 
 from sitescreen.deliverables.columns import columns_of
@@ -174,6 +175,106 @@ def test_plots_are_drawn_in_the_class_of_their_mark(opened: Any, screening: Any)
         expected = ramp[min(4, int(mark // 20))]
         got = "".join(f"{value:02x}" for value in page.execute_script(script, i))
         assert got == expected
+
+
+def drawn_words(page: Any) -> list[str]:
+    """What is written onto the map."""
+    script = (
+        "const out = [], pen = CanvasRenderingContext2D.prototype, before = pen.fillText;"
+        "pen.fillText = function (text, ...at) { out.push(text); before.call(this, text, ...at); };"
+        "map_plan.fire('viewreset'); pen.fillText = before; return out;"
+    )
+    return list(page.execute_script(script))
+
+
+def test_ranks_on_the_map_cannot_be_taken_for_plot_ids(opened: Any, screening: Any) -> None:
+    page = opened(screening)
+    words = drawn_words(page)
+    assert {"1st", "2nd", "3rd"} <= set(words)
+    assert not set(words) & (set(screening.table["plot"]) | {str(n) for n in range(1, 13)})
+    assert "1st, 2nd … on the map are ranks" in texts(page, "#legend")[0]
+
+
+def test_a_plot_tells_its_name_under_the_pointer(opened: Any, screening: Any) -> None:
+    from selenium.webdriver import ActionChains
+
+    page = opened(screening)
+    ground = one(page, "#map_plan")
+    x, y = page.execute_script("return plan.screenOf(4)")
+    at = (round(x - ground.rect["width"] / 2), round(y - ground.rect["height"] / 2))
+    ActionChains(page).move_to_element_with_offset(ground, *at).perform()
+    assert ground.get_attribute("title").startswith(
+        f"{screening.table['name'][4]} (plot {screening.table['plot'][4]}): 5th"
+    )
+
+
+def test_a_phone_opens_with_all_plots_in_view_and_none_under_the_scale_bar(opened: Any, screening: Any) -> None:
+    page = opened(screening, 390, 844)
+    wide, high = page.execute_script("const s = map_plan.getSize(); return [s.x, s.y]")
+    for i in range(len(screening.table)):
+        x, y = page.execute_script("return plan.screenOf(arguments[0])", i)
+        assert 20 < x < wide - 35
+        assert 20 < y < high - 45
+    sized(page, 1440, 900)
+
+
+def test_a_click_anywhere_on_a_plot_set_aside_opens_its_leaf_in_sight(opened: Any, screening: Any) -> None:
+    page = opened(screening)
+    aside = screening.table[screening.table["rank"].isna()]
+    one(page, "#shelf li:nth-child(2) span").click()
+    assert leaf_name(page) == aside["name"].iloc[1]
+    assert texts(page, "#leaf .alerts li")[0] == aside["set_aside"].iloc[1]
+    assert "slope" in texts(page, "#leaf .readings dt")
+    top = page.execute_script("return document.getElementById('leaf').getBoundingClientRect().top")
+    assert -1 <= top < 900
+
+
+def test_a_plot_set_aside_without_readings_says_so(opened: Any, screening: Any) -> None:
+    table = screening.table.copy()
+    last = table.index[-1]
+    numbers = table.select_dtypes("float").columns.difference(["lon", "lat", "area_ha"])
+    table.loc[last, numbers] = np.nan
+    table.loc[last, ["shore_kind", "cold_pool_kind"]] = ""
+    page = opened(screening.with_(table=table))
+    one(page, "#shelf li:last-child button").click()
+    assert "It has no readings." in texts(page, "#leaf")[0]
+    assert texts(page, "#leaf .criteria") == []
+
+
+def readings_of(page: Any, row: int) -> dict[str, str]:
+    one(page, f"#rows tr:nth-child({row}) td.plot button").click()
+    return dict(zip(texts(page, "#leaf .readings dt"), texts(page, "#leaf .readings dd"), strict=True))
+
+
+def test_the_leaf_speaks_plainly_of_the_breeze(opened: Any, tried: Any) -> None:
+    """Rank 1: nothing screens; 2: high ground in general; 3: the plot above the breeze; 4: a crest."""
+    page = opened(tried)
+    free, general, above, crest = (readings_of(page, row) for row in (1, 2, 3, 4))
+    assert free["breeze arrives at"] == "about 10:20"
+    assert free["breeze screened"] == "0 %"
+    assert not {"screen lies", "screen at", "screen stands"} & set(free)
+    assert general["screen lies"] == "none"
+    assert "screen at" not in general
+    assert above["breeze screened"] == "100 %: the plot itself lies above the breeze"
+    assert "screen lies" not in above
+    assert (crest["screen lies"], crest["screen at"], crest["screen stands"]) == ("92°", "1020 m", "42 m")
+    assert crest["colder by"].endswith("°C")
+
+
+def test_ties_ranges_and_marks_at_worst_are_shown(opened: Any, tried: Any) -> None:
+    page = opened(tried)
+    ranks = texts(page, "#rows td.rank")
+    assert ranks[:5] == ["1", *(f"{n} alike: 2nd to 4th" for n in (2, 3, 4)), "5"]
+    low = tried.table["mark_low"][2]
+    marks = texts(page, "#rows td.mark")
+    assert [("at worst" in mark) for mark in marks] == [n == 2 for n in range(10)]
+    assert marks[2].endswith(f"(at worst {int(low + 0.5)})")
+    assert "everything unknown about it at its worst" in texts(page, "#rank-rule")[0]
+    one(page, "#rows tr:nth-child(3) td.plot button").click()
+    leaf = texts(page, "#leaf")[0]
+    assert f"(at worst {int(low + 0.5)})" in leaf
+    assert "3rd; 2nd to 5th in 90 of 100 trials, which vary the weights only. 2nd to 4th cannot be told apart." in leaf
+    assert problems(page) == []
 
 
 def test_sort_turns_the_rows(opened: Any, screening: Any) -> None:

@@ -102,3 +102,12 @@ def test_a_column_nobody_planned_comes_last(screening: Any) -> None:
     table = screening.table.assign(odd_thing=1.5, cells=9.0)
     names = [column.name for column in columns_of(table, screening.profiles)]
     assert names[-2:] == ["odd_thing", "cells"]
+
+
+def test_explanations_say_what_a_planner_needs(screening: Any) -> None:
+    table = screening.table.assign(mark_in_zone=50.0)
+    says = {column.name: column.says for column in columns_of(table, screening.profiles)}
+    assert says["mark_in_zone"] == "The overall mark by the profile of its zone alone."
+    assert says["rank_low"].startswith("The best rank of the range")
+    assert BY_NAME["cold_deficit_k"].unit == "°C"
+    assert BY_NAME["rise_m"].title == "height above surroundings within 1 km"

@@ -7,7 +7,7 @@ from typing import Any
 import openpyxl
 import pytest
 
-from sitescreen.deliverables.columns import columns_of
+from sitescreen.deliverables.columns import CONTRACT, columns_of
 from sitescreen.deliverables.workbook import write_workbook
 
 
@@ -51,3 +51,19 @@ def test_same_table_gives_the_same_bytes_at_another_hour(screening: Any, tmp_pat
     one = written(screening, tmp_path / "a.xlsx").read_bytes()
     time.sleep(2.1)  # zip files count in steps of two seconds
     assert written(screening, tmp_path / "b.xlsx").read_bytes() == one
+
+
+def test_columns_without_a_value_keep_their_place_but_are_hidden(screening: Any, tmp_path: Path) -> None:
+    book = openpyxl.load_workbook(written(screening, tmp_path / "a.xlsx"))
+    sheet = book["Ranking"]
+    names = [c.value for c in sheet[1]]
+    assert names[: len(CONTRACT)] == [column.name for column in CONTRACT]
+    hidden = {
+        names[i] for i in range(len(names)) if sheet.column_dimensions[openpyxl.utils.get_column_letter(i + 1)].hidden
+    }
+    empty = {name for i, name in enumerate(names) if all(row[i].value is None for row in sheet.iter_rows(min_row=3))}
+    assert "sun_year_h" in hidden
+    assert "slope_deg" not in hidden
+    assert hidden == empty - {"cautions"}  # no caution at all is worth knowing
+    says = {row[0].value: row[3].value for row in book["Columns"].iter_rows(min_row=2)}
+    assert says["sun_year_h"].startswith("Empty in this run")

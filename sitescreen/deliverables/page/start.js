@@ -93,6 +93,7 @@ const page = (() => {
   function readingWords(reading, i) {
     const value = reading.values[i];
     if (reading.name === "breeze_screen" && plots.above_breeze[i]) return `${shown(reading, value)}: the plot itself lies above the breeze`;
+    if (reading.name === "zone_2_share" && value === null) return null;
     if (!reading.name.startsWith("crest_")) return reading.kind === "text" && value === null ? null : shown(reading, value);
     const screen = data.readings.find((one) => one.name === "breeze_screen"), share = screen ? screen.values[i] : null;
     if (share === null || share < 0.005 || (value === null && plots.above_breeze[i])) return null;
