@@ -236,6 +236,7 @@ class Brief(_Part):
         plots: Path,
         zone: str | None = None,
         out: Path | None = None,
+        shore_kind: str | None = None,
     ) -> "Brief":
         """The brief that files named on the command line amount to; paths are relative to the current folder.
 
@@ -246,7 +247,7 @@ class Brief(_Part):
         """
         content: dict[str, Any] = {"terrain": {"files": list(terrain)}, "plots": {"file": plots}}
         if shore is not None:
-            content["shore"] = {"file": shore}
+            content["shore"] = {"file": shore} | ({} if shore_kind is None else {"kind": shore_kind})
         if zone is not None:
             content["zones"] = {"force": zone}
         if out is not None:
@@ -274,6 +275,17 @@ class Brief(_Part):
         return [key for key, is_given in given.items() if is_given]
 
 
+_NO_BRIEFS = (
+    ("a raster", "--terrain", (".tif", ".tiff", ".vrt", ".img", ".asc", ".hgt", ".dem", ".bil", ".nc")),
+    (
+        "a table or a map layer",
+        "--plots",
+        (".csv", ".xlsx", ".gpkg", ".geojson", ".shp", ".fgb", ".kml", ".kmz", ".gpx"),
+    ),
+)
+"""Files that are handed in where the brief belongs, and the option they belong to."""
+
+
 def load_brief(path: Path) -> Brief:
     """Read a brief.
 
@@ -289,6 +301,13 @@ def load_brief(path: Path) -> Brief:
         message names the key.
     """
     path = Path(path).expanduser().absolute()
+    for what, option, endings in _NO_BRIEFS:
+        if path.suffix.lower() in endings:
+            raise BriefError(
+                f"{path.name} was given as the brief, and that is {what}",
+                "a brief, which is a text file in TOML, or options that name the files are needed",
+                f"Did you mean {option} {path.name}? Options go without a brief",
+            )
     try:
         content = tomllib.loads(path.read_text(encoding="utf-8-sig"))
     except OSError as error:
@@ -344,12 +363,27 @@ def _brief_error(error: ValidationError, called: str) -> BriefError:
     return BriefError(f"{called} has {key} = {given}", f"{_needed(fault)} is needed", "Correct that value")
 
 
+_MEANT = {
+    ("shore", "polygons"): "file",
+    ("shore", "lines"): "file",
+    ("zones", "zone"): "force",
+    ("zones", "file"): "polygons",
+    ("plots", "plot"): "id",
+    ("wind", "stations"): "file",
+    ("climate", "file"): "stations",
+}
+"""Keys that belong to another section, by the key that does here what they seem to ask for."""
+
+
 def _unknown_key(called: str, key: str, loc: tuple[int | str, ...]) -> BriefError:
     name, owner = str(loc[-1]), _model_at(loc[:-1])
     known = list(owner.model_fields)
     homes = [section for section, field in Brief.model_fields.items() if name in _fields_of(field.annotation)]
     near = difflib.get_close_matches(name.lower(), known, n=1)
-    if near:
+    meant = _MEANT.get((str(loc[0]), name))
+    if meant is not None:
+        way_out = f"“{meant}” is what it is called there"
+    elif near:
         way_out = f"Perhaps “{near[0]}” was meant"
     elif homes:
         way_out = f"It belongs under [{homes[0]}]"

@@ -147,6 +147,8 @@ def test_a_pattern_stands_for_the_files_that_match_in_order(tmp_path: Path) -> N
         (LEAST + "pointradius_m = 30\n", "[plots] pointradius_m", "“point_radius_m”"),
         (LEAST.replace("files", "file_s"), "[terrain] file_s", "“files”"),
         (LEAST + "[shores]\nfile = 'x'\n", "shores", "“shore”"),
+        (LEAST + '[shore]\nfile = "s.gpkg"\npolygons = "s.gpkg"\n', "[shore] polygons", "“file” is what"),
+        (LEAST + '[zones]\nzone = "upland"\n', "[zones] zone", "“force” is what it is called there"),
         (LEAST + "vertical_error_m = 3\n", "[plots] vertical_error_m", "It belongs under [terrain]"),
         (WHOLE.replace("buffer_m", "bufer_m"), "[[constraint]] 1, bufer_m", "“buffer_m”"),
         (WHOLE.replace("canopy_m", "canopy"), "[cover] classes, 10, canopy", "“canopy_m”"),

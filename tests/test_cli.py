@@ -14,7 +14,9 @@ from affine import Affine
 from click.testing import CliRunner, Result
 from shapely.geometry import Point, box
 
+from sitescreen.cli._show import show_notes
 from sitescreen.cli.main import run
+from sitescreen.notes import Note
 
 WEST, NORTH, CELL, N = 500_000.0, 500_000.0, 90.0, 60
 
@@ -109,6 +111,13 @@ def plots_without_crs(folder: Path) -> None:
         three_plots().set_crs(None, allow_override=True).to_file(folder / "plots.gpkg")
 
 
+def beside_the_terrain(folder: Path) -> None:
+    """The latitude without its sign."""
+    plots = three_plots().to_crs("EPSG:4326")
+    plots.geometry = plots.geometry.affine_transform([1, 0, 0, -1, 0, 0])
+    plots.to_file(folder / "plots.gpkg")
+
+
 def unwritable(folder: Path) -> None:
     (folder / "out").write_text("a file where the folder should be", encoding="utf-8")
 
@@ -132,6 +141,7 @@ def no_brief(folder: Path) -> None:
         (empty_layer, "plots.gpkg"),
         (plots_without_crs, "plots.gpkg"),
         (duplicate_ids, "A"),
+        (beside_the_terrain, "latitude's sign changed 3 of 3"),
         (unwritable, "out"),
     ],
 )
@@ -227,6 +237,85 @@ def test_an_unknown_zone_is_refused(good: Path) -> None:
     result = rank(good, "--zone", "uplands")
     assert result.exit_code == 2
     assert "uplands" in result.stderr
+
+
+def test_a_zone_may_be_given_by_its_title(good: Path) -> None:
+    assert CliRunner().invoke(run, ["check", str(good / "brief.toml"), "--zone", "Hot humid coast"]).exit_code == 0
+    assert "source:" in CliRunner().invoke(run, ["zones", "Hot humid coast"]).stdout
+
+
+def check_refuses(folder: Path, says: str, *more: str) -> None:
+    """Exit code 2 of ``check``, one line on stderr and nothing on stdout."""
+    result = CliRunner().invoke(run, ["check", str(folder / "brief.toml"), *more])
+    assert result.exit_code == 2, result.output
+    assert result.stdout == ""
+    assert says in result.stderr
+
+
+def test_check_refuses_what_rank_would_refuse_later(good: Path) -> None:
+    """A zone from the call, the brief and a plot; a comparison that is none; plots that lie elsewhere."""
+    check_refuses(good, "--zone states the zone 'uplands'", "--zone", "uplands")
+    brief = good / "brief.toml"
+    brief.write_text(BRIEF + '[zones]\nforce = "tundra"\n', encoding="utf-8")
+    check_refuses(good, "[zones] force states the zone 'tundra'")
+    brief.write_text(BRIEF + '[judge]\npairs = ["breeze = 3"]\n', encoding="utf-8")
+    check_refuses(good, "[judge] pairs 1 is 'breeze = 3'")
+    brief.write_text(BRIEF.replace("[output]", 'zone = "zone"\n[output]'), encoding="utf-8")
+    three_plots().assign(zone=["upland", "", "lakebasin"]).to_file(good / "plots.gpkg")
+    check_refuses(good, "the plot C states the zone 'lakebasin'")
+    brief.write_text(BRIEF, encoding="utf-8")
+    beside_the_terrain(good)
+    check_refuses(good, "latitude's sign")
+
+
+def test_check_names_plots_near_the_edge(good: Path) -> None:
+    """All three lie 2.7 km from the terrain's southern edge."""
+    result = CliRunner().invoke(run, ["check", str(good / "brief.toml")])
+    last = result.stdout.splitlines()[-1]
+    assert "3 plots lie within 3 km of the terrain's edge (A, B, C)" in last, "warnings come last"
+
+
+def test_a_shore_by_option_says_what_it_holds(good: Path) -> None:
+    west = box(WEST - 9_000.0, NORTH - 90_000.0, WEST + 900.0, NORTH + 90_000.0)
+    gpd.GeoDataFrame(geometry=[west], crs="EPSG:32637").to_file(good / "shore.gpkg")
+    files = ["--terrain", str(good / "terrain.tif"), "--plots", str(good / "plots.gpkg")]
+    shore = ["--shore", str(good / "shore.gpkg")]
+    refused = CliRunner().invoke(run, ["check", *files, *shore])
+    assert refused.exit_code == 2
+    assert "--shore-kind" in refused.stderr
+    assert CliRunner().invoke(run, ["check", *files, *shore, "--shore-kind", "lake"]).exit_code == 0
+    alone = CliRunner().invoke(run, ["check", *files, "--shore-kind", "lake"])
+    assert alone.exit_code == 2
+    assert "Add --shore" in alone.stderr
+
+
+@pytest.mark.parametrize(("name", "says"), [("t.tif", "a raster"), ("p.csv", "a table or a map layer")])
+def test_a_file_of_data_is_no_brief(tmp_path: Path, name: str, says: str) -> None:
+    (tmp_path / name).write_bytes(b"II*\0")
+    result = CliRunner().invoke(run, ["rank", str(tmp_path / name)])
+    assert result.exit_code == 2
+    assert says in result.stderr
+    assert f"Did you mean {'--terrain' if name == 't.tif' else '--plots'} {name}?" in result.stderr
+
+
+@pytest.mark.parametrize("command", ["rank", "check", "zones", "why"])
+def test_help_keeps_examples_on_lines_of_their_own(command: str) -> None:
+    """Click leaves lines alone after a backspace character, which it takes out itself."""
+    said = CliRunner().invoke(run, [command, "--help"]).stdout
+    assert "\\b" not in said
+    assert "\b" not in said
+    lines = [line.strip() for line in said.splitlines() if line.strip().startswith("sitescreen ")]
+    assert lines
+    assert all(line.startswith(f"sitescreen {command}") and line.count("sitescreen ") == 1 for line in lines)
+
+
+def test_warnings_come_last_on_the_terminal(capsys: pytest.CaptureFixture[str]) -> None:
+    show_notes((Note("warning", "plots", "Mind."), Note("assumed", "wind", "Even."), Note("info", "shore", "Read.")))
+    assert capsys.readouterr().err.splitlines() == [
+        "Assumed, because nobody gave it:",
+        "  wind: Even.",
+        "Warning (plots): Mind.",
+    ]
 
 
 def test_check_reads_everything_and_writes_nothing(good: Path) -> None:

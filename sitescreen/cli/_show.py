@@ -42,13 +42,14 @@ class TerminalProgress(Progress):
 
 
 def show_notes(notes: tuple[Note, ...]) -> None:
-    """Warnings and assumptions, one line each; plain information stays in the record."""
-    for note in notes:
-        if note.level == "warning":
-            click.echo(f"Warning ({note.where}): {note.text}", err=True)
-    for note in notes:
-        if note.level == "assumed":
-            click.echo(f"Assumed ({note.where}): {note.text}", err=True)
+    """What was assumed in one block, then the warnings, where they are seen; plain information stays in the record."""
+    assumed = [note for note in notes if note.level == "assumed"]
+    if assumed:
+        click.echo("Assumed, because nobody gave it:", err=True)
+    for note in dict.fromkeys(assumed):
+        click.echo(f"  {note.where}: {note.text}", err=True)
+    for note in dict.fromkeys(note for note in notes if note.level == "warning"):
+        click.echo(f"Warning ({note.where}): {note.text}", err=True)
 
 
 def say_if_first_run() -> None:

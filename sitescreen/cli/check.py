@@ -1,38 +1,50 @@
 """``sitescreen check``: what the inputs amount to, before any computing."""
 
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import click
 
 from sitescreen.cli.options import (
     brief_argument,
+    examples,
     in_one_line,
     plots_option,
+    shore_kind_option,
     shore_option,
     terrain_option,
     zone_option,
 )
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    from sitescreen.brief import Brief
+    from sitescreen.inputs import Inputs
+    from sitescreen.judgement.profiles import ZoneProfile
 
 # measured on two cores: the demo (4.2 million cells) and a 1° tile at 30 m (16 million cells in two blocks)
 START_S, S_A_CELL = 5.0, 2.0e-6
 START_GB, GB_A_CELL = 0.6, 0.1e-6
 
 
-@click.command("check")
+@click.command("check", epilog=examples("sitescreen check demo_region/brief.toml"))
 @brief_argument
 @terrain_option
 @shore_option
+@shore_kind_option
 @plots_option
 @zone_option
 @in_one_line
 def command(
-    brief: Path | None, terrain: tuple[Path, ...], shore: Path | None, plots: Path | None, zone: str | None
+    brief: Path | None,
+    terrain: tuple[Path, ...],
+    shore: Path | None,
+    shore_kind: str | None,
+    plots: Path | None,
+    zone: str | None,
 ) -> None:
-    r"""Read every input of a BRIEF, compute nothing, and say what was understood, assumed and missing.
-
-    \b
-    sitescreen check demo_region/brief.toml
-    """
+    """Read every input of a BRIEF, compute nothing, and say what was understood, assumed and missing."""
     from sitescreen.cli.rank import asked
     from sitescreen.inputs import read_inputs
     from sitescreen.judgement.own import own_readings
@@ -41,9 +53,10 @@ def command(
     from sitescreen.screening import profiles_of
     from sitescreen.settings import load_defaults
 
-    the_brief = asked(brief, terrain, shore, plots, zone, None)
+    the_brief = asked(brief, terrain, shore, shore_kind, plots, zone, None)
     inputs = read_inputs(the_brief)
-    _, compared = profiles_of(the_brief, load_defaults())
+    profiles, compared = profiles_of(the_brief, load_defaults())
+    _refuse_unknown_zones(the_brief, inputs, profiles)
     own = own_readings(the_brief, inputs.plots.table)
     table = inputs.plots.table
     fit = table[table["outcome"] == ""]
@@ -58,6 +71,25 @@ def command(
         f"Ground to compute: {sum(cells) / 1e6:.1f} million cells in {len(blocks)} block(s). On two processors expect "
         f"{START_S + sum(cells) * S_A_CELL:.0f} s and {START_GB + max(cells, default=0) * GB_A_CELL:.1f} GB of memory."
     )
-    for note in (*inputs.notes, *own.notes, *(compared.notes() if compared else ())):
-        word = {"info": "Understood", "assumed": "Assumed", "warning": "Warning"}[note.level]
-        click.echo(f"{word} ({note.where}): {note.text}")
+    notes = (*inputs.notes, *own.notes, *(compared.notes() if compared else ()))
+    for level, word in (("info", "Understood"), ("assumed", "Assumed"), ("warning", "Warning")):
+        for note in notes:
+            if note.level == level:
+                click.echo(f"{word} ({note.where}): {note.text}")
+
+
+def _refuse_unknown_zones(brief: "Brief", inputs: "Inputs", profiles: "Mapping[str, ZoneProfile]") -> None:
+    """Refuse a zone without a profile that a plot, or the map of zones under it, states."""
+    from sitescreen.climate.zones import check_zone
+    from sitescreen.inputs.zone_map import zone_at
+
+    if brief.zones.force:
+        return  # checked with the call; it goes before the others
+    table = inputs.plots.table
+    for plot, zone in zip(table["plot"], table["zone_given"], strict=True):
+        if zone:
+            check_zone(zone, profiles, f"the plot {plot}")
+    if inputs.zone_map is not None:
+        for plot, zone in zip(table["plot"], zone_at(inputs.zone_map, table["lon"], table["lat"]), strict=True):
+            if zone:
+                check_zone(zone, profiles, f"the map of zones, for the plot {plot},")

@@ -8,22 +8,34 @@ import click
 from sitescreen.cli.options import (
     EXISTING,
     brief_argument,
+    examples,
     in_one_line,
     plots_option,
+    shore_kind_option,
     shore_option,
     terrain_option,
     zone_option,
 )
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping
+
     from sitescreen.brief import Brief
+    from sitescreen.judgement.profiles import ZoneProfile
     from sitescreen.screening import Screening
 
 
-@click.command("rank")
+@click.command(
+    "rank",
+    epilog=examples(
+        "sitescreen rank demo_region/brief.toml",
+        "sitescreen rank --terrain tile.tif --shore shore.gpkg --shore-kind sea --plots plots.gpkg --out results",
+    ),
+)
 @brief_argument
 @terrain_option
 @shore_option
+@shore_kind_option
 @plots_option
 @zone_option
 @click.option("--out", type=EXISTING, help="Folder for the results. Default: the brief's, else “out”.")
@@ -32,25 +44,22 @@ def command(
     brief: Path | None,
     terrain: tuple[Path, ...],
     shore: Path | None,
+    shore_kind: str | None,
     plots: Path | None,
     zone: str | None,
     out: Path | None,
 ) -> None:
-    r"""Rank the plots of a BRIEF, or of files named by options.
+    """Rank the plots of a BRIEF, or of files named by options.
 
     Writes map.html, ranking.csv, ranking.xlsx, plots.gpkg, layers/*.tif and record.json into the output folder; results
     of an earlier run stay whole until the new ones are complete.
-
-    \b
-    sitescreen rank demo_region/brief.toml
-    sitescreen rank --terrain tile.tif --shore shore.gpkg --plots plots.gpkg --out results
     """
     from sitescreen.cli._show import TerminalProgress, say_if_first_run, show_notes
     from sitescreen.deliverables import write_results
     from sitescreen.deliverables.folder import check_writable
     from sitescreen.screening import screen
 
-    the_brief = asked(brief, terrain, shore, plots, zone, out)
+    the_brief = asked(brief, terrain, shore, shore_kind, plots, zone, out)
     folder = the_brief.output.folder
     check_writable(folder)  # before the work, not after it
     say_if_first_run()
@@ -66,6 +75,7 @@ def asked(
     brief: Path | None,
     terrain: tuple[Path, ...],
     shore: Path | None,
+    shore_kind: str | None,
     plots: Path | None,
     zone: str | None,
     out: Path | None,
@@ -75,20 +85,51 @@ def asked(
     from sitescreen.errors import BriefError
 
     if brief is not None:
-        if terrain or shore or plots:
+        if terrain or shore or shore_kind or plots:
             raise BriefError(
                 f"both the brief {brief} and files by option were given",
                 "one of the two is needed",
                 "Name the files in the brief, or leave the brief out",
             )
-        return load_brief(brief).with_choices(zone=zone, out=out)
+        return _with_zone(load_brief(brief).with_choices(out=out), zone)
     if not terrain or plots is None:
         raise BriefError(
             "no brief was given, and not both --terrain and --plots",
             "a brief, or at least a terrain raster and a file of plots, is needed",
             "Try: sitescreen rank demo_region/brief.toml",
         )
-    return Brief.from_files(list(terrain), shore, plots, zone=zone, out=out)
+    if shore_kind is not None and shore is None:
+        raise BriefError(
+            f"--shore-kind {shore_kind} was given without a shore",
+            "the file it speaks of is needed",
+            "Add --shore FILE",
+        )
+    return _with_zone(Brief.from_files(list(terrain), shore, plots, out=out, shore_kind=shore_kind), zone)
+
+
+def _with_zone(brief: "Brief", zone: str | None) -> "Brief":
+    """The brief with the zone for all plots by its name: refused here if unknown, before any work."""
+    stated = zone if zone is not None else brief.zones.force
+    if stated is None:
+        return brief
+    from sitescreen.judgement.profiles import load_profiles
+
+    known = load_profiles(brief.judge.profiles)
+    return brief.with_choices(zone=zone_named(stated, known, "--zone" if zone is not None else "[zones] force"))
+
+
+def zone_named(stated: str, profiles: "Mapping[str, ZoneProfile]", where: str) -> str:
+    """A zone by its name or by its title, such as “Hot humid coast”.
+
+    Raises
+    ------
+    BriefError
+        If there is no such zone; ``where`` says who asked for it.
+    """
+    from sitescreen.climate.zones import check_zone
+
+    titles = {profile.title.casefold(): name for name, profile in profiles.items()}
+    return titles.get(stated.strip().casefold()) or check_zone(stated, profiles, where)
 
 
 def _summary(screening: "Screening", folder: Path) -> None:

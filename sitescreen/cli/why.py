@@ -9,20 +9,17 @@ from typing import Any
 
 import click
 
-from sitescreen.cli.options import EXISTING, in_one_line
+from sitescreen.cli.options import EXISTING, examples, in_one_line
 
 
-@click.command("why")
+@click.command("why", epilog=examples("sitescreen why demo_region/out 5"))
 @click.argument("result", type=EXISTING)
 @click.argument("plot")
 @in_one_line
 def command(result: Path, plot: str) -> None:
-    r"""Say why a PLOT stands where it does, from the folder RESULT that a run wrote.
+    """Say why a PLOT stands where it does, from the folder RESULT that a run wrote.
 
     PLOT is the plot's identifier, or its name where only one plot has it.
-
-    \b
-    sitescreen why demo_region/out 5
     """
     from sitescreen.errors import InputError
 

@@ -4,21 +4,16 @@ from pathlib import Path
 
 import click
 
-from sitescreen.cli.options import EXISTING, in_one_line
+from sitescreen.cli.options import EXISTING, examples, in_one_line
 
 
-@click.command("zones")
+@click.command("zones", epilog=examples("sitescreen zones", "sitescreen zones upland"))
 @click.argument("zone", required=False)
 @click.option("--profiles", type=EXISTING, help="Folder of your own profiles that replace or add to the built-in ones.")
 @in_one_line
 def command(zone: str | None, profiles: Path | None) -> None:
-    r"""List the climate zones, or print one ZONE's criteria with weights, curves and sources.
-
-    \b
-    sitescreen zones
-    sitescreen zones upland
-    """
-    from sitescreen.errors import BriefError
+    """List the climate zones, or print one ZONE's criteria with weights, curves and sources."""
+    from sitescreen.cli.rank import zone_named
     from sitescreen.judgement.profiles import load_profiles
 
     known = load_profiles(profiles)
@@ -26,10 +21,7 @@ def command(zone: str | None, profiles: Path | None) -> None:
         for name, profile in known.items():
             click.echo(f"{name}: {profile.title}. {profile.wants}")
         return
-    if zone not in known:
-        raise BriefError(
-            f"the zone {zone!r} was asked for", f"one of {', '.join(known)} is needed", "Run “sitescreen zones”"
-        )
+    zone = zone_named(zone, known, "the call")
     profile = known[zone]
     click.echo(f"{profile.title} ({zone})\n{profile.wants}\n")
     total = sum(criterion.weight for criterion in profile.criteria)

@@ -66,6 +66,13 @@ def _layers(file: Path, where: str) -> list[str]:
             "a file that is there is needed",
             f"Correct the name under [{where}] in the brief, or copy the file to that place",
         )
+    is_shapefile = file.suffix.lower() == ".shp" and file.stat().st_size >= 100  # its header's length
+    if is_shapefile and not any(file.with_suffix(end).exists() for end in (".shx", ".SHX")):
+        raise InputError(
+            f"the {where} file {file.name} lacks its index {file.stem}.shx",
+            "a shapefile is several files of one name",
+            "Copy the .shx, .dbf and .prj along with it",
+        )
     try:
         with warnings.catch_warnings():
             warnings.simplefilter("ignore")  # remarks such as an odd version of GPX; what cannot be read still raises

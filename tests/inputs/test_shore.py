@@ -321,3 +321,10 @@ def test_a_crossing_outline_is_mended_and_said(tmp_path: Path) -> None:
     assert any("mended" in note.text for note in shore.notes)
     assert shore.waters.geometry.is_valid.all()
     assert len(shore.waters) == 2
+
+
+def test_a_shapefile_without_its_companions_says_what_to_copy(tmp_path: Path) -> None:
+    path = write(tmp_path / "s.shp", [SEA], kind=["sea"])
+    path.with_suffix(".shx").unlink()
+    with pytest.raises(InputError, match=r"lacks its index s\.shx.*\.shx, \.dbf and \.prj"):
+        read_shore(path, "sea", FRAME)
