@@ -109,7 +109,8 @@ def edge_notes(plots: Plots, outline: Any, reach_m: float) -> tuple[Note, ...]:
     one = len(names) == 1
     text = (
         f"{len(names)} plot{' lies' if one else 's lie'} within {reach_m / 1000.0:g} km of the terrain's edge "
-        f"({shown}): {'its' if one else 'their'} wind and shelter will be unknown. Add the neighbouring terrain tiles."
+        f"({shown}): {'its' if one else 'their'} wind and shelter will be unknown where wind comes from there. Add the "
+        "neighbouring terrain tiles."
     )
     return (Note("warning", "terrain", text),)
 
