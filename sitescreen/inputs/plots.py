@@ -295,7 +295,7 @@ def _outside(geometry: NDArray[np.object_], remarks: NDArray[np.object_], outlin
     for row in np.flatnonzero(meets & ~shapely.covers(outline, geometry)):
         beyond = 1.0 - shapely.area(shapely.intersection(outline, geometry[row])) / shapely.area(geometry[row])
         if beyond > OUTSIDE_SHARE_MOST:
-            outcome[row] = f"{100.0 * beyond:.0f} % of it lies outside the terrain"
+            outcome[row] = f"{100.0 * beyond:.0f} % of it lies outside the terrain, so it could be judged only partly"
         elif beyond >= 0.005:
             remarks[row].append(f"{100.0 * beyond:.0f} % of it lies outside the terrain")
     return outcome
