@@ -14,6 +14,7 @@ import pytest
 
 from sitescreen.deliverables.columns import columns_of
 from sitescreen.deliverables.map import write_map
+from sitescreen.grid import Field, Grid
 
 pytestmark = [pytest.mark.browser, pytest.mark.filterwarnings("ignore::DeprecationWarning")]
 
@@ -208,7 +209,13 @@ def test_a_plot_tells_its_name_under_the_pointer(opened: Any, screening: Any) ->
     )
 
 
-def test_a_phone_opens_with_all_plots_in_view_and_none_under_the_scale_bar(opened: Any, screening: Any) -> None:
+def test_a_phone_opens_with_all_plots_in_view_and_none_under_the_scale_bar(opened: Any, invent: Any) -> None:
+    screening = invent(names=tuple(f"Field {i}" for i in range(120)))  # some lie in every corner
+    grid = screening.fields["elevation_m"].grid
+    west, north = grid.west_m + 3 * grid.cell_size_m, grid.north_m - 3 * grid.cell_size_m
+    tight = Grid(grid.crs, west, north, grid.cell_size_m, 41, 50)  # the ground ends close beyond the plots
+    fields = {name: Field(f.values[3:44, 3:53], tight, f.unit, "cut") for name, f in screening.fields.items()}
+    screening = screening.with_(fields=fields)
     page = opened(screening, 390, 844)
     wide, high = page.execute_script("const s = map_plan.getSize(); return [s.x, s.y]")
     for i in range(len(screening.table)):
@@ -219,14 +226,16 @@ def test_a_phone_opens_with_all_plots_in_view_and_none_under_the_scale_bar(opene
 
 
 def test_a_click_anywhere_on_a_plot_set_aside_opens_its_leaf_in_sight(opened: Any, screening: Any) -> None:
-    page = opened(screening)
+    page = opened(screening, 390, 844)  # the leaf ends far above the shelf
     aside = screening.table[screening.table["rank"].isna()]
+    page.execute_script("document.querySelector('#shelf li:nth-child(2)').scrollIntoView({ block: 'start' })")
     one(page, "#shelf li:nth-child(2) span").click()
     assert leaf_name(page) == aside["name"].iloc[1]
     assert texts(page, "#leaf .alerts li")[0] == aside["set_aside"].iloc[1]
     assert "slope" in texts(page, "#leaf .readings dt")
-    top = page.execute_script("return document.getElementById('leaf').getBoundingClientRect().top")
-    assert -1 <= top < 900
+    top = page.execute_script("return document.querySelector('.leaf-name').getBoundingClientRect().top")
+    assert 0 <= top < 700
+    sized(page, 1440, 900)
 
 
 def test_a_plot_set_aside_without_readings_says_so(opened: Any, screening: Any) -> None:

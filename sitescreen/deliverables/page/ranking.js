@@ -93,7 +93,11 @@ const ranking = (() => {
 
   function shelf() {
     // the leaf lies above, maybe out of sight, so that a choice here has to bring it into view
-    const open = (i) => { page.change({ chosen: i }); document.getElementById("leaf").scrollIntoView({ block: "nearest" }); };
+    const open = (i) => {
+      page.change({ chosen: i });
+      const leaf = document.getElementById("leaf"), top = leaf.getBoundingClientRect().top;
+      if (top < 0 || top > window.innerHeight - 160) leaf.scrollIntoView({ block: "start" });
+    };
     document.getElementById("shelf").replaceChildren(...page.aside.map((i) => make("li", { onclick: () => open(i) }, page.sign("aside"),
       make("button", { type: "button" }, page.called(i)),
       make("span", {}, plots.set_aside[i] || ""))));
