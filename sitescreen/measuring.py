@@ -17,7 +17,7 @@ from sitescreen.inputs.wind import Rose
 from sitescreen.judgement.coverage import cover
 from sitescreen.judgement.readings import BlockClimate, Readings, block_readings
 from sitescreen.judgement.shore_readings import with_shore
-from sitescreen.lattice import Block, blocks_of, convergence_deg
+from sitescreen.lattice import Block, blocks_of, convergence_deg, from_true_north
 from sitescreen.progress import Progress
 from sitescreen.settings import BreezeSettings, Defaults
 from sitescreen.terrain.flat_water import WaterDisagreement, water_disagreement
@@ -107,7 +107,7 @@ def measure(
     fields = {
         "elevation_m": ground.elevation,
         "slope_deg": ground.slope,
-        "aspect_deg": ground.aspect,
+        "aspect_deg": from_true_north(ground.aspect),
         "buildable_chance": ground.buildable,
         "rise_m": ground.rise,
         "sky_view": ground.sky_view,

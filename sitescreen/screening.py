@@ -153,7 +153,7 @@ def _judged(
     )
     zones = zone_shares(fits, _stated_zones(brief, inputs), settings.zones, profiles)
     values["cold_deficit_k"] = _deficit(values, zones, settings)
-    halved = ("wind",) if inputs.wind.assumed else ()
+    halved = ("ventilation", "ridge_exposure", "sheltered_fraction") if inputs.wind.assumed else ()
     judged = judge(
         values,
         zones,
@@ -168,7 +168,7 @@ def _judged(
     notes += climate_notes(climate, settings.zones) if climate is not None else ()
     notes += (compared.notes() if compared else ()) + sure.notes() + sway_notes(found)
     waters = together([one.disagreement for one in measured])
-    if inputs.shore and not waters.agrees:
+    if inputs.shore and len(inputs.shore.waters) and not waters.agrees:
         notes += (Note("warning", "shore", waters.sentence),)
     unchecked, checked = still_unchecked(NOT_CHECKED, brief.constraint)
     notes += own.notes + checked

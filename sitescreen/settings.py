@@ -60,6 +60,7 @@ class TerrainSettings(Section):
     rise_radius_m: Annotated[float, Field(ge=100, le=10_000)]
     sky_azimuths: Annotated[int, Field(ge=4, le=360)]
     smallest_water_km2: Positive
+    smallest_outlet_km2: Positive
 
 
 class ShoreSettings(Section):

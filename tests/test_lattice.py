@@ -9,6 +9,7 @@ from hypothesis import strategies as st
 from pyproj import Geod, Transformer
 
 from sitescreen.errors import GridError
+from sitescreen.grid import Field, Grid
 from sitescreen.lattice import (
     BLOCK_CELLS,
     CELL_LADDER_M,
@@ -17,6 +18,7 @@ from sitescreen.lattice import (
     blocks_of,
     cell_size_m,
     convergence_deg,
+    from_true_north,
     utm_zone,
 )
 
@@ -151,3 +153,15 @@ def test_convergence_reaches_one_degree_at_the_zone_s_edge() -> None:
     """Series of the first order, γ ≈ Δλ sin φ (Snyder 1987, USGS Professional Paper 1395, from memory): 1.03° here."""
     found = convergence_deg("EPSG:32637", np.array([42.0]), np.array([20.0]))[0]
     assert found == pytest.approx(3.0 * math.sin(math.radians(20.0)), rel=2e-3)
+
+
+def test_a_field_of_bearings_is_turned_to_true_north() -> None:
+    """Each cell by the meridian's convergence at its own centre, as PROJ has it."""
+    grid = Grid("EPSG:32641", 700_000.0, 2_250_000.0, 900.0, 70, 90)
+    turned = from_true_north(Field(np.full(grid.shape, 359.9), grid, "°", "bearing from grid north"))
+    to_lonlat = Transformer.from_crs(grid.crs, "EPSG:4326", always_xy=True)
+    lon, lat = to_lonlat.transform(*np.meshgrid(grid.x_centres_m(), grid.y_centres_m()))
+    expected = (359.9 + convergence_deg(grid.crs, lon.ravel(), lat.ravel()).reshape(grid.shape)) % 360.0
+    assert 0.5 < expected.max() < 1.5, "the grid is turned by about a degree here"
+    assert turned.values == pytest.approx(expected, abs=2e-4)
+    assert turned.what == "bearing from true north"

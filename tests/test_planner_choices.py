@@ -89,7 +89,7 @@ def test_a_constraint_sets_aside_with_the_planners_words(rows: dict[str, dict[st
     assert [rows[plot]["constraint_flood_zone"] for plot in "ABCD"] == ["0", "0", "1", "0"]
     assert rows["C"]["rank"] == rows["C"]["chance_first"] == ""
     # 1,000 and 1,700 m on the map from the plots' edges
-    assert [rows[plot]["constraint_mast_m"] for plot in "AB"] == ["1000", "1701"]
+    assert [rows[plot]["metres_to_constraint_mast"] for plot in "AB"] == ["1000", "1701"]
     assert "note: within 1500 m of mast" in rows["A"]["cautions"]
     assert "mast" not in rows["B"]["cautions"]
 

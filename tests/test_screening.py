@@ -173,3 +173,14 @@ def test_fields_lie_on_the_lattice(plain: Screening) -> None:
 def test_two_runs_give_the_same_table(run: Run, plain: Screening) -> None:
     again = run(SHORE)
     assert again.table.drop(columns="geometry").equals(plain.table.drop(columns="geometry"))
+
+
+def test_an_assumed_wind_halves_what_the_wind_told_and_nothing_else(run: Run) -> None:
+    """No criterion of the savannah reads the wind; height above the surroundings is the terrain's, and counts whole."""
+    screening = run(SHORE, '[zones]\nforce = "savannah"')
+    profile, row = screening.profiles["savannah"], _table(screening).loc["c"]
+    total = sum(one.weight for one in profile.criteria)
+    by_hand = sum(one.weight * row[f"mark_{one.name}"] for one in profile.criteria) / total
+    assert {one.reading for one in profile.criteria} & {"ventilation", "ridge_exposure", "sheltered_fraction"} == set()
+    assert row["overall_mark"] == pytest.approx(by_hand)
+    assert "wind" in _assumed(screening)

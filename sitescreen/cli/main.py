@@ -1,6 +1,8 @@
 """The command line: one file a command, each imported only when it is called."""
 
 import importlib
+import io
+import sys
 
 import click
 
@@ -41,3 +43,6 @@ def run() -> None:
 
     Try it:  sitescreen rank demo_region/brief.toml
     """
+    for stream in (sys.stdout, sys.stderr):
+        if isinstance(stream, io.TextIOWrapper):
+            stream.reconfigure(errors="replace")  # a name that the terminal cannot write must not end a finished run

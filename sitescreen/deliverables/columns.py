@@ -304,10 +304,11 @@ def _mark(name: str, profiles: Iterable["ZoneProfile"]) -> Column:
 
 def _own(name: str) -> Column | None:
     """The columns of a planner's own constraints and criteria, whose names the brief gives."""
+    if name.startswith("metres_to_constraint_"):
+        title = name.removeprefix("metres_to_constraint_").replace("_", " ")
+        return _number(name, 0, "m", f"to: {title}", f"Distance from the plot's edge to your layer “{title}”.")
     if name.startswith("constraint_"):
-        title = name.removeprefix("constraint_").removesuffix("_m").replace("_", " ")
-        if name.endswith("_m"):
-            return _number(name, 0, "m", f"to: {title}", f"Distance from the plot's edge to your layer “{title}”.")
+        title = name.removeprefix("constraint_").replace("_", " ")
         return _whole(name, f"own: {title}", f"1 where your constraint “{title}” speaks against the plot.")
     if name.startswith("own_"):
         title = name.removeprefix("own_").replace("_", " ")

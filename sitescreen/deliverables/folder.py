@@ -11,7 +11,7 @@ import re
 import shutil
 import socket
 import tempfile
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from contextlib import contextmanager, suppress
 from pathlib import Path
 
@@ -30,8 +30,10 @@ def check_writable(folder: Path) -> None:
     Raises
     ------
     OutputError
-        If it, or the folder it would be made in, cannot be written to.
+        If it, or the folder it would be made in, cannot be written to; or if it holds a file that has the name of a
+        result and that no earlier run wrote, such as the user's own plots.gpkg.
     """
+    _refuse_to_replace(folder, ("map.html", "ranking.csv", "ranking.xlsx", "plots.gpkg", RECORD))
     try:
         place = folder.resolve()
         while not (place.exists() or place.is_symlink()):
@@ -125,11 +127,27 @@ def _earlier_results(target: Path) -> set[str]:
         return set()
 
 
+def _refuse_to_replace(target: Path, names: Iterable[str]) -> None:
+    """Refuse if one of the names is there and stands in no record of ours: then it is the user's own file."""
+    ours = _earlier_results(target)
+    if ours:
+        ours.add(RECORD)
+    foreign = [name for name in names if name not in ours and (target / name).exists()]
+    if foreign:
+        raise OutputError(
+            f"the folder {target} holds {', '.join(foreign[:4])}{' and more' if len(foreign) > 4 else ''}, "
+            "which no run of sitescreen wrote there",
+            "a folder where results replace nothing of yours is needed",
+            "Name another folder with --out or [output] folder, or move those files away",
+        )
+
+
 def _move_in(stage: Path, target: Path) -> None:
     new = _files(stage / NEW)
     if not target.exists():
         (stage / NEW).rename(target)
         return
+    _refuse_to_replace(target, new)
     stale = _earlier_results(target) - set(new)
     for path in [*new, *stale]:
         _keep(target / path, stage / OLD / path)

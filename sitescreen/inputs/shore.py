@@ -100,13 +100,13 @@ class Shore:
         Returns
         -------
         float64 array, shape (n,)
-            0–1, NaN where there is no ground.
+            0–1, NaN where there is no ground, and for all where only shorelines are known.
         """
         ground: Geometries = np.asarray(plots.values, dtype=object)
         share = np.where(shapely.is_missing(ground) | shapely.is_empty(ground), np.nan, 0.0)
         parts = polygon_parts(self.waters.geometry.values)
         if len(parts) == 0:
-            return share
+            return np.full(len(ground), np.nan)
         tree = shapely.STRtree(ground)
         # asked from the water's side: a large outline is prepared once and serves all plots
         water, plot = tree.query(parts, predicate="intersects")

@@ -4,6 +4,7 @@ from pathlib import Path
 from typing import Any
 
 from sitescreen.errors import InputError
+from sitescreen.inputs.vector_files import read_vector
 
 
 def read_zone_map(path: Path) -> Any:
@@ -24,17 +25,7 @@ def read_zone_map(path: Path) -> Any:
     InputError
         If the file cannot be read, has no such column or no coordinate system.
     """
-    import geopandas as gpd
-    from pyogrio.errors import DataSourceError
-
-    try:
-        table = gpd.read_file(path)
-    except (DataSourceError, OSError) as error:
-        raise InputError(
-            f"the zone polygons {path.name} cannot be read",
-            "a vector file of polygons is needed",
-            "Check the path under [zones] polygons in the brief",
-        ) from error
+    table = read_vector(path, "zone map").table
     if "zone" not in table.columns:
         raise InputError(
             f"the zone polygons {path.name} have the columns {', '.join(map(str, table.columns))}",
@@ -47,7 +38,17 @@ def read_zone_map(path: Path) -> Any:
             "a stated coordinate system is needed",
             "Save them again with one, for instance as GeoPackage",
         )
-    return table[["zone", "geometry"]].to_crs("EPSG:4326")
+    table = table[["zone", "geometry"]]
+    told = table["zone"].map(lambda zone: isinstance(zone, str) and bool(zone.strip()))
+    areas = table.geometry.geom_type.isin(("Polygon", "MultiPolygon"))
+    if not (told & areas).all():
+        odd = int((~(told & areas)).sum())
+        raise InputError(
+            f"{odd} of {len(table)} rows of the zone map {path.name} are no polygons or name no zone",
+            "polygons whose column “zone” holds a zone's name are needed",
+            "Complete or remove those rows",
+        )
+    return table.to_crs("EPSG:4326")
 
 
 def zone_at(zone_map: Any, lon: Any, lat: Any) -> list[str]:

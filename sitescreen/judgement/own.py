@@ -17,7 +17,7 @@ from sitescreen.inputs.own_layers import read_own_layers
 from sitescreen.inputs.stamps import FileStamp
 from sitescreen.inputs.vector_files import column_named
 from sitescreen.judgement.cautions import CautionRule, Condition
-from sitescreen.judgement.profiles import Criterion, ZoneProfile
+from sitescreen.judgement.profiles import RESERVED_NAMES, Criterion, ZoneProfile
 from sitescreen.notes import Note
 
 FloatArray = NDArray[np.float64]
@@ -47,7 +47,7 @@ def criterion_column(one: OwnCriterion) -> str:
 
 
 def constraint_column(one: OwnConstraint) -> str:
-    """1 where a constraint speaks against a plot, else 0; with ``_m`` the distance to its layer."""
+    """1 where a constraint speaks against a plot, else 0; with ``metres_to_`` before it the distance to its layer."""
     return f"constraint_{short_name(one.name)}"
 
 
@@ -55,8 +55,8 @@ def constraint_column(one: OwnConstraint) -> str:
 class OwnReadings:
     """Readings of the plots, in the order of the table of plots.
 
-    ``values``: ``constraint_…``, ``constraint_…_m`` and ``own_…``; ``why_unknown``: a sentence where one of ``own_…``
-    is missing, "" elsewhere; ``stamps`` and ``notes`` of the layers.
+    ``values``: ``constraint_…``, ``metres_to_constraint_…`` and ``own_…``; ``why_unknown``: a sentence where one of
+    ``own_…`` is missing, "" elsewhere; ``stamps`` and ``notes`` of the layers.
     """
 
     values: pd.DataFrame
@@ -84,6 +84,8 @@ def check_names(brief: Brief, profiles: Mapping[str, ZoneProfile]) -> None:
                 said = "is called as an earlier one is"
             elif section == "criterion" and short[number - 1] in known:
                 said = "is called as a criterion of the climate zones is"
+            elif section == "criterion" and short[number - 1] in RESERVED_NAMES:
+                said = "is called as a column of the overall mark is"
             else:
                 continue
             raise BriefError(f"[[{section}]] {number}, {name!r}, {said}", "a name of its own is needed", "Rename it")
@@ -177,7 +179,7 @@ def own_readings(brief: Brief, plots: Any) -> OwnReadings:
         near = np.where(np.isnan(distance_m), np.nan, (distance_m <= one.buffer_m).astype(np.float64))
         # without a buffer, plots that only share a boundary with an area are not in it
         values[name] = near if one.buffer_m > 0.0 else layer.is_inside(outlines, lon)
-        values[f"{name}_m"] = distance_m
+        values[f"metres_to_{name}"] = distance_m
     for criterion in brief.criterion:
         name = criterion_column(criterion)
         if criterion.file is not None:

@@ -137,8 +137,11 @@ def read_pairs(texts: Sequence[str]) -> list[Pair]:
 
 def _times(text: str) -> float | None:
     """A number or a fraction from 1/9 to 9; None for anything else."""
+    short = text.replace(" ", "")
+    if len(short) > 12 or "e" in short.casefold():  # Fraction would write out 1e99999999 digit by digit
+        return None
     try:
-        value = Fraction(text.replace(" ", ""))
+        value = Fraction(short)
     except (ValueError, ZeroDivisionError):
         return None
     return float(value) if Fraction(1, 9) <= value <= 9 else None

@@ -43,6 +43,16 @@ def _rises(curve: tuple[tuple[float, float], ...]) -> tuple[tuple[float, float],
     return curve
 
 
+RESERVED_NAMES = ("low", "high", "in_zone", "in_zone_2")
+"""A criterion's column is ``mark_<name>``; these are taken by columns of the overall mark."""
+
+
+def _not_reserved(name: str) -> str:
+    if name in RESERVED_NAMES:
+        raise ValueError(f"a name other than {', '.join(RESERVED_NAMES)}, which the overall mark's columns use,")
+    return name
+
+
 class Criterion(Section):
     """One thing that a zone wants, with its curve from reading to mark.
 
@@ -70,7 +80,7 @@ class Criterion(Section):
         A sentence for the reasons, for criteria that ``config/reasons.toml`` does not know.
     """
 
-    name: Annotated[str, Field(pattern=r"^[a-z][a-z0-9_]*$")]
+    name: Annotated[str, Field(pattern=r"^[a-z][a-z0-9_]*$"), AfterValidator(_not_reserved)]
     reading: Text
     question: Question
     title: Text

@@ -15,6 +15,9 @@ from sitescreen.terrain.position import rise_m
 from sitescreen.terrain.sky_view import sky_view
 from sitescreen.terrain.slope import Gradient, aspect_deg, gradient, slope_deg
 
+STRIP_CELLS = 3.0
+"""Unknown ground this close to mapped water takes its level, as other gaps of that width are closed. [cells]"""
+
 
 @dataclass(frozen=True)
 class Ground:
@@ -71,11 +74,48 @@ def with_level_water(elevation: Field, water_kind: NDArray[np.uint8], level_m: N
     ground keeps its height; the disagreement is reported elsewhere.
     """
     values = elevation.values
-    fill = (water_kind > 0) & np.isnan(values) & np.isfinite(level_m)
+    gap = np.isnan(values)
+    fill = (water_kind > 0) & gap & np.isfinite(level_m)
     fill |= (water_kind == 1) & (values < 0.0)
-    if not fill.any():
+    filled = np.where(fill, level_m, values) if fill.any() else values
+    strip = gap & ~fill
+    if strip.any() and np.isfinite(level_m).any():
+        # a model's own shore and the mapped one differ by some cells: what lies unknown between them is shore too
+        distance, (row, col) = ndimage.distance_transform_edt(~np.isfinite(level_m), return_indices=True)
+        strip &= distance <= STRIP_CELLS
+        filled = np.where(strip, level_m[row, col], filled)
+    if filled is values:
         return elevation
-    return Field(np.where(fill, level_m, values), elevation.grid, elevation.unit, elevation.what)
+    return Field(filled, elevation.grid, elevation.unit, elevation.what)
+
+
+def open_to_cold_air(water_kind: NDArray[np.uint8], cell_size_m: float, smallest_km2: float) -> NDArray[np.bool_]:
+    """Water over which cold air spreads away: the sea, and lakes of a stated size.
+
+    Parameters
+    ----------
+    water_kind : uint8 array, shape (rows, cols)
+        0 land, 1 sea, 2 lake, as mapped.
+    cell_size_m : float
+    smallest_km2 : float
+        A smaller lake is the bottom of its hollow, not a way out of it. [km²] One cut by the edge of the window may be
+        larger beyond it, and counts.
+
+    Returns
+    -------
+    bool array, shape (rows, cols)
+        Ground that is only as level as water, with no water mapped, is never a way out: a valley floor in a model of
+        whole metres is as level.
+    """
+    out = water_kind == 1
+    label, count = ndimage.label(water_kind == 2, structure=np.ones((3, 3)))
+    if count:
+        large = np.bincount(label.ravel()) * (cell_size_m / 1000.0) ** 2 >= smallest_km2
+        for edge in (label[0], label[-1], label[:, 0], label[:, -1]):
+            large[np.unique(edge)] = True
+        large[0] = False
+        out |= large[label]
+    return np.asarray(out, dtype=np.bool_)
 
 
 def read_ground(
@@ -104,7 +144,7 @@ def read_ground(
     level = water_level_m(elevation, water_kind)
     ground = with_level_water(elevation, water_kind, level)
     flat = flat_water(with_level_water(stored, water_kind, level), settings.smallest_water_km2)
-    outlets = (water_kind > 0) | (flat.label > 0)
+    outlets = open_to_cold_air(water_kind, ground.grid.cell_size_m, settings.smallest_outlet_km2)
     return Ground(
         elevation=ground,
         water_kind=water_kind,

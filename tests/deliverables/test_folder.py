@@ -277,7 +277,7 @@ def test_where_only_the_folder_itself_can_be_written_the_stage_lies_inside(
 def test_a_record_cannot_make_us_remove_other_files(out: Path) -> None:
     outside = out.parent / "precious.txt"
     outside.write_text("x", encoding="utf-8")
-    names = ["../precious.txt", "mine.txt", str(outside), "layers/../mine.txt"]
+    names = [*FIRST, "../precious.txt", "mine.txt", str(outside), "layers/../mine.txt"]
     (out / "record.json").write_text(json.dumps({"outputs": dict.fromkeys(names, 0)}), encoding="utf-8")
     put(out, SECOND)
     assert outside.exists()
@@ -292,4 +292,21 @@ def test_the_map_is_part_of_the_stage(screening: Any, out: Path, monkeypatch: py
     before = contents(out)
     with pytest.raises(ValueError, match="fault"):
         write_results(screening, out)
+    assert contents(out) == before
+
+
+@pytest.mark.parametrize("name", ["plots.gpkg", "map.html", "record.json"])
+def test_a_file_of_the_users_own_is_refused_before_the_work(tmp_path: Path, name: str) -> None:
+    """It has the name of a result, but no run of ours wrote it."""
+    (tmp_path / name).write_text("{}", encoding="utf-8")
+    with pytest.raises(OutputError, match="which no run of sitescreen wrote"):
+        check_writable(tmp_path)
+    assert contents(tmp_path) == {name: b"{}"}
+
+
+def test_a_layer_of_the_users_own_is_never_replaced(out: Path) -> None:
+    """Only when the new layers are there is it known that one has its name; then nothing at all is moved."""
+    before = contents(out)
+    with pytest.raises(OutputError, match=r"layers/my_soil\.tif, which no run"):
+        put(out, SECOND | {"layers/my_soil.tif": "second"})
     assert contents(out) == before

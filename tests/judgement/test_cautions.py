@@ -40,6 +40,7 @@ def test_good_ground_raises_none(plots: Plots) -> None:
         ("high_upland", {"cold_pool_kind": "leaky"}, "cold_hollow", "concern"),
         ("savannah", {"cold_deficit_k": 3.0}, "cold_hollow_mild", "note"),
         ("upland", {"cold_pool_kind": "unknown"}, "cold_pool_unknown", "concern"),
+        ("upland", {"cold_pool_kind": "none", "rise_m": -8.0}, "narrows_not_looked_at", "note"),
         ("hot_humid_coast", {"pond_depth_m": 1.5}, "ponding", "concern"),
         ("high_upland", {"ridge_exposure": 1.4}, "exposed_ridge", "concern"),
         ("lake_basin", {"ridge_exposure": 1.4}, "windy_ground", "note"),

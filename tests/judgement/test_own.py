@@ -57,7 +57,7 @@ def test_a_constraint_speaks_within_its_buffer(roads: Path, plots: Any) -> None:
     brief = brief_of(roads, [{"name": "road", "file": "roads.gpkg", "buffer_m": 700, "level": "note"}])
     found = own_readings(brief, plots)
     # the road runs along the plots' southern edge up to 501,300 m east
-    assert found.values["constraint_road_m"].to_numpy() == pytest.approx([0, 0, 700 / 0.9996], abs=0.1)
+    assert found.values["metres_to_constraint_road"].to_numpy() == pytest.approx([0, 0, 700 / 0.9996], abs=0.1)
     assert found.values["constraint_road"].tolist() == [1.0, 1.0, 0.0]
     assert [stamp.name for stamp in found.stamps] == ["roads.gpkg"]
 
@@ -154,3 +154,17 @@ def test_a_hazard_is_checked_only_where_a_constraint_names_it(tmp_path: Path) ->
         "Of flood levels only what your own layer shows was checked: “Flood zone”."
     ]
     assert still_unchecked(hazards, []) == (hazards, ())
+
+
+def test_the_distance_of_one_constraint_cannot_be_taken_for_another(roads: Path, plots: Any) -> None:
+    """“flood 100” and “flood 100 m” are two constraints: neither's distance may land in the other's column."""
+    brief = brief_of(
+        roads,
+        [
+            {"name": "flood 100 m", "file": "roads.gpkg", "buffer_m": 10, "level": "note"},
+            {"name": "flood 100", "file": "roads.gpkg", "level": "note"},
+        ],
+    )
+    values = own_readings(brief, plots).values
+    assert len(values.columns) == 4
+    assert set(values["constraint_flood_100_m"]) <= {0.0, 1.0}

@@ -131,7 +131,7 @@ def test_a_criterion_of_ones_own_says_its_own_sentence(plots: Plots, in_zone: In
         criteria=(
             Criterion(name="large", reading="area_ha", title="area", unit="ha", curve=((0.0, 0.0), (2.0, 100.0)),
                       says="It has {area_ha:.1f} hectares.", **common),
-            Criterion(name="low", reading="elevation_m", title="height", unit="m", curve=((0.0, 100.0), (50.0, 0.0)),
+            Criterion(name="flat", reading="elevation_m", title="height", unit="m", curve=((0.0, 100.0), (50.0, 0.0)),
                       **common),
         ),
     )  # fmt: skip
