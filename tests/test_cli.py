@@ -14,7 +14,7 @@ from affine import Affine
 from click.testing import CliRunner, Result
 from shapely.geometry import Point, box
 
-from sitescreen.cli._show import show_notes
+from sitescreen.cli._show import show_notes, tame
 from sitescreen.cli.main import run
 from sitescreen.notes import Note
 
@@ -346,3 +346,8 @@ def test_help_takes_under_four_tenths_of_a_second() -> None:
         assert "rank" in done.stdout
         times.append(float(done.stderr))
     assert min(times) < 0.4
+
+
+def test_names_cannot_steer_the_terminal() -> None:
+    assert tame("\x1b]0;owned\x07Up\u202e\nHill") == " ]0;owned Up  Hill"
+    assert tame("Nyĩrĩ 山") == "Nyĩrĩ 山"

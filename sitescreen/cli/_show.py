@@ -41,6 +41,11 @@ class TerminalProgress(Progress):
             self._status.stop()
 
 
+def tame(text: str) -> str:
+    """A text that came with somebody's file, without signs that would move the cursor or turn the line round."""
+    return "".join(sign if sign.isprintable() else " " for sign in text)
+
+
 def show_notes(notes: tuple[Note, ...]) -> None:
     """What was assumed in one block, then the warnings, where they are seen; plain information stays in the record."""
     assumed = [note for note in notes if note.level == "assumed"]

@@ -134,6 +134,7 @@ def zone_named(stated: str, profiles: "Mapping[str, ZoneProfile]", where: str) -
 
 def _summary(screening: "Screening", folder: Path) -> None:
     """The head of the ranking on stdout, and where the rest is."""
+    from sitescreen.cli._show import tame
     from sitescreen.deliverables.table import whole_mark
 
     table = screening.table
@@ -143,7 +144,9 @@ def _summary(screening: "Screening", folder: Path) -> None:
         called = f"{row.name} (plot {row.plot})" if row.name else f"Plot {row.plot}"
         zone = screening.profiles[row.zone].title
         reason = next(iter(screening.reasons[row.plot].for_), "")
-        click.echo(f"{int(row.rank):>4}. {called}, {zone}: {whole_mark(row.overall_mark)} of 100. {reason}".rstrip())
+        click.echo(
+            tame(f"{int(row.rank):>4}. {called}, {zone}: {whole_mark(row.overall_mark)} of 100. {reason}".rstrip())
+        )
     click.echo(f"Map: {folder / 'map.html'}")
     click.echo(f"Table: {folder / 'ranking.csv'}")
     click.echo("A screening, not a survey: local codes and licensed practice decide.")

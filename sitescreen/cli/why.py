@@ -21,6 +21,7 @@ def command(result: Path, plot: str) -> None:
 
     PLOT is the plot's identifier, or its name where only one plot has it.
     """
+    from sitescreen.cli._show import tame
     from sitescreen.errors import InputError
 
     record = _record(result)
@@ -36,7 +37,7 @@ def command(result: Path, plot: str) -> None:
             "Run “sitescreen rank” again",
         ) from error
     for line in lines:
-        click.echo(line)
+        click.echo(tame(line))
 
 
 def _record(folder: Path) -> dict[str, Any]:

@@ -18,6 +18,10 @@ STARTS_A_FORMULA = ("=", "+", "-", "@", "\t", "\n")
 """A spreadsheet may run a cell that begins with one of these."""
 
 
+BEARING = "° from true north"
+"""The unit of columns that hold bearings."""
+
+
 def value_of(column: Column, value: Any) -> str | int | float | None:
     """One value as the files hold it: text, a whole number, or a number rounded to the column's decimals.
 
@@ -43,7 +47,8 @@ def value_of(column: Column, value: Any) -> str | int | float | None:
     if column.kind == "whole":
         whole: int = round(value)
         return whole
-    return round(float(value), column.decimals) + 0.0  # + 0.0 turns −0.0 into 0.0
+    rounded = round(float(value), column.decimals) + 0.0  # + 0.0 turns −0.0 into 0.0
+    return rounded % 360.0 if column.unit == BEARING else rounded  # 359.7° is north, not 360
 
 
 def whole_mark(mark: float) -> str:

@@ -9,7 +9,7 @@ import pandas as pd
 import pytest
 
 from sitescreen.deliverables.columns import BY_NAME, CONTRACT, columns_of
-from sitescreen.deliverables.table import cell, safe_text, write_csv
+from sitescreen.deliverables.table import cell, safe_text, value_of, write_csv
 
 # typed in from the design of the table, not read from the code
 ORDER = """rank, plot, name, overall_mark, mark_low, mark_high, zone, zone_share, rank_in_zone, cautions, set_aside,
@@ -111,3 +111,9 @@ def test_explanations_say_what_a_planner_needs(screening: Any) -> None:
     assert says["rank_low"].startswith("The best rank of the range")
     assert BY_NAME["cold_deficit_k"].unit == "°C"
     assert BY_NAME["rise_m"].title == "height above surroundings within 1 km"
+
+
+def test_a_bearing_just_short_of_north_is_north() -> None:
+    assert value_of(BY_NAME["onshore_from_deg"], 359.7) == 0.0
+    assert value_of(BY_NAME["onshore_from_deg"], 359.4) == 359.0
+    assert value_of(BY_NAME["slope_deg"], 360.0) == 360.0, "only bearings go round"
