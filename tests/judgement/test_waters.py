@@ -17,6 +17,7 @@ from sitescreen.judgement.waters import waters_disagree
         (0.0, 1.0, np.nan, 1.0),  # level as water, and no water mapped
         (0.2, 1.0, 0.0, 1.0),  # open sea in the terrain, four fifths of it mapped as land
         (0.6, 1.0, 0.0, 0.0),  # most of it mapped: both say water
+        (0.51, 1.0, 0.0, 0.0),  # and so does a bare majority: it must not lose its "in water"
         (0.4, 0.6, 0.0, 0.0),  # a plot at the rim, much the same in both
         (np.nan, 1.0, np.nan, 1.0),  # the same without a shoreline
         (np.nan, 0.0, np.nan, np.nan),  # no shoreline, ordinary ground: nobody can say
