@@ -41,8 +41,8 @@ def test_small_or_shallow_hollows_are_not_told_from_noise(half_width: int, depth
 def test_pure_noise_makes_next_to_no_pools(fall: float, smoothing_cells: int) -> None:
     """Noise of 2 m on a plain, white or correlated: hundreds of pits, and next to none of the ground counts.
 
-    A measured limit, no published one, and for this one draw: four draws gave 0.05–1.16 % of the ground. It was first set
-    to 0.5 % on a smaller plain, where 0.7 % was found. Without the rule on the mean depth it is up to 15 %.
+    A measured limit, no published one, and for this one draw: four draws gave 0.05–1.16 % of the ground. It was first
+    set to 0.5 % on a smaller plain, where 0.7 % was found. Without the rule on the mean depth it is up to 15 %.
     """
     ground = _plain_with(cells=400, fall=fall)
     noise = np.random.default_rng(3).normal(0, 1.0, ground.grid.shape)
