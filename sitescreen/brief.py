@@ -5,9 +5,7 @@ it is read; whether the files can be used is for ``inputs/`` to say. Keys that a
 already, and :meth:`Brief.not_used_yet` names them.
 """
 
-import difflib
 import tomllib
-import typing
 from collections.abc import Mapping, Sequence
 from itertools import pairwise
 from pathlib import Path
@@ -16,47 +14,17 @@ from typing import Annotated, Any, Literal, Self
 from pydantic import (
     AfterValidator,
     BaseModel,
-    BeforeValidator,
     ConfigDict,
     Field,
     ValidationError,
-    ValidationInfo,
     model_validator,
 )
 
+from sitescreen.brief_faults import first_fault
+from sitescreen.brief_paths import FilePath, FilePaths, at_home
 from sitescreen.errors import BriefError
 
 Level = Literal["note", "concern", "stop"]
-
-
-def _absolute(given: Any, info: ValidationInfo) -> Path:
-    """A path as the brief writes it, made absolute against the brief's folder."""
-    if not isinstance(given, str | Path) or not str(given).strip():
-        raise ValueError("a file name in quotes")
-    folder = (info.context or {}).get("folder", Path.cwd())
-    return Path(folder, Path(given).expanduser()).absolute()
-
-
-def _files(given: Any, info: ValidationInfo) -> list[Path]:
-    """File names as a list; one name may stand alone, and ``*`` and ``?`` stand for the files that match."""
-    listed = [given] if isinstance(given, str | Path) else given
-    if not isinstance(listed, list | tuple):
-        raise ValueError('a list of file names, such as ["tile.tif"]')
-    found: list[Path] = []
-    for one in listed:
-        path = _absolute(one, info)
-        if any(sign in path.name for sign in "*?") and not path.exists():
-            matching = sorted(path.parent.glob(path.name))
-            if not matching:
-                raise ValueError(f"file names; nothing matches {one!r}")
-            found += matching
-        else:
-            found.append(path)
-    if not found:
-        raise ValueError("at least one file")
-    if len(set(found)) < len(found):
-        raise ValueError("each file once")
-    return found
 
 
 def _rising(points: list[tuple[float, float]]) -> list[tuple[float, float]]:
@@ -65,8 +33,6 @@ def _rising(points: list[tuple[float, float]]) -> list[tuple[float, float]]:
     return points
 
 
-FilePath = Annotated[Path, BeforeValidator(_absolute)]
-FilePaths = Annotated[list[Path], BeforeValidator(_files)]
 Text = Annotated[str, Field(strict=True, min_length=1)]
 Number = Annotated[float, Field(strict=True, allow_inf_nan=False)]
 CurvePoint = Annotated[tuple[Number, Annotated[Number, Field(ge=0, le=100)]], Field(strict=False)]
@@ -260,7 +226,7 @@ class Brief(_Part):
         if zone is not None:
             changes["zones"] = ZonesBrief(force=zone)
         if out is not None:
-            changes["output"] = self.output.model_copy(update={"folder": Path(out).expanduser().absolute()})
+            changes["output"] = self.output.model_copy(update={"folder": _called(out, "--out")})
         return self.model_copy(update=changes)
 
     def not_used_yet(self) -> list[str]:
@@ -300,7 +266,7 @@ def load_brief(path: Path) -> Brief:
         If it cannot be read, is not TOML, lacks a required key, or holds a key or value that is not allowed; the
         message names the key.
     """
-    path = Path(path).expanduser().absolute()
+    path = _called(path, "the brief")
     for what, option, endings in _NO_BRIEFS:
         if path.suffix.lower() in endings:
             raise BriefError(
@@ -347,109 +313,13 @@ def checked_brief(content: Mapping[str, Any], folder: Path, called: str) -> Brie
     try:
         return Brief.model_validate(content, context={"folder": folder})
     except ValidationError as error:
-        raise _brief_error(error, called) from error
+        raise first_fault(error, called, Brief) from error
 
 
-def _brief_error(error: ValidationError, called: str) -> BriefError:
-    """The first fault; an unknown key before others, since a slip of the pen is often why another key is missing."""
-    fault = sorted(error.errors(), key=lambda one: one["type"] != "extra_forbidden")[0]
-    key = _as_written(fault["loc"])
-    if fault["type"] == "extra_forbidden":
-        return _unknown_key(called, key, fault["loc"])
-    if fault["type"] == "missing":
-        return BriefError(f"{called} has no {key}", "that key is needed", "Add it")
-    given = repr(fault["input"])
-    given = given if len(given) <= 60 else given[:57] + "…"
-    return BriefError(f"{called} has {key} = {given}", f"{_needed(fault)} is needed", "Correct that value")
-
-
-_MEANT = {
-    ("shore", "polygons"): "file",
-    ("shore", "lines"): "file",
-    ("zones", "zone"): "force",
-    ("zones", "file"): "polygons",
-    ("plots", "plot"): "id",
-    ("wind", "stations"): "file",
-    ("climate", "file"): "stations",
-}
-"""Keys that belong to another section, by the key that does here what they seem to ask for."""
-
-
-def _unknown_key(called: str, key: str, loc: tuple[int | str, ...]) -> BriefError:
-    name, owner = str(loc[-1]), _model_at(loc[:-1])
-    known = list(owner.model_fields)
-    homes = [section for section, field in Brief.model_fields.items() if name in _fields_of(field.annotation)]
-    near = difflib.get_close_matches(name.lower(), known, n=1)
-    meant = _MEANT.get((str(loc[0]), name))
-    if meant is not None:
-        way_out = f"“{meant}” is what it is called there"
-    elif near:
-        way_out = f"Perhaps “{near[0]}” was meant"
-    elif homes:
-        way_out = f"It belongs under [{homes[0]}]"
-    else:
-        way_out = "Remove it, or correct its spelling"
-    return BriefError(f"{called} has the unknown key {key}", f"known keys there are {', '.join(known)}", way_out)
-
-
-def _model_in(annotation: Any) -> type[BaseModel] | None:
-    """The model that an annotation is or holds, as ``list[Model]`` and ``Model | None`` do."""
-    if isinstance(annotation, type) and issubclass(annotation, BaseModel):
-        return annotation
-    found = (_model_in(inner) for inner in typing.get_args(annotation))
-    return next((one for one in found if one is not None), None)
-
-
-def _fields_of(annotation: Any) -> list[str]:
-    model = _model_in(annotation)
-    return list(model.model_fields) if model is not None else []
-
-
-def _model_at(loc: tuple[int | str, ...]) -> type[BaseModel]:
-    """The model at the end of a path; numbers and the keys of a table of classes stay with the model they hold."""
-    model: type[BaseModel] = Brief
-    for part in loc:
-        if part in model.model_fields:
-            model = _model_in(model.model_fields[str(part)].annotation) or model
-    return model
-
-
-def _as_written(loc: tuple[int | str, ...]) -> str:
-    """A key as the brief writes it: ``[terrain] files``, ``[[constraint]] 2, level``; entries are counted from 1."""
-    words = [str(part + 1) if isinstance(part, int) else part for part in loc]
-    section = Brief.model_fields.get(words[0])
-    if section is None or _model_in(section.annotation) is None:
-        return " ".join(words)
-    is_list = typing.get_origin(section.annotation) is list
-    head = f"[[{words[0]}]]" if is_list else f"[{words[0]}]"
-    return f"{head} {', '.join(words[1:])}".rstrip()
-
-
-_PLAIN = {
-    "string_type": "text in quotes",
-    "string_too_short": "some text",
-    "float_type": "a number without quotes",
-    "int_type": "a whole number without quotes",
-    "int_from_float": "a whole number",
-    "finite_number": "an ordinary number",
-    "bool_type": "true or false",
-    "list_type": "a list in [ ]",
-    "tuple_type": "a pair of numbers in [ ]",
-    "dict_type": "a table of keys",
-    "model_type": "a table of keys",
-}
-_BOUNDS = {"ge": "from {} up", "gt": "above {}", "le": "up to {}", "lt": "below {}"}
-
-
-def _needed(fault: Any) -> str:
-    """What a fault asks for, in plain words."""
-    if fault["type"] == "value_error":
-        return str(fault["ctx"]["error"])
-    if fault["type"] == "literal_error":
-        return f"one of {fault['ctx']['expected']}"
-    if fault["type"] in _PLAIN:
-        return _PLAIN[fault["type"]]
-    for name, words in _BOUNDS.items():
-        if name in fault.get("ctx", {}):
-            return "a number " + words.format(f"{fault['ctx'][name]:g}")
-    return str(fault["msg"]).replace("Input should be", "a value that is").rstrip(".")
+def _called(given: Path, what: str) -> Path:
+    """A path of the call, made absolute."""
+    try:
+        return at_home(given).absolute()
+    except ValueError as error:
+        shown = f"{str(given)!r:.60}"
+        raise BriefError(f"{what} is {shown}", f"{error} is needed", "Correct the call") from error

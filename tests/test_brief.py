@@ -185,6 +185,9 @@ def test_an_unknown_key_is_refused_with_the_nearest_known_one(
         ('name = "road"\nfile', 'name = "road"\ncolumn = "price"\nfile', "[[criterion]] 1", "one of file and column"),
         ('title = "Shortlist for a clinic programme"', "title = 3", "title = 3", "text in quotes"),
         ('[wind]\nfile = "wind.csv"', "[wind]\nfile = 5", "[wind] file = 5", "a file name in quotes"),
+        ('"wind.csv"', '"~nobody-of-that-name/w.csv"', "[wind] file = '~nobody", "no such user here"),
+        ('"wind.csv"', '"w\\u0000.csv"', "[wind] file = 'w\\x00.csv'", "without the character NUL"),
+        ('"wind.csv"', f'"{"é" * 130}.csv"', "[wind] file = 'éé", "at most 255 bytes; this one has 264"),
     ],
 )
 def test_a_wrong_value_is_refused_with_its_key(tmp_path: Path, old: str, new: str, named: str, needed: str) -> None:
@@ -220,6 +223,14 @@ def test_a_brief_that_is_not_there_or_no_toml_is_refused(tmp_path: Path) -> None
     path.write_bytes(b'title = "\xe9"\n')
     with pytest.raises(BriefError, match=r"latin\.toml is not valid TOML"):
         load_brief(path)
+
+
+@pytest.mark.parametrize("name", ["~nobody-of-that-name/brief.toml", "b\0.toml", "b" * 300])
+def test_a_path_of_the_call_that_no_file_could_have_is_refused(name: str) -> None:
+    with pytest.raises(BriefError, match="the brief is '"):
+        load_brief(Path(name))
+    with pytest.raises(BriefError, match="--out is '"):
+        Brief.from_files([Path("a.tif")], None, Path("p.gpkg")).with_choices(out=Path(name))
 
 
 def test_a_brief_from_a_text_editor_with_a_byte_order_mark_is_read(tmp_path: Path) -> None:

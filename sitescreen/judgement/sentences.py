@@ -18,6 +18,9 @@ SCREENED_SHARE = 0.1
 SEEN_FROM_DEG = 1.5
 """A lower skyline is not worth naming: high ground in general holds the breeze back there. (our choice) [°]"""
 
+_WORDS = ("shore", "from_shore", "stands_high", "stands_low", "screened_by", "outcome", "weakest", "cautions")
+"""Facts that are words, beside those that end in ``_kind`` and ``_word``; no number format fits them."""
+
 _CREST = ("crest_above_plot_m", "crest_distance_m", "crest_bearing_deg")
 
 
@@ -100,6 +103,11 @@ def is_known(value: Any) -> bool:
     return not (isinstance(value, float) and math.isnan(value))
 
 
+def is_word(name: str) -> bool:
+    """Whether a fact of that name is a word, and not a number."""
+    return name in _WORDS or name.endswith(("_kind", "_word"))
+
+
 @cache
 def _fields(template: str) -> frozenset[str]:
     return frozenset(name for _, name, _, _ in Formatter().parse(template) if name)
@@ -120,7 +128,7 @@ def check_template(template: str) -> str:
             # attributes and indices could reach into the program, and numbers mean nothing here
             if not name.isidentifier() or conversion:
                 raise ValueError
-            format(1.0 if spec else "word", spec or "")
+            format("word" if is_word(name) else 1.0, spec)
     except ValueError:
         raise ValueError("a sentence with fields such as {rise_m:.0f}") from None
     return template

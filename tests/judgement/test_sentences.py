@@ -41,7 +41,18 @@ def test_no_minus_nought() -> None:
 
 
 @pytest.mark.parametrize(
-    "template", ["{}", "{0}", "{rise_m.real}", "{rise_m[0]}", "{rise_m!r}", "{rise_m:.1q}", "{rise"]
+    "template",
+    [
+        "{}",
+        "{0}",
+        "{rise_m.real}",
+        "{rise_m[0]}",
+        "{rise_m!r}",
+        "{rise_m:.1q}",
+        "{rise",
+        "{shore:.0f}",
+        "{aspect_word:d}",
+    ],
 )
 def test_templates_that_reach_too_far_are_refused(template: str) -> None:
     with pytest.raises(ValueError, match="fields such as"):
