@@ -351,3 +351,8 @@ def test_help_takes_under_four_tenths_of_a_second() -> None:
 def test_names_cannot_steer_the_terminal() -> None:
     assert tame("\x1b]0;owned\x07Up\u202e\nHill") == " ]0;owned Up  Hill"
     assert tame("Nyĩrĩ 山") == "Nyĩrĩ 山"
+
+
+def test_the_package_can_be_run_as_a_module() -> None:
+    told = subprocess.run([sys.executable, "-m", "sitescreen", "--help"], capture_output=True, text=True, check=True)
+    assert told.stdout.startswith("Usage: sitescreen ")

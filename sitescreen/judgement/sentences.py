@@ -128,7 +128,7 @@ def check_template(template: str) -> str:
             # attributes and indices could reach into the program, and numbers mean nothing here
             if not name.isidentifier() or conversion:
                 raise ValueError
-            format("word" if is_word(name) else 1.0, spec)
+            format("word" if is_word(name) else 1.0, spec or "")
     except ValueError:
         raise ValueError("a sentence with fields such as {rise_m:.0f}") from None
     return template
