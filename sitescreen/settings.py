@@ -107,6 +107,16 @@ class WindSettings(Section):
     speed_up_most: Annotated[float, Field(ge=0, le=3)]
 
 
+class SunSettings(Section):
+    """Path and light of the sun."""
+
+    step_h: Annotated[float, Field(ge=0.05, le=1)]
+    linke_turbidity: Annotated[float, Field(ge=1, le=10)]
+    ground_albedo: Share
+    cell_deg: Annotated[float, Field(ge=0.01, le=1)]
+    level_m: Annotated[float, Field(ge=1, le=1000)]
+
+
 class ColdAirSettings(Section):
     """Cold air on calm clear nights."""
 
@@ -215,6 +225,7 @@ class Defaults(Section):
     shore: ShoreSettings
     breeze: BreezeSettings
     wind: WindSettings
+    sun: SunSettings
     cold_air: ColdAirSettings
     cold_layer: ColdLayerSettings
     zones: ZoneSettings
