@@ -8,7 +8,12 @@ from pathlib import Path
 from typing import Any
 
 from sitescreen.brief import Brief
-from sitescreen.inputs.agreement import edge_notes, refuse_land_as_sea, refuse_without_plots
+from sitescreen.inputs.agreement import (
+    check_sea_level,
+    edge_notes,
+    refuse_both_sides_of_180,
+    refuse_without_plots,
+)
 from sitescreen.inputs.cover import Cover, read_cover
 from sitescreen.inputs.normals import Normals, read_normals
 from sitescreen.inputs.plots import Plots, read_plots
@@ -53,6 +58,7 @@ def read_inputs(brief: Brief) -> Inputs:
     """
     terrain = open_terrain(brief.terrain)
     outline = terrain.data_outline()
+    refuse_both_sides_of_180(outline)
     settings = load_defaults()
     smallest_km2 = settings.shore.smallest_lake_km2
     shore = read_shore(brief.shore.file, brief.shore.kind, outline, smallest_km2) if brief.shore else None
@@ -66,13 +72,14 @@ def read_inputs(brief: Brief) -> Inputs:
         outline=outline,
     )
     refuse_without_plots(plots, outline)
+    sea_notes: tuple[Note, ...] = ()
     if shore is not None and brief.shore is not None:
-        refuse_land_as_sea(shore, terrain, outline, kind_of(brief.shore.kind or "") == "land")
+        sea_notes = check_sea_level(shore, terrain, outline, kind_of(brief.shore.kind or "") == "land")
     wind = read_wind(brief.wind.file) if brief.wind else assumed_wind()
     normals = read_normals(brief.climate.stations) if brief.climate else None
     cover = read_cover(brief.cover) if brief.cover else None
     zone_map = read_zone_map(Path(brief.zones.polygons)) if brief.zones.polygons else None
-    notes: list[Note] = []
+    notes: list[Note] = list(sea_notes)
     for read in (terrain, shore, plots, wind, normals, cover):
         if read is not None:
             notes.extend(read.notes)

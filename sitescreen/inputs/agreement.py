@@ -18,6 +18,10 @@ from sitescreen.inputs.terrain import Terrain
 from sitescreen.lattice import blocks_of
 from sitescreen.notes import Note
 
+ZERO_WITHIN_M = 3.0
+"""A sea this near to 0 m stands at its level, whatever tide and model make of it. Common practice, no source. [m]"""
+SEAM_DEG = 1.0
+"""Ground this near to the 180° meridian needs what lies across it. [°]"""
 SAMPLES = 40
 """Places at which mapped sea is compared with the terrain."""
 HIGH_M, HIGH_SHARE = 30.0, 0.9
@@ -26,6 +30,28 @@ lower everywhere. Common practice, no source."""
 LEVEL_M = 10.0
 """Ground whose middle half varies less is level like water, whatever zero its heights count from (ellipsoidal ones are
 off by up to 100 m). [m]"""
+
+
+def refuse_both_sides_of_180(outline: Any) -> None:
+    """Refuse terrain on both sides of the 180° meridian: shores and plots cannot be followed across it.
+
+    Parameters
+    ----------
+    outline : shapely geometry, EPSG:4326
+        Footprint of the terrain, longitudes from −180 to 180.
+
+    Raises
+    ------
+    InputError
+    """
+    sides = (shapely.box(180.0 - SEAM_DEG, -90.0, 180.0, 90.0), shapely.box(-180.0, -90.0, SEAM_DEG - 180.0, 90.0))
+    if all(shapely.intersects(outline, side) for side in sides):
+        raise InputError(
+            "the terrain lies on both sides of the 180° meridian",
+            "terrain on one side of it is needed, since shores and plots cannot be followed across it yet",
+            "Cut terrain, shoreline and plots along 180° and screen each side by itself; what needs ground from "
+            "across the cut is then unknown",
+        )
 
 
 def refuse_without_plots(plots: Plots, outline: Any) -> None:
@@ -115,8 +141,8 @@ def edge_notes(plots: Plots, outline: Any, reach_m: float) -> tuple[Note, ...]:
     return (Note("warning", "terrain", text),)
 
 
-def refuse_land_as_sea(shore: Shore, terrain: Terrain, outline: Any, read_as_land: bool) -> None:
-    """Refuse a shore layer under whose sea the terrain has high ground.
+def check_sea_level(shore: Shore, terrain: Terrain, outline: Any, read_as_land: bool) -> tuple[Note, ...]:
+    """Refuse a shore layer under whose sea the terrain has high ground; say where its sea is level, but not at 0 m.
 
     Parameters
     ----------
@@ -125,6 +151,10 @@ def refuse_land_as_sea(shore: Shore, terrain: Terrain, outline: Any, read_as_lan
     outline : shapely geometry, EPSG:4326
     read_as_land : bool
         Whether the brief calls the polygons land, so that the sea is what they leave.
+
+    Returns
+    -------
+    tuple of Note
 
     Raises
     ------
@@ -144,11 +174,15 @@ def refuse_land_as_sea(shore: Shore, terrain: Terrain, outline: Any, read_as_lan
             unknown += 1
         else:
             heights.append(height)
-        low = sum(one <= HIGH_M for one in heights)
-        if low > (1.0 - HIGH_SHARE) * len(lon) or unknown > len(lon) / 2:
-            return  # a sea, or one that the terrain says nothing of
-    if not heights or np.subtract(*np.percentile(heights, [75, 25])) < LEVEL_M:
-        return
+        at_zero = sum(abs(one) <= ZERO_WITHIN_M for one in heights)
+        if at_zero > (1.0 - HIGH_SHARE) * len(lon) or unknown > len(lon) / 2:
+            return ()  # a sea, or one that the terrain says nothing of
+    if not heights:
+        return ()
+    if np.subtract(*np.percentile(heights, [75, 25])) < LEVEL_M:
+        return _level_notes(float(np.median(heights)))
+    if sum(one > HIGH_M for one in heights) < HIGH_SHARE * len(lon):
+        return ()
     name, highest = shore.stamp.name, max(heights)
     if read_as_land:
         raise InputError(
@@ -161,6 +195,19 @@ def refuse_land_as_sea(shore: Shore, terrain: Terrain, outline: Any, read_as_lan
         "polygons that are what the brief calls them are needed",
         'If they are land, write kind = "land" under [shore] (--shore-kind land on the command line)',
     )
+
+
+def _level_notes(sea_m: float) -> tuple[Note, ...]:
+    """What a level sea at some height says of the heights."""
+    if abs(sea_m) <= ZERO_WITHIN_M:
+        return ()
+    text = (
+        f"The mapped sea stands at {sea_m:.0f} m in the terrain, not at 0 m: its heights seem to count from another "
+        "level than the sea's (the ellipsoid, perhaps). Elevations are off by as much, and with them the climate zones "
+        f"by altitude{' and everything that looks over the shore' if sea_m < 0 else ''}. Use heights above mean sea "
+        "level."
+    )
+    return (Note("warning", "terrain", text),)
 
 
 def _places_in_sea(shore: Shore, outline: Any) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
@@ -182,4 +229,4 @@ def _places_in_sea(shore: Shore, outline: Any) -> tuple[NDArray[np.float64], NDA
     return lon[inside][:SAMPLES], lat[inside][:SAMPLES]
 
 
-__all__ = ["edge_notes", "refuse_land_as_sea", "refuse_without_plots"]
+__all__ = ["check_sea_level", "edge_notes", "refuse_both_sides_of_180", "refuse_without_plots"]

@@ -83,9 +83,11 @@ class Shore:
         """The waters of one kind near a grid, in its system."""
         back = Transformer.from_crs(grid.crs, "EPSG:4326", always_xy=True)
         west, south, east, north = back.transform_bounds(*grid.bounds, densify_pts=51)
-        near = (west - 0.05, south - 0.05, east + 0.05, north + 0.05)
+        # a grid's rim may lie across the 180° meridian: its east is then the smaller number
+        spans = [(west, east)] if west <= east else [(west, 180.0), (-180.0, east)]
         parts = polygon_parts(self.waters.geometry.values[(self.waters["kind"] == kind).to_numpy()])
-        clipped = polygon_parts(shapely.clip_by_rect(parts, *near))
+        near = [shapely.clip_by_rect(parts, a - 0.05, south - 0.05, b + 0.05, north + 0.05) for a, b in spans]
+        clipped = polygon_parts(np.concatenate(near))
         there = Transformer.from_crs("EPSG:4326", grid.crs, always_xy=True)
         return _moved(shapely.segmentize(clipped, STRAIGHT_DEG), there)
 

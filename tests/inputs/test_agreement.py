@@ -8,11 +8,13 @@ import numpy as np
 import pytest
 import rasterio
 from affine import Affine
+from shapely import union_all
 from shapely.geometry import Point, box
 
 from sitescreen.brief import Brief, checked_brief
 from sitescreen.errors import InputError
 from sitescreen.inputs import Inputs, read_inputs
+from sitescreen.inputs.agreement import refuse_both_sides_of_180
 
 WEST, NORTH, STEP, N = 39.0, -4.0, 3.0 / 3600.0, 240
 EAST, SOUTH = WEST + N * STEP, NORTH - N * STEP  # 39.0–39.2° E, 4.2–4.0° S
@@ -95,13 +97,31 @@ def test_sea_called_land_is_refused(tmp_path: Path) -> None:
     assert with_shore(tmp_path, EAST_HALF, "sea").shore is not None
 
 
-@pytest.mark.parametrize("sea_m", [0.0, -9999.0, 64.0], ids=["level", "no data", "ellipsoidal heights"])
-def test_a_sea_passes(tmp_path: Path, sea_m: float) -> None:
+@pytest.mark.parametrize(
+    ("sea_m", "said"),
+    [(0.0, ""), (-9999.0, ""), (64.0, "stands at 64 m"), (-28.0, "stands at -28 m")],
+    ids=["level", "no data", "ellipsoid below", "ellipsoid above"],
+)
+def test_a_sea_passes_and_its_height_is_said_where_it_is_not_0(tmp_path: Path, sea_m: float, said: str) -> None:
     """A crude map whose sea takes in 10 % of high coast passes too; no data says nothing of the sea."""
     values = heights()
     values[:, N // 2 :] = sea_m
-    assert with_shore(tmp_path, box(39.09, SOUTH, EAST, NORTH), "sea", values).shore is not None
+    notes = with_shore(tmp_path, box(39.09, SOUTH, EAST, NORTH), "sea", values).notes
+    found = [note.text for note in notes if "The mapped sea stands at" in note.text]
+    assert len(found) == bool(said)
+    assert all(said in text for text in found)
 
 
 def test_a_lake_may_lie_high(tmp_path: Path) -> None:
     assert with_shore(tmp_path, Point(39.05, -4.1).buffer(0.02), "lake").shore is not None
+
+
+# terrain and the 180° meridian
+
+
+def test_terrain_across_180_is_refused_and_on_one_side_of_it_is_not() -> None:
+    east_of_it = box(-180.0, -17.0, -179.8, -16.8)
+    with pytest.raises(InputError, match=r"both sides of the 180° meridian.*screen each side by itself"):
+        refuse_both_sides_of_180(union_all([box(179.8, -17.0, 180.0, -16.8), east_of_it]))
+    refuse_both_sides_of_180(east_of_it)
+    refuse_both_sides_of_180(union_all([box(120.0, -9.0, 121.0, -8.0), box(-78.0, -1.0, -77.0, 0.0)]))

@@ -272,6 +272,17 @@ def test_cells_are_water_where_their_centres_are(tmp_path: Path) -> None:
     assert (found != expected).sum() <= 2
 
 
+def test_a_grid_whose_rim_lies_across_180_has_its_water(tmp_path: Path) -> None:
+    """A lake of 1 km by 1 km that ends 1 km short of the meridian, under a grid that ends 1 km beyond it."""
+    frame = box(179.5, -17.5, 180.0, -16.5)
+    x, y = Transformer.from_crs("EPSG:4326", "EPSG:32760", always_xy=True).transform(180.0, -17.0)
+    grid = Grid("EPSG:32760", round(x, -1) - 4000.0, round(y, -1) + 2000.0, 100.0, 40, 50)
+    away = 1000.0 / WGS84.inv(179.0, -17.0, 180.0, -17.0)[2]
+    lake = box(180.0 - 2.0 * away, -17.0, 180.0 - away, -17.0 + 1.0 / 110.66)
+    shore = read_shore(write(tmp_path / "s.gpkg", [lake]), "lake", frame)
+    assert (shore.water_kind(grid) == 2).sum() == pytest.approx(100, abs=12)
+
+
 def test_the_share_of_a_plot_in_water(tmp_path: Path) -> None:
     lake = box(39.3, -4.5, 39.5, -4.3).difference(box(39.39, -4.41, 39.41, -4.39))
     shore = read_shore(write(tmp_path / "s.gpkg", [lake]), "lake", FRAME)
