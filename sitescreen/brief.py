@@ -78,6 +78,7 @@ class PlotsBrief(_Part):
     crs: Text | None = None
     point_radius_m: Annotated[Number, Field(gt=0, le=5000)] = 60.0  # 12 cells of 30 m: slope needs 9
     footprint_m2: Annotated[Number, Field(gt=0, le=1e6)] = 400.0
+    without: list[Text] = []
 
 
 class WindBrief(_Part):
@@ -220,9 +221,21 @@ class Brief(_Part):
             content["output"] = {"folder": out}
         return checked_brief(content, Path.cwd(), "the call")
 
-    def with_choices(self, zone: str | None = None, out: Path | None = None) -> "Brief":
-        """The same brief with a zone for all plots, or another folder for the results; None changes nothing."""
+    def with_choices(
+        self,
+        zone: str | None = None,
+        out: Path | None = None,
+        without: Sequence[str] = (),
+        seed: int | None = None,
+    ) -> "Brief":
+        """The same brief with choices of the call: a zone for all plots, another folder for the results, plots to
+        leave out beside those of the brief, another seed for the trials. None and () change nothing.
+        """
         changes: dict[str, Any] = {}
+        if without:
+            changes["plots"] = self.plots.model_copy(update={"without": [*self.plots.without, *without]})
+        if seed is not None:
+            changes["judge"] = self.judge.model_copy(update={"seed": seed})
         if zone is not None:
             changes["zones"] = ZonesBrief(force=zone)
         if out is not None:

@@ -15,6 +15,7 @@ from sitescreen.climate.normals import climate_notes, plot_climate
 from sitescreen.climate.zones import ZoneShares, memberships, zone_shares
 from sitescreen.grid import Field, joined
 from sitescreen.inputs import Inputs, read_inputs
+from sitescreen.inputs.brief_record import brief_for_record
 from sitescreen.inputs.zone_map import zone_at
 from sitescreen.judgement.cautions import load_cautions
 from sitescreen.judgement.certainty import Certainty, certainty
@@ -77,7 +78,12 @@ REASONS_RECORDED = 2000
 """The record keeps the reasons of so many plots, the first in rank; more would make it too large to mail."""
 
 
-def screen(brief: Brief, progress: Progress | None = None) -> "Screening":
+def screen(
+    brief: Brief,
+    progress: Progress | None = None,
+    settings: Defaults | None = None,
+    profiles: Mapping[str, ZoneProfile] | None = None,
+) -> "Screening":
     """Read a brief's inputs, measure every plot's ground, judge and rank it.
 
     Parameters
@@ -85,6 +91,10 @@ def screen(brief: Brief, progress: Progress | None = None) -> "Screening":
     brief : Brief
     progress : Progress, optional
         Told when each stage begins and ends.
+    settings : Defaults, optional
+        Other than those of ``config/``, such as an earlier run's.
+    profiles : mapping of zone to ZoneProfile, optional
+        Other than those that the brief asks for.
 
     Returns
     -------
@@ -97,10 +107,11 @@ def screen(brief: Brief, progress: Progress | None = None) -> "Screening":
         If an input cannot be used.
     """
     progress = progress or Progress()
-    settings = load_defaults()
+    settings = settings or load_defaults()
     with progress.step("Reading the inputs"):
         inputs = read_inputs(brief)
-        profiles, compared = profiles_of(brief, settings)
+        asked_for, compared = profiles_of(brief, settings)
+        profiles = dict(profiles or asked_for)
         own = own_readings(brief, inputs.plots.table)
     measured = [measure(block, rows, inputs, settings, progress) for block, rows in plots_by_block(inputs)]
     with progress.step("Judging the plots"):
@@ -301,6 +312,7 @@ def _record(
     return {
         "title": brief.title,
         "versions": {"python": platform.python_version(), **{name: version(name) for name in packages}},
+        "brief": brief_for_record(brief, (*inputs.stamps, *own.stamps)),
         "inputs": [asdict(stamp) for stamp in (*inputs.stamps, *own.stamps)],
         "terrain": {
             "cell_size_m": inputs.terrain.cell_size_m,

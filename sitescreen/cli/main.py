@@ -11,6 +11,7 @@ _COMMANDS = {
     "check": "Read every input, compute nothing, say what was understood, assumed and missing.",
     "zones": "Print the climate zones, or one zone's profile with weights and sources.",
     "why": "Say why a plot stands where it does, from the results of a run.",
+    "compare": "Say what moved between two runs, and which of their inputs moved it.",
 }
 
 

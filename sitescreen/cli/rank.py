@@ -29,6 +29,7 @@ if TYPE_CHECKING:
     "rank",
     epilog=examples(
         "sitescreen rank demo_region/brief.toml",
+        "sitescreen rank demo_region/brief.toml --without 5 --out what_if",
         "sitescreen rank --terrain tile.tif --shore shore.gpkg --shore-kind sea --plots plots.gpkg --out results",
     ),
 )
@@ -39,6 +40,10 @@ if TYPE_CHECKING:
 @plots_option
 @zone_option
 @click.option("--out", type=EXISTING, help="Folder for the results. Default: the brief's, else “out”.")
+@click.option(
+    "--without", metavar="PLOT", multiple=True, help="What if this plot were not there? It stays listed; repeatable."
+)
+@click.option("--seed", type=click.IntRange(0, 2**63 - 1), help="Start of the drawn trials. Default: the brief's.")
 @in_one_line
 def command(
     brief: Path | None,
@@ -48,6 +53,8 @@ def command(
     plots: Path | None,
     zone: str | None,
     out: Path | None,
+    without: tuple[str, ...],
+    seed: int | None,
 ) -> None:
     """Rank the plots of a BRIEF, or of files named by options.
 
@@ -60,6 +67,7 @@ def command(
     from sitescreen.screening import screen
 
     the_brief = asked(brief, terrain, shore, shore_kind, plots, zone, out)
+    the_brief = the_brief.with_choices(without=without, seed=seed)
     folder = the_brief.output.folder
     check_writable(folder)  # before the work, not after it
     say_if_first_run()

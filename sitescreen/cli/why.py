@@ -1,8 +1,5 @@
 """``sitescreen why``: one plot's place and reasons, from the results of a run."""
 
-import csv
-import difflib
-import json
 from collections.abc import Iterator, Mapping
 from pathlib import Path
 from typing import Any
@@ -22,84 +19,21 @@ def command(result: Path, plot: str) -> None:
     PLOT is the plot's identifier, or its name where only one plot has it.
     """
     from sitescreen.cli._show import tame
-    from sitescreen.errors import InputError
+    from sitescreen.inputs.plot_named import plot_named
+    from sitescreen.inputs.results import does_not_hold_together, read_result
 
-    record = _record(result)
-    row = _row(result, plot)
+    read = read_result(result)
+    record, rows = read.record, read.rows
+    found = plot_named(plot, [row["plot"] for row in rows], [row["name"] for row in rows], str(result / "ranking.csv"))
+    row = rows[found]
     try:
         profile = record.get("profiles", {}).get(row["zone"], {})
         reasons = record.get("reasons", {}).get(row["plot"])
         lines = [*_place(row, record["plots"], record["certainty"]), *_marks(row, profile), *_reasons(row, reasons)]
     except (KeyError, TypeError, ValueError, AttributeError) as error:
-        raise InputError(
-            f"the results in {result} do not hold together ({error})",
-            "ranking.csv and record.json of one run of this version are needed",
-            "Run “sitescreen rank” again",
-        ) from error
+        raise does_not_hold_together(result, error) from error
     for line in lines:
         click.echo(tame(line))
-
-
-def _record(folder: Path) -> dict[str, Any]:
-    from sitescreen.errors import InputError
-
-    path = folder / "record.json"
-    try:
-        content = json.loads(path.read_text(encoding="utf-8"))
-        if isinstance(content, dict):
-            return content
-        said = "it is no record"
-    except OSError as error:
-        said = str(error.strerror)
-    except ValueError as error:
-        said = str(error)
-    raise InputError(
-        f"{path} cannot be read ({said})",
-        "a folder that “sitescreen rank” wrote is needed",
-        "Name the folder of the results, such as demo_region/out",
-    )
-
-
-def _row(folder: Path, plot: str) -> dict[str, str]:
-    """The plot's row of the ranking; by identifier, else by a name that only one plot has."""
-    from sitescreen.errors import InputError
-
-    path = folder / "ranking.csv"
-    named: list[dict[str, str]] = []
-    known: list[str] = []
-    try:
-        with path.open(encoding="utf-8", newline="") as file:
-            for row in csv.DictReader(file):
-                told = {column: _as_given(value or "") for column, value in row.items() if column is not None}
-                if told["plot"] == plot:
-                    return told
-                known.append(told["plot"])
-                if told["name"].casefold() == plot.casefold():
-                    named.append(told)
-    except (OSError, UnicodeDecodeError, csv.Error, KeyError) as error:
-        raise InputError(
-            f"{path} cannot be read as a ranking ({error})",
-            "the table that “sitescreen rank” wrote is needed",
-            "Run it again, or name another folder",
-        ) from error
-    if len(named) == 1:
-        return named[0]
-    if named:
-        said = f"{len(named)} plots are called {plot!r}: {', '.join(one['plot'] for one in named[:8])}"
-        raise InputError(said, "one plot is needed", "Give its identifier")
-    near = difflib.get_close_matches(plot, known, n=1)
-    raise InputError(
-        f"{path} has no plot {plot!r}",
-        f"one of its {len(known)} plots is needed: {', '.join(known[:8])}{' …' if len(known) > 8 else ''}",
-        f"Perhaps {near[0]!r} was meant" if near else "Look it up in the table",
-    )
-
-
-def _as_given(text: str) -> str:
-    """A cell without the apostrophe that keeps spreadsheets from running it."""
-    from sitescreen.deliverables.table import STARTS_A_FORMULA
-
-    return text[1:] if text.startswith("'") and text[1:].startswith(STARTS_A_FORMULA) else text
 
 
 def _place(row: Mapping[str, str], plots: Mapping[str, Any], certainty: Mapping[str, Any]) -> Iterator[str]:

@@ -10,13 +10,10 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from sitescreen.deliverables.columns import Column
+from sitescreen.inputs.results import STARTS_A_FORMULA
 
 if TYPE_CHECKING:
     import pandas as pd
-
-STARTS_A_FORMULA = ("=", "+", "-", "@", "\t", "\n")
-"""A spreadsheet may run a cell that begins with one of these."""
-
 
 BEARING = "° from true north"
 """The unit of columns that hold bearings."""

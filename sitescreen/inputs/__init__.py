@@ -16,6 +16,7 @@ from sitescreen.inputs.agreement import (
 )
 from sitescreen.inputs.cover import Cover, read_cover
 from sitescreen.inputs.normals import Normals, read_normals
+from sitescreen.inputs.plot_named import without_plots
 from sitescreen.inputs.plots import Plots, read_plots
 from sitescreen.inputs.shore import Shore, read_shore
 from sitescreen.inputs.shore_kinds import kind_of
@@ -72,6 +73,7 @@ def read_inputs(brief: Brief) -> Inputs:
         outline=outline,
     )
     refuse_without_plots(plots, outline)
+    plots = without_plots(plots, brief.plots.without, brief.plots.file.name)
     sea_notes: tuple[Note, ...] = ()
     if shore is not None and brief.shore is not None:
         sea_notes = check_sea_level(shore, terrain, outline, kind_of(brief.shore.kind or "") == "land")
