@@ -228,8 +228,18 @@ class Brief(_Part):
         without: Sequence[str] = (),
         seed: int | None = None,
     ) -> "Brief":
-        """The same brief with choices of the call: a zone for all plots, another folder for the results, plots to
-        leave out beside those of the brief, another seed for the trials. None and () change nothing.
+        """The same brief with choices of the call; None and () change nothing.
+
+        Parameters
+        ----------
+        zone : str, optional
+            For all plots.
+        out : Path, optional
+            Another folder for the results.
+        without : sequence of str
+            Plots to leave out beside those that the brief leaves out.
+        seed : int, optional
+            Another start of the trials.
         """
         changes: dict[str, Any] = {}
         if without:

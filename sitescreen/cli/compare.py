@@ -31,9 +31,11 @@ def command(first: Path, second: Path, no_split: bool) -> None:
     from sitescreen.cli._show import tame
     from sitescreen.inputs.results import does_not_hold_together, read_result
     from sitescreen.judgement.comparison import compare, standing
+    from sitescreen.swapping import parts_that_differ
 
     before, after = read_result(first), read_result(second)
     try:
+        parts = parts_that_differ(before.record, after.record)
         shortlist = int(after.record["brief"]["content"]["judge"]["shortlist"])
         tables = standing(before.rows), standing(after.rows)
         lines = list(_compared(compare(*tables, shortlist), *tables, before.record, after.record))
@@ -41,7 +43,7 @@ def command(first: Path, second: Path, no_split: bool) -> None:
         raise does_not_hold_together(second if "brief" not in after.record else first, error) from error
     for line in lines:
         click.echo(tame(line))
-    for line in _split(before, after, *tables, shortlist, no_split):
+    for line in _split(before, after, parts, *tables, shortlist, no_split):
         click.echo(tame(line))
 
 
@@ -91,6 +93,7 @@ def _rank(rank: float) -> str:
 def _split(
     first: "Result",
     second: "Result",
+    parts: tuple[str, ...],
     before: "pd.DataFrame",
     after: "pd.DataFrame",
     shortlist: int,
@@ -100,9 +103,8 @@ def _split(
     from sitescreen.cli._show import TerminalProgress
     from sitescreen.errors import SitescreenError
     from sitescreen.judgement.comparison import compare
-    from sitescreen.swapping import parts_that_differ, swaps
+    from sitescreen.swapping import swaps
 
-    parts = parts_that_differ(first.record, second.record)
     versions = [str(one.record.get("versions", {}).get("sitescreen", "?")) for one in (first, second)]
     yield ""
     if versions[0] != versions[1]:
@@ -114,6 +116,7 @@ def _split(
         return
     if no_split:
         return
+    base = before
     yield f"One at a time in the first run (all together: {_amount(compare(before, after, shortlist))}):"
     try:
         for swap in swaps(first.record, first.folder, second.record, second.folder, parts, TerminalProgress):

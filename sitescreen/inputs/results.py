@@ -72,8 +72,8 @@ def _rows(folder: Path) -> tuple[dict[str, str], ...]:
                 {column: _as_given(value or "") for column, value in row.items() if column is not None}
                 for row in csv.DictReader(file)
             )
-        for row in rows:
-            row["plot"], row["name"]  # noqa: B018  (a table without them is no ranking)
+        if any(not {"plot", "name"} <= set(row) for row in rows):
+            raise KeyError("plot")
     except (OSError, UnicodeDecodeError, csv.Error, KeyError) as error:
         raise InputError(
             f"{path} cannot be read as a ranking ({error})",
