@@ -7,6 +7,7 @@ import sys
 import click
 
 _COMMANDS = {
+    "draft": "Look at the files of a folder and write a starter brief.",
     "rank": "Rank candidate plots by the climate their ground gives them.",
     "check": "Read every input, compute nothing, say what was understood, assumed and missing.",
     "zones": "Print the climate zones, or one zone's profile with weights and sources.",
