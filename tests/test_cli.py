@@ -275,6 +275,15 @@ def test_check_names_plots_near_the_edge(good: Path) -> None:
     assert "3 plots lie within 3 km of the terrain's edge (A, B, C)" in last, "warnings come last"
 
 
+def test_check_names_plots_in_water(good: Path) -> None:
+    """The lake ends in the middle between A and B."""
+    west = box(WEST - 9_000.0, NORTH - 90_000.0, WEST + CELL * 25, NORTH + 90_000.0)
+    gpd.GeoDataFrame(geometry=[west], crs="EPSG:32637").to_file(good / "shore.gpkg")
+    (good / "brief.toml").write_text(BRIEF + '[shore]\nfile = "shore.gpkg"\nkind = "lake"\n', encoding="utf-8")
+    said = CliRunner().invoke(run, ["check", str(good / "brief.toml")]).stdout
+    assert "  mostly in mapped water: A\n" in said
+
+
 def test_a_shore_by_option_says_what_it_holds(good: Path) -> None:
     west = box(WEST - 9_000.0, NORTH - 90_000.0, WEST + 900.0, NORTH + 90_000.0)
     gpd.GeoDataFrame(geometry=[west], crs="EPSG:32637").to_file(good / "shore.gpkg")
@@ -298,7 +307,7 @@ def test_a_file_of_data_is_no_brief(tmp_path: Path, name: str, says: str) -> Non
     assert f"Did you mean {'--terrain' if name == 't.tif' else '--plots'} {name}?" in result.stderr
 
 
-@pytest.mark.parametrize("command", ["rank", "check", "zones", "why"])
+@pytest.mark.parametrize("command", ["rank", "check", "draft", "compare", "zones", "why"])
 def test_help_keeps_examples_on_lines_of_their_own(command: str) -> None:
     """Click leaves lines alone after a backspace character, which it takes out itself."""
     said = CliRunner().invoke(run, [command, "--help"]).stdout

@@ -23,6 +23,9 @@ if TYPE_CHECKING:
     from sitescreen.inputs import Inputs
     from sitescreen.judgement.profiles import ZoneProfile
 
+IN_WATER_SHARE = 0.5
+"""As the caution ``in_water`` has it."""
+
 # measured on two cores: the demo (4.2 million cells) and a 1° tile at 30 m (16 million cells in two blocks)
 START_S, S_A_CELL = 5.0, 2.0e-6
 START_GB, GB_A_CELL = 0.6, 0.1e-6
@@ -64,6 +67,10 @@ def command(
     click.echo(f"Plots: {len(table)} read, {len(fit)} can be judged.")
     for outcome, group in table[table["outcome"] != ""].groupby("outcome", sort=True):
         click.echo(f"  {outcome}: {', '.join(group['plot'].head(8))}{' …' if len(group) > 8 else ''}")
+    if inputs.shore is not None:
+        named = fit["plot"][inputs.shore.share_in_water(fit.geometry) > IN_WATER_SHARE]
+        if len(named):
+            click.echo(f"  mostly in mapped water: {', '.join(named.head(8))}{' …' if len(named) > 8 else ''}")
     blocks = set(blocks_of(fit["lon"].to_numpy(), fit["lat"].to_numpy(), inputs.terrain.cell_size_m))
     grids = [block.window(BLOCK_MARGIN_M, inputs.terrain.data_bounds(block.crs)) for block in blocks]
     cells = [grid.rows * grid.cols for grid in grids]

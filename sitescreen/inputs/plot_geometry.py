@@ -35,6 +35,10 @@ class Ground(NamedTuple):
     """Lists of sentences."""
 
 
+FAR_PARTS_KM = 0.5
+"""Parts farther from their neighbours than this are said to be far apart: a breeze may differ. Our choice. [km]"""
+
+
 def plot_ground(geometry: Geometries, point_radius_m: float, closed_lines: bool) -> Ground:
     """Valid polygons from whatever stood in the file, or the reason why there is none.
 
@@ -198,7 +202,19 @@ def _mend(geometry: Geometries, remarks: NDArray[np.object_]) -> None:
     for row in np.flatnonzero(shapely.get_type_id(geometry) == _POLYGONS):
         number = shapely.get_num_geometries(geometry[row])
         if number > 1:
-            remarks[row].append(f"it is in {number} parts, read together")
+            gap_km = _widest_gap_km(_parts(geometry[row]))
+            apart = f", {gap_km:.1f} km apart: the shore is measured from one of them" if gap_km >= FAR_PARTS_KM else ""
+            remarks[row].append(f"it is in {number} parts, read together{apart}")
+
+
+def _widest_gap_km(parts: Geometries) -> float:
+    """The farthest that any part lies from the part nearest to it, on a map true to scale in the middle. [km]"""
+    middle = np.radians(float(np.mean(shapely.total_bounds(parts)[[1, 3]])))
+    km = np.radians(1.0) * WGS84.a / 1000.0
+    flat = shapely.transform(parts, lambda degrees: degrees * np.array([km * np.cos(middle), km]))
+    tree = shapely.STRtree(flat)
+    _, gap = tree.query_nearest(flat, exclusive=True, return_distance=True, all_matches=False)
+    return float(gap.max(initial=0.0))
 
 
 def areas_m2(geometry: Geometries) -> FloatArray:

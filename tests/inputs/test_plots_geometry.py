@@ -68,6 +68,14 @@ def test_a_crossing_outline_is_mended_and_keeps_both_lobes() -> None:
     assert any("2 parts" in said for said in found.remarks[0])
 
 
+def test_parts_far_apart_are_said_with_their_distance() -> None:
+    """A gap of 0.02° along the parallel of 4° south is 2.22 km; one of 0.002° is not worth a word."""
+    first, near, far = box(39, -4, 39.01, -3.99), box(39.012, -4, 39.02, -3.99), box(39.04, -4, 39.05, -3.99)
+    assert ground(MultiPolygon([first, near])).remarks[0] == ["it is in 2 parts, read together"]
+    (said,) = ground(MultiPolygon([first, near, far])).remarks[0]
+    assert said == "it is in 3 parts, read together, 2.2 km apart: the shore is measured from one of them"
+
+
 def test_nested_collections_give_their_polygons() -> None:
     square = box(39, -4, 39.01, -3.99)
     found = ground(GeometryCollection([GeometryCollection([square, Point(39, -4)]), LineString([(1, 1), (2, 2)])]))
