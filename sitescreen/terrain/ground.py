@@ -1,5 +1,6 @@
 """The ground of one block: every terrain quantity that later stages ask for, derived once."""
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -11,8 +12,9 @@ from sitescreen.settings import TerrainSettings
 from sitescreen.terrain.buildable import chance_buildable
 from sitescreen.terrain.flat_water import FlatWater, flat_water
 from sitescreen.terrain.hollows import Hollows, hollows
+from sitescreen.terrain.horizon import HorizonConsumer, horizon_stream
 from sitescreen.terrain.position import rise_m
-from sitescreen.terrain.sky_view import sky_view
+from sitescreen.terrain.sky_view import SkySum, even_azimuths
 from sitescreen.terrain.slope import Gradient, aspect_deg, gradient, slope_deg
 
 STRIP_CELLS = 3.0
@@ -125,6 +127,7 @@ def read_ground(
     vertical_error_m: float,
     error_range_m: float,
     settings: TerrainSettings,
+    on_horizon: Sequence[HorizonConsumer] = (),
 ) -> Ground:
     """Derive a block's terrain quantities.
 
@@ -140,21 +143,28 @@ def read_ground(
         One standard deviation of the height. [m]
     error_range_m : float
         Distance over which neighbouring errors resemble one another. [m]
+    settings : TerrainSettings
+    on_horizon : sequence of HorizonConsumer
+        Take the horizon over the ground with level water in each of the sky view's azimuths (``sky_azimuths`` of them,
+        evenly spaced from grid north): sun and shelter ride on the one sweep.
     """
     level = water_level_m(elevation, water_kind)
     ground = with_level_water(elevation, water_kind, level)
     flat = flat_water(with_level_water(stored, water_kind, level), settings.smallest_water_km2)
     outlets = open_to_cold_air(water_kind, ground.grid.cell_size_m, settings.smallest_outlet_km2)
+    slope = gradient(ground)
+    sky = SkySum(slope)
+    horizon_stream(ground, even_azimuths(settings.sky_azimuths), [sky, *on_horizon])
     return Ground(
         elevation=ground,
         water_kind=water_kind,
         over_water_m=ground.values - level,
         flat=flat,
-        gradient=gradient(ground),
+        gradient=slope,
         slope=slope_deg(ground),
         aspect=aspect_deg(ground),
         buildable=chance_buildable(ground, settings.buildable_limit_pct, vertical_error_m, error_range_m),
         rise=rise_m(ground, settings.rise_radius_m),
-        sky_view=sky_view(ground, settings.sky_azimuths),
+        sky_view=sky.sky_view(),
         hollows=hollows(ground, outlets),
     )

@@ -4,7 +4,7 @@ Azimuths are grid azimuths: clockwise from grid north, the direction looked into
 """
 
 import math
-from collections.abc import Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from typing import Any, NamedTuple
 
 import numpy as np
@@ -108,7 +108,56 @@ def sweeps_transposed(azimuth_deg: float) -> bool:
     return abs(math.cos(azimuth)) >= abs(math.sin(azimuth)) * (1.0 - 1e-12)
 
 
-def sweep(
+HorizonConsumer = Callable[[float, NDArray[np.float32]], None]
+"""Takes one azimuth [°, clockwise from grid north] and the tangents of :func:`horizon_tangent` in that direction, shape
+(rows, cols). The array is overwritten by the next azimuth: what is to stay must be added up or copied."""
+
+
+def horizon_stream(
+    elevation: Field,
+    azimuths_deg: Iterable[float],
+    consumers: Sequence[HorizonConsumer],
+    earth_curvature: bool = True,
+) -> None:
+    """Hand every consumer the horizon in one direction after another; one pass serves them all, one field is held.
+
+    Parameters
+    ----------
+    elevation : Field, shape (rows, cols)
+        Height. [m]
+    azimuths_deg : iterable of float
+        Directions looked into, clockwise from grid north. [°]
+    consumers : sequence of HorizonConsumer
+        Sky view, sun hours … each adds up what it needs.
+    earth_curvature : bool
+        See :func:`horizon_tangent`.
+    """
+    for azimuth, tangent in _tangents(elevation, azimuths_deg, earth_curvature):
+        for consumer in consumers:
+            consumer(azimuth, tangent)
+
+
+def _tangents(
+    elevation: Field, azimuths_deg: Iterable[float], earth_curvature: bool
+) -> Iterator[tuple[float, NDArray[np.float32]]]:
+    """The tangents in one direction after another, in one array that is written anew each time."""
+    grid = elevation.grid
+    out = np.empty(grid.shape, dtype=np.float32)
+    seen = out.view()
+    seen.flags.writeable = False
+    turned, turned_out = None, np.empty((0, 0), dtype=np.float32)
+    for azimuth in azimuths_deg:
+        if sweeps_transposed(azimuth):
+            if turned is None:
+                turned, turned_out = transposed(elevation.values), np.empty(grid.shape[::-1], dtype=np.float32)
+            _sweep(turned, grid, azimuth, earth_curvature, turned_out)
+            in_bands(transpose, grid.rows, turned_out, out)
+        else:
+            _sweep(elevation.values, grid, azimuth, earth_curvature, out)
+        yield azimuth, seen
+
+
+def _sweep(
     values: NDArray[np.float32], grid: Grid, azimuth_deg: float, earth_curvature: bool, out: NDArray[np.float32]
 ) -> None:
     """Write the tangents of :func:`horizon_tangent` to ``out``.
@@ -175,11 +224,8 @@ def horizon_tangent(elevation: Field, azimuth_deg: float, earth_curvature: bool 
     .. [2] V. Timonen and J. Westerholm, "Scalable height field self-shadowing," Comput. Graph. Forum, vol. 29,
        pp. 723–731, 2010.
     """
-    across = sweeps_transposed(azimuth_deg)
-    values = transposed(elevation.values) if across else elevation.values
-    out = np.empty(values.shape, dtype=np.float32)
-    sweep(values, elevation.grid, azimuth_deg, earth_curvature, out)
-    return transposed(out) if across else out
+    _, tangent = next(_tangents(elevation, [azimuth_deg], earth_curvature))
+    return tangent
 
 
 def horizon_sweep(
@@ -203,8 +249,7 @@ def horizon_sweep(
         Angle above the horizontal. [°] Negative where all ground in that direction lies lower; NaN as in
         :func:`horizon_tangent`.
     """
-    for azimuth in azimuths_deg:
-        tangent = horizon_tangent(elevation, azimuth, earth_curvature)
+    for azimuth, tangent in _tangents(elevation, azimuths_deg, earth_curvature):
         angle = np.arctan(tangent)
         np.degrees(angle, out=angle)
         yield azimuth, Field(angle, elevation.grid, "°", f"elevation of the horizon towards {azimuth:g}°")

@@ -6,11 +6,56 @@ import numpy as np
 from numpy.typing import NDArray
 
 from sitescreen.errors import GridError
-from sitescreen.grid import Field, Grid
+from sitescreen.grid import Field
 from sitescreen.terrain._sky_view_kernel import add_direction, finish
-from sitescreen.terrain.horizon import sweep, sweeps_transposed, transposed
-from sitescreen.terrain.slope import gradient
+from sitescreen.terrain.horizon import horizon_stream
+from sitescreen.terrain.slope import Gradient, gradient
 from sitescreen.terrain.threads import in_bands
+
+
+def even_azimuths(azimuths: int) -> NDArray[np.float64]:
+    """Directions evenly spaced from grid north. [°] Shape (azimuths,).
+
+    Raises
+    ------
+    GridError
+        With fewer than 4.
+    """
+    if azimuths < 4:
+        raise GridError(
+            f"a sky view from {azimuths} directions was asked for",
+            "at least 4 directions are needed",
+            "Set sky_azimuths to 36",
+        )
+    return 360.0 / azimuths * np.arange(azimuths, dtype=np.float64)
+
+
+class SkySum:
+    """Adds up the sky view of :func:`sky_view`, one azimuth after another; a consumer of the horizon stream.
+
+    Parameters
+    ----------
+    slope : Gradient
+        Of the ground.
+    """
+
+    def __init__(self, slope: Gradient) -> None:
+        self._slope = slope
+        self._total = np.zeros(slope.east.grid.shape, dtype=np.float32)
+        self._azimuths = 0
+
+    def __call__(self, azimuth_deg: float, tangent: NDArray[np.float32]) -> None:
+        """Add one of evenly spaced azimuths: the horizon's tangents there, shape (rows, cols)."""
+        sin, cos = np.float32(math.sin(math.radians(azimuth_deg))), np.float32(math.cos(math.radians(azimuth_deg)))
+        east, north = self._slope.east.values, self._slope.north.values
+        in_bands(add_direction, tangent.shape[0], tangent, east, north, sin, cos, self._total)
+        self._azimuths += 1
+
+    def sky_view(self) -> Field:
+        """The sky view factor of all azimuths so far."""
+        total, grid = self._total.copy(), self._slope.east.grid
+        in_bands(finish, grid.rows, total, self._slope.east.values, self._slope.north.values, self._azimuths)
+        return Field(total, grid, "1", "sky view factor, with the slope's own horizon")
 
 
 def sky_view(elevation: Field, azimuths: int = 36) -> Field:
@@ -46,51 +91,7 @@ def sky_view(elevation: Field, azimuths: int = 36) -> Field:
     .. [2] J. Dozier, "Revisiting topographic horizons in the era of big data and parallel computing," IEEE Geosci.
        Remote Sens. Lett., vol. 19, 2022, eq. 3 (the slope's own horizon).
     """
-    if azimuths < 4:
-        raise GridError(
-            f"a sky view from {azimuths} directions was asked for",
-            "at least 4 directions are needed",
-            "Set sky_azimuths to 36",
-        )
-    grid = elevation.grid
-    slope = gradient(elevation)
-    every = 360.0 / azimuths * np.arange(azimuths)
-    # azimuths near north and south are swept, and added up, over the transposed ground
-    total = np.zeros(grid.shape, dtype=np.float32)
-    _add(
-        total,
-        elevation.values,
-        grid,
-        slope.east.values,
-        slope.north.values,
-        [a for a in every if not sweeps_transposed(a)],
-    )
-    other = np.zeros(grid.shape[::-1], dtype=np.float32)
-    _add(
-        other,
-        transposed(elevation.values),
-        grid,
-        transposed(slope.east.values),
-        transposed(slope.north.values),
-        [a for a in every if sweeps_transposed(a)],
-    )
-    total += transposed(other)
-    del other
-    in_bands(finish, grid.rows, total, slope.east.values, slope.north.values, azimuths)
-    return Field(total, grid, "1", "sky view factor, with the slope's own horizon")
-
-
-def _add(
-    total: NDArray[np.float32],
-    values: NDArray[np.float32],
-    grid: Grid,
-    east: NDArray[np.float32],
-    north: NDArray[np.float32],
-    azimuths_deg: list[float],
-) -> None:
-    """Add the azimuths' integrands to the running total, one after the other; only one horizon is ever held."""
-    tangent = np.empty(total.shape, dtype=np.float32)
-    for azimuth in azimuths_deg:
-        sweep(values, grid, azimuth, True, tangent)
-        sin, cos = np.float32(math.sin(math.radians(azimuth))), np.float32(math.cos(math.radians(azimuth)))
-        in_bands(add_direction, total.shape[0], tangent, east, north, sin, cos, total)
+    every = even_azimuths(azimuths)
+    total = SkySum(gradient(elevation))
+    horizon_stream(elevation, every, [total])
+    return total.sky_view()

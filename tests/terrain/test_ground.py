@@ -6,6 +6,7 @@ import pytest
 from sitescreen.grid import Field, Grid
 from sitescreen.settings import load_defaults
 from sitescreen.terrain.ground import open_to_cold_air, read_ground, water_level_m, with_level_water
+from sitescreen.terrain.sky_view import sky_view
 
 GRID = Grid("EPSG:32641", 0.0, 300.0, 30.0, 10, 10)
 
@@ -95,3 +96,22 @@ def test_level_ground_or_a_pond_at_the_bottom_does_not_drain_a_hollow(pond: bool
     ground = read_ground(height, height, water, 1.0, 90.0, load_defaults().terrain)
     assert ground.flat.label[50, 50] > 0
     assert ground.hollows.depth_m.values[50, 50] == pytest.approx(25.0, abs=0.01)
+
+
+def test_others_ride_on_the_sky_views_sweep() -> None:
+    """A consumer of the horizon is handed each of the sky view's azimuths once, over the ground with level water."""
+    grid = Grid("EPSG:32641", 0.0, 900.0, 30.0, 30, 30)
+    x, _ = np.meshgrid(grid.x_centres_m(), grid.y_centres_m())
+    values = 0.1 * x
+    values[:, 20:24] = np.nan  # a gap that is mapped as sea, at 0 m
+    height = Field(values, grid, "m", "a slope")
+    water = np.zeros(grid.shape, dtype=np.uint8)
+    water[:, 20:24] = 1
+    told: dict[float, np.ndarray] = {}
+    settings = load_defaults().terrain.model_copy(update={"sky_azimuths": 8})
+    ground = read_ground(
+        height, height, water, 1.0, 90.0, settings, [lambda azimuth, tangent: told.update({azimuth: tangent.copy()})]
+    )
+    assert list(told) == [45.0 * k for k in range(8)]
+    assert np.isfinite(told[90.0][:, 20:24]).all()
+    np.testing.assert_array_equal(ground.sky_view.values, sky_view(ground.elevation, 8).values)

@@ -19,6 +19,7 @@ from sitescreen.terrain.horizon import (
     _lines,
     _rays,
     horizon_profile,
+    horizon_stream,
     horizon_sweep,
     horizon_tangent,
     transposed,
@@ -232,6 +233,24 @@ def test_sweep_streams_degrees() -> None:
     assert first.unit == "°"
     assert first.values[4, 4] == pytest.approx(5.710593, abs=1e-4)
     assert next(sweep)[1].values[4, 4] == pytest.approx(-5.710593, abs=1e-4)
+
+
+@pytest.mark.parametrize("azimuth", [10.0, 100.0])
+def test_one_stream_serves_every_consumer(azimuth: float) -> None:
+    """Each consumer is handed each azimuth once, with the tangents of that direction, which it cannot change."""
+    f = field(hills(30, 3))
+    kept: list[tuple[float, np.ndarray]] = []
+    told: list[float] = []
+
+    def keep(direction: float, tangent: np.ndarray) -> None:
+        kept.append((direction, tangent.copy()))
+        with pytest.raises(ValueError, match="read-only"):
+            tangent[0, 0] = 1.0
+
+    horizon_stream(f, [azimuth, 200.0, 290.0], [keep, lambda direction, _: told.append(direction)])
+    assert told == [direction for direction, _ in kept] == [azimuth, 200.0, 290.0]
+    for direction, tangent in kept:
+        np.testing.assert_array_equal(tangent, horizon_tangent(f, direction))
 
 
 # upwind, within a distance
