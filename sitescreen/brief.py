@@ -82,9 +82,10 @@ class PlotsBrief(_Part):
 
 
 class WindBrief(_Part):
-    """The table of winds."""
+    """The table of winds, and which of its places serves a plot: the nearest, or all by inverse squared distance."""
 
     file: FilePath
+    places: Literal["nearest", "inverse_distance"] = "nearest"
 
 
 class ClimateBrief(_Part):

@@ -1,6 +1,6 @@
 """One block of ground, measured: terrain, then climate, then the readings of its plots."""
 
-from collections.abc import Iterator
+from collections.abc import Collection, Iterator
 from dataclasses import dataclass
 from typing import NamedTuple
 
@@ -9,14 +9,18 @@ from numpy.typing import NDArray
 
 from sitescreen.climate.breeze import PlotBreeze, lake_reach, plot_breeze
 from sitescreen.climate.cold_air import closed_pools, smallest_pool_seen_m
-from sitescreen.climate.wind import wind_fields
+from sitescreen.climate.hill_speed_up import hill_fields
+from sitescreen.climate.sector_winds import SectorWinds, sector_winds
+from sitescreen.climate.wind import FIELD_READINGS, Wanted, wind_fields
+from sitescreen.climate.wind_cover import wind_cover
 from sitescreen.grid import Field, Grid
 from sitescreen.inputs import Inputs
 from sitescreen.inputs.shore import Shore
-from sitescreen.inputs.wind import Rose
 from sitescreen.judgement.coverage import cover
 from sitescreen.judgement.readings import BlockClimate, Readings, block_readings
 from sitescreen.judgement.shore_readings import with_shore
+from sitescreen.judgement.wind_readings import with_wind
+from sitescreen.judgement.wind_slots import SLOT_OF, wind_column
 from sitescreen.lattice import Block, blocks_of, convergence_deg, from_true_north
 from sitescreen.progress import Progress
 from sitescreen.settings import BreezeSettings, Defaults
@@ -31,18 +35,16 @@ FloatArray = NDArray[np.float64]
 BLOCK_MARGIN_M = 12_600.0
 """Ground computed round a block's core: more than any reading of this version looks. [m]"""
 
-VENTILATION_SLOT = "hot_afternoon"
-"""When people want air to move: the slot of the wind table that ventilation uses."""
-
 
 @dataclass(frozen=True)
 class BlockResult:
-    """What one block hands on: readings of its plots, and its fields cut to the block's core."""
+    """What one block hands on: readings of its plots, their winds by sector, and its fields cut to the block's core."""
 
     block: Block
     readings: Readings
     fields: dict[str, Field]
     disagreement: WaterDisagreement
+    winds: SectorWinds
 
 
 def plots_by_block(inputs: Inputs) -> Iterator[tuple[Block, NDArray[np.int64]]]:
@@ -58,7 +60,12 @@ def plots_by_block(inputs: Inputs) -> Iterator[tuple[Block, NDArray[np.int64]]]:
 
 
 def measure(
-    block: Block, rows: NDArray[np.int64], inputs: Inputs, settings: Defaults, progress: Progress
+    block: Block,
+    rows: NDArray[np.int64],
+    inputs: Inputs,
+    settings: Defaults,
+    progress: Progress,
+    slots: Collection[tuple[str, str]] = (),
 ) -> BlockResult:
     """Everything that is read off one block: terrain, then climate, then the readings of its plots.
 
@@ -70,6 +77,8 @@ def measure(
     inputs : Inputs
     settings : Defaults
     progress : Progress
+    slots : collection of (reading, slot)
+        Readings of the wind that profiles ask for in another slot than their own.
     """
     terrain, shore = inputs.terrain, inputs.shore
     plots = inputs.plots.table.iloc[rows]
@@ -86,23 +95,48 @@ def measure(
             water_kind[inside], ground.flat.part(core, inside), heights.ground.part(block.core_bounds)
         )
     with progress.step("Measuring wind and shelter"):
-        north = _block_convergence_deg(grid)
-        roses, place = _roses(inputs, grid)
-        wind = wind_fields(ground.elevation, ground.rise, north, roses, place, settings.wind)
+        covered = wind_cover(inputs.cover, ground.elevation, settings.wind) if inputs.cover else None
+        met = covered.raised(settings.wind) if covered else ground.elevation
+        hills = hill_fields(met, settings.wind)
+        wanted = [
+            Wanted(wind_column(*one), *one) for one in (*_own_slots(), *sorted(slots)) if one[0] in FIELD_READINGS
+        ]
+        wind = wind_fields(
+            met, ground.rise, hills, covered, _block_convergence_deg(grid), inputs.wind, wanted, settings.wind
+        )
+        steep = ground.slope.values > np.degrees(np.arctan(settings.wind.slope_most))
     pools = closed_pools(ground.hollows, terrain.vertical_error_m, settings.cold_air)
     with progress.step("Measuring distance and way to the shore"):
         coast = _coast(shore, lon, lat, block, ground.elevation, settings.breeze)
     with progress.step("Reading the plots"):
         coverage = cover(plots.geometry.to_crs(block.crs), grid)
+        convergence = convergence_deg(block.crs, lon, lat)
         readings = block_readings(
             list(plots["plot"]),
             coverage,
             ground,
-            BlockClimate(wind, pools),
-            convergence_deg(block.crs, lon, lat),
+            BlockClimate(pools),
+            convergence,
             smallest_pool_seen_m(terrain.vertical_error_m, settings.cold_air),
             settings.readings,
         )
+        winds = sector_winds(
+            tuple(plots["plot"]),
+            met,
+            ground.rise,
+            hills,
+            covered,
+            np.searchsorted(coverage.plot, np.arange(len(plots) + 1)),
+            coverage.cell,
+            coverage.share,
+            convergence,
+            settings.readings.known_share_least,
+            settings.wind,
+        )
+        steep_share = coverage.mean(
+            np.where(np.isnan(ground.slope.values), np.nan, steep), settings.readings.known_share_least
+        )
+        readings = with_wind(readings, winds, inputs.wind, lon, lat, steep_share, slots, settings.wind)
         readings = with_shore(readings, coast.near, coast.lake, coast.breeze, coast.onshore_from_deg, settings.breeze)
     fields = {
         "elevation_m": ground.elevation,
@@ -112,13 +146,22 @@ def measure(
         "rise_m": ground.rise,
         "sky_view": ground.sky_view,
         "hollow_depth_m": pools.depth_m,
-        "ventilation": wind.ventilation,
-        "ridge_exposure": wind.ridge_exposure,
-        "sheltered_fraction": wind.sheltered_fraction,
+        # linear flow over hills does not hold on steep ground: no figure is drawn there
+        **{name: _masked(field, steep) for name, field in wind.items()},
         **({"shore_distance_km": coast.distance} if coast.distance is not None else {}),
     }
     own = {name: field.part(block.core_bounds) for name, field in fields.items()}
-    return BlockResult(block, readings, own, disagreement)
+    return BlockResult(block, readings, own, disagreement, winds)
+
+
+def _own_slots() -> list[tuple[str, str]]:
+    """The wind's readings in the slots that they have in the table of plots."""
+    return list(SLOT_OF.items())
+
+
+def _masked(field: Field, hidden: NDArray[np.bool_]) -> Field:
+    """The field, unknown where hidden."""
+    return Field(np.where(hidden, np.float32(np.nan), field.values), field.grid, field.unit, field.what)
 
 
 class _Coast(NamedTuple):
@@ -171,25 +214,3 @@ def _block_convergence_deg(grid: Grid) -> float:
     to_lonlat = Transformer.from_crs(grid.crs, "EPSG:4326", always_xy=True)
     lon, lat = to_lonlat.transform(0.5 * (west + east), 0.5 * (south + north))
     return float(convergence_deg(grid.crs, np.array([lon]), np.array([lat]))[0])
-
-
-def _roses(inputs: Inputs, grid: Grid) -> tuple[list[tuple[Rose, Rose]], NDArray[np.uint8]]:
-    """The wind of each place in the table, and which place is nearest to each cell."""
-    from pyproj import Transformer
-
-    places = inputs.wind.places
-    roses = [(inputs.wind.rose(VENTILATION_SLOT, lon, lat), inputs.wind.rose("year", lon, lat)) for lon, lat in places]
-    if len(places) == 1:
-        return roses, np.zeros(grid.shape, dtype=np.uint8)
-    to_grid = Transformer.from_crs("EPSG:4326", grid.crs, always_xy=True)
-    x = grid.x_centres_m()[None, :]
-    y = grid.y_centres_m()[:, None]
-    nearest = np.zeros(grid.shape, dtype=np.uint8)
-    least = np.full(grid.shape, np.inf, dtype=np.float32)
-    for number, (lon, lat) in enumerate(places):
-        east, north = to_grid.transform(lon, lat)
-        distance = np.hypot(x - east, y - north).astype(np.float32)
-        closer = distance < least
-        nearest[closer] = number
-        least[closer] = distance[closer]
-    return roses, nearest

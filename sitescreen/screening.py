@@ -12,6 +12,8 @@ import pandas as pd
 from sitescreen.brief import Brief
 from sitescreen.climate.cold_air import deficit_k
 from sitescreen.climate.normals import climate_notes, plot_climate
+from sitescreen.climate.sector_winds import SectorWinds
+from sitescreen.climate.sector_winds import together as winds_together
 from sitescreen.climate.zones import ZoneShares, memberships, zone_shares
 from sitescreen.grid import Field, joined
 from sitescreen.inputs import Inputs, read_inputs
@@ -29,11 +31,12 @@ from sitescreen.judgement.own import (
     with_own_criteria,
 )
 from sitescreen.judgement.pairs import Compared, compare_for, with_weights
-from sitescreen.judgement.profiles import ZoneProfile, load_profiles
+from sitescreen.judgement.profiles import ZoneProfile, load_profiles, wind_slots
 from sitescreen.judgement.readings import Readings, stack
 from sitescreen.judgement.reasons import Reasons, reasons
 from sitescreen.judgement.sway import sway_notes, sways
 from sitescreen.judgement.waters import waters_disagree
+from sitescreen.judgement.wind_readings import assumed_columns
 from sitescreen.measuring import BlockResult, measure, plots_by_block
 from sitescreen.notes import Note
 from sitescreen.progress import Progress
@@ -44,7 +47,6 @@ NOT_MEASURED = (
     "cold air held back by narrows without a closed hollow, and cold air in motion",
     "hours of sun and the sun's load on walls",
     "the best bearing for a building's long axis",
-    "driving rain",
     "how certain a rank is given the terrain model's error and the wind (the ranges and chances vary the weights only)",
 )
 
@@ -69,7 +71,6 @@ EMPTY_IN_THIS_VERSION = (
     "night_flow_m2_s",
     "night_flow_speed_m_s",
     "clear_calm_nights",
-    "driving_rain",
 )
 """Columns of the table whose methods are still to come."""
 
@@ -113,7 +114,9 @@ def screen(
         asked_for, compared = profiles_of(brief, settings)
         profiles = dict(profiles or asked_for)
         own = own_readings(brief, inputs.plots.table)
-    measured = [measure(block, rows, inputs, settings, progress) for block, rows in plots_by_block(inputs)]
+    measured = [
+        measure(block, rows, inputs, settings, progress, wind_slots(profiles)) for block, rows in plots_by_block(inputs)
+    ]
     with progress.step("Judging the plots"):
         readings = stack([one.readings for one in measured], list(inputs.plots.table["plot"]))
         return _judged(brief, inputs, measured, readings, own, profiles, compared, settings, progress)
@@ -125,12 +128,14 @@ class Screening:
 
     ``table``: GeoDataFrame in EPSG:4326 with every plot that went in, by rank, those set aside last. ``fields``: what
     was measured, by name (with several UTM zones the zone is added: ``slope_deg_utm41``). ``reasons``: by plot id.
+    ``winds``: what the ground makes of the wind from each sector, rows in the order of the table.
     """
 
     brief: Brief
     table: Any
     fields: Mapping[str, Field]
     reasons: Mapping[str, Reasons]
+    winds: SectorWinds
     profiles: Mapping[str, ZoneProfile]
     notes: tuple[Note, ...]
     not_measured: tuple[str, ...]
@@ -164,7 +169,7 @@ def _judged(
     )
     zones = zone_shares(fits, _stated_zones(brief, inputs), settings.zones, profiles)
     values["cold_deficit_k"] = _deficit(values, zones, settings)
-    halved = ("ventilation", "ridge_exposure", "sheltered_fraction") if inputs.wind.assumed else ()
+    halved = assumed_columns(inputs.wind, profiles)
     judged = judge(
         values,
         zones,
@@ -193,6 +198,7 @@ def _judged(
         table=table,
         fields=_fields(measured),
         reasons=why,
+        winds=winds_together([one.winds for one in measured], tuple(table["plot"]), settings.wind.sectors),
         profiles=profiles,
         notes=notes,
         not_measured=NOT_MEASURED,

@@ -10,7 +10,7 @@ from functools import cache
 from importlib import resources
 from itertools import pairwise
 from pathlib import Path
-from typing import Annotated, Any, TypeVar
+from typing import Annotated, Any, Literal, TypeVar
 
 import annotated_types
 from pydantic import AfterValidator, BaseModel, ConfigDict, Field, ValidationError, model_validator
@@ -94,6 +94,7 @@ class BreezeSettings(Section):
 class WindSettings(Section):
     """Exposure and shelter."""
 
+    sectors: Literal[8, 16]
     shelter_reach_m: Annotated[float, Field(ge=100, le=12_000)]
     receptor_height_m: Annotated[float, Field(ge=0, le=100)]
     shelter_from_tangent: Share
@@ -105,6 +106,14 @@ class WindSettings(Section):
     short_cut_m: Annotated[float, Field(ge=0, le=5000)]
     speed_up_least: Annotated[float, Field(ge=-1, le=0)]
     speed_up_most: Annotated[float, Field(ge=0, le=3)]
+    slope_most: Annotated[float, Field(gt=0, le=2)]
+    slow_ratio: Share
+    worst_energy_least: Share
+    canopy_displacement: Share
+    windbreak_most: Share
+    windbreak_full_heights: Annotated[float, Field(ge=0, le=20)]
+    windbreak_span_heights: Annotated[float, Field(gt=0, le=50)]
+    roughness_fetch_m: Annotated[float, Field(ge=50, le=3000)]
 
 
 class SunSettings(Section):

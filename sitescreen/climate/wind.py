@@ -1,7 +1,7 @@
-"""How windy the ground is compared with open level ground, in each of 16 sectors and over the year.
+"""How windy the ground is compared with open level ground, sector by sector and over a rose: fields of whole blocks.
 
 Hills speed the wind up by linear theory (:mod:`sitescreen.climate.hill_speed_up`); ground upwind shelters by its angle.
-Neutral, moderate wind only: it says nothing of calm nights or of breezes. Ground cover is not looked at yet.
+Neutral, moderate wind only: it says nothing of calm nights or of breezes.
 """
 
 import math
@@ -11,110 +11,157 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
-from sitescreen.climate._wind_kernel import add_sector
-from sitescreen.climate.hill_speed_up import hill_fields
-from sitescreen.grid import Field
-from sitescreen.inputs.wind import Rose
+from sitescreen.climate._wind_kernel import FLOW, POWER, TIME, add_sector, cover_sector, divide_blended
+from sitescreen.climate.hill_speed_up import HillFields
+from sitescreen.climate.roses import LEAST_AWAY_M, RoseSums, rose_sums, sector_bearings_deg
+from sitescreen.climate.wind_cover import CoverFields, closure_of
+from sitescreen.grid import Field, Grid
+from sitescreen.inputs.wind import WindTable
 from sitescreen.settings import WindSettings
 from sitescreen.terrain.horizon import upwind_tangent
 from sitescreen.terrain.threads import in_bands
 
-SECTORS_DEG = np.arange(16) * 22.5
-"""Centres of the wind sectors: the bearing the wind comes from, clockwise from true north. [°]"""
-
 FloatArray = NDArray[np.float64]
 
 
-class WindFields(NamedTuple):
-    """The year's or a slot's wind summed over its sectors; shares of the speed over open level ground."""
+class Wanted(NamedTuple):
+    """One field: a reading in a slot of the wind table."""
 
-    ventilation: Field
-    ridge_exposure: Field
-    sheltered_fraction: Field
+    name: str
+    reading: str
+    slot: str
+
+
+_SUMS = {
+    "ventilation": (FLOW, "flow", "mean wind over that of open level ground"),
+    "ridge_exposure": (POWER, "power", "energy-weighted wind over that of open level ground"),
+    "sheltered_fraction": (TIME, "time", "share of the wind kept off by upwind ground"),
+}
+"""Readings that are sums over the sectors of a cell: what is added, with which of the rose's weights, and its name."""
+
+FIELD_READINGS = tuple(_SUMS)
 
 
 def wind_fields(
     elevation: Field,
     rise: Field,
+    hills: HillFields,
+    cover: CoverFields | None,
     convergence_deg: float,
-    roses: Sequence[tuple[Rose, Rose]],
-    place: NDArray[np.uint8],
+    table: WindTable,
+    wanted: Sequence[Wanted],
     settings: WindSettings,
-) -> WindFields:
-    """Ventilation, ridge exposure and sheltered fraction of every cell.
+) -> dict[str, Field]:
+    """Ventilation, ridge exposure and sheltered fraction of every cell, in the slots asked for.
 
     Parameters
     ----------
     elevation, rise : Field
-        Ground, with the sea at its level [m]; and the rise above the 1 km surroundings, which is known only where the
-        ground around is: the hills' flow is not trusted beside unknown ground.
+        Ground, with the sea at its level and canopies' displacement added [m]; and the rise above the 1 km
+        surroundings, which is known only where the ground around is: the hills' flow is not trusted beside unknown
+        ground.
+    hills : HillFields
+        Of that ground.
+    cover : CoverFields, or None
+        Ground cover, where it is given.
     convergence_deg : float
-        Bearing of grid north from true north. [°] One number a block: at 20° latitude it varies by
-        0.25° either way across a block of 30 m cells, and by 0.7° across one of 90 m.
-    roses : sequence of (ventilation rose, year rose)
-        One pair for each place with a wind table: the slot in which people want air, and the whole year.
-    place : uint8 array, shape (rows, cols)
-        Which pair serves each cell.
+        Bearing of grid north from true north. [°] One number a block: at 20° latitude it varies by 0.25° either way
+        across a block of 30 m cells, and by 0.7° across one of 90 m. Readings of plots do not have this error: see
+        :func:`sitescreen.climate.sector_winds.sector_winds`.
+    table : WindTable
+        Winds at one or several places.
+    wanted : sequence of Wanted
+        Readings among :data:`FIELD_READINGS`.
 
     Returns
     -------
-    WindFields
-        Speed over that of open level ground, F = min(1 + min(ΔS, 0), W)·(1 + max(ΔS, 0)) in each sector: a hollow is
+    dict of name to Field
+        Speed over that of open level ground, F = min(1 + min(ΔS, 0), W)·(1 + max(ΔS, 0))·R in each sector: a hollow is
         not slowed twice, by its own flow and by its rim. ΔS is bent towards its caps, x → cap·tanh(x/cap). Shelter
         W = 1 − 0.7·smoothstep((tan Sx − 0.10)/0.30) of the largest upwind angle Sx (Winstral & Marks 2002, Hydrol.
-        Process. 16:3585–3603); the closure is ours. Then ventilation = Σ p·U·F / Σ p·U in the first slot, ridge
-        exposure = (Σ p·U³·F³ / Σ p·U³)^⅓ over the year, so that strong winds count most, and sheltered fraction
-        = 1 − Σ p·W over the year (high = sheltered). NaN where the ground upwind is unknown in any sector that the rose
-        uses, and within 1 km of unknown ground.
+        Process. 16:3585–3603); the closure is ours. W by canopies upwind where that is less, and R by roughness, are
+        those of :func:`sitescreen.climate._wind_kernel.cover_upwind`; 1 without cover. Then ventilation
+        = Σ p·U·F / Σ p·U, ridge exposure = (Σ p·U³·F³ / Σ p·U³)^⅓, so that strong winds count most, and sheltered
+        fraction = 1 − Σ p·W / Σ p (high = sheltered). NaN where the ground upwind is unknown in any sector that the
+        rose uses, and within 1 km of unknown ground.
     """
-    hills = hill_fields(elevation, settings)
-    air, energy, kept_off = (np.zeros(elevation.grid.shape, dtype=np.float32) for _ in range(3))
-    closure = (
-        settings.shelter_from_tangent,
-        settings.shelter_span_tangent,
-        settings.shelter_most,
-        settings.speed_up_least,
-        settings.speed_up_most,
-    )
-    weights = np.array([sector_weights(ventilation, year) for ventilation, year in roses])  # (places, 3, sectors)
-    for sector, bearing in enumerate(SECTORS_DEG):
+    grid = elevation.grid
+    sums = np.zeros((len(wanted), *grid.shape), dtype=np.float32)
+    closure = closure_of(settings)
+    kinds = np.array([_SUMS[one.reading][0] for one in wanted], dtype=np.int64)
+    weights = _weights(table, wanted, settings.sectors)
+    place, blend = _places(table, grid)
+    if not len(blend):
+        weights = weights / weights.sum(axis=2, keepdims=True)
+    ground, canopy, ln_roughness, how = CoverFields.arrays(cover, settings)
+    left, rough = (np.empty(canopy.shape, dtype=np.float32) for _ in range(2))
+    for sector, bearing in enumerate(sector_bearings_deg(settings.sectors)):
         if not weights[:, :, sector].any():
             continue
         azimuth = (bearing - convergence_deg) % 360.0
+        east, north = math.sin(math.radians(azimuth)), math.cos(math.radians(azimuth))
         tangent = upwind_tangent(elevation, azimuth, settings.shelter_reach_m, settings.receptor_height_m)
+        if cover is not None:
+            in_bands(
+                cover_sector, grid.rows, ground, canopy, ln_roughness, grid.cell_size_m, east, north, how, left, rough
+            )
         in_bands(
             add_sector,
-            elevation.grid.rows,
+            grid.rows,
             tangent.values,
             *hills,
-            math.sin(math.radians(azimuth)),
-            math.cos(math.radians(azimuth)),
+            left,
+            rough,
+            east,
+            north,
             closure,
+            kinds,
             np.ascontiguousarray(weights[:, :, sector]),
             place,
-            air,
-            energy,
-            kept_off,
+            blend,
+            sums,
         )
-    grid = elevation.grid
+    if len(blend):
+        in_bands(divide_blended, grid.rows, blend, weights.sum(axis=2), sums)
     known = np.isfinite(rise.values)
-    return WindFields(
-        Field(
-            np.where(known, air, np.nan), grid, "1", "wind speed over that of open level ground, hot-season afternoon"
-        ),
-        Field(np.where(known, np.cbrt(energy), np.nan), grid, "1", "energy-weighted wind speed ratio, whole year"),
-        Field(np.where(known, kept_off, np.nan), grid, "1", "share of the year's wind kept off by upwind ground"),
-    )
+    out = {}
+    for one, values in zip(wanted, sums, strict=True):
+        kind, _, what = _SUMS[one.reading]
+        told = np.cbrt(values) if kind == POWER else values
+        out[one.name] = Field(np.where(known, told, np.nan), grid, "1", f"{what}, {one.slot.replace('_', ' ')}")
+    return out
 
 
-def sector_weights(ventilation: Rose, year: Rose) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Weights of the 16 sectors for ventilation (p·U), energy (p·U³) and shelter (p), each summing to 1."""
-    flow = _by_sector(ventilation, ventilation.share * ventilation.speed_m_s)
-    power = _by_sector(year, year.share * year.speed_m_s**3)
-    time = _by_sector(year, year.share)
-    return flow / flow.sum(), power / power.sum(), time / time.sum()
+def _weights(table: WindTable, wanted: Sequence[Wanted], sectors: int) -> FloatArray:
+    """Weight of each sector, shape (places, wanted, sectors)."""
+
+    def of(one: Wanted, number: int) -> FloatArray:
+        sums: RoseSums = rose_sums(table.roses[one.slot, number], sectors)
+        return np.asarray(getattr(sums, _SUMS[one.reading][1]))
+
+    return np.array([[of(one, number) for one in wanted] for number in range(len(table.places))])
 
 
-def _by_sector(rose: Rose, weight: FloatArray) -> FloatArray:
-    sector = np.round(rose.direction_deg / 22.5).astype(np.int64) % 16
-    return np.asarray(np.bincount(sector, weights=weight, minlength=16), dtype=np.float64)
+def _places(table: WindTable, grid: Grid) -> tuple[NDArray[np.uint8], FloatArray]:
+    """Which place is nearest to each cell; or, for a blended table, where the places lie in rows and columns."""
+    from pyproj import Transformer
+
+    nothing = np.zeros((0, 3))
+    nearest = np.zeros(grid.shape, dtype=np.uint8)
+    if len(table.places) == 1:
+        return nearest, nothing
+    to_grid = Transformer.from_crs("EPSG:4326", grid.crs, always_xy=True)
+    at = np.array([to_grid.transform(lon, lat) for lon, lat in table.places])
+    if table.blended:
+        step = grid.cell_size_m
+        rows, cols = (grid.north_m - at[:, 1]) / step - 0.5, (at[:, 0] - grid.west_m) / step - 0.5
+        return nearest, np.column_stack([rows, cols, np.full(len(at), (LEAST_AWAY_M / step) ** 2)])
+    x = grid.x_centres_m()[None, :]
+    y = grid.y_centres_m()[:, None]
+    least = np.full(grid.shape, np.inf, dtype=np.float32)
+    for number, (east, north) in enumerate(at):
+        distance = np.hypot(x - east, y - north).astype(np.float32)
+        closer = distance < least
+        nearest[closer] = number
+        least[closer] = distance[closer]
+    return nearest, nothing

@@ -7,6 +7,8 @@ from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, Literal
 
+from sitescreen.judgement.wind_slots import IN_WORDS, slot_of_column
+
 if TYPE_CHECKING:
     import pandas as pd
 
@@ -124,9 +126,9 @@ CONTRACT: tuple[Column, ...] = (
         2,
         "× open ground",
         "ventilation",
-        "Mean wind compared with open level ground, in the hot season.",
+        "Mean wind of hot-season afternoons compared with open level ground.",
     ),
-    _number("ridge_exposure", 2, "× open ground", "exposure", "Strong wind compared with open level ground."),
+    _number("ridge_exposure", 2, "× open ground", "exposure", "Strong wind of the year compared with open ground."),
     _number("sheltered_fraction", 2, "0–1", "sheltered", "How much of the wind the ground upwind holds off."),
     _text(
         "cold_pool_kind",
@@ -178,7 +180,9 @@ CONTRACT: tuple[Column, ...] = (
         "calm clear nights",
         "Nights in the cool season that are clear and calm.",
     ),
-    _number("driving_rain", 2, "× open ground", "driving rain", "Wind-driven rain compared with open level ground."),
+    _number(
+        "driving_rain", 2, "× open ground", "driving rain", "Strong wind of the rainy season compared with open ground."
+    ),
 )
 """The columns that every table has, in this order. Ones this version cannot fill stay empty."""
 
@@ -217,6 +221,14 @@ MORE: Mapping[str, Column] = {
             "m",
             "screen stands",
             "How high that ground stands above the plot; empty where none does.",
+        ),
+        _number("worst_sector_exposure", 2, "× open ground", "worst wind", "Wind from the most exposed side."),
+        _number("worst_sector_from_deg", 0, "° from true north", "worst wind from", "Bearing that wind comes from."),
+        _number(
+            "slow_wind_share", 2, "0–1", "slow wind", "Share of the windy time with under 0.7 of the open-ground wind."
+        ),
+        _number(
+            "wind_outside_share", 2, "0–1", "too steep for wind", "Share steeper than 17°, where wind figures are weak."
         ),
         _number("sea_km", 2, "km", "to the sea", "Distance to the nearest sea shore, creeks included."),
         _number("lake_km", 2, "km", "to a lake", "Distance to the lake whose breeze reaches the plot most."),
@@ -281,7 +293,7 @@ def columns_of(table: "pd.DataFrame", profiles: Mapping[str, "ZoneProfile"]) -> 
         *CONTRACT,
         *(_membership(name, profiles) for name in memberships),
         *(MORE.get(name) or _mark(name, profiles.values()) for name in marks),
-        *(MORE.get(name) or _own(name) or _unknown_to_us(name, table[name]) for name in others),
+        *(MORE.get(name) or in_slot(name) or _own(name) or _unknown_to_us(name, table[name]) for name in others),
     )
 
 
@@ -300,6 +312,17 @@ def _mark(name: str, profiles: Iterable["ZoneProfile"]) -> Column:
     return _number(
         name, 1, "0–100", f"mark: {title}", f"How well the plot does on “{title}” for its zone; high is good."
     )
+
+
+def in_slot(name: str) -> Column | None:
+    """A reading of the wind in another slot than its own, which some profile asks for."""
+    found = slot_of_column(name)
+    if found is None:
+        return None
+    reading, slot = found
+    own = BY_NAME.get(reading) or MORE[reading]
+    when = IN_WORDS[slot]
+    return _number(name, own.decimals, own.unit, f"{own.title}, {when}", f"As “{own.title}”, for the {when}.")
 
 
 def _own(name: str) -> Column | None:

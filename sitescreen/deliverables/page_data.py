@@ -142,7 +142,7 @@ def _zone(profile: Any) -> dict[str, Any]:
         "title": profile.title,
         "wants": profile.wants,
         "criteria": [
-            {"name": c.name, "title": c.title, "question": c.question, "reading": c.reading, "weight": c.weight}
+            {"name": c.name, "title": c.title, "question": c.question, "reading": c.column, "weight": c.weight}
             for c in profile.criteria
         ],
     }

@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from sitescreen.deliverables.classes import RAMP, ClassRange, Curve, class_of, class_ranges, marks_by
-from sitescreen.deliverables.columns import BY_NAME, MORE, Column
+from sitescreen.deliverables.columns import BY_NAME, MORE, Column, in_slot
 from sitescreen.deliverables.relief import webp
 from sitescreen.deliverables.sheet import Sheet, by_quantity, on_sheet, warped
 from sitescreen.grid import Field
@@ -62,8 +62,9 @@ ASKED = (
         "wind",
         "Windy or sheltered?",
         "Wind",
-        "Wind compared with open level ground, from height above the surroundings and the ground upwind. "
-        "A first method, for moderate wind; it says nothing about calm nights.",
+        "Wind compared with open level ground: hills speed it up, ground upwind shelters. "
+        "For neutral, moderate wind only: not for calm nights, breezes or gusts, nor on ground steeper than 17°, "
+        "which is left blank.",
     ),
     Asked(
         "cold",
@@ -194,10 +195,10 @@ def views(
     wanted: dict[tuple[str, tuple[tuple[float, float], ...]], list[tuple[str, str]]] = {}
     for zone in zones_here(table):
         asked = [c for c in profiles[zone].criteria if c.question == question] if zone in profiles else []
-        drawn = [c for c in asked if c.reading in groups]
+        drawn = [c for c in asked if c.column in groups]
         if drawn:
             best = max(drawn, key=lambda c: c.weight)
-            wanted.setdefault((best.reading, tuple(best.curve)), []).append((zone, best.title))
+            wanted.setdefault((best.column, tuple(best.curve)), []).append((zone, best.title))
     chosen: list[tuple[str, Curve, str, tuple[str, ...]]] = [
         (reading, curve, zones[0][1], tuple(zone for zone, _ in zones))
         for (reading, curve), zones in list(wanted.items())[:MOST_VIEWS]
@@ -256,5 +257,5 @@ def _rim(area: NDArray[np.bool_]) -> NDArray[np.bool_]:
 
 
 def _column(reading: str) -> Column:
-    known = BY_NAME.get(reading) or MORE.get(reading) or _OTHER_COLUMNS.get(reading)
+    known = BY_NAME.get(reading) or MORE.get(reading) or in_slot(reading) or _OTHER_COLUMNS.get(reading)
     return known or Column(reading, "number", 2, "", reading.replace("_", " "), "")

@@ -77,7 +77,7 @@ def read_inputs(brief: Brief) -> Inputs:
     sea_notes: tuple[Note, ...] = ()
     if shore is not None and brief.shore is not None:
         sea_notes = check_sea_level(shore, terrain, outline, kind_of(brief.shore.kind or "") == "land")
-    wind = read_wind(brief.wind.file) if brief.wind else assumed_wind()
+    wind = read_wind(brief.wind.file, brief.wind.places == "inverse_distance") if brief.wind else assumed_wind()
     normals = read_normals(brief.climate.stations) if brief.climate else None
     cover = read_cover(brief.cover) if brief.cover else None
     zone_map = read_zone_map(Path(brief.zones.polygons)) if brief.zones.polygons else None

@@ -2,7 +2,7 @@
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 import numpy as np
@@ -24,6 +24,9 @@ SLOTS = {
     "year": ("year", "all"),
 }
 """The parts of the year that readings ask for."""
+
+RAIN = "rain"
+"""The rainy season, all of its day: for driving rain. There is none where the table has no rows for it."""
 
 SECTORS = 16
 SECTOR_DEG = 360.0 / SECTORS
@@ -56,7 +59,7 @@ class Rose:
     calm_share : float
         Share of the time without wind.
     assumed : bool
-        Whether nobody gave it.
+        Whether nobody gave it: no table, or a table without these rows, for which others stand in.
     """
 
     direction_deg: FloatArray
@@ -77,8 +80,13 @@ class WindTable:
     roses : dict
         By slot and number of the place.
     assumed : bool
+        Whether there is no table at all.
     stamp : FileStamp, optional
     notes : tuple of Note
+    place_m : tuple of float
+        Height of each place above the terrain's zero. [m] NaN where the table does not say.
+    blended : bool
+        Between several places each counts by the inverse square of its distance; else the nearest alone.
     """
 
     places: tuple[tuple[float, float], ...]
@@ -86,6 +94,16 @@ class WindTable:
     assumed: bool
     stamp: FileStamp | None
     notes: tuple[Note, ...]
+    place_m: tuple[float, ...] = (math.nan,)
+    blended: bool = False
+
+    def has(self, slot: str) -> bool:
+        """Whether every place has a wind for a slot; all but :data:`RAIN` always have, if only an assumed one."""
+        return all((slot, number) in self.roses for number in range(len(self.places)))
+
+    def is_assumed(self, slot: str) -> bool:
+        """Whether a slot's wind is assumed at any place."""
+        return any(self.roses[slot, number].assumed for number in range(len(self.places)))
 
     def rose(self, slot: str, lon: float, lat: float) -> Rose:
         """The winds of a slot at the place nearest to a point.
@@ -93,7 +111,7 @@ class WindTable:
         Parameters
         ----------
         slot : str
-            One of :data:`SLOTS`.
+            One of :data:`SLOTS`, or :data:`RAIN` where the table has it.
         lon, lat : float
             WGS 84. [°]
         """
@@ -135,21 +153,23 @@ class _Wind:
     speed_m_s: float
 
 
-def read_wind(path: Path) -> WindTable:
+def read_wind(path: Path, blended: bool = False) -> WindTable:
     """Read a table of winds.
 
     Parameters
     ----------
     path : Path
         CSV with the columns season (hot, cool, rain, year), part (morning, afternoon, night, all), direction_deg (from,
-        true north), share, speed_m_s and, for several places, lon and lat. A calm row has no direction, or speed 0.
-        Shares may be in per cent.
+        true north), share, speed_m_s and, for several places, lon and lat, with elevation_m if known. A calm row has no
+        direction, or speed 0. Shares may be in per cent.
+    blended : bool
+        See :class:`WindTable`.
 
     Returns
     -------
     WindTable
         A slot that the table lacks is taken from, in this order: all of that season's day, that part of the day over
-        the year, the whole year, the mean of all that there is; its notes say so.
+        the year, the whole year, the mean of all that there is; its notes say so, and such a rose is assumed.
 
     Raises
     ------
@@ -158,7 +178,8 @@ def read_wind(path: Path) -> WindTable:
         off, or there is nothing but calm.
     """
     needed = ("season", "part", "direction_deg", "share", "speed_m_s")
-    rows = read_rows(path, needed, ("lon", "lat"), "wind table")
+    rows = read_rows(path, needed, ("lon", "lat", "elevation_m"), "wind table")
+    heights: dict[tuple[float, float], float] = {}
     groups: dict[tuple[float, float], dict[tuple[str, str], list[_Wind]]] = {}
     seen: set[tuple[object, ...]] = set()
     for row in rows:
@@ -170,6 +191,7 @@ def read_wind(path: Path) -> WindTable:
             )
         seen.add(key)
         groups.setdefault(place, {}).setdefault(when, []).append(wind)
+        _add_height(row, place, heights)
     if len(groups) > MOST_PLACES or (len(groups) > 1 and any(math.isnan(place[0]) for place in groups)):
         raise InputError(
             f"the wind table {path.name} has {len(groups)} places"
@@ -188,7 +210,24 @@ def read_wind(path: Path) -> WindTable:
         known = {when: _rose(winds, compass, path.name, when, label, notes) for when, winds in times.items()}
         for slot, when in SLOTS.items():
             roses[slot, number] = _slot(known, when, f"{path.name}{label}", notes)
-    return WindTable(tuple(groups), roses, False, stamp(path), tuple(_once(notes)))
+        rain = {when: one for when, one in known.items() if when[0] == RAIN}
+        if rain:
+            roses[RAIN, number] = rain.get((RAIN, "all")) or _mean(list(rain.values()))
+    place_m = tuple(heights.get(place, math.nan) for place in groups)
+    return WindTable(tuple(groups), roses, False, stamp(path), tuple(_once(notes)), place_m, blended)
+
+
+def _add_height(row: Row, place: tuple[float, float], heights: dict[tuple[float, float], float]) -> None:
+    """Keep the height of a place that a row gives; one place has one height."""
+    if not row.text("elevation_m"):
+        return
+    height = row.number("elevation_m", -450.0, 6000.0)
+    if heights.setdefault(place, height) != height:
+        raise row.refuse(
+            f"elevation_m is {height:g} here and {heights[place]:g} further up, at the same place",
+            "one height for all rows of a place is needed",
+            "Correct it",
+        )
 
 
 def _place(row: Row) -> tuple[float, float]:
@@ -292,10 +331,14 @@ def _slot(known: dict[tuple[str, str], Rose], when: tuple[str, str], name: str, 
         if instead in known:
             said = f"{name} has no “{season}, {part}”: “{', '.join(instead)}” was taken for it."
             notes.append(Note("assumed", "wind", said))
-            return known[instead]
+            return replace(known[instead], assumed=True)
     said = f"{name} has no “{season}, {part}” and nothing for the whole year: the mean of all it has was taken for it."
     notes.append(Note("assumed", "wind", said))
-    roses = list(known.values())
+    return replace(_mean(list(known.values())), assumed=True)
+
+
+def _mean(roses: Sequence[Rose]) -> Rose:
+    """Each of several roses for an equal part of the time."""
     return Rose(
         np.concatenate([one.direction_deg for one in roses]),
         np.concatenate([one.share for one in roses]) / len(roses),

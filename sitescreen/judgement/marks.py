@@ -65,7 +65,7 @@ def marks(readings: pd.DataFrame, profile: ZoneProfile) -> pd.DataFrame:
         ``mark_<criterion>``, 0–100, NaN where the reading is unknown; in the profile's order.
     """
     return pd.DataFrame(
-        {f"mark_{one.name}": mark(_values(readings, one.reading), one) for one in profile.criteria},
+        {f"mark_{one.name}": mark(_values(readings, one.column), one) for one in profile.criteria},
         index=readings.index,
     )
 
@@ -77,7 +77,7 @@ def mark_limits(readings: pd.DataFrame, profile: ZoneProfile) -> tuple[pd.DataFr
     """
     lowest, highest = {}, {}
     for one in profile.criteria:
-        value = _values(readings, one.reading)
+        value = _values(readings, one.column)
         from_value, to_value = possible_range(one.reading, readings)
         unknown = np.isnan(value)
         lowest[f"mark_{one.name}"], highest[f"mark_{one.name}"] = mark_range(

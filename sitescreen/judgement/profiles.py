@@ -11,6 +11,7 @@ from pydantic import AfterValidator, Field, model_validator
 from sitescreen.errors import ConfigError
 from sitescreen.judgement.derived import DERIVED_READINGS
 from sitescreen.judgement.sentences import check_template
+from sitescreen.judgement.wind_slots import SLOT_OF, wind_column
 from sitescreen.settings import Section, checked, config_folder, load_defaults, read_toml
 
 Question = Literal["breeze", "wind", "cold", "sun", "ground", "own"]
@@ -28,6 +29,9 @@ MEASURED_READINGS = (
     "ventilation",
     "ridge_exposure",
     "sheltered_fraction",
+    "worst_sector_exposure",
+    "slow_wind_share",
+    "driving_rain",
     "cold_pool_depth_m",
     "cold_deficit_k",
     "sky_view",
@@ -62,6 +66,9 @@ class Criterion(Section):
         The column ``mark_<name>``; unique in a profile, with one meaning in all profiles.
     reading : str
         The reading that it looks at.
+    slot : str, optional
+        For readings of the wind: the part of the year whose wind counts, "hot_afternoon", "hot_night", "cool_night" or
+        "year". Left out, the one that the reading has in the table of plots.
     question : str
         The group that it belongs to.
     title, unit : str
@@ -82,6 +89,7 @@ class Criterion(Section):
 
     name: Annotated[str, Field(pattern=r"^[a-z][a-z0-9_]*$"), AfterValidator(_not_reserved)]
     reading: Text
+    slot: Literal["hot_afternoon", "hot_night", "cool_night", "year"] | None = None
     question: Question
     title: Text
     unit: str = "1"
@@ -91,6 +99,17 @@ class Criterion(Section):
     ordinary_mark: Mark = 60.0
     source: Text
     says: Annotated[str, AfterValidator(check_template)] = ""
+
+    @model_validator(mode="after")
+    def _only_the_wind_has_slots(self) -> "Criterion":
+        if self.slot is not None and self.reading not in SLOT_OF:
+            raise ValueError(f"a slot only with one of the readings {', '.join(SLOT_OF)}")
+        return self
+
+    @property
+    def column(self) -> str:
+        """The column of the plots' table that it looks at: its reading, in its slot."""
+        return self.reading if self.slot is None else wind_column(self.reading, self.slot)
 
     @property
     def worst_mark(self) -> float:
@@ -103,8 +122,8 @@ class Criterion(Section):
         return max(mark for _, mark in self.curve)
 
     def is_among(self, names: Collection[str]) -> bool:
-        """Whether a list names this criterion, its reading or its question."""
-        return not {self.name, self.reading, self.question}.isdisjoint(names)
+        """Whether a list names this criterion, the column it looks at or its question."""
+        return not {self.name, self.column, self.question}.isdisjoint(names)
 
     def curve_in_words(self) -> str:
         """The points as ``0.3 → 0, 1 → 70``, with the unit."""
@@ -142,6 +161,16 @@ class ZoneProfile(Section):
     def by_name(self) -> Mapping[str, Criterion]:
         """The criteria by name."""
         return {criterion.name: criterion for criterion in self.criteria}
+
+
+def wind_slots(profiles: Mapping[str, ZoneProfile]) -> frozenset[tuple[str, str]]:
+    """The readings of the wind that profiles ask for in another slot than their own, as (reading, slot)."""
+    return frozenset(
+        (one.reading, one.slot)
+        for profile in profiles.values()
+        for one in profile.criteria
+        if one.slot is not None and one.column != one.reading
+    )
 
 
 def load_profiles(extra_folder: Path | None = None, own_readings: tuple[str, ...] = ()) -> dict[str, ZoneProfile]:

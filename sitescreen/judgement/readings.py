@@ -8,7 +8,6 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from sitescreen.climate.cold_air import ClosedPools
-from sitescreen.climate.wind import WindFields
 from sitescreen.judgement.coverage import Coverage
 from sitescreen.settings import ReadingSettings
 from sitescreen.terrain.ground import Ground
@@ -31,7 +30,6 @@ class Readings(NamedTuple):
 class BlockClimate:
     """The climate stage's fields of one block."""
 
-    wind: WindFields
     pools: ClosedPools
 
 
@@ -101,10 +99,6 @@ def block_readings(
     reading("buildable_share", share, no_ground)
 
     reading("rise_m", mean(ground.rise.values), "the terrain model ends within 1 km of the plot")
-    edge = "the terrain model ends within the upwind distance that shelter needs"
-    reading("ventilation", mean(climate.wind.ventilation.values), edge)
-    reading("ridge_exposure", mean(climate.wind.ridge_exposure.values), edge)
-    reading("sheltered_fraction", mean(climate.wind.sheltered_fraction.values), edge)
     reading("sky_view", mean(ground.sky_view.values), no_ground)
 
     depth = mean(climate.pools.depth_m.values)

@@ -16,6 +16,7 @@ from sitescreen.judgement.marks import mark
 from sitescreen.judgement.overall import Judged, ZoneMarks
 from sitescreen.judgement.profiles import Criterion, ZoneProfile
 from sitescreen.judgement.sentences import check_template, facts, fill
+from sitescreen.judgement.wind_slots import IN_WORDS, SLOT_OF
 from sitescreen.settings import JudgementSettings, Section, checked, config_folder, read_toml
 
 LEAST_POINTS = 1.0
@@ -162,7 +163,7 @@ def reasons(
             text = (
                 _known_sentence(one, told, words)
                 if gain.is_known
-                else _unknown_sentence(one, unknown_because(one.reading, why_unknown, plot), words)
+                else _unknown_sentence(one, unknown_because(one.column, why_unknown, plot), words)
             )
             return text + words.words.assumed if gain.is_known and one.is_among(judged.halved) else text
 
@@ -173,7 +174,7 @@ def reasons(
             tuple(sentence(gain) for gain in worst) or (words.words.nothing_against,),
             alerts,
             tuple(
-                _unknown_sentence(gain.criterion, unknown_because(gain.criterion.reading, why_unknown, plot), words)
+                _unknown_sentence(gain.criterion, unknown_because(gain.criterion.column, why_unknown, plot), words)
                 for gain in gains
                 if not gain.is_known
             ),
@@ -195,9 +196,14 @@ def _gains(one: ZoneMarks, row: int, profile: ZoneProfile) -> list[_Gain]:
 
 
 def _known_sentence(one: Criterion, told: Mapping[str, Any], words: Words) -> str:
-    value = float(told[one.reading])
+    value = float(told[one.column])
     amount = f"{value:.2f} {one.unit}" if one.unit not in ("", "1") else f"{value:.2f}"
     more = {**told, "value": value, "title": one.title, "amount": amount, "mark": mark(value, one).item()}
+    if one.reading in SLOT_OF:
+        slot = one.slot or SLOT_OF[one.reading]
+        strong = "strong winds" if slot == "year" else f"strong {IN_WORDS[slot]}"
+        more |= {"winds": IN_WORDS[slot], "strong_winds": strong}
+        more |= {"more_pct": 100.0 * (value - 1.0), "less_pct": 100.0 * (1.0 - value)}
     if one.says:
         wordings: tuple[str, ...] = (one.says,)
     elif one.name in words.criteria:

@@ -58,6 +58,7 @@ def facts(row: Mapping[str, Any]) -> dict[str, Any]:
         ("breeze_reach", "breeze_pct"),
         ("buildable_share", "buildable_pct"),
         ("share_in_water", "water_pct"),
+        ("wind_outside_share", "steep_wind_pct"),
         ("sky_hidden_share", "hidden_pct"),
         ("known_weight_share", "known_pct"),
     ):
