@@ -129,6 +129,7 @@ class Screening:
     ``table``: GeoDataFrame in EPSG:4326 with every plot that went in, by rank, those set aside last. ``fields``: what
     was measured, by name (with several UTM zones the zone is added: ``slope_deg_utm41``). ``reasons``: by plot id.
     ``winds``: what the ground makes of the wind from each sector, rows in the order of the table.
+    ``judged`` and ``zones``: the marks and zone shares behind the table, in the order of the plots as they came.
     """
 
     brief: Brief
@@ -141,6 +142,8 @@ class Screening:
     not_measured: tuple[str, ...]
     not_checked: tuple[str, ...]
     record: dict[str, Any]
+    judged: Judged
+    zones: ZoneShares
 
 
 def _judged(
@@ -208,6 +211,8 @@ def _judged(
         | {"reasons": _recorded(table, why)}
         | {"certainty": sure.for_record(), "what_would_change": [one.for_record() for one in found]}
         | ({"pairs": compared.for_record()} if compared else {}),
+        judged=judged,
+        zones=zones,
     )
 
 

@@ -28,7 +28,10 @@ from sitescreen.deliverables.sureness import sureness
 if TYPE_CHECKING:
     from sitescreen.screening import Screening
 
-SCRIPTS = ("start.js", "plan.js", "leaf.js", "ranking.js", "page.js")
+SCRIPTS = (
+    "start.js", "weigh.js", "words.js", "frame.js", "plan.js", "ladder.js", "leaf.js", "ranking.js", "asks.js",
+    "page.js",
+)  # fmt: skip
 
 _DANGEROUS = {"&": "\\u0026", "<": "\\u003c", ">": "\\u003e", "\u2028": "\\u2028", "\u2029": "\\u2029"}
 _BLANK_PICTURE = "data:image/gif;base64,R0lGODlhAQABAIAAAAAAAP///yH5BAEAAAAALAAAAAABAAEAAAIBRAA7"

@@ -12,6 +12,7 @@ from sitescreen.deliverables.questions import OVERALL, Asked, View, question_mar
 from sitescreen.deliverables.sheet import Sheet
 from sitescreen.deliverables.sureness import above_breeze, alike
 from sitescreen.deliverables.table import value_of
+from sitescreen.deliverables.weighing import weighing
 from sitescreen.grid import Bounds
 
 if TYPE_CHECKING:
@@ -110,6 +111,7 @@ def page_data(
             if name.startswith("mark_") and name not in ("mark_low", "mark_high", "mark_in_zone", "mark_in_zone_2")
         },
         "readings": readings,
+        "weighing": weighing(screening),
         "reasons": [
             _reasons(screening.reasons.get(plot)) if i < MOST_LEAVES else None
             for i, plot in enumerate(table["plot"].tolist())

@@ -1,6 +1,10 @@
 """An invented screening, to test deliverables without running one: twelve plots between a sea and a ridge."""
 
-from collections.abc import Callable, Mapping
+import os
+import shutil
+import tempfile
+import time
+from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass, replace
 from types import SimpleNamespace
 from typing import Any
@@ -12,9 +16,14 @@ import pytest
 from pyproj import Transformer
 from shapely.geometry import Polygon
 
+from sitescreen.climate.zones import ZoneShares
+from sitescreen.deliverables.columns import columns_of
+from sitescreen.deliverables.map import write_map
 from sitescreen.grid import Field, Grid
+from sitescreen.judgement.overall import Judged, judge
 from sitescreen.judgement.profiles import load_profiles
 from sitescreen.notes import Note
+from sitescreen.settings import load_defaults
 
 NAMES = ("Ammerling Field", "Brisk Hanger", "Corrow", "Dunmarrel", "Eastle Bank", "Fennow", "Gorse Neap", "Hollin Pit",
          "Ister Point", "Jarrow Lea", "Kestel Ridge", "Lowmere")  # fmt: skip
@@ -33,9 +42,14 @@ class Invented:
     not_measured: tuple[str, ...]
     not_checked: tuple[str, ...]
     record: dict[str, Any]
+    judged: Judged
+    zones: ZoneShares
 
     def with_(self, **changes: Any) -> "Invented":
-        """The same with some parts replaced."""
+        """The same with some parts replaced; another table is judged anew."""
+        if "table" in changes:
+            judged, zones = judgement_on(changes["table"], changes.get("profiles", self.profiles))
+            changes = {"judged": judged, "zones": zones} | changes
         return replace(self, **changes)
 
 
@@ -155,7 +169,25 @@ def build(
         ("hours of sun", "cold air behind narrows"),
         ("flood levels", "protected land", "landslides"),
         {"version": "0.1.0", "inputs": {"terrain": [{"name": "tile.tif", "sha256": "00"}]}, "seconds": {"read": 0.1}},
+        *judgement_on(table, profiles),
     )  # fmt: skip
+
+
+def judgement_on(table: pd.DataFrame, profiles: Mapping[str, Any]) -> tuple[Judged, ZoneShares]:
+    """The program's own judgement on the readings of a table, whose plots each lie in one zone or between two."""
+    readings = table.set_index("plot")
+    names = list(profiles)
+    shares = pd.DataFrame(0.0, index=readings.index, columns=names)
+    for plot, row in readings[readings["zone"] != ""].iterrows():
+        shares.loc[plot, row["zone"]] = row["zone_share"]
+        second = names[(names.index(row["zone"]) + 1) % len(names)]
+        shares.loc[plot, second] += 1.0 - row["zone_share"]
+    nothing = pd.Series(data=False, index=readings.index)
+    zones = ZoneShares(
+        shares, readings["zone"], readings["zone_share"], nothing, nothing,
+        pd.Series("", index=readings.index), nothing,
+    )  # fmt: skip
+    return judge(readings, zones, profiles, (), load_defaults().judgement), zones
 
 
 @pytest.fixture(scope="session")
@@ -192,3 +224,108 @@ def unsure(made: Invented) -> Invented:
 def tried() -> Invented:
     """The usual one with chances, ties and a screened breeze."""
     return unsure(build())
+
+
+FLAGS = (
+    "--headless=new", "--no-sandbox", "--disable-gpu", "--disable-quic", "--no-first-run", "--disable-sync",
+    "--disable-background-networking", "--disable-component-update", "--hide-scrollbars",
+)  # fmt: skip
+
+
+def _program(*names: str) -> str:
+    found = next((path for name in names if (path := shutil.which(name))), None)
+    if found is None:
+        said = f"{names[0]} is not installed here (.ci/run installs it)"
+        if os.environ.get("SITESCREEN_REQUIRE_ALL") == "1":
+            pytest.fail(said)
+        pytest.skip(said)
+    return found
+
+
+@pytest.fixture(scope="session")
+def browser(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Any]:
+    """Headless Chromium that is told it has no network, and notes every request."""
+    from selenium import webdriver
+    from selenium.webdriver.chrome.service import Service
+
+    options = webdriver.ChromeOptions()
+    options.binary_location = _program("chromium", "chromium-browser", "google-chrome")
+    profile = tempfile.mkdtemp(dir=tmp_path_factory.mktemp("browser"))
+    for flag in (*FLAGS, f"--user-data-dir={profile}", "--window-size=1440,900"):
+        options.add_argument(flag)
+    options.set_capability("goog:loggingPrefs", {"browser": "ALL", "performance": "ALL"})
+    driver = webdriver.Chrome(options=options, service=Service(_program("chromedriver")))
+    try:
+        yield driver
+    finally:
+        driver.quit()
+
+
+def sized(browser: Any, width: int, height: int) -> None:
+    size = {"width": width, "height": height, "deviceScaleFactor": 1, "mobile": width < 500}
+    browser.execute_cdp_cmd("Emulation.setDeviceMetricsOverride", size)
+
+
+@pytest.fixture(scope="session")
+def opened(browser: Any, tmp_path_factory: pytest.TempPathFactory) -> Callable[..., Any]:
+    """Writes a screening's page, opens it offline and waits until it is ready."""
+    count = iter(range(1000))
+
+    def open_page(screening: Any, width: int = 1440, height: int = 900) -> Any:
+        path = tmp_path_factory.mktemp("page") / f"map{next(count)}.html"
+        write_map(screening, columns_of(screening.table, screening.profiles), path)
+        browser.get_log("browser")
+        browser.get_log("performance")
+        sized(browser, width, height)
+        browser.execute_cdp_cmd("Network.enable", {})
+        nothing = {"offline": True, "latency": 0, "downloadThroughput": 0, "uploadThroughput": 0}
+        browser.execute_cdp_cmd("Network.emulateNetworkConditions", nothing)
+        browser.get(path.as_uri())
+        wait(lambda: browser.execute_script("return document.documentElement.dataset.ready") == "yes")
+        return browser
+
+    return open_page
+
+
+def wait(condition: Callable[[], bool], seconds: float = 10) -> None:
+    until = time.monotonic() + seconds
+    while not condition():
+        assert time.monotonic() < until, "waited too long"
+        time.sleep(0.02)
+
+
+class Reading:
+    """What a page shows, as the tests read it."""
+
+    def __init__(self, browser: Any) -> None:
+        self.browser = browser
+
+    def run(self, script: str, *given: Any) -> Any:
+        """What a script gives back."""
+        return self.browser.execute_script(script, *given)
+
+    def texts(self, selector: str) -> list[str]:
+        """The text of every element that fits, in the order of the page."""
+        return list(self.run("return [...document.querySelectorAll(arguments[0])].map((e) => e.textContent)", selector))
+
+    def text(self, selector: str) -> str:
+        """The text of the first element that fits."""
+        return self.texts(selector)[0]
+
+    def one(self, selector: str) -> Any:
+        """The first element that fits."""
+        return self.browser.find_element("css selector", selector)
+
+    def press(self, selector: str) -> None:
+        """A click that needs the element in no special place."""
+        self.run("document.querySelector(arguments[0]).click()", selector)
+
+    def problems(self) -> list[str]:
+        """What the console complains of."""
+        return [entry["message"] for entry in self.browser.get_log("browser")]
+
+
+@pytest.fixture
+def read(opened: Callable[..., Any]) -> Callable[..., Reading]:
+    """Opens a screening's page and gives what reads it."""
+    return lambda *given, **how: Reading(opened(*given, **how))

@@ -3,7 +3,8 @@ const leaf = (() => {
   const { data, plots, make, ruler } = page;
   const holder = document.getElementById("leaf");
   const readingNamed = new Map(data.readings.map((reading) => [reading.name, reading]));
-  const order = [...page.ranked, ...page.aside];
+
+  const strips = []; // drawn below the words, each made by a function of the plot that may give nothing
 
   function list(heading, lines, kind) {
     if (!lines.length) return [];
@@ -11,17 +12,18 @@ const leaf = (() => {
   }
 
   function top(i) {
-    const place = order.indexOf(i), rank = plots.rank[i];
-    const isShared = rank !== null && plots.rank.filter((other) => other === rank).length > 1 ? ", shared" : "";
-    const inZone = plots.rank_in_zone[i] === null || rank === null ? "" : `, ${page.ordinal(plots.rank_in_zone[i])} in its zone`;
+    const order = [...page.now.order, ...page.aside], now = page.now;
+    const place = order.indexOf(i), rank = now.rank[i], isAside = plots.rank[i] === null;
+    const isShared = rank !== null && now.rank.filter((other) => other === rank).length > 1 ? ", shared" : "";
+    const inZone = now.rankInZone[i] === null || rank === null ? "" : `, ${page.ordinal(now.rankInZone[i])} in its zone`;
     const turn = (text, to) => make("button", { type: "button", disabled: to < 0 || to >= order.length, onclick: () => page.change({ chosen: order[to] }) }, text);
     return make("div", { class: "leaf-top" },
-      make("span", {}, rank === null ? "Set aside" : `${page.ordinal(rank)} of ${page.ranked.length}${isShared}${inZone}`),
+      make("span", {}, isAside ? "Set aside" : rank === null ? "No rank: nothing that its zone asks for counts" : `${page.ordinal(rank)} of ${page.ranked.length}${isShared}${inZone}`),
       make("span", { class: "turn" }, turn("previous", place - 1), turn("next", place + 1)));
   }
 
   function markLine(i) {
-    const mark = plots.overall_mark[i], low = plots.mark_low[i], high = plots.mark_high[i];
+    const mark = page.now.mark[i], low = page.now.low[i], high = page.now.high[i];
     if (mark === null || plots.rank[i] === null) return null;
     const spread = low === null || high === null || high - low < 0.05 ? "of 100; nothing it needs is unknown"
       : low.toFixed(0) === high.toFixed(0) ? "of 100; its unknowns hardly matter"
@@ -35,7 +37,7 @@ const leaf = (() => {
     if (rank === null || best === null || worst === null) return null;
     const range = best === worst ? `${best === rank ? "the same" : page.ordinal(best)} in at least 90 of 100 trials` : `${page.ordinal(best)} to ${page.ordinal(worst)} in 90 of 100 trials`;
     const alike = plots.alike[i] ? ` ${plots.alike[i]} cannot be told apart.` : "";
-    return make("p", { class: "leaf-zone leaf-sure" }, `${page.ordinal(rank)}; ${range}, which vary the weights only.${alike}`);
+    return make("p", { class: "leaf-zone leaf-sure sure" }, `${page.ordinal(rank)}; ${range}, which vary the weights only.${alike}`);
   }
 
   function criteria(i) {
@@ -55,7 +57,7 @@ const leaf = (() => {
     const items = [];
     for (const reading of data.readings) {
       const words = page.readingWords(reading, i);
-      if (words !== null) items.push(make("dt", { title: reading.says }, reading.title), make("dd", {}, words));
+      if (words !== null) items.push(make("div", {}, make("dt", { title: reading.says }, reading.title), make("dd", {}, words)));
     }
     if (data.readings.every((reading) => reading.values[i] === null || reading.name === "area_ha")) {
       return make("p", { class: "leaf-zone" }, "It has no readings.");
@@ -70,24 +72,27 @@ const leaf = (() => {
     const isOpen = holder.querySelector("details[open]") !== null;
     const why = data.reasons[i], zone = data.zones[plots.zone[i]];
     const share = plots.zone_share[i];
-    const parts = [top(i), make("p", { class: "leaf-name" }, plots.name[i] === null ? `Plot ${plots.plot[i]}` : plots.name[i])];
+    const about = [make("h2", { class: "leaf-name" }, make("bdi", {}, plots.name[i] === null ? `Plot ${plots.plot[i]}` : plots.name[i]))];
     const mixed = share !== null && share < 0.95 ? `, ${(100 * share).toFixed(0)} % of the judgement` : "";
-    const words = [plots.name[i] === null ? null : `Plot ${plots.plot[i]}`, page.zoneTitle(i) ? page.zoneTitle(i) + mixed : null];
-    parts.push(make("p", { class: "leaf-zone" }, words.filter((word) => word).join(" · ")));
-    if (plots.zone_missing[i]) parts.push(make("p", { class: "leaf-zone" }, `The zone is not firm; missing: ${plots.zone_missing[i]}.`));
-    if (zone) parts.push(make("p", { class: "leaf-zone" }, `What it wants: ${zone.wants}`));
-    parts.push(markLine(i), sureLine(i));
-    if (plots.set_aside[i]) parts.push(...list("Why it is set aside", [plots.set_aside[i]], "alerts"));
+    const line = (text) => make("p", { class: "leaf-zone" }, text);
+    about.push(line([plots.name[i] === null ? null : `Plot ${plots.plot[i]}`, page.zoneTitle(i) ? page.zoneTitle(i) + mixed : null].filter((word) => word).join(" · ")));
+    if (plots.zone_missing[i]) about.push(line(`The zone is not firm; missing: ${plots.zone_missing[i]}.`));
+    if (zone) about.push(line(`What it wants: ${zone.wants}`));
+    about.push(markLine(i), sureLine(i));
+    const reasons = [], doubts = [];
+    if (plots.set_aside[i]) reasons.push(...list("Why it is set aside", [plots.set_aside[i]], "alerts"));
     if (why) {
-      parts.push(...list("For it", why.for, "for"), ...list("Against it", why.against, "against"),
-        ...list("Cautions", why.cautions, "alerts"), ...list("Unknown", why.unknown, "unknown"));
+      reasons.push(...list("For it", why.for, "for"), ...list("Against it", why.against, "against"));
+      doubts.push(...list("Cautions", why.cautions, "alerts"), ...list("Unknown", why.unknown, "unknown"));
     } else if (plots.rank[i] !== null) {
-      parts.push(make("p", { class: "leaf-zone" }, "This page holds the reasons of the leading plots only; its readings are below and in the table."));
+      reasons.push(line("This page holds the reasons of the leading plots only; its readings are below and in the table."));
     }
-    parts.push(...criteria(i), readings(i));
-    holder.replaceChildren(...parts.filter((part) => part));
+    doubts.push(...criteria(i));
+    const column = (kind, parts) => make("div", { class: kind }, ...parts.filter((part) => part));
+    holder.replaceChildren(top(i), make("div", { class: "leaf-columns" }, column("about", about), column("reasons", reasons), column("doubts", doubts)),
+      ...strips.flatMap((strip) => strip(i)), readings(i));
     if (isOpen && holder.querySelector("details")) holder.querySelector("details").open = true;
   }
-  page.watchers.push((what) => { if (what.includes("chosen")) show(); });
-  return { show };
+  page.watchers.push((what) => { if ("chosen" in what || "weights" in what) show(); });
+  return { show, strips };
 })();

@@ -1,17 +1,7 @@
 // The row of questions, the legend, how far to trust it; then everything starts.
 (() => {
   const { data, make, state } = page;
-  const row = document.getElementById("questions"), legend = document.getElementById("legend");
-
-  function questions() {
-    const all = [data.overall, ...data.questions];
-    row.hidden = false;
-    row.replaceChildren(...all.map((one) => make("button", { type: "button", "data-question": one.name, "aria-pressed": String(one.name === state.question),
-      onclick: () => page.change({ question: one.name }) }, one.label)));
-  }
-  function press() {
-    for (const button of row.children) button.setAttribute("aria-pressed", String(button.dataset.question === state.question));
-  }
+  const legend = document.getElementById("legend");
 
   function showLegend() {
     const one = page.question(), view = one && one.views[state.view];
@@ -55,14 +45,14 @@
   paper.replaceSync("@page { size: A4; margin: 14mm; }");
   document.adoptedStyleSheets = [...document.adoptedStyleSheets, paper];
 
-  questions();
+  asks.start();
   trust();
   plan.start();
+  ladder.start();
   ranking.start();
   page.watchers.push((what) => {
-    if (what.includes("question")) press();
-    if (what.includes("question") || what.includes("view")) showLegend();
-    if (what.includes("chosen") && state.chosen !== null) plan.reveal(state.chosen);
+    if ("question" in what || "view" in what) showLegend();
+    if ("chosen" in what && state.chosen !== null) plan.reveal(state.chosen);
   });
   showLegend();
   page.change({ chosen: page.ranked.length ? page.ranked[0] : page.aside.length ? page.aside[0] : null });

@@ -26,8 +26,9 @@ const plan = (() => {
   });
 
   const canvas = document.createElement("canvas");
-  canvas.className = "leaflet-zoom-hide";
+  canvas.className = "plots leaflet-zoom-hide";
   let scale = 1, origin = L.point(0, 0), spots = [], overlay = null;
+  const movers = []; // told whenever the ground has moved under the glass
 
   function hatch(context) {
     const tile = document.createElement("canvas");
@@ -56,8 +57,9 @@ const plan = (() => {
     const context = canvas.getContext("2d");
     context.scale(ratio, ratio);
     if (holder.classList.contains("printing")) drawGround(context, size);
-    drawFrame(context, size);
+    frame.draw(context, size, map);
     drawPlots(context, size);
+    for (const moved of movers) moved();
   }
 
   // on paper everything goes onto the one canvas: browsers print a clear canvas as a white one
@@ -79,9 +81,9 @@ const plan = (() => {
     const marks = page.marks(), stripes = hatch(context);
     const taken = [];
     spots = [];
-    const order = [...page.aside, ...[...page.ranked].reverse()];
+    const order = [...page.aside, ...[...page.ranked].reverse()].filter((i) => i !== state.chosen);
     const chosen = state.chosen;
-    if (chosen !== null) { order.splice(order.indexOf(chosen), 1); order.push(chosen); }
+    if (chosen !== null) order.push(chosen);
     for (const i of order) {
       if (!places[i]) continue;
       const at = onScreen(places[i]);
@@ -142,10 +144,11 @@ const plan = (() => {
   // ranks beside their ground: the chosen plot and the shortlist always, others where there is room
   function drawNumbers(context, size, taken) {
     context.textBaseline = "middle";
-    const byRank = spots.filter((s) => plots.rank[s.i] !== null).sort((a, b) => plots.rank[a.i] - plots.rank[b.i]);
+    const ranks = page.now.rank;
+    const byRank = spots.filter((s) => ranks[s.i] !== null).sort((a, b) => ranks[a.i] - ranks[b.i]);
     const first = byRank.filter((s) => s.i === state.chosen);
     for (const spot of [...first, ...byRank.filter((s) => s.i !== state.chosen)].slice(0, MOST_NUMBERS)) {
-      const rank = plots.rank[spot.i], isChosen = spot.i === state.chosen, isShort = rank <= data.shortlist;
+      const rank = ranks[spot.i], isChosen = spot.i === state.chosen, isShort = rank <= data.shortlist;
       if (!isShort && !isChosen && size.x < 600) continue;
       context.font = `${isShort || isChosen ? "bold 15" : "12"}px ${getComputedStyle(document.body).getPropertyValue("--serif")}`;
       const text = page.ordinal(rank), wide = context.measureText(text).width, tall = isShort || isChosen ? 15 : 12;
@@ -172,69 +175,6 @@ const plan = (() => {
     }
   }
 
-  const STEPS_DEG = [10, 5, 2, 1, 0.5, 20 / 60, 10 / 60, 5 / 60, 2 / 60, 1 / 60, 0.5 / 60];
-  function degrees(value, letters) {
-    const whole = Math.abs(value), minutes = Math.round(whole * 600) / 10;
-    const d = Math.floor(minutes / 60 + 1e-9), m = Math.round((minutes - 60 * d) * 10) / 10;
-    return `${d}°${m ? `${m}′` : ""}${value < 0 ? letters[1] : letters[0]}`;
-  }
-  // ticks along the edge, a north arrow and a scale bar, as on a plan
-  function drawFrame(context, size) {
-    const view = map.getBounds();
-    context.font = "11px " + getComputedStyle(document.body).getPropertyValue("--sans");
-    context.lineWidth = 1;
-    const label = (text, x, y, align, base) => {
-      context.textAlign = align;
-      context.textBaseline = base;
-      context.strokeStyle = "rgba(250,247,240,0.9)";
-      context.lineWidth = 3;
-      context.strokeText(text, x, y);
-      context.fillStyle = "#4b473e";
-      context.fillText(text, x, y);
-    };
-    const tick = (x0, y0, x1, y1) => {
-      context.strokeStyle = INK;
-      context.lineWidth = 1;
-      context.beginPath();
-      context.moveTo(x0, y0);
-      context.lineTo(x1, y1);
-      context.stroke();
-    };
-    const stepFor = (span, most) => STEPS_DEG.filter((s) => span / s <= most).pop() || 10;
-    const stepX = stepFor(view.getEast() - view.getWest(), Math.max(2, size.x / 150));
-    for (let lon = Math.ceil(view.getWest() / stepX) * stepX; lon < view.getEast(); lon += stepX) {
-      const x = map.latLngToContainerPoint([view.getCenter().lat, lon]).x;
-      tick(x, 0, x, 7);
-      tick(x, size.y, x, size.y - 7);
-      if (x > 40 && x < size.x - 170) label(degrees(lon, "EW"), x, 10, "center", "top");
-    }
-    const stepY = stepFor(view.getNorth() - view.getSouth(), Math.max(2, size.y / 120));
-    for (let lat = Math.ceil(view.getSouth() / stepY) * stepY; lat < view.getNorth(); lat += stepY) {
-      const y = map.latLngToContainerPoint([lat, view.getCenter().lng]).y;
-      tick(0, y, 7, y);
-      tick(size.x, y, size.x - 7, y);
-      if (y > 30 && y < size.y - 60) label(degrees(lat, "NS"), 11, y, "left", "middle");
-    }
-    const y = size.y - 16, x = 44;
-    const metres = map.distance(map.containerPointToLatLng([0, size.y / 2]), map.containerPointToLatLng([100, size.y / 2])) / 100;
-    const most = metres * Math.min(190, size.x / 3), unit = 10 ** Math.floor(Math.log10(most));
-    const long = [5, 2, 1].map((k) => k * unit).find((k) => k <= most);
-    const wide = long / metres;
-    context.fillStyle = "rgba(250,247,240,0.82)";
-    context.fillRect(12, y - 21, 32 + wide + 28, 31);
-    tick(x, y, x + wide, y);
-    for (const part of [0, 0.5, 1]) tick(x + part * wide, y - 4, x + part * wide, y);
-    label("0", x, y - 6, "center", "bottom");
-    label(long >= 1000 ? `${long / 1000} km` : `${long} m`, x + wide, y - 6, "center", "bottom");
-    context.beginPath();
-    context.moveTo(24, y - 17); context.lineTo(28, y - 2); context.lineTo(24, y - 5.5); context.lineTo(20, y - 2);
-    context.closePath();
-    context.fillStyle = INK;
-    context.fill();
-    label("N", 24, y + 8, "center", "bottom");
-    context.textAlign = "left";
-  }
-
   function plotAt(point) {
     let best = null, nearest = 12;
     const context = canvas.getContext("2d"), ratio = canvas.width / map.getSize().x;
@@ -252,9 +192,9 @@ const plan = (() => {
     readout.textContent = i === null ? idle() : told(i);
   }
   function told(i) {
-    const rank = plots.rank[i], mark = page.marks()[i], one = page.question();
-    const asked = rank === null ? "" : mark === null ? (page.asks(i) ? ", unknown" : "") : `, ${mark.toFixed(0)} of 100${one ? ` for ${one.column.toLowerCase()}` : ""}`;
-    return page.called(i) + (rank === null ? ": set aside" : `: ${page.ordinal(rank)}${asked}`);
+    const isAside = plots.rank[i] === null, rank = page.now.rank[i], mark = page.marks()[i], one = page.question();
+    const asked = isAside ? "" : mark === null ? (page.asks(i) ? ", unknown" : "") : `, ${mark.toFixed(0)} of 100${one ? ` for ${one.column.toLowerCase()}` : ""}`;
+    return page.called(i) + (isAside ? ": set aside" : `: ${rank === null ? "no rank" : page.ordinal(rank)}${asked}`);
   }
 
   function showField() {
@@ -304,7 +244,7 @@ const plan = (() => {
     document.getElementById("farther").addEventListener("click", () => map.zoomOut());
     document.getElementById("whole").addEventListener("click", whole);
     page.watchers.push((what) => {
-      if (what.includes("question") || what.includes("view")) showField();
+      if ("question" in what || "view" in what) showField();
       redraw();
     });
     let before = null;
@@ -331,5 +271,10 @@ const plan = (() => {
     const where = map.unproject(places[i], 0);
     if (!map.getBounds().pad(-0.05).contains(where) && bounds.pad(0.5).contains(where)) map.panTo(where, { animate: false });
   }
-  return { start, reveal, screenOf: (i) => { const s = spots.find((spot) => spot.i === i); return s ? [s.x, s.y] : null; } };
+  // where a plot's ground lies on the map's window, and how far its sign reaches; null where it is out of sight
+  function groundOf(i) {
+    const spot = spots.find((one) => one.i === i);
+    return spot ? { x: spot.x, y: spot.y, half: Math.min(spot.half, 400) } : null;
+  }
+  return { start, reveal, groundOf, movers, screenOf: (i) => { const s = spots.find((spot) => spot.i === i); return s ? [s.x, s.y] : null; } };
 })();

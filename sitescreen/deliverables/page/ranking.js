@@ -14,10 +14,10 @@ const ranking = (() => {
 
   function columns() {
     const out = [
-      { key: "rank", head: "rank", kind: "rank", value: (i) => plots.rank[i], cell: rankCell },
+      { key: "rank", head: "rank", kind: "rank", value: (i) => page.now.rank[i], cell: rankCell },
       { key: "plot", head: "plot", kind: "plot", value: (i) => plots.name[i] || plots.plot[i], cell: plotCell },
       { key: "zone", head: "zone", kind: "zone", value: (i) => page.zoneTitle(i), cell: (i) => page.zoneTitle(i) },
-      { key: "overall", head: "overall mark", kind: "mark", best: true, value: (i) => plots.overall_mark[i], cell: markCell },
+      { key: "overall", head: "overall mark", kind: "mark", best: true, value: (i) => page.now.mark[i], cell: markCell },
     ];
     const one = page.question();
     if (one) out.push({ key: "asked", head: one.column.toLowerCase(), kind: "asked mark", best: true, value: (i) => one.marks[i], cell: (i) => askedCell(one, i) });
@@ -34,7 +34,8 @@ const ranking = (() => {
   }
 
   function rankCell(i) {
-    return plots.alike[i] ? [String(plots.rank[i]), " ", make("small", {}, `alike: ${plots.alike[i]}`)] : String(plots.rank[i]);
+    const rank = page.now.rank[i] === null ? "–" : String(page.now.rank[i]);
+    return plots.alike[i] ? [rank, " ", make("small", { class: "sure" }, `alike: ${plots.alike[i]}`)] : rank;
   }
   function plotCell(i) {
     const name = plots.name[i] === null ? `Plot ${plots.plot[i]}` : plots.name[i];
@@ -42,7 +43,7 @@ const ranking = (() => {
     return plots.name[i] === null ? [button] : [button, " ", make("small", {}, `plot ${plots.plot[i]}`)];
   }
   function markCell(i) {
-    return [page.markWords(i), ruler(plots.overall_mark[i], plots.mark_low[i], plots.mark_high[i], 86, 14)];
+    return [page.markWords(i), ruler(page.now.mark[i], page.now.low[i], page.now.high[i], 86, 14)];
   }
   function askedCell(one, i) {
     if (!page.asks(i)) return make("small", {}, "not asked");
@@ -50,12 +51,13 @@ const ranking = (() => {
   }
 
   function compare(column) {
-    const turn = sorted.down ? -1 : 1;
+    const turn = sorted.down ? -1 : 1, place = new Map(page.now.order.map((i, k) => [i, k]));
+    const order = (a, b) => (place.get(a) ?? Infinity) - (place.get(b) ?? Infinity) || a - b;
     return (a, b) => {
       const x = column.value(a), y = column.value(b);
-      if (x === null || y === null) return (x === null) - (y === null) || plots.rank[a] - plots.rank[b];
+      if (x === null || y === null) return (x === null) - (y === null) || order(a, b);
       const by = typeof x === "number" ? x - y : String(x).localeCompare(String(y), "en", { numeric: true });
-      return turn * by || plots.rank[a] - plots.rank[b] || a - b;
+      return turn * by || order(a, b);
     };
   }
 
@@ -114,7 +116,7 @@ const ranking = (() => {
       everything.setAttribute("aria-pressed", String(wide));
       show();
     });
-    page.watchers.push((what) => { if (what.includes("question")) show(); else if (what.includes("chosen")) mark(); });
+    page.watchers.push((what) => { if ("question" in what || "weights" in what) show(); else if ("chosen" in what) mark(); });
     shelf();
     show();
   }

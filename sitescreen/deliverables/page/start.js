@@ -84,7 +84,8 @@ const page = (() => {
   }
   // a mark as people read it, with the lower one that ranks go by where it differs by 1 or more
   function markWords(i) {
-    const mark = plots.overall_mark[i], low = plots.mark_low[i];
+    const mark = page.now.mark[i], low = page.now.low[i];
+    if (mark === null) return "unknown";
     const atWorst = low !== null && Math.round(10 * mark) - Math.round(10 * low) >= 10;
     return whole(mark) + (atWorst ? ` (at worst ${whole(low)})` : "");
   }
@@ -100,6 +101,7 @@ const page = (() => {
     if (value === null) return reading.name === "crest_bearing_deg" ? "none" : null;
     return shown(reading, value);
   }
+  // now: ranks and marks as the questions are weighed at the moment (weigh.js)
   const state = { chosen: null, question: "overall", view: 0 };
   const watchers = [];
   // which picture of a question shows the ground as the chosen plot's zone judges it
@@ -113,7 +115,7 @@ const page = (() => {
       const view = ownView();
       if (view !== state.view) { state.view = view; what.view = view; }
     }
-    for (const watch of watchers) watch(Object.keys(what));
+    for (const watch of watchers) watch(what);
   }
   function question() {
     return data.questions.find((one) => one.name === state.question) || null;
@@ -126,7 +128,7 @@ const page = (() => {
   // the marks that the map and its legend speak of at the moment
   function marks() {
     const one = question();
-    return one ? one.marks : plots.overall_mark;
+    return one ? one.marks : page.now.mark;
   }
   return { data, plots, count, ranked, aside, make, draw, classOf, sign, ruler, ordinal, called, zoneTitle, shown, state, watchers,
     change, question, marks, asks, markWords, readingWords };
