@@ -126,9 +126,7 @@ def test_certainty_is_grey_while_other_weights_hold(read: Any, tried: Any) -> No
     page.press("input[name=weight-ground][value='4']")
     assert page.run(colour) == "line-through"
     assert "for these it is not known" in page.text("#sure")
-    assert (
-        page.run(drawn.format("#leaf")) == "line-through"
-    )
+    assert page.run(drawn.format("#leaf")) == "line-through"
     page.press("#back")
     assert page.run(colour) == "none"
     assert page.text("#sure") == sure
