@@ -58,8 +58,8 @@ def command(
 ) -> None:
     """Rank the plots of a BRIEF, or of files named by options.
 
-    Writes map.html, ranking.csv, ranking.xlsx, plots.gpkg, layers/*.tif and record.json into the output folder; results
-    of an earlier run stay whole until the new ones are complete.
+    Writes map.html, ranking.csv, ranking.xlsx, plots.gpkg, shortlist.gpx, shortlist.kml, layers/*.tif and record.json
+    into the output folder; results of an earlier run stay whole until the new ones are complete.
     """
     from sitescreen.cli._show import TerminalProgress, say_if_first_run, show_notes
     from sitescreen.deliverables import write_results

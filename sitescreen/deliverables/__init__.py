@@ -13,7 +13,7 @@ __all__ = ["write_results"]
 
 
 def write_results(screening: "Screening", folder: Path) -> None:
-    """Write map, table, workbook, plots, layers and record of a screening into a folder.
+    """Write map, table, workbook, plots, shortlist for the phone, layers and record of a screening into a folder.
 
     Parameters
     ----------
@@ -29,6 +29,7 @@ def write_results(screening: "Screening", folder: Path) -> None:
     """
     from sitescreen.deliverables.columns import columns_of
     from sitescreen.deliverables.map import write_map
+    from sitescreen.deliverables.phone_files import write_phone_files
     from sitescreen.deliverables.plots_layer import write_plots
     from sitescreen.deliverables.record import NAME, outputs, write_record
     from sitescreen.deliverables.table import write_csv
@@ -41,6 +42,7 @@ def write_results(screening: "Screening", folder: Path) -> None:
         if len(table) <= MOST_PLOTS:
             write_workbook(table, columns, stage / "ranking.xlsx")
         write_plots(table, columns, stage / "plots.gpkg")
+        write_phone_files(screening, stage)
         with ThreadPoolExecutor(max_workers=1) as beside:  # compressing layers leaves Python free to draw the map
             layered = beside.submit(_write_layers, screening, stage)
             write_map(screening, columns, stage / "map.html")

@@ -18,8 +18,13 @@ from pathlib import Path
 from sitescreen.deliverables.record import NAME as RECORD
 from sitescreen.errors import OutputError
 
-OURS = re.compile(r"(map\.html|ranking\.csv|ranking\.xlsx|plots\.gpkg|record\.json|layers/[A-Za-z0-9_-]+\.tif)")
+OURS = re.compile(
+    r"(map\.html|ranking\.csv|ranking\.xlsx|plots\.gpkg|shortlist\.gpx|shortlist\.kml|record\.json|layers/[A-Za-z0-9_-]+\.tif)"
+)
 """Paths that a run may have written and a later one may therefore remove."""
+
+NAMES = ("map.html", "ranking.csv", "ranking.xlsx", "plots.gpkg", "shortlist.gpx", "shortlist.kml", RECORD)
+"""What a run writes beside the layers."""
 
 NEW, OLD, MOVING, OWNER = "new", "old", "moving.json", "owner.json"
 
@@ -33,7 +38,7 @@ def check_writable(folder: Path) -> None:
         If it, or the folder it would be made in, cannot be written to; or if it holds a file that has the name of a
         result and that no earlier run wrote, such as the user's own plots.gpkg.
     """
-    _refuse_to_replace(folder, ("map.html", "ranking.csv", "ranking.xlsx", "plots.gpkg", RECORD))
+    _refuse_to_replace(folder, NAMES)
     try:
         place = folder.resolve()
         while not (place.exists() or place.is_symlink()):

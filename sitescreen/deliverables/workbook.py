@@ -44,7 +44,8 @@ def write_workbook(table: "pd.DataFrame", columns: Sequence[Column], path: Path)
     book = Workbook(write_only=True)
     ranking = book.create_sheet("Ranking")
     ranking.freeze_panes = "D3"  # below names and units, right of rank, plot and name
-    ranking.auto_filter.ref = f"A1:{get_column_letter(len(columns))}{HEAD_ROWS + len(table)}"
+    # from the row of units down, so that sorting leaves it where it is
+    ranking.auto_filter.ref = f"A{HEAD_ROWS}:{get_column_letter(len(columns))}{HEAD_ROWS + len(table)}"
     empty = _empty(table, columns)
     for i, column in enumerate(columns, start=1):
         ranking.column_dimensions[get_column_letter(i)].width = _width(column)

@@ -22,6 +22,7 @@ def test_head_units_and_numbers(screening: Any, tmp_path: Path) -> None:
     names = [c.value for c in sheet[1]]
     units = [c.value for c in sheet[2]]
     assert sheet.freeze_panes == "D3"
+    assert sheet.auto_filter.ref.startswith("A2:")  # sorting leaves the units in place
     assert units[names.index("elevation_m")] == "m"
     assert sheet.max_row == 2 + len(screening.table)
     mark = sheet.cell(3, 1 + names.index("overall_mark"))
