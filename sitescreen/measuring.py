@@ -8,6 +8,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from sitescreen.climate.breeze import PlotBreeze, lake_reach, plot_breeze
+from sitescreen.climate.breeze_field import breeze_field
+from sitescreen.climate.breeze_section import Section, sections
 from sitescreen.climate.cold_air import closed_pools, smallest_pool_seen_m
 from sitescreen.climate.hill_speed_up import hill_fields
 from sitescreen.climate.sector_winds import SectorWinds, sector_winds
@@ -38,13 +40,14 @@ BLOCK_MARGIN_M = 12_600.0
 
 @dataclass(frozen=True)
 class BlockResult:
-    """What one block hands on: readings of its plots, their winds by sector, and its fields cut to the block's core."""
+    """What one block hands on: of its plots readings, winds by sector and sections to the shore; fields of its core."""
 
     block: Block
     readings: Readings
     fields: dict[str, Field]
     disagreement: WaterDisagreement
     winds: SectorWinds
+    sections: dict[str, Section]
 
 
 def plots_by_block(inputs: Inputs) -> Iterator[tuple[Block, NDArray[np.int64]]]:
@@ -149,9 +152,11 @@ def measure(
         # linear flow over hills does not hold on steep ground: no figure is drawn there
         **{name: _masked(field, steep) for name, field in wind.items()},
         **({"shore_distance_km": coast.distance} if coast.distance is not None else {}),
+        **({"breeze_reach": coast.reach} if coast.reach is not None else {}),
     }
     own = {name: field.part(block.core_bounds) for name, field in fields.items()}
-    return BlockResult(block, readings, own, disagreement, winds)
+    drawn = {plot: one for plot, one in zip(plots["plot"], coast.sections, strict=True) if one is not None}
+    return BlockResult(block, readings, own, disagreement, winds, drawn)
 
 
 def _own_slots() -> list[tuple[str, str]]:
@@ -172,6 +177,8 @@ class _Coast(NamedTuple):
     breeze: PlotBreeze | None
     onshore_from_deg: FloatArray
     distance: Field | None
+    reach: Field | None
+    sections: list[Section | None]
 
 
 def _coast(
@@ -185,7 +192,7 @@ def _coast(
     """The nearest waters of plots, the breeze of the open ones, and the bearing that it comes from."""
     from_deg = np.full(len(lon), np.nan)
     if shore is None:
-        return _Coast(None, None, None, from_deg, None)
+        return _Coast(None, None, None, from_deg, None, None, [None] * len(lon))
     crs, least_km = block.crs, settings.lake_width_none_km
     rule = OpenRule(settings.open_fetch_m, settings.open_sector_deg, settings.open_share)
     sea_open = open_segments(shore, "sea", crs, block.core_bounds, rule)
@@ -203,6 +210,32 @@ def _coast(
         breeze,
         from_deg,
         shore_distance(shore, elevation.grid, open_shores=Segments.joined(sea_open, lake_open)),
+        breeze_field(elevation, block.core_bounds, shore, sea_open, lake_open, settings),
+        _sections(elevation, lon, lat, breeze, settings),
+    )
+
+
+def _sections(
+    elevation: Field, lon: FloatArray, lat: FloatArray, breeze: PlotBreeze, settings: BreezeSettings
+) -> list[Section | None]:
+    """From each plot to the shore that its breeze comes from."""
+    from pyproj import Transformer
+
+    to_grid = Transformer.from_crs("EPSG:4326", elevation.grid.crs, always_xy=True)
+    # in the water the section is the plot alone
+    away = breeze.distance_m != 0.0
+    to_lon, to_lat = np.where(away, breeze.shore_lon, lon), np.where(away, breeze.shore_lat, lat)
+    some = np.isfinite(to_lon)
+    to_x, to_y = to_grid.transform(np.where(some, to_lon, lon), np.where(some, to_lat, lat))
+    return sections(
+        elevation,
+        *to_grid.transform(lon, lat),
+        np.where(some, to_x, np.nan),
+        np.where(some, to_y, np.nan),
+        breeze.way,
+        breeze.distance_m,
+        breeze.bearing_deg,
+        settings.path_most_m,
     )
 
 

@@ -10,6 +10,7 @@ import numpy as np
 import pandas as pd
 
 from sitescreen.brief import Brief
+from sitescreen.climate.breeze_section import Section
 from sitescreen.climate.cold_air import deficit_k
 from sitescreen.climate.normals import climate_notes, plot_climate
 from sitescreen.climate.sector_winds import SectorWinds
@@ -130,6 +131,7 @@ class Screening:
     was measured, by name (with several UTM zones the zone is added: ``slope_deg_utm41``). ``reasons``: by plot id.
     ``winds``: what the ground makes of the wind from each sector, rows in the order of the table.
     ``judged`` and ``zones``: the marks and zone shares behind the table, in the order of the plots as they came.
+    ``sections``: by plot id, the ground to the shore that the breeze comes from; none without a shore.
     """
 
     brief: Brief
@@ -137,6 +139,7 @@ class Screening:
     fields: Mapping[str, Field]
     reasons: Mapping[str, Reasons]
     winds: SectorWinds
+    sections: Mapping[str, Section]
     profiles: Mapping[str, ZoneProfile]
     notes: tuple[Note, ...]
     not_measured: tuple[str, ...]
@@ -201,6 +204,7 @@ def _judged(
         table=table,
         fields=_fields(measured),
         reasons=why,
+        sections={plot: section for one in measured for plot, section in one.sections.items()},
         winds=winds_together([one.winds for one in measured], tuple(table["plot"]), settings.wind.sectors),
         profiles=profiles,
         notes=notes,

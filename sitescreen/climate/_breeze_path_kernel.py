@@ -77,3 +77,46 @@ def walk(
         out[0, plot], out[1, plot], out[2, plot] = best, best_m, best_height
         out[4, plot], out[5, plot], out[6, plot] = highest, lowest, ground
         out[7, plot] = 1.0 if known else 0.0
+
+
+@njit(nogil=True, cache=True, error_model="numpy")
+def profile(
+    elevation_m: Any,
+    cell_size_m: Any,
+    row: Any,
+    col: Any,
+    row_step: Any,
+    col_step: Any,
+    length_m: Any,
+    distance_out: Any,
+    ground_out: Any,
+    count_out: Any,
+    first: Any,
+    last: Any,
+) -> None:
+    """Distances and heights along each way, its ends and between them the highest of every few samples."""
+    most = distance_out.shape[1]
+    for plot in range(first, last):
+        length = length_m[plot]
+        if not length >= 0.0:
+            continue
+        steps = math.ceil(length / cell_size_m - 1e-6)  # samples 0 … steps, the last at the very end
+        between = max(steps - 1, 0)
+        groups = min(between, most - 2)
+        ends = min(steps, 1)
+        count_out[plot] = groups + 1 + ends
+        for point in range(groups + 1 + ends):
+            if point == 0:
+                begin, stop = 0, 1
+            elif point <= groups:
+                begin, stop = 1 + (point - 1) * between // groups, 1 + point * between // groups
+            else:
+                begin, stop = steps, steps + 1
+            best, best_m = math.nan, min(begin * cell_size_m, length)
+            for k in range(begin, stop):
+                away = min(k * cell_size_m, length)
+                share = away / cell_size_m
+                ground = height_m(elevation_m, row[plot] + share * row_step[plot], col[plot] + share * col_step[plot])
+                if ground > best or (best != best and ground == ground):
+                    best, best_m = ground, away
+            distance_out[plot, point], ground_out[plot, point] = best_m, best

@@ -81,6 +81,9 @@ class PlotBreeze(NamedTuple):
     screen: FloatArray
     """Share of it that the ground on the way takes, 0–1; NaN likewise."""
     way: Way
+    shore_lon: FloatArray
+    """The nearest point of that shore. [°, WGS 84] NaN without one."""
+    shore_lat: FloatArray
 
 
 def plot_breeze(
@@ -166,6 +169,8 @@ def _stronger(sea: _Found, lake: _Found) -> PlotBreeze:
         bearing_deg=of(sea.shore.bearing_deg, lake.shore.bearing_deg),
         reach=of(sea.reach, lake.reach),
         screen=of(sea.screen, lake.screen),
+        shore_lon=of(sea.shore.lon, lake.shore.lon),
+        shore_lat=of(sea.shore.lat, lake.shore.lat),
         way=Way(*(np.where(sea_first, one, other) for one, other in zip(sea.way, lake.way, strict=True))),
     )
 

@@ -4,9 +4,8 @@ from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
-from pyproj import Geod, Transformer
 
-from sitescreen.climate._breeze_path_kernel import height_m, walk
+from sitescreen.climate._breeze_path_kernel import walk
 from sitescreen.grid import Field, Grid
 from sitescreen.settings import BreezeSettings
 from sitescreen.terrain.threads import in_bands
@@ -38,13 +37,6 @@ class Way(NamedTuple):
     """False where the terrain model has gaps on the way, or ends."""
 
 
-class Section(NamedTuple):
-    """Ground along the way from a plot to its shore, to be drawn: distances from the plot and heights, both [m]."""
-
-    distance_m: FloatArray
-    ground_m: FloatArray
-
-
 def ways(
     elevation: Field, x_m: FloatArray, y_m: FloatArray, to_x_m: FloatArray, to_y_m: FloatArray, settings: BreezeSettings
 ) -> Way:
@@ -67,7 +59,7 @@ def ways(
     Way
     """
     grid = elevation.grid
-    row, col, row_step, col_step, length = _steps(grid, x_m, y_m, to_x_m, to_y_m)
+    row, col, row_step, col_step, length = steps_to(grid, x_m, y_m, to_x_m, to_y_m)
     reaches = length <= settings.path_most_m
     walked = np.minimum(length, settings.path_most_m)
     out = np.empty((8, length.size))
@@ -102,7 +94,7 @@ def ways(
     )
 
 
-def _steps(
+def steps_to(
     grid: Grid, x_m: FloatArray, y_m: FloatArray, to_x_m: FloatArray, to_y_m: FloatArray
 ) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray, FloatArray]:
     """Rows and columns (of cell centres) of plots, what a step of one cell adds to them, and the way's length [m]."""
@@ -160,55 +152,4 @@ def _smoothstep(x: FloatArray) -> FloatArray:
     return inside * inside * (3.0 - 2.0 * inside)
 
 
-def section(
-    elevation: Field,
-    lon_deg: float,
-    lat_deg: float,
-    shore_bearing_deg: float,
-    shore_distance_m: float,
-    most_m: float = 12_000.0,
-    most_points: int = 120,
-) -> Section:
-    """The ground from one plot towards its shore, for drawing. Made on request, for few plots are ever drawn.
-
-    Parameters
-    ----------
-    elevation : Field
-        Height. [m] A ranking's own field of elevation will do.
-    lon_deg, lat_deg : float
-        The plot. [°]
-    shore_bearing_deg, shore_distance_m : float
-        From the plot to the nearest point of its shore: from true north [°], and on the ground [m].
-    most_m : float
-        Where to end if the shore is farther. [m]
-    most_points : int
-        With more cells on the way, only the highest of every few is kept, so that no crest is lost.
-
-    Returns
-    -------
-    Section
-        From the plot (0 m) outwards; heights NaN where unknown. No points without a shore.
-    """
-    if np.isnan(shore_distance_m) or (np.isnan(shore_bearing_deg) and shore_distance_m > 0.0):
-        return Section(np.empty(0), np.empty(0))
-    grid = elevation.grid
-    bearing = shore_bearing_deg if shore_distance_m > 0.0 else 0.0
-    to_lon, to_lat, _ = Geod(ellps="WGS84").fwd(lon_deg, lat_deg, bearing, shore_distance_m)
-    to_grid = Transformer.from_crs("EPSG:4326", grid.crs, always_xy=True)
-    ends = (np.array([value]) for value in (*to_grid.transform(lon_deg, lat_deg), *to_grid.transform(to_lon, to_lat)))
-    row, col, row_step, col_step, length = (float(values[0]) for values in _steps(grid, *ends))
-    end = min(length, most_m)
-    if end < 1e-6 * grid.cell_size_m:  # in the water itself
-        end = 0.0
-    distance = np.append(np.arange(0.0, end - 1e-6 * grid.cell_size_m, grid.cell_size_m), end)
-    steps = distance / grid.cell_size_m
-    ground = np.array([height_m(elevation.values, row + s * row_step, col + s * col_step) for s in steps])
-    if len(distance) <= most_points:
-        return Section(distance, ground)
-    groups = np.array_split(np.arange(1, len(distance) - 1), most_points - 2)
-    tops = [group[np.argmax(np.where(np.isnan(ground[group]), -np.inf, ground[group]))] for group in groups]
-    kept = np.array([0, *tops, len(distance) - 1])
-    return Section(distance[kept], ground[kept])
-
-
-__all__ = ["Section", "Way", "screen_share", "section", "ways"]
+__all__ = ["Way", "screen_share", "steps_to", "ways"]

@@ -10,7 +10,7 @@ from scipy import ndimage
 
 from sitescreen.climate._breeze_path_kernel import walk
 from sitescreen.climate.breeze import PlotBreeze, lake_reach, plot_breeze, sea_reach
-from sitescreen.climate.breeze_path import Way, screen_share, section, ways
+from sitescreen.climate.breeze_path import Way, screen_share, ways
 from sitescreen.grid import Field, Grid
 from sitescreen.settings import load_defaults
 from sitescreen.terrain.horizon import horizon_profile
@@ -165,23 +165,6 @@ def test_a_higher_crest_never_screens_less() -> None:
     assert (np.diff(shares) >= 0.0).all()
     assert shares[0] == 0.0
     assert shares[-1] == 1.0
-
-
-def test_a_section_keeps_its_ends_and_its_crest() -> None:
-    """A crest 64 m high on the 331st of 398 cells on the way east; the map's scale on its middle is 0.9996."""
-    ground = ground_to_the_west(lambda away: np.where(np.abs(away - 1350.0) < 10.0, 64.0, 0.0), 20.0)
-    lon, lat = (float(value[0]) for value in places(EAST - 7970.0, NORTH))
-    to_shore = (lon, lat, 90.0, 7955.0 / 0.9996)
-    whole = section(ground, *to_shore, most_points=1000)
-    drawn = section(ground, *to_shore)
-    assert (len(whole.distance_m), len(drawn.distance_m)) == (399, 120)
-    assert drawn.distance_m[[0, -1]] == pytest.approx([0.0, 7955.0], abs=0.5)
-    assert (np.diff(drawn.distance_m) > 0.0).all()
-    assert drawn.ground_m.max() == pytest.approx(64.0, abs=0.01)
-    assert drawn.distance_m[np.argmax(drawn.ground_m)] == pytest.approx(331 * 20.0)
-    assert section(ground, *to_shore, most_m=3000.0).distance_m[-1] == 3000.0
-    assert len(section(ground, lon, lat, math.nan, math.nan).distance_m) == 0
-    assert section(ground, lon, lat, math.nan, 0.0).distance_m.tolist() == [0.0]
 
 
 def test_the_skyline_is_that_of_the_exact_profile() -> None:
