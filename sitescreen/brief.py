@@ -27,6 +27,12 @@ from sitescreen.errors import BriefError
 Level = Literal["note", "concern", "stop"]
 
 
+def _once(months: list[int]) -> list[int]:
+    if len(set(months)) < len(months):
+        raise ValueError("each month once")
+    return months
+
+
 def _rising(points: list[tuple[float, float]]) -> list[tuple[float, float]]:
     if any(later[0] <= earlier[0] for earlier, later in pairwise(points)):
         raise ValueError("a curve whose first numbers rise from point to point")
@@ -88,10 +94,17 @@ class WindBrief(_Part):
     places: Literal["nearest", "inverse_distance"] = "nearest"
 
 
-class ClimateBrief(_Part):
-    """The table of station normals."""
+Months = Annotated[
+    list[Annotated[int, Field(strict=True, ge=1, le=12)]], Field(min_length=1, max_length=12), AfterValidator(_once)
+]
 
-    stations: FilePath
+
+class ClimateBrief(_Part):
+    """The table of station normals; the months of the cool and hot seasons, for where there is no such table."""
+
+    stations: FilePath | None = None
+    cool_months: Months | None = None
+    hot_months: Months | None = None
 
 
 class CoverClass(_Part):
@@ -111,9 +124,10 @@ class CoverBrief(_Part):
 
 
 class SkyBrief(_Part):
-    """The table of clear sky."""
+    """The table of clear sky, and the clock that times of sun are told by."""
 
-    file: FilePath
+    file: FilePath | None = None
+    utc_offset_h: Annotated[Number, Field(ge=-12, le=14)] | None = None
 
 
 class ZonesBrief(_Part):
@@ -259,7 +273,6 @@ class Brief(_Part):
             "[terrain] canopy_height": self.terrain.canopy_height is not None,
             "[plots] footprint_m2": "footprint_m2" in self.plots.model_fields_set,
             "[cover]": self.cover is not None,
-            "[sky]": self.sky is not None,
             "[[context]]": bool(self.context),
         }
         return [key for key, is_given in given.items() if is_given]

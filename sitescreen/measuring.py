@@ -2,7 +2,7 @@
 
 from collections.abc import Collection, Iterator
 from dataclasses import dataclass
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -12,22 +12,27 @@ from sitescreen.climate.breeze_field import breeze_field
 from sitescreen.climate.breeze_section import Section, sections
 from sitescreen.climate.cold_air import closed_pools, smallest_pool_seen_m
 from sitescreen.climate.hill_speed_up import hill_fields
+from sitescreen.climate.normals import plot_climate
+from sitescreen.climate.plot_sun import PlotSkies, mean_plane, monthly_sun, plot_skies
+from sitescreen.climate.seasons import seasons_from_normals, seasons_without_normals
 from sitescreen.climate.sector_winds import SectorWinds, sector_winds
 from sitescreen.climate.wind import FIELD_READINGS, Wanted, wind_fields
 from sitescreen.climate.wind_cover import wind_cover
 from sitescreen.grid import Field, Grid
 from sitescreen.inputs import Inputs
 from sitescreen.inputs.shore import Shore
-from sitescreen.judgement.coverage import cover
+from sitescreen.judgement.coverage import Coverage, cover
 from sitescreen.judgement.readings import BlockClimate, Readings, block_readings
 from sitescreen.judgement.shore_readings import with_shore
+from sitescreen.judgement.sun_readings import with_sun
 from sitescreen.judgement.wind_readings import with_wind
 from sitescreen.judgement.wind_slots import SLOT_OF, wind_column
 from sitescreen.lattice import Block, blocks_of, convergence_deg, from_true_north
 from sitescreen.progress import Progress
 from sitescreen.settings import BreezeSettings, Defaults
 from sitescreen.terrain.flat_water import WaterDisagreement, water_disagreement
-from sitescreen.terrain.ground import read_ground
+from sitescreen.terrain.ground import Ground, read_ground
+from sitescreen.terrain.plot_skyline import plot_skylines
 from sitescreen.terrain.shore_distance import ShoreDistance, nearest_shore, onshore_bearing, shore_distance
 from sitescreen.terrain.shore_fetch import OpenRule, OpenShore, open_segments, open_shores
 from sitescreen.terrain.shore_segments import Segments
@@ -48,6 +53,7 @@ class BlockResult:
     disagreement: WaterDisagreement
     winds: SectorWinds
     sections: dict[str, Section]
+    suns: PlotSkies
 
 
 def plots_by_block(inputs: Inputs) -> Iterator[tuple[Block, NDArray[np.int64]]]:
@@ -141,6 +147,9 @@ def measure(
         )
         readings = with_wind(readings, winds, inputs.wind, lon, lat, steep_share, slots, settings.wind)
         readings = with_shore(readings, coast.near, coast.lake, coast.breeze, coast.onshore_from_deg, settings.breeze)
+    with progress.step("Measuring the sun"):
+        suns = _suns(plots, ground, coverage, readings, inputs, settings)
+        readings = with_sun(readings, suns, monthly_sun(suns, settings.sun))
     fields = {
         "elevation_m": ground.elevation,
         "slope_deg": ground.slope,
@@ -156,7 +165,7 @@ def measure(
     }
     own = {name: field.part(block.core_bounds) for name, field in fields.items()}
     drawn = {plot: one for plot, one in zip(plots["plot"], coast.sections, strict=True) if one is not None}
-    return BlockResult(block, readings, own, disagreement, winds, drawn)
+    return BlockResult(block, readings, own, disagreement, winds, drawn, suns)
 
 
 def _own_slots() -> list[tuple[str, str]]:
@@ -167,6 +176,34 @@ def _own_slots() -> list[tuple[str, str]]:
 def _masked(field: Field, hidden: NDArray[np.bool_]) -> Field:
     """The field, unknown where hidden."""
     return Field(np.where(hidden, np.float32(np.nan), field.values), field.grid, field.unit, field.what)
+
+
+def _suns(
+    plots: Any, ground: Ground, coverage: Coverage, readings: Readings, inputs: Inputs, settings: Defaults
+) -> PlotSkies:
+    """Skylines, suns and seasons of a block's plots."""
+    lon, lat = plots["lon"].to_numpy(), plots["lat"].to_numpy()
+    height = readings.values["elevation_m"].to_numpy(dtype=np.float64)
+    sun, choices, known = settings.sun, inputs.sun_choices, settings.readings.known_share_least
+    eye_m = sun.eye_m + sun.eye_errors * inputs.terrain.vertical_error_m
+    if inputs.normals is None:
+        seasons = seasons_without_normals(lat, choices.cool_months, choices.hot_months)
+    else:
+        climate = plot_climate(inputs.normals, lon, lat, height, settings.zones)
+        seasons = seasons_from_normals(inputs.normals, climate, settings.zones.lapse_k_km)
+    east, north = (coverage.mean(one.values, known) for one in (ground.gradient.east, ground.gradient.north))
+    return plot_skies(
+        plot_skylines(ground.elevation, lon, lat, eye_m, sun.skyline_reach_m).height_deg,
+        lon,
+        lat,
+        height,
+        seasons,
+        inputs.sky,
+        readings.values["sky_view"].to_numpy(dtype=np.float64),
+        mean_plane(east, north, convergence_deg(ground.elevation.grid.crs, lon, lat)),
+        sun,
+        choices.utc_offset_h,
+    )
 
 
 class _Coast(NamedTuple):

@@ -15,7 +15,7 @@ class Note:
     level : "info", "assumed" or "warning"
         ``assumed`` marks a default that stands in for an input nobody gave.
     where : str
-        The input or stage it speaks of: "terrain", "shore", "plots", "wind", "climate", "cover", "judgement".
+        The input or stage it speaks of: "terrain", "shore", "plots", "wind", "climate", "sky", "cover", "judgement".
     text : str
         The sentence, in plain English, with figures and units.
     """

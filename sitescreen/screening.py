@@ -35,6 +35,7 @@ from sitescreen.judgement.pairs import Compared, compare_for, with_weights
 from sitescreen.judgement.profiles import ZoneProfile, load_profiles, wind_slots
 from sitescreen.judgement.readings import Readings, stack
 from sitescreen.judgement.reasons import Reasons, reasons
+from sitescreen.judgement.sun_readings import sun_notes
 from sitescreen.judgement.sway import sway_notes, sways
 from sitescreen.judgement.waters import waters_disagree
 from sitescreen.judgement.wind_readings import assumed_columns
@@ -46,7 +47,6 @@ from sitescreen.terrain.flat_water import together
 
 NOT_MEASURED = (
     "cold air held back by narrows without a closed hollow, and cold air in motion",
-    "hours of sun and the sun's load on walls",
     "the best bearing for a building's long axis",
     "how certain a rank is given the terrain model's error and the wind (the ranges and chances vary the weights only)",
 )
@@ -64,9 +64,6 @@ EMPTY_IN_THIS_VERSION = (
     "cold_pool_chance",
     "night_minimum_c",
     "floor_height_m",
-    "sun_cool_morning_h",
-    "sun_year_h",
-    "west_load_kwh_m2",
     "long_axis_deg",
     "wind_incidence_deg",
     "night_flow_m2_s",
@@ -189,6 +186,7 @@ def _judged(
     notes = inputs.notes + inputs.terrain.findings
     notes += climate_notes(climate, settings.zones) if climate is not None else ()
     notes += (compared.notes() if compared else ()) + sure.notes() + sway_notes(found)
+    notes += sun_notes([one.suns for one in measured], lat, inputs.sky, inputs.sun_choices)
     waters = together([one.disagreement for one in measured])
     if inputs.shore and len(inputs.shore.waters) and not waters.agrees:
         notes += (Note("warning", "shore", waters.sentence),)
@@ -323,7 +321,7 @@ def _record(
     progress: Progress,
 ) -> dict[str, Any]:
     """What the run went by, so that somebody else can repeat and question it."""
-    packages = ("sitescreen", "numpy", "numba", "rasterio", "geopandas", "shapely", "pyproj", "exactextract")
+    packages = ("sitescreen", "numpy", "numba", "rasterio", "geopandas", "shapely", "pyproj", "exactextract", "pvlib")
     return {
         "title": brief.title,
         "versions": {"python": platform.python_version(), **{name: version(name) for name in packages}},

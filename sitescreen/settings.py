@@ -124,6 +124,9 @@ class SunSettings(Section):
     ground_albedo: Share
     cell_deg: Annotated[float, Field(ge=0.01, le=1)]
     level_m: Annotated[float, Field(ge=1, le=1000)]
+    eye_m: Annotated[float, Field(ge=0, le=100)]
+    eye_errors: Annotated[float, Field(ge=0, le=5)]
+    skyline_reach_m: Annotated[float, Field(ge=1000, le=200_000)]
 
 
 class ColdAirSettings(Section):

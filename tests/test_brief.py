@@ -120,7 +120,6 @@ def test_keys_without_effect_are_named_as_they_are_written(tmp_path: Path) -> No
         "[terrain] canopy_height",
         "[plots] footprint_m2",
         "[cover]",
-        "[sky]",
         "[[context]]",
     ]
 

@@ -9,6 +9,7 @@ from typing import Any, NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
+from sitescreen.climate.clear_sky import clear_sky, pressure_hpa
 from sitescreen.errors import InputError
 from sitescreen.settings import SunSettings
 
@@ -21,9 +22,6 @@ DAY_OF_YEAR = np.array([17, 47, 75, 105, 135, 162, 198, 228, 258, 288, 318, 344]
 
 DAYS_IN_MONTH = np.array([31, 28, 31, 30, 31, 30, 31, 31, 30, 31, 30, 31])
 
-SKYLINE_AZIMUTHS_DEG = np.arange(72) * 5.0
-"""Directions of a plot's skyline, clockwise from true north. [°]"""
-
 _YEAR = 2026
 """Half-way between leap years, so that the declination is within 0.1° of any year's."""
 
@@ -32,9 +30,6 @@ _DELTA_T_S = 67.0
 
 _TEMPERATURE_C = 15.0
 """Air for the refraction; 15 K more or less change it by 0.03° at the horizon. [°C]"""
-
-_SOLAR_CONSTANT_W_M2 = 1361.0
-"""Kopp & Lean 2011, Geophys. Res. Lett. 38:L01706."""
 
 
 class SunPath(NamedTuple):
@@ -141,48 +136,6 @@ def _positions(
     return np.asarray(hour, dtype=np.float64), height, azimuth
 
 
-def pressure_hpa(elevation_m: float) -> float:
-    """Pressure of the ICAO standard atmosphere (Doc 7488), troposphere. [hPa]"""
-    return float(1013.25 * (1.0 - 6.5e-3 * elevation_m / 288.15) ** 5.25588)
-
-
-def clear_sky(
-    height_deg: FloatArray, day_of_year: NDArray[Any], elevation_m: float, linke_turbidity: float
-) -> tuple[FloatArray, FloatArray]:
-    """Light under a sky without clouds.
-
-    Parameters
-    ----------
-    height_deg : float64 array
-        Apparent height of the sun. [°]
-    day_of_year : array, of a shape that goes with it
-    elevation_m : float
-        Height above sea level. [m]
-    linke_turbidity : float
-        [1]
-
-    Returns
-    -------
-    beam_w_m2 : float64 array
-        On a plane that faces the sun. [W/m²] 0 where the sun is down.
-    diffuse_w_m2 : float64 array
-        From the whole sky on level open ground. [W/m²] 0 where the sun is down.
-    """
-    from pvlib.atmosphere import get_relative_airmass
-    from pvlib.clearsky import ineichen
-    from pvlib.irradiance import get_extra_radiation
-
-    height = np.asarray(height_deg, dtype=np.float64)
-    up = height > 0
-    zenith = 90.0 - np.where(up, height, 45.0)  # a sun that is down is put up, and its light taken away below
-    airmass = get_relative_airmass(zenith, "kastenyoung1989") * pressure_hpa(elevation_m) / 1013.25
-    extra = get_extra_radiation(np.asarray(day_of_year, dtype=np.float64), _SOLAR_CONSTANT_W_M2, method="spencer")
-    found = ineichen(zenith, airmass, linke_turbidity, elevation_m, np.broadcast_to(extra, height.shape))
-    # the formulas part the light so that the remainder may fall below nothing at a sun on the horizon
-    beam, diffuse = np.maximum(found["dni"], 0.0), np.maximum(found["dhi"], 0.0)
-    return np.where(up, beam, 0.0), np.where(up, diffuse, 0.0)
-
-
 class Skies(NamedTuple):
     """The suns that many plots share: ``paths``, and for each plot the number of its own, −1 where unknown."""
 
@@ -224,7 +177,7 @@ def sun_paths(
     return Skies(tuple(sun_path(lon, lat, height, settings, utc_offset_h) for lon, lat, height in middles), which)
 
 
-def lit(path: SunPath, skyline_deg: FloatArray) -> BoolArray:
+def lit(path: SunPath, skyline_deg: NDArray[np.floating[Any]]) -> BoolArray:
     """Where the sun stands above a skyline.
 
     Parameters
@@ -239,10 +192,15 @@ def lit(path: SunPath, skyline_deg: FloatArray) -> BoolArray:
     bool array, shape (12, steps) or (n, 12, steps)
         Whether the middle of the sun is up and stands above the skyline, in the middle of each step.
     """
-    return np.asarray(path.elevation_deg > skyline_at(skyline_deg, path.azimuth_deg))
+    return np.asarray(clearance_deg(path, skyline_deg) > 0)
 
 
-def skyline_at(skyline_deg: FloatArray, azimuth_deg: FloatArray) -> FloatArray:
+def clearance_deg(path: SunPath, skyline_deg: NDArray[np.floating[Any]]) -> FloatArray:
+    """How high the sun stands above a skyline as in :func:`lit`, below it negative; of the same shapes. [°]"""
+    return np.asarray(path.elevation_deg - skyline_at(skyline_deg, path.azimuth_deg))
+
+
+def skyline_at(skyline_deg: NDArray[np.floating[Any]], azimuth_deg: FloatArray) -> FloatArray:
     """Height of a skyline towards given bearings, at least level. [°]
 
     Parameters
@@ -262,7 +220,8 @@ def skyline_at(skyline_deg: FloatArray, azimuth_deg: FloatArray) -> FloatArray:
     before = np.floor(place).astype(np.int64)
     part = place - before
     left, right = heights[..., before % count], heights[..., (before + 1) % count]
-    return np.asarray(left + part * (right - left))
+    # picking columns leaves them in another order in memory, and sums over them would depend on it
+    return np.ascontiguousarray(left + part * (right - left))
 
 
 def cos_incidence(path: SunPath, tilt_deg: float, azimuth_deg: float) -> FloatArray:
@@ -330,7 +289,7 @@ def on_plane(
     return np.asarray(direct + path.diffuse_w_m2 * view + albedo * (1.0 - view) * level)
 
 
-def wall_sky_view(skyline_deg: FloatArray, azimuth_deg: float) -> FloatArray:
+def wall_sky_view(skyline_deg: NDArray[np.floating[Any]], azimuth_deg: float) -> FloatArray:
     """How much of the light of the sky a wall has over a skyline, against an open level plane.
 
     Parameters

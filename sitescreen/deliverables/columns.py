@@ -152,9 +152,21 @@ CONTRACT: tuple[Column, ...] = (
     _number("night_minimum_c", 1, "°C", "night minimum", "Expected night minimum in the cool season."),
     _number("floor_height_m", 1, "m", "above the channel", "Height above the nearest channel floor."),
     _number("sky_view", 3, "0–1", "open sky", "Share of the sky that the ground around leaves open."),
-    _number("sun_cool_morning_h", 1, "h a day", "morning sun", "Hours of morning sun in the cool season."),
-    _number("sun_year_h", 0, "h a year", "sun", "Hours of sun in a year past the surrounding ground."),
-    _number("west_load_kwh_m2", 2, "kWh/m²", "west wall load", "Sun on a west wall on a hot-season afternoon."),
+    _number(
+        "sun_cool_morning_h",
+        1,
+        "h a day",
+        "morning sun",
+        "Hours of sun before its highest, a day of the cool season; under clear skies unless clouds were given.",
+    ),
+    _number(
+        "sun_year_h",
+        0,
+        "h a year",
+        "sun",
+        "Hours of sun past the ground around; under clear skies unless clouds were given.",
+    ),
+    _number("west_load_kwh_m2", 2, "kWh/m²", "west wall load", "Light on a free west wall, a hot-season afternoon."),
     _number("pond_depth_m", 1, "m", "ponding", "Depth to which water could stand, by the terrain model."),
     _number(
         "long_axis_deg", 0, "° from true north", "long axis", "Bearing of the long axis that serves sun and wind best."
@@ -183,6 +195,17 @@ CONTRACT: tuple[Column, ...] = (
     _number(
         "driving_rain", 2, "× open ground", "driving rain", "Strong wind of the rainy season compared with open ground."
     ),
+    _number(
+        "cool_gain_kwh_m2", 2, "kWh/m²", "cool-season sun", "Sun on the plot's ground on a day of the cool season."
+    ),
+    _number(
+        "sun_first_cool_h",
+        1,
+        "h",
+        "first sun",
+        "Clock hour at which the sun first reaches it, cool season, clouds aside.",
+    ),
+    _number("sun_last_cool_h", 1, "h", "last sun", "Clock hour at which the sun last leaves it, cool season."),
 )
 """The columns that every table has, in this order. Ones this version cannot fill stay empty."""
 
@@ -233,6 +256,10 @@ MORE: Mapping[str, Column] = {
         _number("sea_km", 2, "km", "to the sea", "Distance to the nearest sea shore, creeks included."),
         _number("lake_km", 2, "km", "to a lake", "Distance to the lake whose breeze reaches the plot most."),
         _number("lake_width_km", 1, "km", "width of the lake", "Width of that lake."),
+        _text("sun_first_by_month", "first sun by month", "Clock times of the first sun, January to December."),
+        _text("sun_last_by_month", "last sun by month", "Clock times of the last sun, January to December."),
+        _text("cool_months", "cool season", "The months counted as its cool season."),
+        _text("hot_months", "hot season", "The months counted as its hot season."),
         _text("outcome", "outcome", "Why the plot could not be judged; empty where it could."),
         _whole("water_disagrees", "waters disagree", "1 where the map of water and the terrain model disagree."),
         _text("zone_provisional", "zone provisional", "“yes” where a figure is missing to tell the zone firmly."),

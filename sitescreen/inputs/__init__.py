@@ -20,6 +20,7 @@ from sitescreen.inputs.plot_named import without_plots
 from sitescreen.inputs.plots import Plots, read_plots
 from sitescreen.inputs.shore import Shore, read_shore
 from sitescreen.inputs.shore_kinds import kind_of
+from sitescreen.inputs.sky import ClearSky, SunChoices, read_sky, sun_choices
 from sitescreen.inputs.stamps import FileStamp
 from sitescreen.inputs.terrain import Terrain, open_terrain
 from sitescreen.inputs.wind import WindTable, assumed_wind, read_wind
@@ -38,13 +39,15 @@ class Inputs:
     wind: WindTable
     normals: Normals | None
     cover: Cover | None
+    sky: ClearSky | None
+    sun_choices: SunChoices
     zone_map: Any | None
     notes: tuple[Note, ...]
 
     @property
     def stamps(self) -> tuple[FileStamp, ...]:
         """Name, size and SHA-256 of every file read."""
-        singles = (self.plots, self.shore, self.wind, self.normals, self.cover)
+        singles = (self.plots, self.shore, self.wind, self.normals, self.cover, self.sky)
         found = [stamp for one in singles if one is not None and (stamp := one.stamp) is not None]
         return (*self.terrain.stamps, *found)
 
@@ -78,11 +81,12 @@ def read_inputs(brief: Brief) -> Inputs:
     if shore is not None and brief.shore is not None:
         sea_notes = check_sea_level(shore, terrain, outline, kind_of(brief.shore.kind or "") == "land")
     wind = read_wind(brief.wind.file, brief.wind.places == "inverse_distance") if brief.wind else assumed_wind()
-    normals = read_normals(brief.climate.stations) if brief.climate else None
+    normals = read_normals(brief.climate.stations) if brief.climate and brief.climate.stations else None
+    sky = read_sky(brief.sky.file) if brief.sky and brief.sky.file else None
     cover = read_cover(brief.cover) if brief.cover else None
     zone_map = read_zone_map(Path(brief.zones.polygons)) if brief.zones.polygons else None
     notes: list[Note] = list(sea_notes)
-    for read in (terrain, shore, plots, wind, normals, cover):
+    for read in (terrain, shore, plots, wind, normals, cover, sky):
         if read is not None:
             notes.extend(read.notes)
     notes.extend(edge_notes(plots, outline, settings.wind.shelter_reach_m))
@@ -100,4 +104,4 @@ def read_inputs(brief: Brief) -> Inputs:
                 "assumed", "climate", "No climate normals were given: zones follow from altitude and distance to water."
             )
         )
-    return Inputs(terrain, plots, shore, wind, normals, cover, zone_map, tuple(notes))
+    return Inputs(terrain, plots, shore, wind, normals, cover, sky, sun_choices(brief), zone_map, tuple(notes))

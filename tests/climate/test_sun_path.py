@@ -5,15 +5,14 @@ from typing import Any
 import numpy as np
 import pytest
 
+from sitescreen.climate.clear_sky import clear_sky, pressure_hpa
 from sitescreen.climate.sun_path import (
     DAY_OF_YEAR,
     SunPath,
     assumed_utc_offset_h,
-    clear_sky,
     cos_incidence,
     lit,
     on_plane,
-    pressure_hpa,
     skyline_at,
     sun_path,
     sun_paths,

@@ -18,7 +18,8 @@ buildable_share, rise_m, shore_kind, shore_distance_km, onshore_from_deg, breeze
 ventilation, ridge_exposure, sheltered_fraction, cold_pool_kind, cold_pool_depth_m, cold_pool_chance,
 cold_deficit_k, smallest_pool_seen_m, night_minimum_c, floor_height_m, sky_view, sun_cool_morning_h,
 sun_year_h, west_load_kwh_m2, pond_depth_m, long_axis_deg, wind_incidence_deg, area_ha, lon, lat,
-offshore_from_deg, breeze_arrival_h, night_flow_m2_s, night_flow_speed_m_s, clear_calm_nights, driving_rain"""
+offshore_from_deg, breeze_arrival_h, night_flow_m2_s, night_flow_speed_m_s, clear_calm_nights, driving_rain,
+cool_gain_kwh_m2, sun_first_cool_h, sun_last_cool_h"""
 
 
 def written(screening: Any, path: Path) -> bytes:
