@@ -12,6 +12,7 @@ import pandas as pd
 from sitescreen.brief import Brief
 from sitescreen.climate.breeze_section import Section
 from sitescreen.climate.cold_air import deficit_k
+from sitescreen.climate.drawn_sun import PlotSun, drawn_suns
 from sitescreen.climate.normals import climate_notes, plot_climate
 from sitescreen.climate.sector_winds import SectorWinds
 from sitescreen.climate.sector_winds import together as winds_together
@@ -73,6 +74,9 @@ EMPTY_IN_THIS_VERSION = (
 """Columns of the table whose methods are still to come."""
 
 
+SUNS_DRAWN = 200
+"""The sun's arcs are kept for so many plots, the first in rank: what a page can draw."""
+
 REASONS_RECORDED = 2000
 """The record keeps the reasons of so many plots, the first in rank; more would make it too large to mail."""
 
@@ -129,6 +133,7 @@ class Screening:
     ``winds``: what the ground makes of the wind from each sector, rows in the order of the table.
     ``judged`` and ``zones``: the marks and zone shares behind the table, in the order of the plots as they came.
     ``sections``: by plot id, the ground to the shore that the breeze comes from; none without a shore.
+    ``suns``: by plot id, the sun's arcs past its skyline; of the first 200 plots of the table.
     """
 
     brief: Brief
@@ -137,6 +142,7 @@ class Screening:
     reasons: Mapping[str, Reasons]
     winds: SectorWinds
     sections: Mapping[str, Section]
+    suns: Mapping[str, PlotSun]
     profiles: Mapping[str, ZoneProfile]
     notes: tuple[Note, ...]
     not_measured: tuple[str, ...]
@@ -203,6 +209,12 @@ def _judged(
         fields=_fields(measured),
         reasons=why,
         sections={plot: section for one in measured for plot, section in one.sections.items()},
+        suns=drawn_suns(
+            [(list(one.readings.values.index), one.suns) for one in measured],
+            list(table["plot"].head(SUNS_DRAWN)),
+            settings.sun,
+            inputs.sun_choices.utc_offset_h is None,
+        ),
         winds=winds_together([one.winds for one in measured], tuple(table["plot"]), settings.wind.sectors),
         profiles=profiles,
         notes=notes,
