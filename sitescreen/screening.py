@@ -13,6 +13,7 @@ from sitescreen.brief import Brief
 from sitescreen.climate.breeze_section import Section
 from sitescreen.climate.cold_air import deficit_k
 from sitescreen.climate.drawn_sun import PlotSun, drawn_suns
+from sitescreen.climate.mahoney import second_opinion
 from sitescreen.climate.normals import climate_notes, plot_climate
 from sitescreen.climate.sector_winds import SectorWinds
 from sitescreen.climate.sector_winds import together as winds_together
@@ -177,6 +178,9 @@ def _judged(
         values["elevation_m"], values["sea_km"], values["lake_km"], values["lake_width_km"], climate, settings.zones
     )
     zones = zone_shares(fits, _stated_zones(brief, inputs), settings.zones, profiles)
+    if inputs.normals is not None and climate is not None:
+        opinion = second_opinion(inputs.normals, climate, zones.zone)
+        values[opinion.columns] = opinion.to_numpy()
     values["cold_deficit_k"] = _deficit(values, zones, settings)
     halved = assumed_columns(inputs.wind, profiles)
     judged = judge(

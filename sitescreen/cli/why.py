@@ -56,6 +56,8 @@ def _place(row: Mapping[str, str], plots: Mapping[str, Any], certainty: Mapping[
             f"Two zones share it: {row['zone']} ({100 * float(row['zone_share']):.0f} %) and {row['zone_2']} "
             f"({100 * float(row['zone_2_share']):.0f} %); what follows speaks of the first."
         )
+    if row.get("mahoney_says"):
+        yield f"Second opinion on the climate: {row['mahoney_says']} ({row['mahoney']})"
     if row["rank_low"]:
         low, high = row["rank_low"], row["rank_high"]
         span = f"rank {low}" if low == high else f"rank {low} to {high}"

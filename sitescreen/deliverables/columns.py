@@ -292,6 +292,17 @@ MORE: Mapping[str, Column] = {
             "beats the next",
             "Share of those trials in which it has a higher mark than the plot next in rank; below 0.8 they are alike.",
         ),
+        _text(
+            "mahoney",
+            "Mahoney indicators",
+            "Months a year: H1 air movement needed, H2 wanted, H3 heavy rain, A1 thermal mass, A2 sleeping outdoors, "
+            "A3 cold.",
+        ),
+        _text(
+            "mahoney_says",
+            "second opinion",
+            "What the Mahoney tables (UN 1971) ask for by the climate normals alone; the plot's marks do not use it.",
+        ),
         _whole(
             "group",
             "group",
