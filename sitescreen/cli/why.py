@@ -53,9 +53,11 @@ def _place(row: Mapping[str, str], plots: Mapping[str, Any], certainty: Mapping[
         yield f"Mark {whole_mark(float(row['overall_mark']))} of 100{limits}."
     if row.get("zone_2"):
         yield (
-            f"Two zones share it: {row['zone']} ({100 * float(row['zone_share']):.0f} %) and {row['zone_2']} "
-            f"({100 * float(row['zone_2_share']):.0f} %); what follows speaks of the first."
+            f"Two zones share it: {_in_zone(row, 'zone', 'zone_share', 'mark_in_zone')} and "
+            f"{_in_zone(row, 'zone_2', 'zone_2_share', 'mark_in_zone_2')}; what follows speaks of the first."
         )
+    if row.get("zone_missing"):
+        yield f"Its rank is provisional: {row['zone_missing']} is missing to tell its zone."
     if row.get("mahoney_says"):
         yield f"Second opinion on the climate: {row['mahoney_says']} ({row['mahoney']})"
     if row["rank_low"]:
@@ -65,6 +67,13 @@ def _place(row: Mapping[str, str], plots: Mapping[str, Any], certainty: Mapping[
             f"Under {certainty['trials']:,} other sets of weights mostly {span}, "
             f"first in {100 * float(row['chance_first']):.0f} of 100; the terrain's and the wind's error are not in it."
         )
+
+
+def _in_zone(row: Mapping[str, str], zone: str, share: str, mark: str) -> str:
+    from sitescreen.deliverables.table import whole_mark
+
+    alone = f", {whole_mark(float(row[mark]))} of 100 by it alone" if row.get(mark) else ""
+    return f"{row[zone]} ({100 * float(row[share]):.0f} %{alone})"
 
 
 def _marks(row: Mapping[str, str], profile: Mapping[str, Any]) -> Iterator[str]:

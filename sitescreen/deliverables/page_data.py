@@ -30,6 +30,9 @@ _NOT_ON_A_LEAF = {
 }  # fmt: skip
 
 
+_MARKS_BY_ZONE = ("mark_in_zone", "mark_in_zone_2")
+
+
 def page_data(
     screening: "Screening",
     columns: Sequence[Column],
@@ -58,10 +61,14 @@ def page_data(
 
     names = [c.name for c in columns]
     first = names.index("elevation_m")
-    measured = [c for c in columns[first:] if not c.name.startswith(("membership_", "mark_"))]
+    measured = [
+        c for c in columns[first:] if c.name in _MARKS_BY_ZONE or not c.name.startswith(("membership_", "mark_"))
+    ]
     readings = []
     for column in measured:
         values = column_values(column.name)
+        if column.name in _MARKS_BY_ZONE and "zone_2" in by_name:  # where one zone alone judges it is the overall mark
+            values = [v if shared else None for v, shared in zip(values, column_values("zone_2"), strict=True)]
         if column.says and column.name not in _NOT_ON_A_LEAF and any(value is not None for value in values):
             readings.append(_words(column) | {"values": values})
     return {
@@ -108,7 +115,7 @@ def page_data(
         "marks": {
             name.removeprefix("mark_"): column_values(name)
             for name in names
-            if name.startswith("mark_") and name not in ("mark_low", "mark_high", "mark_in_zone", "mark_in_zone_2")
+            if name.startswith("mark_") and name not in ("mark_low", "mark_high", *_MARKS_BY_ZONE)
         },
         "readings": readings,
         "weighing": weighing(screening),

@@ -310,3 +310,11 @@ def test_no_question_claims_that_the_way_of_the_breeze_is_not_looked_at(page: st
     breeze = next(one for one in data_of(page)["questions"] if one["name"] == "breeze")
     assert "not yet" not in breeze["method"]
     assert "the ground on its way" in breeze["method"]
+
+
+def test_a_plot_of_two_zones_shows_the_mark_by_each(screening: Any) -> None:
+    table = screening.table.assign(zone_2="", zone_2_share=np.nan, mark_in_zone=70.0, mark_in_zone_2=np.nan)
+    table.loc[0, ["zone_2", "zone_2_share", "mark_in_zone_2"]] = ["upland", 0.4, 50.0]
+    told = {one["name"]: one["values"] for one in data_of(page_of(screening.with_(table=table)))["readings"]}
+    assert told["mark_in_zone_2"] == [50.0] + [None] * (len(table) - 1)
+    assert told["mark_in_zone"] == [70.0] + [None] * (len(table) - 1)

@@ -90,11 +90,12 @@ const page = (() => {
     return whole(mark) + (atWorst ? ` (at worst ${whole(low)})` : "");
   }
   const whole = (mark) => String(Math.floor(mark + 0.5));
+  const quietIfEmpty = new Set(["zone_2_share", "mark_in_zone", "mark_in_zone_2"]);
   // one reading of a plot in words; null where it does not come up
   function readingWords(reading, i) {
     const value = reading.values[i];
     if (reading.name === "breeze_screen" && plots.above_breeze[i]) return `${shown(reading, value)}: the plot itself lies above the breeze`;
-    if (reading.name === "zone_2_share" && value === null) return null;
+    if (value === null && quietIfEmpty.has(reading.name)) return null;
     if (!reading.name.startsWith("crest_")) return reading.kind === "text" && value === null ? null : shown(reading, value);
     const screen = data.readings.find((one) => one.name === "breeze_screen"), share = screen ? screen.values[i] : null;
     if (share === null || share < 0.005 || (value === null && plots.above_breeze[i])) return null;
