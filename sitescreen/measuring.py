@@ -27,6 +27,7 @@ from sitescreen.judgement.shore_readings import with_shore
 from sitescreen.judgement.sun_readings import with_sun
 from sitescreen.judgement.wind_readings import with_wind
 from sitescreen.judgement.wind_slots import SLOT_OF, wind_column
+from sitescreen.judgement.within_plot import PlotCells, plot_cells
 from sitescreen.lattice import Block, blocks_of, convergence_deg, from_true_north
 from sitescreen.progress import Progress
 from sitescreen.settings import BreezeSettings, Defaults
@@ -50,6 +51,7 @@ class BlockResult:
     block: Block
     readings: Readings
     fields: dict[str, Field]
+    cells: PlotCells
     disagreement: WaterDisagreement
     winds: SectorWinds
     sections: dict[str, Section]
@@ -163,9 +165,10 @@ def measure(
         **({"shore_distance_km": coast.distance} if coast.distance is not None else {}),
         **({"breeze_reach": coast.reach} if coast.reach is not None else {}),
     }
+    cells = plot_cells(coverage, rows, fields, (water_kind > 0) | (ground.flat.label > 0), grid, settings.readings)
     own = {name: field.part(block.core_bounds) for name, field in fields.items()}
     drawn = {plot: one for plot, one in zip(plots["plot"], coast.sections, strict=True) if one is not None}
-    return BlockResult(block, readings, own, disagreement, winds, drawn, suns)
+    return BlockResult(block, readings, own, cells, disagreement, winds, drawn, suns)
 
 
 def _own_slots() -> list[tuple[str, str]]:

@@ -41,6 +41,7 @@ from sitescreen.judgement.sun_readings import sun_notes
 from sitescreen.judgement.sway import sway_notes, sways
 from sitescreen.judgement.waters import waters_disagree
 from sitescreen.judgement.wind_readings import assumed_columns
+from sitescreen.judgement.within_plot import within_plots
 from sitescreen.measuring import BlockResult, measure, plots_by_block
 from sitescreen.notes import Note
 from sitescreen.progress import Progress
@@ -135,6 +136,7 @@ class Screening:
     ``judged`` and ``zones``: the marks and zone shares behind the table, in the order of the plots as they came.
     ``sections``: by plot id, the ground to the shore that the breeze comes from; none without a shore.
     ``suns``: by plot id, the sun's arcs past its skyline; of the first 200 plots of the table.
+    ``patches``: GeoDataFrame, the best square inside each plot that has room for one.
     """
 
     brief: Brief
@@ -151,6 +153,7 @@ class Screening:
     record: dict[str, Any]
     judged: Judged
     zones: ZoneShares
+    patches: Any
 
 
 def _judged(
@@ -205,7 +208,19 @@ def _judged(
     if brief.not_used_yet():
         given = ", ".join(brief.not_used_yet())
         notes += (Note("warning", "brief", f"Read and checked, but not used by this version: {given}."),)
-    table = _table(plots, values, fits, judged, sure)
+    inside = within_plots(
+        [one.cells for one in measured],
+        values,
+        lon,
+        lat,
+        zones,
+        profiles,
+        halved,
+        brief.plots.footprint_m2,
+        settings.readings,
+        settings.judgement,
+    )
+    table = _table(plots, values, fits, judged, sure, inside.table)
     why = reasons(judged, why_unknown, profiles, settings.judgement)
     return Screening(
         brief=brief,
@@ -224,6 +239,7 @@ def _judged(
         notes=notes,
         not_measured=NOT_MEASURED,
         not_checked=unchecked,
+        patches=inside.patches,
         record=_record(brief, inputs, own, measured, table, settings, progress)
         | {"profiles": {zone: profile.model_dump(mode="json") for zone, profile in profiles.items()}}
         | {"reasons": _recorded(table, why)}
@@ -284,7 +300,9 @@ def _deficit(values: pd.DataFrame, zones: ZoneShares, settings: Defaults) -> Any
     return deficit_k(values["cold_pool_depth_m"], plot_strength, values["sky_view"], settings.cold_air)
 
 
-def _table(plots: Any, values: pd.DataFrame, fits: pd.DataFrame, judged: Judged, sure: Certainty) -> Any:
+def _table(
+    plots: Any, values: pd.DataFrame, fits: pd.DataFrame, judged: Judged, sure: Certainty, inside: pd.DataFrame
+) -> Any:
     """Every plot with its identity, readings, marks and geometry; by rank, those set aside last."""
     import geopandas as gpd
 
@@ -295,6 +313,7 @@ def _table(plots: Any, values: pd.DataFrame, fits: pd.DataFrame, judged: Judged,
         fits[known_zones].add_prefix("membership_").reset_index(drop=True),
         judged.table.reset_index(drop=True),
         sure.table.reset_index(drop=True),
+        inside.reset_index(drop=True),
     ]
     table = pd.concat(parts, axis=1)
     for column in EMPTY_IN_THIS_VERSION:

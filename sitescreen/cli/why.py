@@ -58,6 +58,8 @@ def _place(row: Mapping[str, str], plots: Mapping[str, Any], certainty: Mapping[
         )
     if row.get("zone_missing"):
         yield f"Its rank is provisional: {row['zone_missing']} is missing to tell its zone."
+    if row.get("where_on_plot"):
+        yield row["where_on_plot"]
     if row.get("mahoney_says"):
         yield f"Second opinion on the climate: {row['mahoney_says']} ({row['mahoney']})"
     if row["rank_low"]:

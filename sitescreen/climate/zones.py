@@ -2,7 +2,7 @@
 
 import difflib
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 
 import numpy as np
 import pandas as pd
@@ -51,6 +51,10 @@ class ZoneShares:
     provisional: pd.Series
     missing: pd.Series
     given: pd.Series
+
+    def at(self, rows: NDArray[np.int64]) -> "ZoneShares":
+        """The zones of some rows, numbered anew from 0; a row may come more than once."""
+        return ZoneShares(*(getattr(self, one.name).iloc[rows].reset_index(drop=True) for one in fields(self)))
 
 
 def memberships(

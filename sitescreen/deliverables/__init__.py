@@ -41,8 +41,8 @@ def write_results(screening: "Screening", folder: Path) -> None:
         write_csv(table, columns, stage / "ranking.csv")
         if len(table) <= MOST_PLOTS:
             write_workbook(table, columns, stage / "ranking.xlsx")
-        write_plots(table, columns, stage / "plots.gpkg")
         write_phone_files(screening, stage)
+        write_plots(table, columns, stage / "plots.gpkg", screening.patches)
         with ThreadPoolExecutor(max_workers=1) as beside:  # compressing layers leaves Python free to draw the map
             layered = beside.submit(_write_layers, screening, stage)
             write_map(screening, columns, stage / "map.html")

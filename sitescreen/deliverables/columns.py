@@ -292,6 +292,20 @@ MORE: Mapping[str, Column] = {
             "beats the next",
             "Share of those trials in which it has a higher mark than the plot next in rank; below 0.8 they are alike.",
         ),
+        _number(
+            "best_patch_mark",
+            1,
+            "0–100",
+            "mark of its best square",
+            "The overall mark of the best square inside the plot that holds the footprint; being the best of many it "
+            "is a little flattered.",
+        ),
+        _number("worst_patch_mark", 1, "0–100", "mark of its poorest square", "The same of the poorest square."),
+        _number("mean_patch_mark", 1, "0–100", "mean mark of its squares", "The mean over all such squares."),
+        _number("best_patch_lon", 6, "°", "best square: longitude", "Longitude of the middle of that best square."),
+        _number("best_patch_lat", 6, "°", "best square: latitude", "Latitude of the middle of that best square."),
+        _number("patch_side_m", 0, "m", "side of the squares", "How large the squares are that were looked at."),
+        _text("where_on_plot", "where on the plot", "Where on the plot the ground is best, in a sentence."),
         _text(
             "mahoney",
             "Mahoney indicators",

@@ -26,7 +26,8 @@ MOST_LEAVES = 2_000
 
 _NOT_ON_A_LEAF = {
     "lon", "lat", "outcome", "water_disagrees", "zone_provisional", "zone_missing", "known_weight_share", "cells",
-    "share_flat_water", "over_water_m", "group",
+    "share_flat_water", "over_water_m", "group", "best_patch_mark", "worst_patch_mark", "mean_patch_mark",
+    "patch_side_m",
 }  # fmt: skip
 
 

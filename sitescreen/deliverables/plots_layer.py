@@ -13,8 +13,10 @@ if TYPE_CHECKING:
 _POLYGONS = {"Polygon", "MultiPolygon"}
 
 
-def write_plots(table: "gpd.GeoDataFrame", columns: Sequence[Column], path: Path) -> None:
-    """Write the plots as one layer called “plots”, in WGS 84.
+def write_plots(
+    table: "gpd.GeoDataFrame", columns: Sequence[Column], path: Path, patches: "gpd.GeoDataFrame | None" = None
+) -> None:
+    """Write the plots as a layer called “plots”, and their best squares as “best_patches”, in WGS 84.
 
     Parameters
     ----------
@@ -22,6 +24,8 @@ def write_plots(table: "gpd.GeoDataFrame", columns: Sequence[Column], path: Path
         One row a plot; a plot without a usable shape keeps its row.
     columns : sequence of Column
     path : Path
+    patches : GeoDataFrame, EPSG:4326, optional
+        The best square inside each plot that has room for one; no layer if there are none.
     """
     from io import BytesIO
 
@@ -41,6 +45,11 @@ def write_plots(table: "gpd.GeoDataFrame", columns: Sequence[Column], path: Path
     made = BytesIO()  # in memory, so that a full disk is met in Python, which says so
     try:
         pyogrio.write_dataframe(plots, made, layer="plots", driver="GPKG", **same)
+        if patches is not None and len(patches):
+            # a second layer cannot be added to a file in memory, so the first goes by way of the disk
+            path.write_bytes(made.getvalue())
+            pyogrio.write_dataframe(patches, path, layer="best_patches", driver="GPKG", append=True)
+            made = BytesIO(path.read_bytes())
     finally:
         pyogrio.set_gdal_config_options({"OGR_CURRENT_DATE": None})
     path.write_bytes(made.getvalue())

@@ -182,7 +182,7 @@ def judge(
                 "Add one to your folder of profiles",
             )
         by_zone[zone] = zone_marks(told, rows, profiles[zone], halved, settings.assumed_weight_factor)
-    table = _blend(by_zone, zones, len(readings))
+    table = blended(by_zone, zones, len(readings))
     table.index = readings.index
     titles = {zone: profile.title.lower() for zone, profile in profiles.items()} | {"": ""}
     told = told.assign(
@@ -204,7 +204,7 @@ def judge(
     return Judged(_with_marks(table, by_zone, zones, profiles), by_zone, raised, told, frozenset(halved))
 
 
-def _blend(by_zone: Mapping[str, ZoneMarks], zones: ZoneShares, count: int) -> pd.DataFrame:
+def blended(by_zone: Mapping[str, ZoneMarks], zones: ZoneShares, count: int) -> pd.DataFrame:
     """Overall, low and high marks over the zones that share each plot, and the marks of the two leading zones."""
     overall, low, high, known, overall_share = (np.zeros(count) for _ in range(5))
     low_any, high_any = np.full(count, np.inf), np.full(count, -np.inf)

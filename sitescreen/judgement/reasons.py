@@ -78,6 +78,11 @@ class CommonWords(Section):
     assumed: str
     nothing_for: str
     nothing_against: str
+    where_best: str
+    where_part: str
+    where_middle: str
+    where_alike: str
+    where_too_small: str
 
 
 class Words(NamedTuple):

@@ -44,6 +44,7 @@ class Invented:
     record: dict[str, Any]
     judged: Judged
     zones: ZoneShares
+    patches: Any = None
 
     def with_(self, **changes: Any) -> "Invented":
         """The same with some parts replaced; another table is judged anew."""

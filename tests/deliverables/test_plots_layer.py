@@ -48,3 +48,14 @@ def test_same_bytes_for_the_same_plots(screening: Any, tmp_path: Path) -> None:
     for name in ("a.gpkg", "b.gpkg"):
         write_plots(screening.table, columns, tmp_path / name)
     assert (tmp_path / "a.gpkg").read_bytes() == (tmp_path / "b.gpkg").read_bytes()
+
+
+def test_best_squares_are_a_layer_of_their_own(screening: Any, tmp_path: Path) -> None:
+    columns = columns_of(screening.table, screening.profiles)
+    patches = screening.table[["plot", "geometry"]].head(2).assign(best_patch_mark=[80.0, 70.5])
+    for name in ("one.gpkg", "two.gpkg"):
+        write_plots(screening.table, columns, tmp_path / name, patches)
+    assert (tmp_path / "one.gpkg").read_bytes() == (tmp_path / "two.gpkg").read_bytes()
+    back = gpd.read_file(tmp_path / "one.gpkg", layer="best_patches")
+    assert back["best_patch_mark"].tolist() == [80.0, 70.5]
+    assert len(gpd.read_file(tmp_path / "one.gpkg", layer="plots")) == len(screening.table)

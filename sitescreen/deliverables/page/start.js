@@ -90,7 +90,7 @@ const page = (() => {
     return whole(mark) + (atWorst ? ` (at worst ${whole(low)})` : "");
   }
   const whole = (mark) => String(Math.floor(mark + 0.5));
-  const quietIfEmpty = new Set(["zone_2_share", "mark_in_zone", "mark_in_zone_2"]);
+  const quietIfEmpty = new Set(["zone_2_share", "mark_in_zone", "mark_in_zone_2", "best_patch_lon", "best_patch_lat"]);
   // one reading of a plot in words; null where it does not come up
   function readingWords(reading, i) {
     const value = reading.values[i];
