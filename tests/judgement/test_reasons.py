@@ -12,7 +12,7 @@ from sitescreen.errors import ConfigError
 from sitescreen.judgement.cautions import load_cautions
 from sitescreen.judgement.overall import judge
 from sitescreen.judgement.profiles import Criterion, ZoneProfile, load_profiles
-from sitescreen.judgement.reasons import Reasons, load_words, reasons
+from sitescreen.judgement.reasons import CommonWords, Reasons, load_words, reasons
 from sitescreen.settings import load_defaults
 
 SETTINGS = load_defaults().judgement
@@ -148,9 +148,7 @@ def test_bands_must_rise_to_an_open_end(tmp_path: Path) -> None:
     path.write_text('[slope]\n[[slope.bands]]\nup_to = 3\nsay = ["x."]\n[words]\n', encoding="utf-8")
     with pytest.raises(ConfigError, match=r"words\.toml has no key"):
         shipped(path)
-    common = (
-        'any = "x"\nunknown = "x"\nunknown_no_reason = "x"\nassumed = "x"\nnothing_for = "x"\nnothing_against = "x"\n'
-    )
+    common = "".join(f'{name} = "x"\n' for name in CommonWords.model_fields)
     path.write_text(path.read_text(encoding="utf-8") + common, encoding="utf-8")
     with pytest.raises(ConfigError, match=r"words\.toml \[slope\] .*an up_to in every band but the last"):
         shipped(path)
