@@ -271,7 +271,6 @@ class Brief(_Part):
         """Keys that were given and checked, but that this version does nothing with, as the brief writes them."""
         given = {
             "[terrain] canopy_height": self.terrain.canopy_height is not None,
-            "[cover]": self.cover is not None,
             "[[context]]": bool(self.context),
         }
         return [key for key, is_given in given.items() if is_given]

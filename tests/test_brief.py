@@ -118,7 +118,6 @@ def test_every_key_of_the_full_brief_arrives(tmp_path: Path) -> None:
 def test_keys_without_effect_are_named_as_they_are_written(tmp_path: Path) -> None:
     assert load_brief(write(tmp_path, WHOLE)).not_used_yet() == [
         "[terrain] canopy_height",
-        "[cover]",
         "[[context]]",
     ]
 

@@ -70,9 +70,8 @@ def wind_cover(cover: Cover, ground: Field, settings: WindSettings) -> CoverFiel
         Where no class is mapped there is no canopy, and the roughness is that of open country.
     """
     classes = cover.classes(ground.grid)
-    canopy = np.array([0.0, *(one.canopy_m for _, one in cover.table)], dtype=np.float32)
-    rough = np.array([settings.roughness_m, *(one.roughness_m for _, one in cover.table)])
-    return CoverFields(ground, canopy[classes], np.log(rough).astype(np.float32)[classes])
+    rough = cover.values(classes, "roughness_m", settings.roughness_m)
+    return CoverFields(ground, cover.values(classes, "canopy_m", 0.0), np.log(rough))
 
 
 def closure_of(settings: WindSettings) -> tuple[float, float, float, float, float]:

@@ -1,11 +1,11 @@
 """Ground cover: a map of classes, and what each class means for the air.
 
-No reading uses it yet: it is read, checked and kept, so that a brief written today is a good one tomorrow.
+Canopies and roughness serve the wind, the cold-air factor the nights.
 """
 
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any
+from typing import Any, Literal
 
 import numpy as np
 import shapely
@@ -55,6 +55,30 @@ class Cover:
         uint8 array, shape (rows, cols)
         """
         return self._from_raster(grid) if self._polygons is None else self._from_polygons(grid)
+
+    def values(
+        self,
+        classes: NDArray[np.uint8],
+        key: Literal["roughness_m", "canopy_m", "cold_air_factor"],
+        unmapped: float,
+    ) -> NDArray[np.float32]:
+        """What the classes of cells mean.
+
+        Parameters
+        ----------
+        classes : uint8 array
+            As :meth:`classes` gives them.
+        key : str
+            Roughness length [m], canopy height [m], or the factor on the cold air that a cell makes [1].
+        unmapped : float
+            For cells of no class.
+
+        Returns
+        -------
+        float32 array, shape of ``classes``
+        """
+        by_class = np.array([unmapped, *(getattr(one, key) for _, one in self.table)], dtype=np.float32)
+        return by_class[classes]
 
     def _from_raster(self, grid: Grid) -> NDArray[np.uint8]:
         import rasterio

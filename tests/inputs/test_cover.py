@@ -48,6 +48,14 @@ def test_cells_of_the_same_grid_keep_their_classes(tmp_path: Path) -> None:
     assert (found == np.choose(classes() // 10, [0, 2, 1, 3])).all()
 
 
+def test_classes_mean_what_the_brief_says_and_gaps_what_the_caller_says(tmp_path: Path) -> None:
+    opened = cover(raster(tmp_path / "c.tif", classes(), nodata=0), "20")
+    for key in ("roughness_m", "canopy_m", "cold_air_factor"):
+        found = opened.values(np.array([[0, 1]], np.uint8), key, -1.0)
+        assert found.dtype == np.float32
+        assert found.tolist() == [[-1.0, pytest.approx(AIR[key])]]
+
+
 def test_a_grid_beyond_the_map_is_of_no_class(tmp_path: Path) -> None:
     opened = cover(raster(tmp_path / "c.tif", classes()), "10", "20", "30", "0")
     beyond = Grid("EPSG:32637", WEST - 300.0, NORTH + 300.0, 30.0, 20, 20)
