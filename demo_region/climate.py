@@ -20,14 +20,15 @@ class Station(NamedTuple):
     humidity_swing: float
     rain_mm: float
     clear_calm: float
+    water_c: float | None = None  # of the sea or lake beside it
 
 
 # Inland means follow 29.6 °C − 6.5 K/km; the coast is held 3 K cooler by the sea.
 STATIONS = [
-    Station("Tavrick airfield", 51.0, 17.0, 26.5, 7.4, 1.7, 2, 78, 4, 1080, 4),
+    Station("Tavrick airfield", 51.0, 17.0, 26.5, 7.4, 1.7, 2, 78, 4, 1080, 4, 27.3),
     Station("Kharune post", 38.5, 10.5, 26.9, 14.6, 2.2, 11, 43, 8, 260, 14),
     Station("Yellandor school", 32.5, 31.0, 24.8, 12.8, 2.0, 11, 57, 9, 640, 11),
-    Station("Ondurwen pier", 24.3, 16.6, 22.2, 9.4, 1.0, 2, 74, 4, 1180, 7),
+    Station("Ondurwen pier", 24.3, 16.6, 22.2, 9.4, 1.0, 2, 74, 4, 1180, 7, 23.8),
     Station("Brennoch mission", 18.0, 28.6, 18.2, 11.2, 1.7, 11, 70, 9, 1240, 10),
     Station("Skarrow hut", 6.5, 31.2, 14.4, 9.8, 1.8, 11, 76, 8, 1520, 9),
 ]
@@ -41,6 +42,7 @@ def normals(height_at, lon_lat):
         height = round(float(height_at(s.x, s.y)))
         for month in MONTHS:
             warm = math.cos(2 * math.pi * (month - s.hottest) / 12)
+            lag = math.cos(2 * math.pi * (month - s.hottest - 1) / 12)  # water follows a month behind the air
             wet = math.cos(2 * math.pi * (month - 2.5) / 12)  # rains from November to April
             mean = s.mean_c + s.swing_k * warm
             span = s.range_k * (1 - 0.14 * wet)
@@ -57,6 +59,7 @@ def normals(height_at, lon_lat):
                     "rh_mean": round(s.humidity + s.humidity_swing * wet),
                     "rain_mm": round(rain),
                     "clear_calm_nights": round(s.clear_calm * (1 - 0.55 * wet)),
+                    "water_c": "" if s.water_c is None else f"{s.water_c + 0.8 * lag:.1f}",
                 }
             )
     return rows
@@ -92,11 +95,12 @@ UPLAND = [
 PLACES = [(51.0, 17.0, COAST), (18.0, 28.6, UPLAND)]
 
 
-def roses(lon_lat):
+def roses(height_at, lon_lat):
     """Rows of wind.csv: sixteen directions and the calms, for a place on the coast and one in the uplands."""
     rows = []
     for x, y, table in PLACES:
         lon, lat = lon_lat(x, y)
+        height = round(float(height_at(x, y)))
         for rose in table:
             shares, speeds = [], []
             for sector in range(16):
@@ -107,7 +111,7 @@ def roses(lon_lat):
                 shares.append(sum(p for p, _ in parts) + 2e-5)
                 speeds.append((sum(p * u for p, u in parts) + 2e-5 * 2.0) / shares[-1])
             whole = sum(shares)
-            place = {"lon": f"{lon:.5f}", "lat": f"{lat:.5f}"}
+            place = {"lon": f"{lon:.5f}", "lat": f"{lat:.5f}", "elevation_m": height}
             rounded = [round((1 - rose.calm) * share / whole, 4) for share in shares]
             for sector, (share, speed) in enumerate(zip(rounded, speeds, strict=True)):
                 rows.append(

@@ -65,7 +65,7 @@ def main() -> None:
         return ground[int(ROWS - y_km / KM_NORTH / CELL), int(x_km / CELL_KM)]
 
     write_table(folder / "normals.csv", climate.normals(height_at, lon_lat))
-    write_table(folder / "wind.csv", climate.roses(lon_lat))
+    write_table(folder / "wind.csv", climate.roses(height_at, lon_lat))
 
 
 def write_terrain(folder: Path, collar, drawn, ground, flat) -> None:

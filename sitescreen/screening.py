@@ -10,6 +10,7 @@ import numpy as np
 import pandas as pd
 
 from sitescreen.brief import Brief
+from sitescreen.climate.breeze_onset import onset_notes
 from sitescreen.climate.breeze_section import Section
 from sitescreen.climate.cold_air import deficit_k
 from sitescreen.climate.drawn_sun import PlotSun, drawn_suns
@@ -40,6 +41,7 @@ from sitescreen.judgement.reasons import Reasons, reasons
 from sitescreen.judgement.sun_readings import sun_notes
 from sitescreen.judgement.sway import sway_notes, sways
 from sitescreen.judgement.waters import waters_disagree
+from sitescreen.judgement.wind_notes import method_note, place_notes
 from sitescreen.judgement.wind_readings import assumed_columns
 from sitescreen.judgement.within_plot import within_plots
 from sitescreen.measuring import BlockResult, measure, plots_by_block
@@ -198,6 +200,8 @@ def _judged(
     found = sways(judged, zones, profiles)
     notes = inputs.notes + inputs.terrain.findings
     notes += climate_notes(climate, settings.zones) if climate is not None else ()
+    notes += (method_note(values, settings.wind), *place_notes(inputs.wind, lon, lat, height, settings.wind))
+    notes += onset_notes(inputs.normals, inputs.wind) if inputs.normals and inputs.shore else ()
     notes += (compared.notes() if compared else ()) + sure.notes() + sway_notes(found)
     notes += sun_notes([one.suns for one in measured], lat, inputs.sky, inputs.sun_choices)
     waters = together([one.disagreement for one in measured])

@@ -109,6 +109,7 @@ class WindSettings(Section):
     slope_most: Annotated[float, Field(gt=0, le=2)]
     slow_ratio: Share
     worst_energy_least: Share
+    place_high_m: Positive
     canopy_displacement: Share
     windbreak_most: Share
     windbreak_full_heights: Annotated[float, Field(ge=0, le=20)]

@@ -23,6 +23,7 @@ LIMITS = {
 """Columns of numbers, and what each may be."""
 
 NIGHTS = "clear_calm_nights"
+WATER = "water_c"
 _PLACE = ("lon", "lat", "elevation_m")
 _WARM_YEAR_C = 45.0
 """A year's mean maximum above this suggests degrees Fahrenheit. [°C] The hottest places on record stay below 42."""
@@ -36,8 +37,8 @@ class Normals:
     ----------
     stations : DataFrame
         Twelve rows a station, by station and month: station (str), lon, lat [°, WGS 84], elevation_m, month (int),
-        t_max_c and t_min_c (means of the daily extremes), rh_mean [%], rain_mm [a month] and, where the table has it,
-        clear_calm_nights [a month; NaN where empty].
+        t_max_c and t_min_c (means of the daily extremes), rh_mean [%], rain_mm [a month] and, where the table has them,
+        clear_calm_nights [a month; NaN where empty] and water_c (surface of the sea or lake beside it) [°C; likewise].
     stamp : FileStamp
     notes : tuple of Note
     """
@@ -54,7 +55,7 @@ def read_normals(path: Path) -> Normals:
     ----------
     path : Path
         CSV with the columns station, lon, lat, elevation_m, month, t_max_c, t_min_c, rh_mean, rain_mm and, optionally,
-        clear_calm_nights.
+        clear_calm_nights and water_c.
 
     Raises
     ------
@@ -62,11 +63,11 @@ def read_normals(path: Path) -> Normals:
         If a value is no number or out of range, a station has not each month once, its place changes between rows, a
         minimum lies above its maximum, or humidity is given as a share of 1.
     """
-    rows = read_rows(path, ("station", *LIMITS), (NIGHTS,), "table of climate normals")
-    has_nights = any(row.text(NIGHTS) for row in rows)
+    rows = read_rows(path, ("station", *LIMITS), (NIGHTS, WATER), "table of climate normals")
+    optional = [column for column in (NIGHTS, WATER) if any(row.text(column) for row in rows)]
     by_station: dict[str, dict[int, dict[str, float]]] = {}
     for row in rows:
-        station, values = _values(row, has_nights)
+        station, values = _values(row, optional)
         months = by_station.setdefault(station, {})
         month = int(values["month"])
         if month in months:
@@ -104,7 +105,7 @@ def read_normals(path: Path) -> Normals:
     return Normals(table, stamp(path), notes)
 
 
-def _values(row: Row, has_nights: bool) -> tuple[str, dict[str, float]]:
+def _values(row: Row, optional: list[str]) -> tuple[str, dict[str, float]]:
     """A row's station and numbers, checked."""
     station = row.text("station")
     if not station:
@@ -122,8 +123,9 @@ def _values(row: Row, has_nights: bool) -> tuple[str, dict[str, float]]:
         )
     if values["lon"] > 180.0:
         values["lon"] -= 360.0
-    if has_nights:
-        values[NIGHTS] = row.number(NIGHTS, 0.0, 31.0) if row.text(NIGHTS) else float("nan")
+    limits = {NIGHTS: (0.0, 31.0), WATER: (-2.0, 45.0)}
+    for column in optional:
+        values[column] = row.number(column, *limits[column]) if row.text(column) else float("nan")
     return station, values
 
 

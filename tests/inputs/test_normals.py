@@ -41,6 +41,15 @@ def test_stations_and_months_come_out_in_order(tmp_path: Path) -> None:
     assert found.stamp.name == "normals.csv"
 
 
+def test_the_waters_temperature_may_stand_beside_some_stations(tmp_path: Path) -> None:
+    rows = [*months("A", water_c=26.5), *months("B", lon=38)]
+    water = read(tmp_path, rows, ("water_c",)).stations["water_c"]
+    assert water.iloc[:12].tolist() == [26.5] * 12
+    assert water.iloc[12:].isna().all()
+    with pytest.raises(InputError, match="water_c is “300”"):
+        read(tmp_path, months("A", water_c=300), ("water_c",))
+
+
 def test_clear_calm_nights_may_be_missing_for_some(tmp_path: Path) -> None:
     rows = [*months("A", clear_calm_nights=12), *months("B", lon=38)]
     nights = read(tmp_path, rows, ("clear_calm_nights",)).stations["clear_calm_nights"]

@@ -143,6 +143,35 @@ def test_the_nearest_place_serves(tmp_path: Path) -> None:
     assert "at 39, -4" in notes(found, "assumed")
 
 
+def test_what_stands_in_for_missing_rows_is_assumed(tmp_path: Path) -> None:
+    """A table without whole-year rows must not count in full for the year."""
+    found = table(tmp_path, year((90, 1.0, 3), season="hot", part="afternoon"))
+    assert [found.is_assumed(slot) for slot in SLOTS] == [False, True, True, True]
+    everything = [line for season, part in SLOTS.values() for line in year((90, 1.0, 3), season=season, part=part)]
+    assert not any(table(tmp_path, everything).is_assumed(slot) for slot in SLOTS)
+    assert all(assumed_wind().is_assumed(slot) for slot in SLOTS)
+
+
+def test_the_rainy_season_is_there_only_if_the_table_has_it(tmp_path: Path) -> None:
+    assert not table(tmp_path, year((90, 1.0, 3))).has("rain")
+    assert not assumed_wind().has("rain")
+    both = year((0, 1.0, 3)) + year((90, 1.0, 3), season="rain", part="night")
+    both += year((180, 1.0, 3), season="rain", part="afternoon")
+    found = table(tmp_path, both)
+    assert found.has("rain")
+    assert by_sector(found.rose("rain", 0, 0))[[4, 8]] == pytest.approx([0.5, 0.5])
+    whole = table(tmp_path, both + year((270, 1.0, 3), season="rain"))
+    assert by_sector(whole.rose("rain", 0, 0))[12] == pytest.approx(1.0)
+
+
+def test_a_place_may_say_its_height_once(tmp_path: Path) -> None:
+    head = HEAD + ",lon,lat,elevation_m"
+    found = table(tmp_path, ["year,all,90,0.5,3,39,-4,120", "year,all,0,0.5,3,39,-4,", "year,all,0,1,3,40,-4,"], head)
+    assert found.place_m == (120.0, pytest.approx(np.nan, nan_ok=True))
+    with pytest.raises(InputError, match="elevation_m is 130 here and 120 further up"):
+        table(tmp_path, ["year,all,90,0.5,3,39,-4,120", "year,all,0,0.5,3,39,-4,130"], head)
+
+
 @pytest.mark.parametrize(
     ("rows", "message"),
     [
