@@ -149,11 +149,52 @@ def test_a_map_of_zones_is_taken_where_it_reaches(run: Run) -> None:
 
 def test_a_wind_table_takes_the_assumption_away(run: Run, plain: Screening) -> None:
     screening = run(SHORE, '[wind]\nfile = "wind.csv"')
-    said = [note.text for note in (*screening.notes, *plain.notes) if note.where == "wind"]
-    assert "from all sides" in said[-1]
-    assert not any("from all sides" in text for text in said[:-1])
+    given, none = (
+        [note.text for note in one.notes if note.where == "wind" and "from all sides" in note.text]
+        for one in (screening, plain)
+    )
+    assert (len(given), len(none)) == (0, 1)
+    # of the table's slots only the year's is its own; what others stand in for counts half
+    profile, row = screening.profiles["hot_humid_coast"], _table(screening).loc["f"]
+    weights = {one.name: one.weight * (0.5 if one.name == "ventilation" else 1.0) for one in profile.criteria}
+    by_hand = sum(weights[name] * row[f"mark_{name}"] for name in weights) / sum(weights.values())
+    assert row["mark_in_zone"] == pytest.approx(by_hand)
     # 1.2 km behind a shore that rises by 0.4 % to the west, the wind comes off open water in both runs
     assert _table(screening).at["f", "sheltered_fraction"] == pytest.approx(0.0, abs=0.01)
+
+
+def test_driving_rain_needs_rows_for_the_rainy_season(run: Run, plain: Screening, country: Path) -> None:
+    assert _table(plain)["driving_rain"].isna().all()
+    text = (country / "wind.csv").read_text(encoding="utf-8") + "rain,all,270,1.0,5\n"
+    (country / "wet.csv").write_text(text, encoding="utf-8")
+    wet = _table(run(SHORE, '[wind]\nfile = "wet.csv"'))
+    assert wet.at["c", "driving_rain"] == pytest.approx(1.0, abs=0.05)
+    assert _table(run(SHORE, '[wind]\nfile = "wind.csv"'))["driving_rain"].isna().all()
+
+
+def test_what_the_wind_is_not_for_is_said_and_sectors_and_sections_are_kept(plain: Screening) -> None:
+    assert any("not for calm nights" in note.text for note in plain.notes if note.where == "wind")
+    assert plain.winds.plots == tuple(plain.table["plot"])
+    row = plain.winds.plots.index("c")
+    assert plain.winds.speed_ratio[row].mean() == pytest.approx(_table(plain).at["c", "ridge_exposure"], abs=0.01)
+    section = plain.sections["c"]
+    assert section.distance_m[-1] == pytest.approx(1000.0 * _table(plain).at["c", "shore_distance_km"], rel=0.001)
+    assert section.ground_m[0] == pytest.approx(_table(plain).at["c", "elevation_m"], abs=0.5)
+    assert "h" not in plain.sections  # off the terrain
+
+
+def test_the_breeze_layer_reads_as_the_plots_do(plain: Screening) -> None:
+    from pyproj import Transformer
+
+    field, table = plain.fields["breeze_reach"], _table(plain)
+    to_grid = Transformer.from_crs("EPSG:4326", field.grid.crs, always_xy=True)
+    for plot in "bcdef":
+        x, y = to_grid.transform(table.at[plot, "lon"], table.at[plot, "lat"])
+        col, row = (
+            int((x - field.grid.west_m) // field.grid.cell_size_m),
+            int((field.grid.north_m - y) // field.grid.cell_size_m),
+        )
+        assert field.values[row, col] == pytest.approx(table.at[plot, "breeze_reach"], abs=0.01)
 
 
 def test_the_record_can_be_written_and_names_what_went_in(plain: Screening) -> None:
