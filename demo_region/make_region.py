@@ -45,6 +45,11 @@ ROADS = {
     "Savannah road": [(38, 13), (37.4, 22), (35.4, 29.2), (33, 31.5), (34.2, 39)],
 }
 
+PLACES = {
+    "Brackmaw": (48.9, 25.5), "Mavren": (48.8, 9.4), "Gatefoot": (38.4, 13.1), "Ondurwen Quay": (26.3, 14.9),
+    "Yellandor": (35.2, 29.6), "Hethermoor": (18.4, 29.6), "Skarrow": (9.0, 30.9),
+}  # fmt: skip
+
 
 def main() -> None:
     """Make everything."""
@@ -60,6 +65,7 @@ def main() -> None:
     write_shore(folder, drawn)
     write_plots(folder, plots.choose(ground, sea | lake | pond, lake))
     write_roads(folder)
+    write_places(folder)
 
     def height_at(x_km, y_km):
         return ground[int(ROWS - y_km / KM_NORTH / CELL), int(x_km / CELL_KM)]
@@ -136,6 +142,12 @@ def write_roads(folder: Path) -> None:
     """A few roads, for orientation on the map and for distance criteria."""
     lines = [degrees(waters.rounded(points)) for points in ROADS.values()]
     _write_layer(folder / "roads.gpkg", "roads", {"name": list(ROADS)}, lines)
+
+
+def write_places(folder: Path) -> None:
+    """The villages, for orientation on the map."""
+    points = [degrees(shapely.Point(where)) for where in PLACES.values()]
+    _write_layer(folder / "places.gpkg", "places", {"name": list(PLACES)}, points)
 
 
 def _write_layer(path: Path, layer: str, columns: dict, shapes: list) -> None:

@@ -5,6 +5,7 @@ it is read; whether the files can be used is for ``inputs/`` to say. Keys that a
 already, and :meth:`Brief.not_used_yet` names them.
 """
 
+import re
 import tomllib
 from collections.abc import Mapping, Sequence
 from itertools import pairwise
@@ -37,6 +38,14 @@ def _rising(points: list[tuple[float, float]]) -> list[tuple[float, float]]:
     if any(later[0] <= earlier[0] for earlier, later in pairwise(points)):
         raise ValueError("a curve whose first numbers rise from point to point")
     return points
+
+
+def _tile_address(address: str) -> str:
+    if not re.fullmatch(r"https://[A-Za-z0-9.-]+(:[0-9]+)?/[A-Za-z0-9._~/?&=%+@:{}-]*", address) or any(
+        slot not in address for slot in ("{z}", "{x}", "{y}")
+    ):
+        raise ValueError("an address that begins with https://, names its server plainly and holds {z}, {x} and {y}")
+    return address
 
 
 Text = Annotated[str, Field(strict=True, min_length=1)]
@@ -179,17 +188,28 @@ class OwnCriterion(_Part):
 
 
 class ContextLayer(_Part):
-    """A layer that is drawn under the plots."""
+    """A layer that is drawn under the plots: roads, rivers, places. It changes no reading.
+
+    ``name``: what the layer is called, else its file's name. ``label``: the column with the things' own names, else a
+    column called name, label or title.
+    """
 
     file: FilePath
     name: Text | None = None
+    label: Text | None = None
 
 
 class OutputBrief(_Part):
-    """Where the results go. The folder is always set once a brief has been read."""
+    """Where the results go. The folder is always set once a brief has been read.
+
+    ``online_map``: address of map pictures that the page may ask for once its reader says so, with {z}, {x} and {y};
+    ``online_credit``: whom to name for them.
+    """
 
     folder: FilePath
     layers: Annotated[bool, Field(strict=True)] = True
+    online_map: Annotated[str, Field(strict=True), AfterValidator(_tile_address)] | None = None
+    online_credit: Text | None = None
 
 
 class Brief(_Part):
@@ -271,7 +291,6 @@ class Brief(_Part):
         """Keys that were given and checked, but that this version does nothing with, as the brief writes them."""
         given = {
             "[terrain] canopy_height": self.terrain.canopy_height is not None,
-            "[[context]]": bool(self.context),
         }
         return [key for key, is_given in given.items() if is_given]
 

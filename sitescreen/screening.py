@@ -22,6 +22,7 @@ from sitescreen.climate.zones import ZoneShares, memberships, zone_shares
 from sitescreen.grid import Field, joined
 from sitescreen.inputs import Inputs, read_inputs
 from sitescreen.inputs.brief_record import brief_for_record
+from sitescreen.inputs.context import Landmarks
 from sitescreen.inputs.zone_map import zone_at
 from sitescreen.judgement.cautions import load_cautions
 from sitescreen.judgement.certainty import Certainty, certainty
@@ -139,6 +140,7 @@ class Screening:
     ``sections``: by plot id, the ground to the shore that the breeze comes from; none without a shore.
     ``suns``: by plot id, the sun's arcs past its skyline; of the first 200 plots of the table.
     ``patches``: GeoDataFrame, the best square inside each plot that has room for one.
+    ``context``: landmarks to draw.
     """
 
     brief: Brief
@@ -156,6 +158,7 @@ class Screening:
     judged: Judged
     zones: ZoneShares
     patches: Any
+    context: tuple[Landmarks, ...]
 
 
 def _judged(
@@ -251,6 +254,7 @@ def _judged(
         | ({"pairs": compared.for_record()} if compared else {}),
         judged=judged,
         zones=zones,
+        context=inputs.context,
     )
 
 

@@ -118,7 +118,6 @@ def test_every_key_of_the_full_brief_arrives(tmp_path: Path) -> None:
 def test_keys_without_effect_are_named_as_they_are_written(tmp_path: Path) -> None:
     assert load_brief(write(tmp_path, WHOLE)).not_used_yet() == [
         "[terrain] canopy_height",
-        "[[context]]",
     ]
 
 
@@ -278,3 +277,27 @@ def test_reading_a_brief_loads_no_slow_library() -> None:
     slow = ("geopandas", "rasterio", "numba", "scipy", "pandas", "numpy")
     code = f"import sys, sitescreen.brief; print([name for name in {slow} if name in sys.modules])"
     assert subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True).stdout == "[]\n"
+
+
+@pytest.mark.parametrize(
+    "address",
+    [
+        "http://tiles.invalid/{z}/{x}/{y}.png",
+        "https://tiles.invalid/{z}/{x}.png",
+        "https://tiles.invalid; script-src *//{z}/{x}/{y}.png",
+        "https://user@tiles.invalid/{z}/{x}/{y}.png",
+        "https://tiles.invalid/{z}/{x}/{y}.png'",
+        "https:///{z}/{x}/{y}",
+    ],
+)
+def test_an_online_map_has_a_plain_safe_address(tmp_path: Path, address: str) -> None:
+    message = refusal(tmp_path, LEAST + f'[output]\nonline_map = "{address}"\n')
+    assert "[output] online_map" in message
+    assert "begins with https://" in message
+
+
+def test_an_online_map_is_off_unless_named(tmp_path: Path) -> None:
+    assert load_brief(write(tmp_path, LEAST)).output.online_map is None
+    address = "https://tiles.invalid:8443/{z}/{x}/{y}.png?key=a-b"
+    brief = load_brief(write(tmp_path, LEAST + f'[output]\nonline_map = "{address}"\n'))
+    assert brief.output.online_map == address

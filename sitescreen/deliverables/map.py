@@ -29,7 +29,8 @@ if TYPE_CHECKING:
     from sitescreen.screening import Screening
 
 SCRIPTS = (
-    "start.js", "weigh.js", "words.js", "frame.js", "plan.js", "ladder.js", "leaf.js", "ranking.js", "asks.js",
+    "start.js", "weigh.js", "words.js", "frame.js", "landmarks.js", "plan.js", "ladder.js", "leaf.js", "ranking.js",
+    "asks.js",
     "page.js",
 )  # fmt: skip
 
@@ -73,7 +74,7 @@ def _page(screening: "Screening", sheet: Sheet, relief: str, data: Mapping[str, 
     scripts = [leaflet("leaflet.js"), map_script(), "\n".join(_asset(name) for name in SCRIPTS)]
     title = screening.brief.title or "Plots ranked by their ground"
     parts = {
-        "policy": _policy([style], scripts),
+        "policy": _policy([style], scripts, screening.brief.output.online_map),
         "title": html.escape(title),
         "style": style,
         "answer": html.escape(str(data["answer"])),
@@ -109,14 +110,18 @@ def _asset(name: str) -> str:
     return (files("sitescreen.deliverables") / "page" / name).read_text(encoding="utf-8").replace("\r\n", "\n")
 
 
-def _policy(styles: Sequence[str], scripts: Sequence[str]) -> str:
-    """What the browser may run: exactly these styles and scripts, and pictures that are in the page."""
+def _policy(styles: Sequence[str], scripts: Sequence[str], online_map: str | None = None) -> str:
+    """What the browser may run: exactly these styles and scripts, and pictures that are in the page.
+
+    Where the brief names an online map, pictures may come from its server too, and from nowhere else.
+    """
 
     def hashes(texts: Sequence[str]) -> str:
         digests = (hashlib.sha256(text.encode("utf-8")).digest() for text in texts)
         return " ".join(f"'sha256-{base64.b64encode(digest).decode('ascii')}'" for digest in digests)
 
+    server = "" if online_map is None else " " + "/".join(online_map.split("/")[:3])
     return (
-        f"default-src 'none'; script-src {hashes(scripts)}; style-src {hashes(styles)}; img-src data: blob:; "
+        f"default-src 'none'; script-src {hashes(scripts)}; style-src {hashes(styles)}; img-src data: blob:{server}; "
         "base-uri 'none'; form-action 'none'"
     )

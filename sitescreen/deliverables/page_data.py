@@ -8,8 +8,10 @@ import numpy as np
 
 from sitescreen.deliverables.classes import CLASS_EDGES, RAMP
 from sitescreen.deliverables.columns import Column
+from sitescreen.deliverables.landmarks import landmarks
 from sitescreen.deliverables.questions import OVERALL, Asked, View, question_marks
 from sitescreen.deliverables.sheet import Sheet
+from sitescreen.deliverables.steps import in_steps
 from sitescreen.deliverables.sureness import above_breeze, alike
 from sitescreen.deliverables.table import value_of
 from sitescreen.deliverables.weighing import weighing
@@ -17,9 +19,6 @@ from sitescreen.grid import Bounds
 
 if TYPE_CHECKING:
     from sitescreen.screening import Screening
-
-STEPS_A_DEGREE = 100_000
-"""Corners are kept to a metre."""
 
 MOST_LEAVES = 2_000
 """Plots whose reasons go into the page, the best first; those of the others would make it too heavy to mail."""
@@ -60,6 +59,7 @@ def page_data(
             return [None] * len(table)
         return [value_of(by_name[name], value) for value in table[name].tolist()]
 
+    drawn, left_out = landmarks(screening.context, sheet)
     names = [c.name for c in columns]
     first = names.index("elevation_m")
     measured = [
@@ -112,6 +112,9 @@ def page_data(
             "alike": alike(table),
             "above_breeze": above_breeze(table),
         },
+        "landmarks": drawn,
+        "left_out": left_out,
+        "online": _online(screening.brief),
         "shapes": [_shape(geometry) for geometry in table.geometry],
         "marks": {
             name.removeprefix("mark_"): column_values(name)
@@ -173,6 +176,13 @@ def _reasons(one: Any) -> dict[str, list[str]] | None:
     }
 
 
+def _online(brief: Any) -> dict[str, str] | None:
+    """The map pictures that the page may ask for once its reader says so; None, as mostly, where there are none."""
+    if brief.output.online_map is None:
+        return None
+    return {"address": brief.output.online_map, "credit": brief.output.online_credit or ""}
+
+
 def _shape(geometry: Any) -> list[list[int]]:
     """Rings in whole steps: first corner, then the way to each next one."""
     if geometry is None or geometry.is_empty:
@@ -182,8 +192,4 @@ def _shape(geometry: Any) -> list[list[int]]:
     ]
     polygons = [p for part in polygons for p in getattr(part, "geoms", [part])]
     rings = [ring for polygon in polygons for ring in (polygon.exterior, *polygon.interiors)]
-    out = []
-    for ring in rings:
-        corners = np.rint(np.asarray(ring.coords)[:-1, :2] * STEPS_A_DEGREE).astype(np.int64)
-        out.append(np.vstack([corners[:1], np.diff(corners, axis=0)]).ravel().tolist())
-    return out
+    return [in_steps(np.asarray(ring.coords)[:-1, :2]) for ring in rings]

@@ -14,6 +14,7 @@ from sitescreen.inputs.agreement import (
     refuse_both_sides_of_180,
     refuse_without_plots,
 )
+from sitescreen.inputs.context import Landmarks, read_context
 from sitescreen.inputs.cover import Cover, read_cover
 from sitescreen.inputs.normals import Normals, read_normals
 from sitescreen.inputs.plot_named import without_plots
@@ -42,12 +43,13 @@ class Inputs:
     sky: ClearSky | None
     sun_choices: SunChoices
     zone_map: Any | None
+    context: tuple[Landmarks, ...]
     notes: tuple[Note, ...]
 
     @property
     def stamps(self) -> tuple[FileStamp, ...]:
         """Name, size and SHA-256 of every file read."""
-        singles = (self.plots, self.shore, self.wind, self.normals, self.cover, self.sky)
+        singles = (self.plots, self.shore, self.wind, self.normals, self.cover, self.sky, *self.context)
         found = [stamp for one in singles if one is not None and (stamp := one.stamp) is not None]
         return (*self.terrain.stamps, *found)
 
@@ -85,8 +87,9 @@ def read_inputs(brief: Brief) -> Inputs:
     sky = read_sky(brief.sky.file) if brief.sky and brief.sky.file else None
     cover = read_cover(brief.cover) if brief.cover else None
     zone_map = read_zone_map(Path(brief.zones.polygons)) if brief.zones.polygons else None
+    context = read_context(brief.context, outline)
     notes: list[Note] = list(sea_notes)
-    for read in (terrain, shore, plots, wind, normals, cover, sky):
+    for read in (terrain, shore, plots, wind, normals, cover, sky, *context):
         if read is not None:
             notes.extend(read.notes)
     notes.extend(edge_notes(plots, outline, settings.wind.shelter_reach_m))
@@ -104,4 +107,4 @@ def read_inputs(brief: Brief) -> Inputs:
                 "assumed", "climate", "No climate normals were given: zones follow from altitude and distance to water."
             )
         )
-    return Inputs(terrain, plots, shore, wind, normals, cover, sky, sun_choices(brief), zone_map, tuple(notes))
+    return Inputs(terrain, plots, shore, wind, normals, cover, sky, sun_choices(brief), zone_map, context, tuple(notes))

@@ -3,7 +3,7 @@
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 import shapely
@@ -111,15 +111,24 @@ def _from_lonlat(crs: str) -> Any:
     return move
 
 
-def read_own_layer(file: Path, where: str) -> OwnLayer:
-    """Read one layer.
+class Placed(NamedTuple):
+    """What a vector file holds, in WGS 84: its rows that have a geometry, their shapes, and what was noticed."""
+
+    table: Any
+    shapes: NDArray[np.object_]
+    crs: str
+    notes: tuple[Note, ...]
+
+
+def read_placed(file: Path, where: str) -> Placed:
+    """Read the geometries of one layer, each with its row.
 
     Parameters
     ----------
     file : Path
         Any vector format that GDAL reads.
     where : str
-        "constraint" or "criterion": the part of the brief it was named in.
+        "constraint", "criterion" or "context": the part of the brief it was named in.
 
     Raises
     ------
@@ -135,7 +144,8 @@ def read_own_layer(file: Path, where: str) -> OwnLayer:
         )
     crs = CRS(table.crs)
     shapes = np.asarray(shapely.force_2d(table.geometry.to_numpy()), dtype=object)
-    shapes = shapes[~(shapely.is_missing(shapes) | shapely.is_empty(shapes))]
+    held = ~(shapely.is_missing(shapes) | shapely.is_empty(shapes))
+    table, shapes = table[held], shapes[held]
     if not len(shapes):
         raise InputError(
             f"the {where} file {file.name} holds no geometry",
@@ -148,15 +158,22 @@ def read_own_layer(file: Path, where: str) -> OwnLayer:
     unit_m = float(crs.axis_info[0].unit_conversion_factor) if crs.axis_info else 1.0
     longest = 0.01 if crs.is_geographic else PIECE_M / unit_m
     placed = finite_only(geometry_to_wgs84(np.asarray(shapely.segmentize(shapes, longest), dtype=object), datum))
-    placed = np.array([one for one in placed if one is not None], dtype=object)
-    if not len(placed):
+    known = np.array([one is not None for one in placed], dtype=np.bool_)
+    if not known.any():
         raise InputError(
             f"the {where} file {file.name} has no coordinates that are numbers",
             "a layer on the ground is needed",
             "Save it again from its source",
         )
     told = (Note("info", where, datum.said),) if datum.said else ()
-    return OwnLayer(placed, stamp(file, crs.to_string()), (*notes, *told))
+    shown = np.array([one for one in placed if one is not None], dtype=object)
+    return Placed(table[known], shown, crs.to_string(), (*notes, *told))
+
+
+def read_own_layer(file: Path, where: str) -> OwnLayer:
+    """Read one layer that plots are judged by; see :func:`read_placed`."""
+    placed = read_placed(file, where)
+    return OwnLayer(placed.shapes, stamp(file, placed.crs), placed.notes)
 
 
 def read_own_layers(named: Iterable[tuple[Path, str]]) -> dict[Path, OwnLayer]:

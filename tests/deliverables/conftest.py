@@ -45,6 +45,7 @@ class Invented:
     judged: Judged
     zones: ZoneShares
     patches: Any = None
+    context: tuple[Any, ...] = ()
 
     def with_(self, **changes: Any) -> "Invented":
         """The same with some parts replaced; another table is judged anew."""
@@ -157,7 +158,7 @@ def build(
     brief = SimpleNamespace(
         title="Sites for three small clinics",
         judge=SimpleNamespace(shortlist=3),
-        output=SimpleNamespace(layers=True),
+        output=SimpleNamespace(layers=True, online_map=None, online_credit=None),
         terrain=SimpleNamespace(surface="bare", vertical_error_m=2.5),
     )
     return Invented(

@@ -115,16 +115,18 @@ const ladder = (() => {
   }
 
   function drawLeaders() {
-    const size = window.map_plan.getSize(), ratio = window.devicePixelRatio || 1, isPrinting = holder.classList.contains("printing");
-    const sharp = isPrinting ? 3 : ratio;
+    const size = window.map_plan.getSize(), sharp = window.devicePixelRatio || 1;
     canvas.width = size.x * sharp;
     canvas.height = size.y * sharp;
     canvas.style.width = `${size.x}px`;
     canvas.style.height = `${size.y}px`;
     L.DomUtil.setPosition(canvas, window.map_plan.containerPointToLayerPoint([0, 0]));
-    if (isNarrow.matches && !isPrinting) return;
+    if (isNarrow.matches || window.map_plan.getContainer().classList.contains("printing")) return;
     const pen = canvas.getContext("2d");
     pen.scale(sharp, sharp);
+    paintLeaders(pen, size);
+  }
+  function paintLeaders(pen, size) {
     for (const rung of [...rungs].sort((a, b) => (a.i === state.chosen) - (b.i === state.chosen))) {
       const ground = plan.groundOf(rung.i);
       if (!ground || rung.mark === null) continue;
@@ -196,5 +198,5 @@ const ladder = (() => {
     page.watchers.push((what) => show("weights" in what || "question" in what));
     show(false);
   }
-  return { start, show, shown, rungs: () => rungs, places: () => at };
+  return { start, show, paintLeaders, shown, rungs: () => rungs, places: () => at };
 })();

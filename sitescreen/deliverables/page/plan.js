@@ -56,9 +56,16 @@ const plan = (() => {
     origin = map.project(map.containerPointToLatLng([0, 0]), map.getZoom());
     const context = canvas.getContext("2d");
     context.scale(ratio, ratio);
-    if (holder.classList.contains("printing")) drawGround(context, size);
+    const taken = drawPlots(context, size);
+    if (holder.classList.contains("printing")) {
+      drawGround(context, size);
+      landmarks.paint(context, size, onScreen, taken);
+      ladder.paintLeaders(context, size);
+      drawPlots(context, size);
+    } else {
+      landmarks.show(size, scale, origin, ratio, taken);
+    }
     frame.draw(context, size, map);
-    drawPlots(context, size);
     for (const moved of movers) moved();
   }
 
@@ -123,6 +130,7 @@ const plan = (() => {
       taken.push([at.x - path.half, at.y - path.half, at.x + path.half, at.y + path.half]);
     }
     drawNumbers(context, size, taken);
+    return taken;
   }
 
   function outline(i, at) {
@@ -248,6 +256,7 @@ const plan = (() => {
       redraw();
     });
     let before = null;
+    showOnline();
     window.addEventListener("beforeprint", () => {
       before = [map.getCenter(), map.getZoom()];
       holder.classList.add("printing");
@@ -263,6 +272,26 @@ const plan = (() => {
     });
     tell(null);
     redraw();
+  }
+
+  // pictures from the server that the brief names, only once the reader asks for them
+  function showOnline() {
+    if (!data.online) return;
+    const server = new URL(data.online.address.replace(/[{}]/g, "")).host;
+    const ask = page.make("button", { type: "button", id: "online", "aria-pressed": "false", title: `Asks ${server} for pictures of this part of the map` }, "online map");
+    const told = page.make("span", { class: "credit" });
+    document.getElementById("map-buttons").append(ask);
+    readout.after(told);
+    let tiles = null;
+    ask.addEventListener("click", () => {
+      if (tiles) { tiles.remove(); tiles = null; told.textContent = ""; }
+      else {
+        tiles = L.tileLayer(data.online.address, { maxZoom: 18, opacity: 0.6 }).addTo(map);
+        told.textContent = data.online.credit || server;
+        tiles.once("tileerror", () => { told.textContent = `${server} does not answer`; });
+      }
+      ask.setAttribute("aria-pressed", String(Boolean(tiles)));
+    });
   }
 
   // bring a plot into view, without moving the map when it is there already
