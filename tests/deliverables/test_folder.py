@@ -65,7 +65,8 @@ def _umask() -> int:
 
 
 def test_layers_only_if_asked_for(screening: Any, tmp_path: Path) -> None:
-    brief = type(screening.brief)(**{**vars(screening.brief), "output": type(screening.brief)(layers=False, online_map=None)})
+    output = type(screening.brief)(layers=False, online_map=None)
+    brief = type(screening.brief)(**{**vars(screening.brief), "output": output})
     write_results(screening, tmp_path / "out")
     write_results(screening.with_(brief=brief), tmp_path / "out")
     assert not (tmp_path / "out" / "layers").exists()
