@@ -18,7 +18,7 @@ that no slope passes 0.3. Wind at angle a to the ridge's normal feels cos²a of 
 
 What came otherwise
 -------------------
-All ranges held. At the lee foot W is 0.86 (the foot itself lies 7 m up: tangent 0.187), and F from the west is not below
+All ranges held. At the lee foot W is 0.86 (the foot lies 7 m up: tangent 0.187), and F from the west is not below
 that from the east: the linear flow slows both feet alike, to 0.82, and of flow and shelter the stronger counts. Only
 behind steeper ground is the lee the calmer side: the last test but one.
 """
