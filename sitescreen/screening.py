@@ -39,6 +39,8 @@ from sitescreen.judgement.pairs import Compared, compare_for, with_weights
 from sitescreen.judgement.profiles import ZoneProfile, load_profiles, wind_slots
 from sitescreen.judgement.readings import Readings, stack
 from sitescreen.judgement.reasons import Reasons, reasons
+from sitescreen.judgement.siting import PlotSiting
+from sitescreen.judgement.siting_readings import BlockSuns, Sites, first_sitings, with_siting
 from sitescreen.judgement.sun_readings import sun_notes
 from sitescreen.judgement.sway import sway_notes, sways
 from sitescreen.judgement.waters import waters_disagree
@@ -53,7 +55,6 @@ from sitescreen.terrain.flat_water import together
 
 NOT_MEASURED = (
     "cold air held back by narrows without a closed hollow, and cold air in motion",
-    "the best bearing for a building's long axis",
     "how certain a rank is given the terrain model's error and the wind (the ranges and chances vary the weights only)",
 )
 
@@ -70,8 +71,6 @@ EMPTY_IN_THIS_VERSION = (
     "cold_pool_chance",
     "night_minimum_c",
     "floor_height_m",
-    "long_axis_deg",
-    "wind_incidence_deg",
     "night_flow_m2_s",
     "night_flow_speed_m_s",
     "clear_calm_nights",
@@ -83,7 +82,7 @@ SUNS_DRAWN = 200
 """The sun's arcs are kept for so many plots, the first in rank: what a page can draw."""
 
 REASONS_RECORDED = 2000
-"""The record keeps the reasons of so many plots, the first in rank; more would make it too large to mail."""
+"""The record keeps the reasons and siting of so many plots, the first in rank; more would be too large to mail."""
 
 
 def screen(
@@ -135,6 +134,7 @@ class Screening:
 
     ``table``: GeoDataFrame in EPSG:4326 with every plot that went in, by rank, those set aside last. ``fields``: what
     was measured, by name (with several UTM zones the zone is added: ``slope_deg_utm41``). ``reasons``: by plot id.
+    ``siting``: how to place a house, by plot id, of the first plots in rank whose long axis is known.
     ``winds``: what the ground makes of the wind from each sector, rows in the order of the table.
     ``judged`` and ``zones``: the marks and zone shares behind the table, in the order of the plots as they came.
     ``sections``: by plot id, the ground to the shore that the breeze comes from; none without a shore.
@@ -147,6 +147,7 @@ class Screening:
     table: Any
     fields: Mapping[str, Field]
     reasons: Mapping[str, Reasons]
+    siting: Mapping[str, PlotSiting]
     winds: SectorWinds
     sections: Mapping[str, Section]
     suns: Mapping[str, PlotSun]
@@ -190,6 +191,15 @@ def _judged(
         opinion = second_opinion(inputs.normals, climate, zones.zone)
         values[opinion.columns] = opinion.to_numpy()
     values["cold_deficit_k"] = _deficit(values, zones, settings)
+    sites = Sites(
+        [BlockSuns(tuple(one.readings.values.index), one.suns, one.winds) for one in measured],
+        plots.set_index("plot")[["lon", "lat"]],
+        inputs.wind,
+        zones.shares.set_axis(values.index),
+        settings.sun.ground_albedo,
+        settings.siting,
+    )
+    values, why_unknown = with_siting(Readings(values, why_unknown), sites)
     halved = assumed_columns(inputs.wind, profiles)
     judged = judge(
         values,
@@ -229,6 +239,7 @@ def _judged(
     )
     table = _table(plots, values, fits, judged, sure, inside.table)
     why = reasons(judged, why_unknown, profiles, settings.judgement)
+    siting = first_sitings(table["plot"].head(REASONS_RECORDED).tolist(), values, sites)
     return Screening(
         brief=brief,
         table=table,
@@ -241,6 +252,7 @@ def _judged(
             settings.sun,
             inputs.sun_choices.utc_offset_h is None,
         ),
+        siting=siting,
         winds=winds_together([one.winds for one in measured], tuple(table["plot"]), settings.wind.sectors),
         profiles=profiles,
         notes=notes,
@@ -249,7 +261,7 @@ def _judged(
         patches=inside.patches,
         record=_record(brief, inputs, own, measured, table, settings, progress)
         | {"profiles": {zone: profile.model_dump(mode="json") for zone, profile in profiles.items()}}
-        | {"reasons": _recorded(table, why)}
+        | {"reasons": _recorded(table, why), "siting": {plot: one.says for plot, one in siting.items()}}
         | {"certainty": sure.for_record(), "what_would_change": [one.for_record() for one in found]}
         | ({"pairs": compared.for_record()} if compared else {}),
         judged=judged,

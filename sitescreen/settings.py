@@ -230,6 +230,45 @@ class JudgementSettings(Section):
     trials_plots_least: Annotated[int, Field(ge=1, le=20_000)]
 
 
+class ZoneSiting(Section):
+    """What the long axis of a building owes to sun and wind in one zone."""
+
+    sun_weight: Share
+    wind_weight: Share
+    against_hot: Share
+    against_between: Share
+    against_cool: Share
+    welcome: Annotated[float, Field(ge=0, le=10)]
+    air: Literal["breeze", "wanted", "unwanted"]
+    slot: Literal["hot_afternoon", "hot_night", "cool_night", "year"]
+    rows: Literal["air", "sun", "shade"]
+    eaves: bool
+
+    @model_validator(mode="after")
+    def _weights_are_shares(self) -> "ZoneSiting":
+        if abs(self.sun_weight + self.wind_weight - 1.0) > 1e-9:
+            raise ValueError("a sun_weight and a wind_weight that sum to 1")
+        return self
+
+
+class SitingSettings(Section):
+    """The long axis, row spacing and eaves."""
+
+    tie_cost: Annotated[float, Field(ge=0, le=0.1)]
+    breeze_reach_least: Share
+    wind_along_line_least: Share
+    contour_from_pct: Annotated[float, Field(ge=0, le=100)]
+    sun_from_h: Annotated[float, Field(ge=0, le=24)]
+    sun_to_h: Annotated[float, Field(ge=0, le=24)]
+    eaves_height_m: Annotated[float, Field(gt=0, le=100)]
+    shaded_wall_m: Annotated[float, Field(gt=0, le=100)]
+    eave_most_m: Annotated[float, Field(gt=0, le=20)]
+    gap_most_heights: Annotated[float, Field(gt=0, le=100)]
+    air_gap_heights: Annotated[float, Field(ge=0, le=20)]
+    zones: Mapping[str, ZoneSiting]
+    own_zone: ZoneSiting
+
+
 class Defaults(Section):
     """All sections of ``config/defaults.toml``."""
 
@@ -243,6 +282,7 @@ class Defaults(Section):
     cold_layer: ColdLayerSettings
     zones: ZoneSettings
     judgement: JudgementSettings
+    siting: SitingSettings
 
 
 def config_folder() -> Path:

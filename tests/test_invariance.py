@@ -28,7 +28,7 @@ AMONG_OTHERS = {"rank", "rank_in_zone", "rank_low", "rank_high", "chance_first",
 AMONG_OTHERS |= {"chance_shortlist", "chance_first_in_zone", "chance_first_any_weights", "chance_beats_next", "group"}
 MUST_BE_KNOWN = ["elevation_m", "slope_deg", "rise_m", "ventilation", "ridge_exposure", "sheltered_fraction"]
 MUST_BE_KNOWN += ["sun_year_h", "sun_cool_morning_h", "west_load_kwh_m2", "cool_gain_kwh_m2", "sun_first_cool_h"]
-MUST_BE_KNOWN += ["sky_view", "shore_distance_km", "breeze_reach", "cold_pool_depth_m", "overall_mark"]
+MUST_BE_KNOWN += ["sky_view", "shore_distance_km", "breeze_reach", "cold_pool_depth_m", "overall_mark", "long_axis_deg"]
 
 
 class Site(NamedTuple):

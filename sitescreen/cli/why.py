@@ -1,6 +1,6 @@
 """``sitescreen why``: one plot's place and reasons, from the results of a run."""
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from pathlib import Path
 from typing import Any
 
@@ -29,7 +29,12 @@ def command(result: Path, plot: str) -> None:
     try:
         profile = record.get("profiles", {}).get(row["zone"], {})
         reasons = record.get("reasons", {}).get(row["plot"])
-        lines = [*_place(row, record["plots"], record["certainty"]), *_marks(row, profile), *_reasons(row, reasons)]
+        lines = [
+            *_place(row, record["plots"], record["certainty"]),
+            *_marks(row, profile),
+            *_reasons(row, reasons),
+            *_siting(record.get("siting", {}).get(row["plot"], [])),
+        ]
     except (KeyError, TypeError, ValueError, AttributeError) as error:
         raise does_not_hold_together(result, error) from error
     for line in lines:
@@ -103,3 +108,12 @@ def _reasons(row: Mapping[str, str], reasons: Mapping[str, Any] | None) -> Itera
             yield ""
             yield f"{title}:"
             yield from (f"  - {sentence}" for sentence in reasons[key])
+
+
+def _siting(says: Iterable[str]) -> Iterator[str]:
+    """The hint how to place a house; nothing for plots that have none."""
+    for number, sentence in enumerate(says):
+        if number == 0:
+            yield ""
+            yield "How to place a house here:"
+        yield f"  - {sentence}"

@@ -169,9 +169,19 @@ CONTRACT: tuple[Column, ...] = (
     _number("west_load_kwh_m2", 2, "kWh/m²", "west wall load", "Light on a free west wall, a hot-season afternoon."),
     _number("pond_depth_m", 1, "m", "ponding", "Depth to which water could stand, by the terrain model."),
     _number(
-        "long_axis_deg", 0, "° from true north", "long axis", "Bearing of the long axis that serves sun and wind best."
+        "long_axis_deg",
+        0,
+        "° from true north",
+        "long axis",
+        "Bearing, 0–179, of a house's long axis that serves sun and wind best there: a siting hint, not a design.",
     ),
-    _number("wind_incidence_deg", 0, "°", "wind on long face", "Angle at which the wind meets that long face."),
+    _number(
+        "wind_incidence_deg",
+        0,
+        "°",
+        "wind on long wall",
+        "How far off square the wind or breeze that counts there meets the long wall: 0 square on, 90 along it.",
+    ),
     _number("area_ha", 2, "ha", "area", "Area of the plot."),
     _number("lon", 6, "°", "longitude", "Longitude of a point inside the plot, WGS 84."),
     _number("lat", 6, "°", "latitude", "Latitude of that point, WGS 84."),

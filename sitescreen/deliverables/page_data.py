@@ -23,6 +23,9 @@ if TYPE_CHECKING:
 MOST_LEAVES = 2_000
 """Plots whose reasons go into the page, the best first; those of the others would make it too heavy to mail."""
 
+MOST_SITINGS = 200
+"""Plots whose siting hint goes into the page, the best first."""
+
 _NOT_ON_A_LEAF = {
     "lon", "lat", "outcome", "water_disagrees", "zone_provisional", "zone_missing", "known_weight_share", "cells",
     "share_flat_water", "over_water_m", "group", "best_patch_mark", "worst_patch_mark", "mean_patch_mark",
@@ -123,6 +126,10 @@ def page_data(
         },
         "readings": readings,
         "weighing": weighing(screening),
+        "siting": [
+            screening.siting[plot].for_page() if plot in screening.siting else None
+            for plot in table["plot"].head(MOST_SITINGS).tolist()
+        ],
         "reasons": [
             _reasons(screening.reasons.get(plot)) if i < MOST_LEAVES else None
             for i, plot in enumerate(table["plot"].tolist())

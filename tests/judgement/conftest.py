@@ -1,13 +1,18 @@
 """Small plots to judge."""
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from typing import Any
 
 import numpy as np
 import pandas as pd
 import pytest
 
+from sitescreen.climate.plot_sun import PlotSkies
+from sitescreen.climate.seasons import Seasons
+from sitescreen.climate.sun_path import Skies, SunPath
 from sitescreen.climate.zones import ZoneShares, memberships, zone_shares
+from sitescreen.inputs.wind import SLOTS
+from sitescreen.judgement.long_axis import SitingGround
 from sitescreen.settings import load_defaults
 
 ZONES = load_defaults().zones
@@ -63,3 +68,36 @@ def in_zone() -> Callable[..., ZoneShares]:
         return zone_shares(fits, stated, ZONES)
 
     return make
+
+
+@pytest.fixture(scope="session")
+def axis_ground() -> Callable[..., SitingGround]:
+    """Gives what the long axis of some plots goes by."""
+
+    def ground(
+        path: SunPath,
+        count: int = 1,
+        breeze_from_deg: float = np.nan,
+        reach: float = 1.0,
+        flow: Any = None,
+        skyline: Any = None,
+        seasons: tuple[Sequence[int], Sequence[int]] = ((5, 6, 7), (11, 0, 1)),
+    ) -> SitingGround:
+        """Plots alike, on level open ground unless a skyline is given; without wind unless a breeze or a flow is."""
+        cool, hot = (np.zeros((count, 12), dtype=bool) for _ in range(2))
+        cool[:, list(seasons[0])], hot[:, list(seasons[1])] = True, True
+        unknown = np.zeros(count, dtype=bool)
+        suns = PlotSkies(
+            np.tile(np.zeros(72) if skyline is None else skyline, (count, 1)),
+            Skies((path,), np.zeros(count, dtype=np.int64)),
+            Seasons(cool, hot, unknown, unknown, "brief"),
+            None,
+            np.ones(count),
+            np.tile([0.0, 0.0, 1.0], (count, 1)),
+        )
+        winds = np.tile(np.ones(16) if flow is None else flow, (count, 1))
+        return SitingGround(
+            suns, np.full(count, breeze_from_deg), np.full(count, reach), dict.fromkeys(SLOTS, winds), flow is None
+        )
+
+    return ground

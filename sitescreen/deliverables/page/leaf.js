@@ -88,6 +88,7 @@ const leaf = (() => {
       reasons.push(line("This page holds the reasons of the leading plots only; its readings are below and in the table."));
     }
     doubts.push(...criteria(i));
+    if (data.siting[i]) about.push(...list("How to place a house here", data.siting[i].says, "siting"));
     const column = (kind, parts) => make("div", { class: kind }, ...parts.filter((part) => part));
     holder.replaceChildren(top(i), make("div", { class: "leaf-columns" }, column("about", about), column("reasons", reasons), column("doubts", doubts)),
       ...strips.flatMap((strip) => strip(i)), readings(i));
