@@ -230,25 +230,43 @@ class JudgementSettings(Section):
     trials_plots_least: Annotated[int, Field(ge=1, le=20_000)]
 
 
-class ZoneSiting(Section):
-    """What the long axis of a building owes to sun and wind in one zone."""
+class SitingWeights(Section):
+    """What sun and wind weigh against one another."""
 
-    sun_weight: Share
-    wind_weight: Share
-    against_hot: Share
-    against_between: Share
-    against_cool: Share
-    welcome: Annotated[float, Field(ge=0, le=10)]
-    air: Literal["breeze", "wanted", "unwanted"]
-    slot: Literal["hot_afternoon", "hot_night", "cool_night", "year"]
-    rows: Literal["air", "sun", "shade"]
-    eaves: bool
+    sun: Share
+    wind: Share
 
     @model_validator(mode="after")
-    def _weights_are_shares(self) -> "ZoneSiting":
-        if abs(self.sun_weight + self.wind_weight - 1.0) > 1e-9:
-            raise ValueError("a sun_weight and a wind_weight that sum to 1")
+    def _sum_to_1(self) -> "SitingWeights":
+        if abs(self.sun + self.wind - 1.0) > 1e-9:
+            raise ValueError("weights of sun and wind that sum to 1")
         return self
+
+
+class SunCounts(Section):
+    """How much sun on the long faces counts against a bearing by season, and cool-season morning sun for it."""
+
+    hot: Share
+    between: Share
+    cool: Share
+    welcome_morning: Annotated[float, Field(ge=0, le=10)]
+
+
+class AirWanted(Section):
+    """Which wind counts, and whether it is to come in."""
+
+    kind: Literal["breeze", "wanted", "unwanted"]
+    slot: Literal["hot_afternoon", "hot_night", "cool_night", "year"]
+
+
+class ZoneSiting(Section):
+    """What the long axis of a house owes to sun and wind in one zone."""
+
+    weights: SitingWeights
+    sun: SunCounts
+    air: AirWanted
+    rows: Literal["air", "sun", "shade"]
+    eaves: bool
 
 
 class SitingSettings(Section):
@@ -258,8 +276,7 @@ class SitingSettings(Section):
     breeze_reach_least: Share
     wind_along_line_least: Share
     contour_from_pct: Annotated[float, Field(ge=0, le=100)]
-    sun_from_h: Annotated[float, Field(ge=0, le=24)]
-    sun_to_h: Annotated[float, Field(ge=0, le=24)]
+    sun_hours: tuple[Annotated[float, Field(ge=0, le=24)], Annotated[float, Field(ge=0, le=24)]]
     eaves_height_m: Annotated[float, Field(gt=0, le=100)]
     shaded_wall_m: Annotated[float, Field(gt=0, le=100)]
     eave_most_m: Annotated[float, Field(gt=0, le=20)]

@@ -148,6 +148,9 @@ def test_why_tells_place_marks_and_reasons(job: Path, rows: dict[str, dict[str, 
     assert "  - 1,000 m from the nearest road, a mark of 75 out of 100." in lines
     for kind in ("for", "against", "cautions"):
         assert all(f"  - {sentence}" in lines for sentence in record["reasons"]["A"][kind])
+    begins = lines.index("How to place a house here:")
+    assert lines[begins + 1 :] == [f"  - {sentence}" for sentence in record["siting"]["A"]]
+    assert lines[begins + 1].startswith("  - Long walls facing ")
 
 
 def test_why_tells_what_is_unknown_and_what_was_set_aside(job: Path) -> None:

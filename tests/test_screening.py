@@ -225,3 +225,42 @@ def test_an_assumed_wind_halves_what_the_wind_told_and_nothing_else(run: Run) ->
     assert {one.reading for one in profile.criteria} & {"ventilation", "ridge_exposure", "sheltered_fraction"} == set()
     assert row["overall_mark"] == pytest.approx(by_hand)
     assert "wind" in _assumed(screening)
+
+
+# --- how to place a house --------------------------------------------------------------------------------------------
+
+
+def test_houses_on_an_east_shore_turn_part_of_the_way_to_the_breeze(plain: Screening) -> None:
+    """The breeze comes from due east, the sun from east and west: the axis gives way by some 20° (our weights)."""
+    table = _table(plain)
+    for plot in "bcdef":
+        turned = abs(table.at[plot, "long_axis_deg"] - 90.0)
+        assert 15.0 <= turned <= 30.0
+        assert table.at[plot, "wind_incidence_deg"] == pytest.approx(90.0 - turned, abs=2.0)
+    hint = plain.siting["c"]
+    assert hint.axis_deg == table.at["c", "long_axis_deg"]
+    assert (hint.wind, hint.wind_from_deg) == ("sea breeze", pytest.approx(90.0, abs=1.0))
+    assert plain.record["siting"]["c"] == hint.says
+
+
+def test_plots_that_cannot_be_judged_have_no_axis_and_say_why(plain: Screening) -> None:
+    table = _table(plain)
+    assert np.isnan(table.at["h", "long_axis_deg"])
+    assert "h" not in plain.siting
+
+
+def test_without_breeze_or_wind_table_the_sun_decides(run: Run) -> None:
+    screening = run('[zones]\nforce = "hot_arid"')
+    table = _table(screening)
+    assert (table.loc[list("abcdef"), "long_axis_deg"] == 90.0).all()
+    assert table["wind_incidence_deg"].isna().all()
+    assert "The sun alone decided: no table of winds was given." in screening.siting["c"].says[0]
+
+
+def test_a_wind_table_turns_the_axis_in_dry_zones(run: Run) -> None:
+    """Wind from due east all year, weight 0.2 against the sun's 0.8: the axis gives way by less than at the coast."""
+    screening = run('[zones]\nforce = "hot_arid"', '[wind]\nfile = "wind.csv"')
+    table = _table(screening)
+    turned = (table.loc[list("abcdef"), "long_axis_deg"] - 90.0).abs()
+    assert turned.between(4.0, 20.0).all()
+    assert screening.siting["c"].wind_from_deg == pytest.approx(90.0, abs=3.0)

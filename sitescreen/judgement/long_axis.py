@@ -161,12 +161,12 @@ def _costs(
         wants = settings.zones.get(zone, settings.own_zone)
         part = share[here, column][:, None]
         against, welcome = _sun(ground, rows[here], path, albedo, wants)
-        sun[here] += part * wants.sun_weight * _between_extremes(against - wants.welcome * welcome)
+        sun[here] += part * wants.weights.sun * _between_extremes(against - wants.sun.welcome_morning * welcome)
         load[here] += part * against
         gain[here] += part * welcome
         blow = _blow(ground, rows[here], wants, settings)
-        lost = blow.air if wants.air == "unwanted" else 1.0 - blow.air
-        wind[here] += part * wants.wind_weight * np.where(np.isnan(lost), 0.0, lost)
+        lost = blow.air if wants.air.kind == "unwanted" else 1.0 - blow.air
+        wind[here] += part * wants.weights.wind * np.where(np.isnan(lost), 0.0, lost)
         leads = leading[here] == column
         air[here[leads]] = blow.air[leads]
         wind_from[here[leads]] = blow.from_deg[leads]
@@ -181,10 +181,10 @@ def _sun(
     suns = ground.suns
     hot, cool = suns.seasons.hot[rows], suns.seasons.cool[rows]
     skyline, view = suns.skyline_deg[rows], np.where(np.isnan(suns.sky_view[rows]), 1.0, suns.sky_view[rows])
-    months = np.where(hot, wants.against_hot, np.where(cool, wants.against_cool, wants.against_between))
+    months = np.where(hot, wants.sun.hot, np.where(cool, wants.sun.cool, wants.sun.between))
     load = face_load(path, skyline, view, months, clear_of(path, suns.clear_share), albedo)
     against = load.beam_kwh_m2 + load.sky_kwh_m2[:, None]
-    if wants.welcome == 0.0:
+    if wants.sun.welcome_morning == 0.0:
         return against, np.zeros_like(against)
     clear_mornings = morning_share(path) * (1.0 if suns.clear_share is None else suns.clear_share[:, :1])
     mornings = face_load(path, skyline, view, cool.astype(np.float64), clear_mornings, albedo)
@@ -212,10 +212,10 @@ def _blow(ground: SitingGround, rows: Rows, wants: ZoneSiting, settings: SitingS
     """The wind that a zone asks about: its breeze where there is one, else that of its slot."""
     bearing = ground.breeze_from_deg[rows]
     is_breeze = (ground.breeze_reach[rows] >= settings.breeze_reach_least) & np.isfinite(bearing)
-    is_breeze &= wants.air == "breeze"
+    is_breeze &= wants.air.kind == "breeze"
     air, from_deg = np.full((len(rows), BEARINGS_DEG.size), np.nan), np.full(len(rows), np.nan)
     if not ground.wind_assumed:
-        flow = ground.flow[wants.slot][rows]
+        flow = ground.flow[wants.air.slot][rows]
         total = _sum_of_sectors(flow)
         known = np.isfinite(total) & (total > 0.0)
         part = flow[known] / total[known][:, None]

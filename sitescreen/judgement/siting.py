@@ -146,6 +146,7 @@ def plot_sitings(
         cool_reach, hot_reach = _reaches(ground, some, axis, slope, aspect, settings)
         for k, row in enumerate(some):
             wants = settings.zones.get(leading[k], settings.own_zone)
+            is_unwanted = wants.air.kind == "unwanted"
             cost = _cost_pct(costs.sun[k] + costs.wind[k], int(axis[k]))
             contour = _contour(slope[k], aspect[k], settings)
             gap = _gap(wants.rows, float(cool_reach[k].max()), settings)
@@ -153,11 +154,13 @@ def plot_sitings(
                 axis_deg=int(axis[k]),
                 decided_by=decided[k],
                 wind=_wind(costs, k, str(values["shore_kind"].iat[row])),
-                wind_wanted=wants.air != "unwanted",
+                wind_wanted=not is_unwanted,
                 wind_from_deg=_or_none(costs.wind_from_deg[k]),
                 wind_incidence_deg=_or_none(incidence_deg(costs.wind_from_deg[k : k + 1], axis[k : k + 1])[0]),
                 cost_pct=tuple(np.round(cost[::COST_STEP_DEG], 1).tolist()),
-                turns=tuple(_turn(costs, k, cost, int(axis[k]), turn, wants.air == "unwanted") for turn in TURNS_DEG),
+                turns=tuple(
+                    _turn(costs, k, cost, int(axis[k]), turn, wants.air.kind == "unwanted") for turn in TURNS_DEG
+                ),
                 contour_deg=contour,
                 contour_cost_pct=None if contour is None else round(float(cost[contour]), 1),
                 rows_for=wants.rows,
@@ -238,7 +241,8 @@ def _reaches(
     """Reach of shadows across both long walls: of rows in cool months on this slope, of eaves in hot ones. (n, 2)"""
     suns = ground.suns
     path = suns.skies.paths[int(suns.skies.which[rows[0]])]
-    in_hours = (path.hour >= settings.sun_from_h) & (path.hour <= settings.sun_to_h)
+    begin_h, end_h = settings.sun_hours
+    in_hours = (path.hour >= begin_h) & (path.hour <= end_h)
     shines = lit(path, suns.skyline_deg[rows]) & in_hours
     slope = np.where(np.isnan(aspect_deg) | np.isnan(slope_deg), 0.0, slope_deg)
     height, azimuth = path.elevation_deg.ravel(), path.azimuth_deg.ravel()

@@ -104,7 +104,7 @@ def _turning(hint: "PlotSiting") -> str:
 
 
 def _rows(hint: "PlotSiting", settings: SitingSettings) -> str:
-    hours = f"{settings.sun_from_h:g} to {settings.sun_to_h:g} h"
+    hours = _hours(settings)
     if hint.rows_for == "shade":
         return "Rows close together shade one another, which is wanted here."
     if hint.row_gap_heights is None:
@@ -128,5 +128,9 @@ def _eaves(hint: "PlotSiting", settings: SitingSettings) -> str:
             parts.append(f"none is needed for the {wall}")
         else:
             parts.append(f"{metres:.1f} m for the {wall}")
-    hours = f"{settings.sun_from_h:g} to {settings.sun_to_h:g} h"
+    hours = _hours(settings)
     return f"Eaves that shade {settings.shaded_wall_m:g} m of wall from {hours} in the hot season: {', '.join(parts)}."
+
+
+def _hours(settings: SitingSettings) -> str:
+    return "{:g} to {:g} h".format(*settings.sun_hours)

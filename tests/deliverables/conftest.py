@@ -1,5 +1,6 @@
 """An invented screening, to test deliverables without running one: twelve plots between a sea and a ridge."""
 
+import dataclasses
 import os
 import shutil
 import tempfile
@@ -22,6 +23,7 @@ from sitescreen.deliverables.map import write_map
 from sitescreen.grid import Field, Grid
 from sitescreen.judgement.overall import Judged, judge
 from sitescreen.judgement.profiles import load_profiles
+from sitescreen.judgement.siting import Eave, PlotSiting, Turn
 from sitescreen.notes import Note
 from sitescreen.settings import load_defaults
 
@@ -46,6 +48,7 @@ class Invented:
     zones: ZoneShares
     patches: Any = None
     context: tuple[Any, ...] = ()
+    siting: Mapping[str, PlotSiting] = dataclasses.field(default_factory=dict)
 
     def with_(self, **changes: Any) -> "Invented":
         """The same with some parts replaced; another table is judged anew."""
@@ -331,3 +334,25 @@ class Reading:
 def read(opened: Callable[..., Any]) -> Callable[..., Reading]:
     """Opens a screening's page and gives what reads it."""
     return lambda *given, **how: Reading(opened(*given, **how))
+
+
+@pytest.fixture(scope="session")
+def hint() -> PlotSiting:
+    """How to place a house on some plot."""
+    return PlotSiting(
+        axis_deg=77,
+        decided_by="sun",
+        wind="sea breeze",
+        wind_wanted=True,
+        wind_from_deg=106.0,
+        wind_incidence_deg=61.0,
+        cost_pct=tuple(np.abs(np.arange(0.0, 180.0, 5.0) - 77.0).tolist()),
+        turns=tuple(Turn(turn, 5.0, 9.0, 4.0, 0.0, -8.0) for turn in (10, 20, 30)),
+        contour_deg=None,
+        contour_cost_pct=None,
+        rows_for="air",
+        row_gap_heights=6.0,
+        row_gap_m=18.0,
+        eaves=(Eave(167.0, 0.8), Eave(347.0, None)),
+        says=("Long walls facing SSE and NNW: axis 77° (nearly east–west).", "A siting hint, <b>not</b> a design."),
+    )

@@ -188,6 +188,16 @@ def test_readings_are_those_of_the_table(screening: Any, page: str) -> None:
     assert "sun_year_h" not in [one["name"] for one in data["readings"]]  # nothing measured, nothing shown
 
 
+def test_siting_hints_of_the_leading_plots_are_in_the_page(screening: Any, hint: Any) -> None:
+    second = screening.table["plot"].iloc[1]
+    found = data_of(page_of(screening.with_(siting={second: hint})))["siting"]
+    assert found[0] is None
+    assert found[1]["says"] == list(hint.says)
+    assert found[1]["turns"][1]["turn_deg"] == 20
+    assert found[1]["eaves"][1] == {"face_deg": 347.0, "projection_m": None}
+    assert len(found[1]["cost_pct"]) == 36
+
+
 @pytest.mark.parametrize("case", ["no fields", "no shapes", "none ranked", "one plot", "no reasons"])
 def test_odd_screenings_have_a_page_too(case: str, invent: Any) -> None:
     made = invent(names=("Only one",)) if case == "one plot" else invent()

@@ -194,6 +194,16 @@ def test_the_leaf_speaks_plainly_of_the_breeze(opened: Any, tried: Any) -> None:
     assert crest["colder by"].endswith("°C")
 
 
+def test_the_leaf_says_how_to_place_a_house(opened: Any, screening: Any, hint: Any) -> None:
+    """Only on plots that have a hint; its signs stay signs."""
+    page = opened(screening.with_(siting={screening.table["plot"].iloc[0]: hint}))
+    assert "How to place a house here" in texts(page, "#leaf h3")
+    assert texts(page, "#leaf ul.siting li") == list(hint.says)
+    one(page, "#rows tr:nth-child(2) button").click()
+    assert texts(page, "#leaf ul.siting li") == []
+    assert problems(page) == []
+
+
 def test_ties_ranges_and_marks_at_worst_are_shown(opened: Any, tried: Any) -> None:
     page = opened(tried)
     ranks = texts(page, "#rows td.rank")

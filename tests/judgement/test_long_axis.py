@@ -1,7 +1,6 @@
 """The long axis that serves sun and wind best: symmetric cases, published rules, mirrored worlds, and what decides."""
 
 from collections.abc import Callable
-from typing import Any
 
 import numpy as np
 import pandas as pd
@@ -18,7 +17,7 @@ from sitescreen.judgement.long_axis import (
     main_bearing,
 )
 from sitescreen.judgement.siting import decided_by
-from sitescreen.settings import SitingSettings, load_defaults
+from sitescreen.settings import SitingSettings, SitingWeights, load_defaults
 
 ClearYear = Callable[..., SunPath]
 AxisGround = Callable[..., SitingGround]
@@ -39,11 +38,10 @@ def axis(of: SitingGround, zone: pd.DataFrame, settings: SitingSettings = SETTIN
     return float(long_axis(of, zone, ALBEDO, settings).bearing_deg[0])
 
 
-def weighted(sun: float, **changed: Any) -> SitingSettings:
+def weighted(sun: float) -> SitingSettings:
     """The coast with these weights."""
-    coast = SETTINGS.zones["hot_humid_coast"].model_copy(
-        update={"sun_weight": sun, "wind_weight": 1.0 - sun, **changed}
-    )
+    weights = SitingWeights(sun=sun, wind=1.0 - sun)
+    coast = SETTINGS.zones["hot_humid_coast"].model_copy(update={"weights": weights})
     return SETTINGS.model_copy(update={"zones": {"hot_humid_coast": coast}})
 
 
@@ -149,7 +147,7 @@ def test_hills_on_one_side_do_not_turn_an_axis_of_an_equal_sun(clear_year: Clear
 
 def test_unwanted_wind_is_met_by_the_short_face(clear_year: ClearYear, axis_ground: AxisGround) -> None:
     """Shelter: with the wind alone to go by, the axis lies along a wind from 67.5°."""
-    high = SETTINGS.zones["high_upland"].model_copy(update={"sun_weight": 0.0, "wind_weight": 1.0})
+    high = SETTINGS.zones["high_upland"].model_copy(update={"weights": SitingWeights(sun=0.0, wind=1.0)})
     settings = SETTINGS.model_copy(update={"zones": {"high_upland": high}})
     of = axis_ground(clear_year(-1.0), flow=np.eye(16)[3])
     found = long_axis(of, shares(high_upland=1.0), ALBEDO, settings)

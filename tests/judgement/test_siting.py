@@ -11,7 +11,7 @@ from sitescreen.climate.sun_path import SunPath
 from sitescreen.judgement.long_axis import AxisCosts, SitingGround, axis_costs
 from sitescreen.judgement.siting import PlotSiting, decided_by, plot_sitings
 from sitescreen.judgement.siting_words import along, point
-from sitescreen.settings import load_defaults
+from sitescreen.settings import SitingWeights, load_defaults
 
 ClearYear = Callable[..., SunPath]
 AxisGround = Callable[..., SitingGround]
@@ -175,7 +175,7 @@ def test_eaves_shade_the_wall_that_the_hot_season_sun_looks_at(clear_year: Clear
 
 def test_eaves_that_would_need_posts_are_not_promised(clear_year: ClearYear, axis_ground: AxisGround) -> None:
     """A wall turned towards the morning sun for the sake of an east wind: 9 h sun square on needs some 1.5 m."""
-    coast = SETTINGS.zones["hot_humid_coast"].model_copy(update={"sun_weight": 0.0, "wind_weight": 1.0})
+    coast = SETTINGS.zones["hot_humid_coast"].model_copy(update={"weights": SitingWeights(sun=0.0, wind=1.0)})
     settings = SETTINGS.model_copy(update={"zones": {"hot_humid_coast": coast}, "eave_most_m": 1.2})
     of = axis_ground(clear_year(0.0), breeze_from_deg=90.0)
     values = pd.DataFrame({"slope_deg": [2.0], "aspect_deg": [0.0], "shore_kind": ["sea"]}, index=["7"])
