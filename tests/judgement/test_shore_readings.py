@@ -39,6 +39,8 @@ def read(near_m: float = 300.0, **other: Any) -> Readings:
         np.array([told["kind"]], dtype=object),
         *(one(told[name]) for name in ("distance_m", "bearing_deg", "reach", "screen")),
         way,
+        one(np.nan),
+        one(np.nan),
     )
     near = ShoreDistance(
         one("sea"), one(0), one(near_m), one(0.0), one(0.0), one(0.0), one(near_m), one(0.0), one(np.nan), one(np.nan),
