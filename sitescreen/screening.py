@@ -26,6 +26,7 @@ from sitescreen.inputs.context import Landmarks
 from sitescreen.inputs.zone_map import zone_at
 from sitescreen.judgement.cautions import load_cautions
 from sitescreen.judgement.certainty import Certainty, certainty
+from sitescreen.judgement.draws import ReadingDraws
 from sitescreen.judgement.overall import Judged, judge
 from sitescreen.judgement.own import (
     OwnReadings,
@@ -41,6 +42,7 @@ from sitescreen.judgement.readings import Readings, stack
 from sitescreen.judgement.reasons import Reasons, reasons
 from sitescreen.judgement.siting import PlotSiting
 from sitescreen.judgement.siting_readings import BlockSuns, Sites, first_sitings, with_siting
+from sitescreen.judgement.rose_draws import rose_draws, rose_in_words
 from sitescreen.judgement.sun_readings import sun_notes
 from sitescreen.judgement.sway import sway_notes, sways
 from sitescreen.judgement.waters import waters_disagree
@@ -201,15 +203,12 @@ def _judged(
     )
     values, why_unknown = with_siting(Readings(values, why_unknown), sites)
     halved = assumed_columns(inputs.wind, profiles)
-    judged = judge(
-        values,
-        zones,
-        profiles,
-        (*load_cautions(), *own_rules(brief.constraint)),
-        settings.judgement,
-        halved,
+    rules = (*load_cautions(), *own_rules(brief.constraint))
+    judged = judge(values, zones, profiles, rules, settings.judgement, halved)
+    draws, varied = _draws(brief, inputs, measured, profiles, settings)
+    sure = certainty(
+        judged, zones, profiles, brief.judge.seed, brief.judge.shortlist, settings.judgement, draws, rules, varied
     )
-    sure = certainty(judged, zones, profiles, brief.judge.seed, brief.judge.shortlist, settings.judgement)
     found = sways(judged, zones, profiles)
     notes = inputs.notes + inputs.terrain.findings
     notes += climate_notes(climate, settings.zones) if climate is not None else ()
@@ -286,6 +285,30 @@ def profiles_of(brief: Brief, settings: Defaults) -> tuple[dict[str, ZoneProfile
         return profiles, None
     compared = compare_for(profiles, brief.judge.pairs)
     return with_weights(profiles, compared), compared
+
+
+def _draws(
+    brief: Brief,
+    inputs: Inputs,
+    measured: list[BlockResult],
+    profiles: Mapping[str, ZoneProfile],
+    settings: Defaults,
+) -> tuple[ReadingDraws, tuple[str, ...]]:
+    """The data's draws, one set for all plots, and what they vary."""
+    plots = inputs.plots.table
+    wanted = {criterion.column for profile in profiles.values() for criterion in profile.criteria}
+    roses = rose_draws(
+        winds_together([one.winds for one in measured], tuple(plots["plot"]), settings.wind.sectors),
+        inputs.wind,
+        plots["lon"].to_numpy(),
+        plots["lat"].to_numpy(),
+        wanted,
+        wind_slots(profiles),
+        brief.judge.seed,
+        settings.judgement.data_draws,
+        settings.wind,
+    )
+    return ReadingDraws(roses), (rose_in_words(inputs.wind, settings.wind),) if roses else ()
 
 
 def _outcomes(told: Any, values: pd.DataFrame) -> list[str]:

@@ -110,6 +110,7 @@ class WindSettings(Section):
     slow_ratio: Share
     worst_energy_least: Share
     place_high_m: Positive
+    rose_days: Annotated[float, Field(ge=1, le=100_000)]
     canopy_displacement: Share
     windbreak_most: Share
     windbreak_full_heights: Annotated[float, Field(ge=0, le=20)]
@@ -224,6 +225,7 @@ class JudgementSettings(Section):
     mark_tie: Annotated[float, Field(ge=0, le=0.1)]
     reasons_shown: Annotated[int, Field(ge=1, le=10)]
     trials: Annotated[int, Field(ge=100, le=100_000)]
+    data_draws: Annotated[int, Field(ge=0, le=1000)]
     told_apart: Annotated[float, Field(ge=0.5, le=1)]
     own_weight_spread_pct: Annotated[float, Field(ge=0, le=100)]
     trials_plots_most: Annotated[int, Field(ge=1, le=20_000)]

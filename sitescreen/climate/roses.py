@@ -102,8 +102,17 @@ def distances_m(table: WindTable, lon_deg: FloatArray, lat_deg: FloatArray) -> F
     return np.asarray(metres, dtype=np.float64)
 
 
-def roses_at(table: WindTable, slot: str, lon_deg: FloatArray, lat_deg: FloatArray, sectors: int) -> RoseSums:
+def roses_at(
+    table: WindTable,
+    slot: str,
+    lon_deg: FloatArray,
+    lat_deg: FloatArray,
+    sectors: int,
+    factors: FloatArray | None = None,
+) -> RoseSums:
     """A slot's wind at each point; arrays of shape (n, sectors).
+
+    ``factors``, shape (places, sectors), multiply each place's rose first, for roses drawn anew.
 
     Raises
     ------
@@ -112,11 +121,13 @@ def roses_at(table: WindTable, slot: str, lon_deg: FloatArray, lat_deg: FloatArr
     """
     weights = place_weights(table, lon_deg, lat_deg)
     at_places = [rose_sums(table.roses[slot, number], sectors) for number in range(len(table.places))]
+    by = np.ones((len(at_places), sectors)) if factors is None else factors
 
     def mixed(name: str) -> FloatArray:
         # place by place, so that a plot's sum cannot depend on how many plots stand beside it
         return np.asarray(
-            sum(weights[:, [k]] * getattr(one, name)[None, :] for k, one in enumerate(at_places)), dtype=np.float64
+            sum(weights[:, [k]] * (getattr(one, name) * by[k])[None, :] for k, one in enumerate(at_places)),
+            dtype=np.float64,
         )
 
     return RoseSums(mixed("time"), mixed("flow"), mixed("power"))

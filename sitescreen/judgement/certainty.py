@@ -1,8 +1,7 @@
-"""How certain a rank is, as far as the weights go: the same plots ranked again under many sets of weights."""
+"""How certain a rank is: the same plots ranked again under other weights and under other draws of the data."""
 
-import hashlib
 import math
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -11,9 +10,13 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from sitescreen.climate.zones import ZoneShares
+from sitescreen.judgement.cautions import CautionRule
+from sitescreen.judgement.drawn_marks import drawn_marks, stopped
+from sitescreen.judgement.draws import NO_DRAWS, ReadingDraws
 from sitescreen.judgement.other_weights import ZoneWeights, low_marks
 from sitescreen.judgement.overall import Judged
 from sitescreen.judgement.profiles import ZoneProfile
+from sitescreen.judgement.uniform import uniform
 from sitescreen.notes import Note
 from sitescreen.settings import JudgementSettings
 
@@ -30,6 +33,13 @@ COLUMNS = (
     "chance_first_any_weights",
     "chance_beats_next",
     "group",
+    "chance_set_aside",
+    "rank_low_weights",
+    "rank_high_weights",
+    "rank_low_data",
+    "rank_high_data",
+    "drawn_mark_low",
+    "drawn_mark_high",
 )
 
 
@@ -43,15 +53,23 @@ class Certainty:
         ``rank_low`` and ``rank_high`` (best and worst rank of the 5–95 % range), ``chance_first``,
         ``chance_top_quarter``, ``chance_shortlist`` (among the first k), ``chance_first_in_zone``,
         ``chance_first_any_weights`` (if nothing were known of the weights), ``chance_beats_next`` (the plot next in
-        rank), ``group`` (plots that cannot be told apart from the first of their group). Missing where a plot has no
-        rank or took no part.
+        rank), ``group`` (plots that cannot be told apart from the first of their group), ``chance_set_aside`` (also of
+        plots that are); the range of ranks if the weights alone vary, or the data alone; ``drawn_mark_low`` and
+        ``drawn_mark_high``, the 5–95 % range of the mark that ranks go by. Missing where a plot has no rank or took no
+        part.
     trials : int
+    draws : int
+        Of the data; 0 if the weights alone vary.
+    varied : tuple of str
+        What the data's draws vary, in words.
     drawn, ranked : int
         Plots that took part, and plots that have a rank.
     """
 
     table: pd.DataFrame
     trials: int
+    draws: int
+    varied: tuple[str, ...]
     drawn: int
     ranked: int
 
@@ -59,10 +77,20 @@ class Certainty:
         """What ``record.json`` keeps of it."""
         return {
             "trials": self.trials,
-            "varied": "weights only, each evenly within the ± % of its profile",
+            "data_draws": self.draws,
+            "varied": ["weights, each evenly within the ± % of its profile", *(self.varied if self.draws else ())],
             "plots_in_trials": self.drawn,
             "plots_ranked": self.ranked,
+            "ranks_spanned_on_average": {
+                what: self._mean_span(suffix)
+                for what, suffix in (("together", ""), ("weights_alone", "_weights"), ("data_alone", "_data"))
+            },
         }
+
+    def _mean_span(self, suffix: str) -> float | None:
+        """Mean number of ranks from the best to the worst of the range."""
+        span = (self.table[f"rank_high{suffix}"] - self.table[f"rank_low{suffix}"]).dropna()
+        return round(float(span.mean()) + 1.0, 2) if len(span) else None
 
     def notes(self) -> tuple[Note, ...]:
         """What was varied, and what was not."""
@@ -70,9 +98,24 @@ class Certainty:
             return ()
         text = (
             f"Rank ranges and chances come from {self.trials:,} trials, each with every weight drawn evenly within the "
-            "± % of its profile. They tell how far the ranking hangs on the weights and on nothing else: the terrain "
-            "model's error and the wind are not in them yet, and unknown readings stand at their worst throughout."
+            "± % of its profile"
         )
+        if self.draws:
+            text += (
+                f" and with one of {self.draws:,} draws of the data, the same for all plots: {_listed(self.varied)}. "
+                "Unknown readings stand at their worst throughout."
+            )
+            spans = [self._mean_span(suffix) for suffix in ("_weights", "_data", "")]
+            if None not in spans:
+                text += (
+                    f" On average a plot's range spans {spans[0]:.1f} ranks if the weights alone vary, {spans[1]:.1f} "
+                    f"if the data alone do, and {spans[2]:.1f} together."
+                )
+        else:
+            text += (
+                ". They tell how far the ranking hangs on the weights and on nothing else: the terrain model's error "
+                "and the wind's are not in them, and unknown readings stand at their worst throughout."
+            )
         notes = [Note("info", "judgement", text)]
         if self.drawn < self.ranked:
             notes.append(
@@ -86,24 +129,8 @@ class Certainty:
         return tuple(notes)
 
 
-def uniform(seed: int, about: str, count: int) -> FloatArray:
-    """Even numbers in (0, 1), the same for the same seed and word whatever else is drawn.
-
-    Parameters
-    ----------
-    seed : int
-    about : str
-        What is drawn, such as a criterion's name: the key of a counter-based generator (Philox).
-    count : int
-
-    Returns
-    -------
-    float64 array, shape (count,)
-    """
-    key = int.from_bytes(hashlib.sha256(f"{seed}/{about}".encode()).digest()[:16], "big")
-    # the generator's raw words, since how numpy makes floats of them might change
-    words = np.random.Philox(key=key).random_raw(count)
-    return np.asarray(((words >> np.uint64(12)).astype(np.float64) + 0.5) * 2.0**-52)
+def _listed(words: tuple[str, ...]) -> str:
+    return " and ".join([", ".join(words[:-1]), words[-1]] if len(words) > 1 else words)
 
 
 def drawn_weights(judged: Judged, profiles: Mapping[str, ZoneProfile], seed: int, trials: int) -> ZoneWeights:
@@ -163,8 +190,11 @@ def certainty(
     seed: int,
     shortlist: int,
     settings: JudgementSettings,
+    draws: ReadingDraws = NO_DRAWS,
+    rules: Sequence[CautionRule] = (),
+    varied: tuple[str, ...] = (),
 ) -> Certainty:
-    """Rank the plots again under other weights.
+    """Rank the plots again under other weights and other draws of the data.
 
     Parameters
     ----------
@@ -177,6 +207,12 @@ def certainty(
     shortlist : int
         How many plots the client wants: k.
     settings : JudgementSettings
+    draws : ReadingDraws
+        One set for all plots; without any the weights alone vary.
+    rules : sequence of CautionRule
+        Those of the run: a stop sets a plot aside in the draws in which it is raised.
+    varied : tuple of str
+        What the draws vary, in words.
 
     Returns
     -------
@@ -184,6 +220,8 @@ def certainty(
 
     Notes
     -----
+    Each draw of the data serves the same number of sets of weights: trial t takes draw t mod count. No noise is ever
+    added to a mark; readings are drawn and marked anew, so data without error spread nothing.
     A trial ranks by the same low marks as the run does, so ignorance wins in none of them. Above ``trials_plots_most``
     ranked plots only the max(10 k, 200) with the highest ``mark_high`` are drawn; the others keep the place against
     them that they have in the run. (Left at their marks while the drawn ones move, they would win trials in which
@@ -193,33 +231,83 @@ def certainty(
     table = judged.table
     ranked = np.flatnonzero(table["rank"].notna().to_numpy())
     drawn = _drawn(table, ranked, shortlist, settings)
-    empty = pd.DataFrame({name: np.full(len(table), np.nan) for name in COLUMNS}, index=table.index)
+    found = pd.DataFrame({name: np.full(len(table), np.nan) for name in COLUMNS}, index=table.index)
+
+    def enter(rows: IntArray, told: Mapping[str, Any]) -> None:
+        for name, values in told.items():
+            found.iloc[rows, found.columns.get_loc(name)] = values
+
+    if draws.count:
+        measured = np.flatnonzero(_measured(judged))
+        enter(measured, {"chance_set_aside": stopped(judged, zones, rules, draws, measured).mean(axis=0)})
     if not len(drawn):
-        return Certainty(empty, settings.trials, 0, len(ranked))
+        return Certainty(found, settings.trials, draws.count, varied, 0, len(ranked))
     by_rank = drawn[np.argsort(table["rank"].to_numpy(dtype=np.float64)[drawn], kind="stable")]
     zone = table["zone"].to_numpy(dtype=object)
     ahead, ahead_in_zone = _ahead(_steps(table["mark_low"].to_numpy(np.float64), settings), zone, by_rank, ranked)
     free = _steps(low_marks(judged, zones, by_rank, any_weights(judged, seed, settings.trials)), settings)
-    first_any = _first(free, ahead)
+    enter(by_rank, {"chance_first_any_weights": _first(free, ahead)})
     del free  # with 5,000 plots 80 MB
-    steps = _steps(low_marks(judged, zones, by_rank, drawn_weights(judged, profiles, seed, settings.trials)), settings)
+    weights = drawn_weights(judged, profiles, seed, settings.trials)
+    data = drawn_marks(judged, zones, profiles, rules, draws, by_rank) if draws.count else None
+    if data is not None:
+        for suffix, marks in (
+            ("_weights", low_marks(judged, zones, by_rank, weights)),
+            ("_data", low_marks(judged, zones, by_rank, _run_weights(judged, data.count), data, np.arange(data.count))),
+        ):
+            low, high = _middle(ranks_of(_steps(marks, settings)) + ahead.astype(np.int32))
+            enter(by_rank, {f"rank_low{suffix}": low, f"rank_high{suffix}": high})
+    draw = np.arange(settings.trials) % data.count if data is not None else None
+    marks = low_marks(judged, zones, by_rank, weights, data, draw)
+    if data is not None:
+        low, high = _middle(marks)
+        enter(by_rank, {"drawn_mark_low": _no_infinity(low), "drawn_mark_high": _no_infinity(high)})
+    steps = _steps(marks, settings)
+    in_it = np.isfinite(steps)
     ranks = ranks_of(steps)
     ranks += ahead.astype(np.int32)
-    told: dict[str, Any] = {
-        "chance_first": (ranks == 1).mean(axis=0),
-        "chance_top_quarter": (ranks <= math.ceil(len(ranked) / 4)).mean(axis=0),
-        "chance_shortlist": (ranks <= shortlist).mean(axis=0),
-        "chance_first_in_zone": _first_in_zone(steps, zone[by_rank], ahead_in_zone),
-        "chance_first_any_weights": first_any,
-        "chance_beats_next": np.append(beats(steps[:, :-1], steps[:, 1:]), np.nan),
-        "group": groups(steps, settings.told_apart),
+    enter(
+        by_rank,
+        {
+            "chance_first": ((ranks == 1) & in_it).mean(axis=0),
+            "chance_top_quarter": ((ranks <= math.ceil(len(ranked) / 4)) & in_it).mean(axis=0),
+            "chance_shortlist": ((ranks <= shortlist) & in_it).mean(axis=0),
+            "chance_first_in_zone": _first_in_zone(steps, zone[by_rank], ahead_in_zone),
+            "chance_beats_next": np.append(beats(steps[:, :-1], steps[:, 1:]), np.nan),
+            "group": groups(steps, settings.told_apart),
+        },
+    )
+    low, high = _middle(ranks)
+    enter(by_rank, {"rank_low": low, "rank_high": high})
+    return Certainty(found, settings.trials, draws.count, varied, len(drawn), len(ranked))
+
+
+def _measured(judged: Judged) -> NDArray[np.bool_]:
+    """Plots that were measured and have a zone."""
+    has_zone = np.asarray(judged.table["zone"].to_numpy(dtype=object) != "", dtype=np.bool_)
+    if "outcome" not in judged.facts:
+        return has_zone
+    return has_zone & np.asarray(judged.facts["outcome"].to_numpy(dtype=object) == "", dtype=np.bool_)
+
+
+def _run_weights(judged: Judged, count: int) -> ZoneWeights:
+    """The weights of the run, so many times."""
+    return {
+        zone: {name: np.full(count, weight) for name, weight in one.weights.items()}
+        for zone, one in judged.by_zone.items()
     }
-    ranks.sort(axis=0)
-    told["rank_low"] = ranks[math.ceil(0.05 * settings.trials) - 1]
-    told["rank_high"] = ranks[math.ceil(0.95 * settings.trials) - 1]
-    for name, values in told.items():
-        empty.iloc[by_rank, empty.columns.get_loc(name)] = values
-    return Certainty(empty, settings.trials, len(drawn), len(ranked))
+
+
+def _middle(values: NDArray[Any]) -> tuple[NDArray[Any], NDArray[Any]]:
+    """The 5–95 % range of each column: two of its own values. Arrays of shape (trials, m) give (m,) twice."""
+    ordered = np.sort(values, axis=0)
+    count = len(ordered)
+    return ordered[math.ceil(0.05 * count) - 1], ordered[math.ceil(0.95 * count) - 1]
+
+
+def _no_infinity(values: FloatArray) -> FloatArray:
+    """Marks, with none where more than every twentieth trial sets the plot aside."""
+    return np.where(np.isfinite(values), values, np.nan)
 
 
 def _drawn(table: pd.DataFrame, ranked: IntArray, shortlist: int, settings: JudgementSettings) -> IntArray:
@@ -249,7 +337,8 @@ def _ahead(steps: FloatArray, zone: Any, drawn: IntArray, ranked: IntArray) -> t
 
 def _first(steps: FloatArray, ahead: IntArray) -> FloatArray:
     """How often each plot has the best mark, if nothing that takes no part is ahead of it."""
-    return np.where(ahead == 0, (steps >= steps.max(axis=1, keepdims=True)).mean(axis=0), 0.0)
+    is_best = (steps >= steps.max(axis=1, keepdims=True)) & np.isfinite(steps)
+    return np.where(ahead == 0, is_best.mean(axis=0), 0.0)
 
 
 def _first_in_zone(steps: FloatArray, zone: Any, ahead: IntArray) -> FloatArray:

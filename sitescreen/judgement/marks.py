@@ -77,13 +77,16 @@ def mark_limits(readings: pd.DataFrame, profile: ZoneProfile) -> tuple[pd.DataFr
     """
     lowest, highest = {}, {}
     for one in profile.criteria:
-        value = _values(readings, one.column)
-        from_value, to_value = possible_range(one.reading, readings)
-        unknown = np.isnan(value)
-        lowest[f"mark_{one.name}"], highest[f"mark_{one.name}"] = mark_range(
-            np.where(unknown, from_value, value), np.where(unknown, to_value, value), one
-        )
+        lowest[f"mark_{one.name}"], highest[f"mark_{one.name}"] = limits_of(readings, one)
     return pd.DataFrame(lowest, index=readings.index), pd.DataFrame(highest, index=readings.index)
+
+
+def limits_of(readings: pd.DataFrame, criterion: Criterion) -> tuple[FloatArray, FloatArray]:
+    """The lowest and the highest mark of one criterion; two arrays of shape (n,)."""
+    value = _values(readings, criterion.column)
+    from_value, to_value = possible_range(criterion.reading, readings)
+    unknown = np.isnan(value)
+    return mark_range(np.where(unknown, from_value, value), np.where(unknown, to_value, value), criterion)
 
 
 def _values(readings: pd.DataFrame, reading: str) -> FloatArray:

@@ -1,4 +1,4 @@
-"""Low marks under other weights: the one sum that trials and what-ifs share."""
+"""Low marks under other weights and other draws of the data: the one sum that trials and what-ifs share."""
 
 from collections.abc import Mapping
 
@@ -6,6 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from sitescreen.climate.zones import ZoneShares
+from sitescreen.judgement.drawn_marks import DrawnMarks
 from sitescreen.judgement.overall import Judged
 
 FloatArray = NDArray[np.float64]
@@ -14,8 +15,15 @@ ZoneWeights = Mapping[str, Mapping[str, FloatArray]]
 """Zone → criterion → the weight in each trial, shape (trials,)."""
 
 
-def low_marks(judged: Judged, zones: ZoneShares, rows: NDArray[np.int64], weights: ZoneWeights) -> FloatArray:
-    """The marks that ranks go by, under other weights.
+def low_marks(
+    judged: Judged,
+    zones: ZoneShares,
+    rows: NDArray[np.int64],
+    weights: ZoneWeights,
+    data: DrawnMarks | None = None,
+    draw: NDArray[np.int64] | None = None,
+) -> FloatArray:
+    """The marks that ranks go by, under other weights and other draws of the data.
 
     Parameters
     ----------
@@ -26,12 +34,17 @@ def low_marks(judged: Judged, zones: ZoneShares, rows: NDArray[np.int64], weight
         Which plots.
     weights : mapping of zone to criterion to float64 array, shape (trials,)
         Each at least 0, and not all 0 in a zone.
+    data : DrawnMarks, optional
+        Of the same plots; without it the readings are those of the run.
+    draw : int64 array, shape (trials,), optional
+        Which draw of the data each trial takes; needed with ``data``.
 
     Returns
     -------
     float64 array, shape (trials, m)
         Unknown readings at their worst; blended over the zones that share a plot; where its zone is undecided, that of
-        the zone that suits it least. With the weights of the run this is ``mark_low``. NaN without a zone.
+        the zone that suits it least. With the weights and readings of the run this is ``mark_low``. NaN without a zone,
+        −inf where the draw sets the plot aside.
     """
     trials = len(next(iter(next(iter(weights.values())).values()))) if weights else 0
     place = np.full(len(judged.table), -1, dtype=np.int64)
@@ -47,8 +60,12 @@ def low_marks(judged: Judged, zones: ZoneShares, rows: NDArray[np.int64], weight
         total = np.zeros((trials, len(here)))
         weight_sum = np.zeros(trials)
         # criterion by criterion, as the overall mark is added: plots with equal marks keep equal sums, whoever is near
+        drawn = data.by_zone.get(zone, {}) if data is not None and draw is not None else {}
         for name, weight in weights[zone].items():
-            total += weight[:, None] * one.lowest[f"mark_{name}"].to_numpy(dtype=np.float64)[here][None, :]
+            if name in drawn:
+                total += weight[:, None] * drawn[name][draw]
+            else:
+                total += weight[:, None] * one.lowest[f"mark_{name}"].to_numpy(dtype=np.float64)[here][None, :]
             weight_sum += weight
         total /= weight_sum[:, None]
         open_zone = provisional[at]
@@ -57,4 +74,6 @@ def low_marks(judged: Judged, zones: ZoneShares, rows: NDArray[np.int64], weight
         marks[:, at[open_zone]] = np.minimum(marks[:, at[open_zone]], total[:, open_zone])
     has_zone = zones.zone.to_numpy(dtype=object)[rows] != ""
     marks[:, ~has_zone] = np.nan
+    if data is not None and draw is not None:
+        marks[data.stopped[:, np.searchsorted(data.rows, rows)][draw]] = -np.inf
     return marks

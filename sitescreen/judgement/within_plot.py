@@ -170,8 +170,9 @@ def _cell_marks(
     settings: JudgementSettings,
 ) -> FloatArray:
     """The overall mark of each cell; NaN without a zone."""
-    wanted = {criterion.reading for profile in profiles.values() for criterion in profile.criteria}
-    wanted |= {name for reading in wanted for name in DERIVED_READINGS.get(reading, ())}
+    criteria = [criterion for profile in profiles.values() for criterion in profile.criteria]
+    wanted = {one.column for one in criteria}
+    wanted |= {name for one in criteria for name in DERIVED_READINGS.get(one.reading, ())}
     own = {name: readings[name].to_numpy(dtype=np.float64)[cells.plot] for name in sorted(wanted) if name in readings}
     for name in own:
         if name in cells.readings:

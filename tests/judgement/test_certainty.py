@@ -10,10 +10,11 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from sitescreen.climate.zones import ZoneShares, memberships, zone_shares
-from sitescreen.judgement.certainty import Certainty, any_weights, certainty, drawn_weights, groups, ranks_of, uniform
+from sitescreen.judgement.certainty import Certainty, any_weights, certainty, drawn_weights, groups, ranks_of
 from sitescreen.judgement.other_weights import low_marks
 from sitescreen.judgement.overall import Judged, judge
 from sitescreen.judgement.profiles import Criterion, ZoneProfile, load_profiles
+from sitescreen.judgement.uniform import uniform
 from sitescreen.settings import JudgementSettings, load_defaults
 
 DEFAULTS = load_defaults()
