@@ -25,7 +25,7 @@ from sitescreen.inputs.brief_record import brief_for_record
 from sitescreen.inputs.context import Landmarks
 from sitescreen.inputs.zone_map import zone_at
 from sitescreen.judgement.cautions import load_cautions
-from sitescreen.judgement.certainty import Certainty, certainty
+from sitescreen.judgement.certainty import Certainty, Varied, certainty, take_part
 from sitescreen.judgement.draws import ReadingDraws
 from sitescreen.judgement.overall import Judged, judge
 from sitescreen.judgement.own import (
@@ -40,9 +40,13 @@ from sitescreen.judgement.pairs import Compared, compare_for, with_weights
 from sitescreen.judgement.profiles import ZoneProfile, load_profiles, wind_slots
 from sitescreen.judgement.readings import Readings, stack
 from sitescreen.judgement.reasons import Reasons, reasons
+<<<<<<< HEAD
 from sitescreen.judgement.siting import PlotSiting
 from sitescreen.judgement.siting_readings import BlockSuns, Sites, first_sitings, with_siting
 from sitescreen.judgement.rose_draws import rose_draws, rose_in_words
+=======
+from sitescreen.judgement.rose_draws import rose_draws, rose_varied
+>>>>>>> 91d1af0 (Words for what the trials vary and leave out, on page, in why and in the record; benchmark of the trials)
 from sitescreen.judgement.sun_readings import sun_notes
 from sitescreen.judgement.sway import sway_notes, sways
 from sitescreen.judgement.waters import waters_disagree
@@ -57,7 +61,12 @@ from sitescreen.terrain.flat_water import together
 
 NOT_MEASURED = (
     "cold air held back by narrows without a closed hollow, and cold air in motion",
+<<<<<<< HEAD
     "how certain a rank is given the terrain model's error and the wind (the ranges and chances vary the weights only)",
+=======
+    "the best bearing for a building's long axis",
+    "how certain a rank is given the terrain model's error (ranges and chances vary the weights and the wind's rose)",
+>>>>>>> 91d1af0 (Words for what the trials vary and leave out, on page, in why and in the record; benchmark of the trials)
 )
 
 NOT_CHECKED = (
@@ -205,7 +214,7 @@ def _judged(
     halved = assumed_columns(inputs.wind, profiles)
     rules = (*load_cautions(), *own_rules(brief.constraint))
     judged = judge(values, zones, profiles, rules, settings.judgement, halved)
-    draws, varied = _draws(brief, inputs, measured, profiles, settings)
+    draws, varied = _draws(brief, inputs, measured, judged, profiles, settings)
     sure = certainty(
         judged, zones, profiles, brief.judge.seed, brief.judge.shortlist, settings.judgement, draws, rules, varied
     )
@@ -291,11 +300,13 @@ def _draws(
     brief: Brief,
     inputs: Inputs,
     measured: list[BlockResult],
+    judged: Judged,
     profiles: Mapping[str, ZoneProfile],
     settings: Defaults,
-) -> tuple[ReadingDraws, tuple[str, ...]]:
+) -> tuple[ReadingDraws, tuple[Varied, ...]]:
     """The data's draws, one set for all plots, and what they vary."""
-    plots = inputs.plots.table
+    rows = take_part(judged, brief.judge.shortlist, settings.judgement)
+    plots = inputs.plots.table.iloc[rows]
     wanted = {criterion.column for profile in profiles.values() for criterion in profile.criteria}
     roses = rose_draws(
         winds_together([one.winds for one in measured], tuple(plots["plot"]), settings.wind.sectors),
@@ -308,7 +319,10 @@ def _draws(
         settings.judgement.data_draws,
         settings.wind,
     )
-    return ReadingDraws(roses), (rose_in_words(inputs.wind, settings.wind),) if roses else ()
+    drawn = {name: np.full((len(judged.table), values.shape[1]), np.nan) for name, values in roses.items()}
+    for name, values in roses.items():
+        drawn[name][rows] = values
+    return ReadingDraws(drawn), (rose_varied(inputs.wind, settings.wind),) if roses else ()
 
 
 def _outcomes(told: Any, values: pd.DataFrame) -> list[str]:

@@ -63,6 +63,12 @@ def _place(row: Mapping[str, str], plots: Mapping[str, Any], certainty: Mapping[
         )
     if row.get("zone_missing"):
         yield f"Its rank is provisional: {row['zone_missing']} is missing to tell its zone."
+    if row.get("rank_low_data"):
+        yield (
+            f"By the weights alone rank {row['rank_low_weights']} to {row['rank_high_weights']}, by the data alone "
+            f"rank {row['rank_low_data']} to {row['rank_high_data']}; set aside in "
+            f"{100 * float(row['chance_set_aside']):.0f} of 100 draws."
+        )
     if row.get("where_on_plot"):
         yield row["where_on_plot"]
     if row.get("mahoney_says"):
@@ -71,8 +77,8 @@ def _place(row: Mapping[str, str], plots: Mapping[str, Any], certainty: Mapping[
         low, high = row["rank_low"], row["rank_high"]
         span = f"rank {low}" if low == high else f"rank {low} to {high}"
         yield (
-            f"Under {certainty['trials']:,} other sets of weights mostly {span}, "
-            f"first in {100 * float(row['chance_first']):.0f} of 100; the terrain's and the wind's error are not in it."
+            f"In {certainty['trials']:,} trials, which vary {certainty['varies']}, mostly {span}, "
+            f"first in {100 * float(row['chance_first']):.0f} of 100."
         )
 
 

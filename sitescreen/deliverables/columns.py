@@ -81,7 +81,7 @@ CONTRACT: tuple[Column, ...] = (
     _whole(
         "rank_low",
         "best rank",
-        "The best rank of the range that holds 90 of 100 trials, so the smaller number; only the weights vary in them.",
+        "The best rank of the range that holds 90 of 100 trials, so the smaller number; the record says what varies.",
     ),
     _whole("rank_high", "worst rank", "The worst rank of that range, so the larger number."),
     _number("chance_first", 2, "0–1", "chance of first", "Share of the trials in which the plot is first."),
@@ -279,7 +279,7 @@ MORE: Mapping[str, Column] = {
             2,
             "0–1",
             "chance of shortlist",
-            "Share of the trials, which vary the weights only, in which it is on the shortlist.",
+            "Share of the trials in which it is on the shortlist.",
         ),
         _number(
             "chance_first_in_zone",
@@ -316,6 +316,25 @@ MORE: Mapping[str, Column] = {
         _number("best_patch_lat", 6, "°", "best square: latitude", "Latitude of the middle of that best square."),
         _number("patch_side_m", 0, "m", "side of the squares", "How large the squares are that were looked at."),
         _text("where_on_plot", "where on the plot", "Where on the plot the ground is best, in a sentence."),
+        _number(
+            "chance_set_aside",
+            2,
+            "0–1",
+            "chance of being set aside",
+            "Share of the draws of the data in which a stop sets the plot aside; empty where the data were not drawn.",
+        ),
+        _whole("rank_low_weights", "best rank, weights", "The best rank of the range if the weights alone vary."),
+        _whole("rank_high_weights", "worst rank, weights", "The worst rank of that range."),
+        _whole("rank_low_data", "best rank, data", "The best rank of the range if the data alone vary."),
+        _whole("rank_high_data", "worst rank, data", "The worst rank of that range."),
+        _number(
+            "drawn_mark_low",
+            1,
+            "0–100",
+            "mark in the trials, from",
+            "The mark that ranks go by is below this in 5 of 100 trials; empty where it is set aside in so many.",
+        ),
+        _number("drawn_mark_high", 1, "0–100", "mark in the trials, to", "It is above this in 5 of 100 trials."),
         _text(
             "mahoney",
             "Mahoney indicators",

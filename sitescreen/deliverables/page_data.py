@@ -12,7 +12,7 @@ from sitescreen.deliverables.landmarks import landmarks
 from sitescreen.deliverables.questions import OVERALL, Asked, View, question_marks
 from sitescreen.deliverables.sheet import Sheet
 from sitescreen.deliverables.steps import in_steps
-from sitescreen.deliverables.sureness import above_breeze, alike
+from sitescreen.deliverables.sureness import above_breeze, alike, varies
 from sitescreen.deliverables.table import value_of
 from sitescreen.deliverables.weighing import weighing
 from sitescreen.grid import Bounds
@@ -29,7 +29,8 @@ MOST_SITINGS = 200
 _NOT_ON_A_LEAF = {
     "lon", "lat", "outcome", "water_disagrees", "zone_provisional", "zone_missing", "known_weight_share", "cells",
     "share_flat_water", "over_water_m", "group", "best_patch_mark", "worst_patch_mark", "mean_patch_mark",
-    "patch_side_m",
+    "patch_side_m", "rank_low_weights", "rank_high_weights", "rank_low_data", "rank_high_data", "drawn_mark_low",
+    "drawn_mark_high",
 }  # fmt: skip
 
 
@@ -82,6 +83,7 @@ def page_data(
         "ramp": RAMP,
         "edges": CLASS_EDGES,
         "shortlist": screening.brief.judge.shortlist,
+        "varies": varies(screening.record),
         "questions": [
             {
                 "name": one.name,

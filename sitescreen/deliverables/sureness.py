@@ -1,16 +1,14 @@
-"""How sure the order is, in plain words: read off the table's chances, which vary the weights only."""
+"""How sure the order is, in plain words: read off the table's chances, and off the record what they vary."""
 
 import math
 from collections import defaultdict
-from collections.abc import Iterable
-from typing import TYPE_CHECKING
+from collections.abc import Iterable, Mapping
+from typing import TYPE_CHECKING, Any
 
 from sitescreen.settings import load_defaults
 
 if TYPE_CHECKING:
     import pandas as pd
-
-NOT_IN_IT = "The terrain's error and the wind are not in this."
 
 FIRM, FAIRLY_FIRM, LIKELY = 0.95, 0.80, 0.50
 """What the first place is called, by its chance: our choice, no source. Below 0.8 two plots count as alike too."""
@@ -59,7 +57,18 @@ def of_trials(chance: float) -> str:
     return f"in {counted} of 100 trials" if counted < 100 else "in more than 99 of 100 trials"
 
 
-def sureness(table: "pd.DataFrame", shortlist: int) -> str:
+def varies(record: Mapping[str, Any]) -> str:
+    """What the trials vary, as in "the weights and the wind"."""
+    return str(record.get("certainty", {}).get("varies", "the weights only"))
+
+
+def _left_out(record: Mapping[str, Any]) -> str:
+    """What the trials leave out, in a sentence; "" where nothing is."""
+    words = str(record.get("certainty", {}).get("left_out", "the terrain's error and the wind"))
+    return f" {words[:1].upper()}{words[1:]} {'are' if ' and ' in words else 'is'} not in this." if words else ""
+
+
+def sureness(table: "pd.DataFrame", shortlist: int, record: Mapping[str, Any]) -> str:
     """One or two sentences on how firm the first place and the shortlist are; "" where nothing was tried.
 
     Parameters
@@ -68,28 +77,31 @@ def sureness(table: "pd.DataFrame", shortlist: int) -> str:
         The ranking, best first, with ``chance_first`` and ``group``.
     shortlist : int
         Ties are named up to this rank.
+    record : mapping
+        Of the run: what its trials vary.
     """
     ranked = table[table["rank"].notna()]
     if len(ranked) < 2 or "chance_first" not in ranked or ranked["chance_first"].isna().iloc[0]:
         return ""
     leaders = ranked[ranked["rank"] == ranked["rank"].iloc[0]]
+    so_far = f"as far as {varies(record).removesuffix(' only')} go"
     chance = float(leaders["chance_first"].iloc[0])
     trials = of_trials(chance)
     if len(leaders) > 1:
         head = f"The first place is shared by {len(leaders)} plots"
     elif chance >= FIRM:
-        head = f"First place is firm as far as the weights go (first {trials})"
+        head = f"First place is firm {so_far} (first {trials})"
     elif chance >= FAIRLY_FIRM:
-        head = f"First place is fairly firm as far as the weights go (first {trials})"
+        head = f"First place is fairly firm {so_far} (first {trials})"
     elif chance >= LIKELY:
-        head = f"First place is likely but not firm, even as far as the weights go (first {trials})"
+        head = f"First place is likely but not firm, even {so_far} (first {trials})"
     else:
-        head = f"First place is open: other weights change it easily (this plot is first only {trials})"
+        head = f"First place is open: the trials change it easily (this plot is first only {trials})"
     near = ranked[ranked["rank"] <= shortlist]
     ties = list(dict.fromkeys(words for words in alike(ranked)[: len(near)] if words))
     told = f"; {ties[0]} cannot be told apart" if ties else ""
     told += "".join(f", nor can {more}" for more in ties[1:])
-    return f"{head}{told}. {NOT_IN_IT}"
+    return f"{head}{told}.{_left_out(record)}"
 
 
 def above_breeze(table: "pd.DataFrame") -> list[bool]:

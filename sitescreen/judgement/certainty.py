@@ -3,7 +3,7 @@
 import math
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 import pandas as pd
@@ -43,6 +43,17 @@ COLUMNS = (
 )
 
 
+class Varied(NamedTuple):
+    """One thing that the data's draws vary: in a word or two, and in full."""
+
+    short: str
+    in_full: str
+
+
+TERRAIN, WIND = "the terrain's error", "the wind"
+"""What the data's draws can vary, in short; whatever is not among them is said to be left out."""
+
+
 @dataclass(frozen=True)
 class Certainty:
     """What the trials say.
@@ -60,8 +71,8 @@ class Certainty:
     trials : int
     draws : int
         Of the data; 0 if the weights alone vary.
-    varied : tuple of str
-        What the data's draws vary, in words.
+    varied : tuple of Varied
+        What the data's draws vary.
     drawn, ranked : int
         Plots that took part, and plots that have a rank.
     """
@@ -69,7 +80,7 @@ class Certainty:
     table: pd.DataFrame
     trials: int
     draws: int
-    varied: tuple[str, ...]
+    varied: tuple[Varied, ...]
     drawn: int
     ranked: int
 
@@ -78,7 +89,11 @@ class Certainty:
         return {
             "trials": self.trials,
             "data_draws": self.draws,
-            "varied": ["weights, each evenly within the ± % of its profile", *(self.varied if self.draws else ())],
+            "varied": ["weights, each evenly within the ± % of its profile", *(one.in_full for one in self.varied)],
+            "varies": listed(["the weights", *(one.short for one in self.varied)])
+            if self.varied
+            else "the weights only",
+            "left_out": listed([one for one in (TERRAIN, WIND) if one not in {two.short for two in self.varied}]),
             "plots_in_trials": self.drawn,
             "plots_ranked": self.ranked,
             "ranks_spanned_on_average": {
@@ -101,8 +116,9 @@ class Certainty:
             "± % of its profile"
         )
         if self.draws:
+            in_full = listed([one.in_full for one in self.varied])
             text += (
-                f" and with one of {self.draws:,} draws of the data, the same for all plots: {_listed(self.varied)}. "
+                f" and with one of {self.draws:,} draws of the data, the same for all plots: {in_full}. "
                 "Unknown readings stand at their worst throughout."
             )
             spans = [self._mean_span(suffix) for suffix in ("_weights", "_data", "")]
@@ -129,7 +145,8 @@ class Certainty:
         return tuple(notes)
 
 
-def _listed(words: tuple[str, ...]) -> str:
+def listed(words: Sequence[str]) -> str:
+    """Words as a sentence lists them: "a, b and c"; "" for none."""
     return " and ".join([", ".join(words[:-1]), words[-1]] if len(words) > 1 else words)
 
 
@@ -192,7 +209,7 @@ def certainty(
     settings: JudgementSettings,
     draws: ReadingDraws = NO_DRAWS,
     rules: Sequence[CautionRule] = (),
-    varied: tuple[str, ...] = (),
+    varied: tuple[Varied, ...] = (),
 ) -> Certainty:
     """Rank the plots again under other weights and other draws of the data.
 
@@ -211,8 +228,8 @@ def certainty(
         One set for all plots; without any the weights alone vary.
     rules : sequence of CautionRule
         Those of the run: a stop sets a plot aside in the draws in which it is raised.
-    varied : tuple of str
-        What the draws vary, in words.
+    varied : tuple of Varied
+        What the draws vary.
 
     Returns
     -------
@@ -228,9 +245,10 @@ def certainty(
     all marks fall.)
     Plots that share the first place are both first.
     """
+    varied = varied if draws.count else ()
     table = judged.table
     ranked = np.flatnonzero(table["rank"].notna().to_numpy())
-    drawn = _drawn(table, ranked, shortlist, settings)
+    drawn = take_part(judged, shortlist, settings)
     found = pd.DataFrame({name: np.full(len(table), np.nan) for name in COLUMNS}, index=table.index)
 
     def enter(rows: IntArray, told: Mapping[str, Any]) -> None:
@@ -238,7 +256,7 @@ def certainty(
             found.iloc[rows, found.columns.get_loc(name)] = values
 
     if draws.count:
-        measured = np.flatnonzero(_measured(judged))
+        measured = drawn if len(drawn) < len(ranked) else np.flatnonzero(_measured(judged))
         enter(measured, {"chance_set_aside": stopped(judged, zones, rules, draws, measured).mean(axis=0)})
     if not len(drawn):
         return Certainty(found, settings.trials, draws.count, varied, 0, len(ranked))
@@ -310,11 +328,12 @@ def _no_infinity(values: FloatArray) -> FloatArray:
     return np.where(np.isfinite(values), values, np.nan)
 
 
-def _drawn(table: pd.DataFrame, ranked: IntArray, shortlist: int, settings: JudgementSettings) -> IntArray:
-    """Which of the ranked plots take part in the trials."""
+def take_part(judged: Judged, shortlist: int, settings: JudgementSettings) -> IntArray:
+    """Which of the ranked plots take part in the trials, rising: all, or of very many those with the best chances."""
+    ranked = np.flatnonzero(judged.table["rank"].notna().to_numpy())
     if len(ranked) <= settings.trials_plots_most:
         return ranked
-    best = np.argsort(-table["mark_high"].to_numpy(dtype=np.float64)[ranked], kind="stable")
+    best = np.argsort(-judged.table["mark_high"].to_numpy(dtype=np.float64)[ranked], kind="stable")
     return np.sort(ranked[best[: max(10 * shortlist, settings.trials_plots_least)]])
 
 

@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 from sitescreen.climate.roses import rose_sums, roses_at
 from sitescreen.climate.sector_winds import SectorWinds
 from sitescreen.inputs.wind import WindTable
+from sitescreen.judgement.certainty import WIND, Varied
 from sitescreen.judgement.uniform import uniform
 from sitescreen.judgement.wind_readings import wind_readings
 from sitescreen.judgement.wind_slots import SLOT_OF, wind_column
@@ -100,8 +101,8 @@ def _factors(table: WindTable, slot: str, place: int, seed: int, draws: int, set
     return sector_factors(rose_sums(rose, settings.sectors).time, settings.rose_days, seed, slot, draws)
 
 
-def rose_in_words(table: WindTable, settings: WindSettings) -> str:
+def rose_varied(table: WindTable, settings: WindSettings) -> Varied:
     """What the draws vary, in words."""
     if table.assumed:
-        return "the wind's rose, any of which is as likely since none was given"
-    return f"the wind's rose, taken to be as sure as one from {settings.rose_days:g} independent days"
+        return Varied(WIND, "the wind's rose, any of which is as likely since none was given")
+    return Varied(WIND, f"the wind's rose, taken to be as sure as one from {settings.rose_days:g} independent days")

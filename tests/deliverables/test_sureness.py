@@ -6,7 +6,7 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from sitescreen.deliverables.sureness import NOT_IN_IT, above_breeze, alike, of_trials, ordinal, sureness
+from sitescreen.deliverables.sureness import above_breeze, alike, of_trials, ordinal, sureness
 
 
 def ranking(chances: list[float], groups: list[float], ranks: list[Any] | None = None) -> pd.DataFrame:
@@ -32,7 +32,7 @@ def test_chances_are_never_rounded_to_certainty() -> None:
 
 
 def test_a_firm_first_place_and_a_tie_behind_it() -> None:
-    said = sureness(ranking([0.99, 0.01, 0.0, 0.0, 0.0], [1, 2, 3, 3, 5]), 5)
+    said = sureness(ranking([0.99, 0.01, 0.0, 0.0, 0.0], [1, 2, 3, 3, 5]), 5, {})
     assert said == (
         "First place is firm as far as the weights go (first in 99 of 100 trials); 3rd and 4th cannot be told apart. "
         "The terrain's error and the wind are not in this."
@@ -44,28 +44,28 @@ def test_a_firm_first_place_and_a_tie_behind_it() -> None:
     [(0.95, "is firm"), (0.94, "fairly firm"), (0.79, "likely but not firm"), (0.49, "First place is open")],
 )
 def test_weak_first_places_are_not_called_firm(chance: float, words: str) -> None:
-    said = sureness(ranking([chance, 1 - chance], [1, 2]), 5)
+    said = sureness(ranking([chance, 1 - chance], [1, 2]), 5, {})
     assert words in said
-    assert said.endswith(NOT_IN_IT)
+    assert said.endswith("The terrain's error and the wind are not in this.")
 
 
 def test_ties_beyond_the_shortlist_are_not_told_but_those_that_reach_into_it_are() -> None:
     table = ranking([1.0] + [0.0] * 6, [1, 2, 3, 4, 4, 6, 6])
-    assert "cannot" not in sureness(table, 3)
-    assert "4th and 5th cannot be told apart" in sureness(table, 4)
-    assert "6th" not in sureness(table, 5)
+    assert "cannot" not in sureness(table, 3, {})
+    assert "4th and 5th cannot be told apart" in sureness(table, 4, {})
+    assert "6th" not in sureness(table, 5, {})
 
 
 def test_two_ties_are_both_told() -> None:
-    said = sureness(ranking([0.6, 0.4, 0.0, 0.0], [1, 1, 3, 3]), 4)
+    said = sureness(ranking([0.6, 0.4, 0.0, 0.0], [1, 1, 3, 3]), 4, {})
     assert "1st and 2nd cannot be told apart, nor can 3rd and 4th" in said
 
 
 def test_nothing_is_said_where_nothing_was_tried() -> None:
     table = ranking([np.nan, np.nan], [np.nan, np.nan])
-    assert sureness(table, 5) == ""
-    assert sureness(table.drop(columns=["chance_first", "group"]), 5) == ""
-    assert sureness(ranking([1.0], [1]), 5) == ""
+    assert sureness(table, 5, {}) == ""
+    assert sureness(table.drop(columns=["chance_first", "group"]), 5, {}) == ""
+    assert sureness(ranking([1.0], [1]), 5, {}) == ""
     assert alike(table) == ["", ""]
 
 
@@ -85,3 +85,12 @@ def test_only_plots_that_the_breeze_cannot_reach_up_to_lie_above_it() -> None:
     })  # fmt: skip
     assert above_breeze(table) == [True, False, False, True, False, False]
     assert above_breeze(table.drop(columns="breeze_screen")) == [False] * 6
+
+
+def test_what_the_trials_vary_is_said_and_what_they_leave_out() -> None:
+    both = {"certainty": {"varies": "the weights and the wind", "left_out": "the terrain's error"}}
+    said = sureness(ranking([0.99, 0.01], [1, 2]), 5, both)
+    assert "firm as far as the weights and the wind go" in said
+    assert said.endswith("The terrain's error is not in this.")
+    said = sureness(ranking([0.99, 0.01], [1, 2]), 5, {"certainty": {"varies": "all", "left_out": ""}})
+    assert said.endswith("in 99 of 100 trials).")

@@ -11,7 +11,7 @@ from hypothesis import strategies as st
 
 from sitescreen.climate.zones import ZoneShares, memberships, zone_shares
 from sitescreen.judgement.cautions import load_cautions
-from sitescreen.judgement.certainty import Certainty, certainty
+from sitescreen.judgement.certainty import Certainty, Varied, certainty
 from sitescreen.judgement.drawn_marks import drawn_marks
 from sitescreen.judgement.draws import NO_DRAWS, ReadingDraws
 from sitescreen.judgement.marks import mark
@@ -31,7 +31,17 @@ InZone = Callable[..., ZoneShares]
 
 def sure_of(readings: pd.DataFrame, zones: ZoneShares, draws: ReadingDraws, shortlist: int = 1) -> Certainty:
     judged = judge(readings, zones, PROFILES, RULES, DEFAULTS.judgement)
-    return certainty(judged, zones, PROFILES, 20, shortlist, DEFAULTS.judgement, draws, RULES, ("the slope",))
+    return certainty(
+        judged,
+        zones,
+        PROFILES,
+        20,
+        shortlist,
+        DEFAULTS.judgement,
+        draws,
+        RULES,
+        (Varied("the terrain's error", "the slope"),),
+    )
 
 
 def drawn_again(readings: pd.DataFrame, draws: ReadingDraws, number: int) -> pd.DataFrame:
@@ -147,6 +157,10 @@ def test_both_kinds_of_doubt_are_told_apart_and_together(plots: Plots, in_zone: 
     record = sure.for_record()
     assert record["data_draws"] == DRAWS
     assert record["varied"][1:] == ["the slope"]
+    assert record["varies"] == "the weights and the terrain's error"
+    assert record["left_out"] == "the wind"
+    alone = sure_of(readings, zones, NO_DRAWS).for_record()
+    assert (alone["varies"], alone["left_out"]) == ("the weights only", "the terrain's error and the wind")
     spans = record["ranks_spanned_on_average"]
     assert spans["weights_alone"] < spans["data_alone"] <= spans["together"] <= 4.0
     assert "100 draws of the data, the same for all plots: the slope." in sure.notes()[0].text

@@ -8,7 +8,7 @@ import pytest
 from sitescreen.climate.roses import sector_bearings_deg
 from sitescreen.climate.sector_winds import SectorWinds
 from sitescreen.inputs.wind import SLOTS, Rose, WindTable, assumed_wind
-from sitescreen.judgement.rose_draws import rose_draws, rose_in_words, sector_factors
+from sitescreen.judgement.rose_draws import rose_draws, rose_varied, sector_factors
 from sitescreen.judgement.wind_readings import wind_readings
 from sitescreen.settings import load_defaults
 
@@ -105,5 +105,5 @@ def test_ground_that_is_unknown_upwind_stays_unknown() -> None:
 
 
 def test_what_is_varied_is_said() -> None:
-    assert "none was given" in rose_in_words(assumed_wind(), WIND)
-    assert "90 independent days" in rose_in_words(table((0.0, 0.0)), WIND)
+    assert "none was given" in rose_varied(assumed_wind(), WIND).in_full
+    assert "90 independent days" in rose_varied(table((0.0, 0.0)), WIND).in_full

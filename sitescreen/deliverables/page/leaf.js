@@ -37,7 +37,7 @@ const leaf = (() => {
     if (rank === null || best === null || worst === null) return null;
     const range = best === worst ? `${best === rank ? "the same" : page.ordinal(best)} in at least 90 of 100 trials` : `${page.ordinal(best)} to ${page.ordinal(worst)} in 90 of 100 trials`;
     const alike = plots.alike[i] ? ` ${plots.alike[i]} cannot be told apart.` : "";
-    return make("p", { class: "leaf-zone leaf-sure sure" }, `${page.ordinal(rank)}; ${range}, which vary the weights only.${alike}`);
+    return make("p", { class: "leaf-zone leaf-sure sure" }, `${page.ordinal(rank)}; ${range}, which vary ${data.varies}.${alike}`);
   }
 
   function criteria(i) {
