@@ -40,13 +40,9 @@ from sitescreen.judgement.pairs import Compared, compare_for, with_weights
 from sitescreen.judgement.profiles import ZoneProfile, load_profiles, wind_slots
 from sitescreen.judgement.readings import Readings, stack
 from sitescreen.judgement.reasons import Reasons, reasons
-<<<<<<< HEAD
+from sitescreen.judgement.rose_draws import rose_draws, rose_varied
 from sitescreen.judgement.siting import PlotSiting
 from sitescreen.judgement.siting_readings import BlockSuns, Sites, first_sitings, with_siting
-from sitescreen.judgement.rose_draws import rose_draws, rose_in_words
-=======
-from sitescreen.judgement.rose_draws import rose_draws, rose_varied
->>>>>>> 91d1af0 (Words for what the trials vary and leave out, on page, in why and in the record; benchmark of the trials)
 from sitescreen.judgement.sun_readings import sun_notes
 from sitescreen.judgement.sway import sway_notes, sways
 from sitescreen.judgement.waters import waters_disagree
@@ -61,12 +57,7 @@ from sitescreen.terrain.flat_water import together
 
 NOT_MEASURED = (
     "cold air held back by narrows without a closed hollow, and cold air in motion",
-<<<<<<< HEAD
-    "how certain a rank is given the terrain model's error and the wind (the ranges and chances vary the weights only)",
-=======
-    "the best bearing for a building's long axis",
     "how certain a rank is given the terrain model's error (ranges and chances vary the weights and the wind's rose)",
->>>>>>> 91d1af0 (Words for what the trials vary and leave out, on page, in why and in the record; benchmark of the trials)
 )
 
 NOT_CHECKED = (
