@@ -168,7 +168,7 @@ def sun_hours(
     Field
         [h] See :class:`SunField`.
     """
-    every = 360.0 / azimuths * np.arange(azimuths)
+    every: FloatArray = 360.0 / azimuths * np.arange(azimuths, dtype=np.float64)
     sun = SunField(block, elevation.grid, every, settings, clear_share)
     for azimuth in sun.needed_deg:
         sun(azimuth, horizon_tangent(elevation, azimuth))

@@ -55,7 +55,7 @@ def test_an_even_horizon_leaves_the_hours_that_plots_have(lat: float, horizon_de
 
 
 def test_hills_leave_the_hours_that_plots_have() -> None:
-    """Real horizons from 36 directions against exact ones from 72: within 3 % at the worst plot, half a per cent in all."""
+    """Real horizons from 36 directions against exact ones: within 3 % at the worst plot, 0.5 % in all."""
     block, grid = small_grid(37.2, -2.0, 240)
     row, col = np.mgrid[:240, :240]
     heights = 400.0 * np.sin(row / 25.0) * np.cos(col / 31.0) + 150.0 * np.sin(col / 9.0)
@@ -78,8 +78,9 @@ def test_true_north_is_kept_3_degrees_off_the_central_meridian_at_20_degrees() -
     straight = hours_above(42.0, 20.0, 0.0, np.arange(360) * 1.0, SUN)
     turned = hours_above(42.0, 20.0, turn, np.arange(360) * 1.0, SUN)
     assert turn == pytest.approx(1.03, abs=0.01)
-    assert turned[:, 0] == pytest.approx(np.roll(straight, -1, axis=0)[:, 0], abs=0.12 * straight.max())
-    middle = [(table[:, 0] * np.arange(360))[40:140].sum() / table[40:140, 0].sum() for table in (straight, turned)]
+    # the morning's sun below 20°, which stands between 60° and 130° all the year
+    low = [(table[:, 0] - table[:, 273])[:180] for table in (straight, turned)]
+    middle = [(one * np.arange(180)).sum() / one.sum() for one in low]
     assert middle[0] - middle[1] == pytest.approx(turn, abs=0.02)
 
 
