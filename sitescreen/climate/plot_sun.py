@@ -90,13 +90,15 @@ def morning_share(path: SunPath) -> FloatArray:
 class MonthlySun(NamedTuple):
     """The sun of n plots on the mean day of each month; float64 arrays of shape (n, 12), NaN where unknown.
 
-    ``hours``: of sun [h a day]. ``morning_hours``: those before the sun stands highest [h a day]. ``west_wall_kwh_m2``:
+    ``hours``: of sun [h a day]. ``morning_hours``: those before the sun stands highest [h a day].
+    ``open_morning_hours``: the same on open level ground [h a day]. ``west_wall_kwh_m2``:
     light on a west wall, afternoons [kWh/m² a day]. ``ground_kwh_m2``: on the plot's ground [kWh/m² a day].
     ``first_h``, ``last_h``: clock hours of the first and the last sun, clouds left aside [h]; NaN where none.
     """
 
     hours: FloatArray
     morning_hours: FloatArray
+    open_morning_hours: FloatArray
     west_wall_kwh_m2: FloatArray
     ground_kwh_m2: FloatArray
     first_h: FloatArray
@@ -145,30 +147,34 @@ def _add_month_sums(out: MonthlySun, rows: NDArray[np.int64], path: SunPath, sun
     )
     towards = np.stack([np.cos(height) * np.sin(azimuth), np.cos(height) * np.cos(azimuth), np.sin(height)], axis=-1)
     skyline = suns.skyline_deg[rows]
-    sums = np.empty((len(rows), 12, 6))
-    edges = np.empty((len(rows), 12, 2))
+    count = len(rows)
+    # a plot more, on open level ground
+    lines, normals = np.vstack([skyline, np.zeros_like(skyline[:1])]), np.vstack([suns.normal[rows], [[0.0, 0.0, 1.0]]])
+    sums = np.empty((count + 1, 12, 6))
+    edges = np.empty((count + 1, 12, 2))
     in_bands(
         month_sums,
-        len(rows),
-        clearance_deg(path, skyline),
+        count + 1,
+        clearance_deg(path, lines),
         weights,
         towards,
         beam,
-        suns.normal[rows],
+        normals,
         path.hour,
         path.step_h,
         sums,
         edges,
     )
-    hours, morning_hours, west_beam, level_day, level_afternoon, ground_beam = np.moveaxis(sums, -1, 0)
+    hours, morning_hours, west_beam, level_day, level_afternoon, ground_beam = np.moveaxis(sums[:count], -1, 0)
     diffuse = path.diffuse_w_m2 * path.step_h / 1000.0
     diffuse_day, diffuse_afternoon = diffuse.sum(axis=1), (diffuse * (1.0 - morning)).sum(axis=1)
     wall = wall_sky_view(skyline, WEST_DEG)[:, None]
     view = suns.sky_view[rows][:, None]
     out.hours[rows] = hours
     out.morning_hours[rows] = morning_hours
+    out.open_morning_hours[rows] = sums[count, :, 1]
     out.west_wall_kwh_m2[rows] = (
         west_beam + diffuse_afternoon * wall + albedo * (1.0 - wall) * (level_afternoon + diffuse_afternoon)
     )
     out.ground_kwh_m2[rows] = ground_beam + diffuse_day * view + albedo * (1.0 - view) * (level_day + diffuse_day)
-    out.first_h[rows], out.last_h[rows] = edges[..., 0], edges[..., 1]
+    out.first_h[rows], out.last_h[rows] = edges[:count, :, 0], edges[:count, :, 1]

@@ -266,6 +266,13 @@ MORE: Mapping[str, Column] = {
         _number("sea_km", 2, "km", "to the sea", "Distance to the nearest sea shore, creeks included."),
         _number("lake_km", 2, "km", "to a lake", "Distance to the lake whose breeze reaches the plot most."),
         _number("lake_width_km", 1, "km", "width of the lake", "Width of that lake."),
+        _number(
+            "morning_sun_share",
+            2,
+            "0–1",
+            "share of morning sun",
+            "How much of the cool season's morning sun on open level ground gets past the hills.",
+        ),
         _text("sun_first_by_month", "first sun by month", "Clock times of the first sun, January to December."),
         _text("sun_last_by_month", "last sun by month", "Clock times of the last sun, January to December."),
         _text("cool_months", "cool season", "The months counted as its cool season."),

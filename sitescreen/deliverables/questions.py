@@ -73,7 +73,13 @@ ASKED = (
         "Hollows without an outlet, where cold air lies on calm clear nights. "
         "Cold air held back by narrows, or passing through, is not yet seen.",
     ),
-    Asked("sun", "Sun?", "Sun", "Open sky and the way the ground faces. Hours of sun are not yet measured."),
+    Asked(
+        "sun",
+        "Sun?",
+        "Sun",
+        "When the sun gets past the ground around: hours of it, first on cool-season mornings where those are cold, "
+        "and its light on west walls where afternoons are hot. Under a clear sky, unless clouds were given.",
+    ),
     Asked("ground", "Can it be built on?", "Ground", "How steep the ground is, and whether water could stand on it."),
     Asked("own", "Own criteria", "Own", "Criteria that were added for this screening."),
 )
@@ -89,6 +95,10 @@ PLAIN: Mapping[str, tuple[tuple[str, Curve, str], ...]] = {
     ),
     "ground": (
         ("slope_deg", ((0.0, 100.0), (3.0, 80.0), (6.0, 60.0), (9.0, 40.0), (14.0, 20.0), (20.0, 0.0)), "Slope"),
+    ),
+    "sun": (
+        ("sun_year_h", ((2600.0, 0.0), (3200.0, 20.0), (3600.0, 40.0), (3850.0, 60.0), (4050.0, 80.0), (4200.0, 100.0)),
+         "Hours of sun in a year"),
     ),
 }  # fmt: skip
 """What a question shows where no criterion's own reading is there as a field. The classes are ours, for the eye only:

@@ -6,7 +6,7 @@ from numpy.typing import NDArray
 
 FloatArray = NDArray[np.float64]
 
-DERIVED_READINGS = {"facing_ns": ("slope_deg", "aspect_deg"), "sky_hidden_share": ("slope_deg", "sky_view")}
+DERIVED_READINGS = {"facing_ns": ("slope_deg", "aspect_deg")}
 """Each derived reading with the readings that it follows from."""
 
 FULL_FACING_DEG = 10.0
@@ -31,8 +31,8 @@ def facing_ns(slope_deg: FloatArray, aspect_deg: FloatArray) -> FloatArray:
 
     Notes
     -----
-    A simple stand-in until the hours of sun are measured: houses set along the contour then face north and south, and
-    near the equator those faces take least of the low sun of morning and evening.
+    Houses set along the contour then face north and south, and near the equator those faces take least of the low sun
+    of morning and evening. The sun on the ground itself is measured apart.
     """
     slope = np.asarray(slope_deg, dtype=np.float64)
     aspect = np.asarray(aspect_deg, dtype=np.float64)
@@ -43,35 +43,9 @@ def _facing_strength(slope_deg: FloatArray) -> FloatArray:
     return np.asarray(np.clip(slope_deg / FULL_FACING_DEG, 0.0, 1.0))
 
 
-def sky_hidden_share(slope_deg: FloatArray, sky_view: FloatArray) -> FloatArray:
-    """Share of the sky that the ground around hides, beyond what the plot's own slope takes.
-
-    Parameters
-    ----------
-    slope_deg : array, shape (n,)
-        Mean slope. [°]
-    sky_view : array, shape (n,)
-        Sky view factor with the slope's own horizon, 0–1.
-
-    Returns
-    -------
-    float64 array, shape (n,)
-        (1 + cos slope)/2 − sky view, at least 0. An open slope sees (1 + cos slope)/2 of the sky (Dozier & Frew 1990,
-        IEEE Trans. Geosci. Remote Sens. 28:963–969, from memory), so this is 0 there, and slope does not count twice.
-    """
-    slope = np.asarray(slope_deg, dtype=np.float64)
-    open_slope = 0.5 * (1.0 + np.cos(np.radians(slope)))
-    # np.maximum keeps NaN
-    return np.asarray(np.maximum(open_slope - np.asarray(sky_view, dtype=np.float64), 0.0))
-
-
 def with_derived(readings: pd.DataFrame) -> pd.DataFrame:
     """The readings with the derived columns added; the table handed in stays as it is."""
-    slope = _column(readings, "slope_deg")
-    return readings.assign(
-        facing_ns=facing_ns(slope, _column(readings, "aspect_deg")),
-        sky_hidden_share=sky_hidden_share(slope, _column(readings, "sky_view")),
-    )
+    return readings.assign(facing_ns=facing_ns(_column(readings, "slope_deg"), _column(readings, "aspect_deg")))
 
 
 def possible_range(reading: str, readings: pd.DataFrame) -> tuple[FloatArray, FloatArray]:

@@ -35,6 +35,11 @@ MEASURED_READINGS = (
     "cold_pool_depth_m",
     "cold_deficit_k",
     "sky_view",
+    "sun_cool_morning_h",
+    "morning_sun_share",
+    "sun_year_h",
+    "west_load_kwh_m2",
+    "cool_gain_kwh_m2",
     "pond_depth_m",
     "area_ha",
 )

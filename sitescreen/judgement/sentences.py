@@ -59,7 +59,7 @@ def facts(row: Mapping[str, Any]) -> dict[str, Any]:
         ("buildable_share", "buildable_pct"),
         ("share_in_water", "water_pct"),
         ("wind_outside_share", "steep_wind_pct"),
-        ("sky_hidden_share", "hidden_pct"),
+        ("morning_sun_share", "morning_sun_pct"),
         ("known_weight_share", "known_pct"),
     ):
         if share in known:
@@ -68,6 +68,8 @@ def facts(row: Mapping[str, Any]) -> dict[str, Any]:
         if ratio in known:
             told[f"more_{name}"] = 100.0 * (known[ratio] - 1.0)
             told[f"less_{name}"] = 100.0 * (1.0 - known[ratio])
+    if "morning_sun_share" in known:
+        told["morning_lost_pct"] = 100.0 * (1.0 - known["morning_sun_share"])
     if "slope_deg" in known:
         told["slope_pct"] = 100.0 * math.tan(math.radians(known["slope_deg"]))
     if "rise_m" in known:

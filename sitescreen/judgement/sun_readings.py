@@ -18,6 +18,7 @@ BoolArray = NDArray[np.bool_]
 
 SUN_COLUMNS = (
     "sun_cool_morning_h",
+    "morning_sun_share",
     "sun_year_h",
     "west_load_kwh_m2",
     "cool_gain_kwh_m2",
@@ -28,6 +29,7 @@ SUN_COLUMNS = (
 MONTH_NAMES = ("Jan", "Feb", "Mar", "Apr", "May", "Jun", "Jul", "Aug", "Sep", "Oct", "Nov", "Dec")
 
 NO_GROUND = "the terrain model has no data under part of the plot"
+NO_MORNING = "the table of clouds leaves no morning sun in the cool season"
 NO_SUN = "the ground around hides the sun all day"
 
 
@@ -43,16 +45,21 @@ def with_sun(readings: Readings, suns: PlotSkies, sun: MonthlySun) -> Readings:
     Returns
     -------
     Readings
-        With ``sun_cool_morning_h`` (hours of sun before it stands highest, a day of the cool season), ``sun_year_h``
-        (a year), ``west_load_kwh_m2`` (light on a west wall, an afternoon of the hot season), ``cool_gain_kwh_m2``
-        (light on the plot's ground, a day of the cool season), ``sun_first_cool_h`` and ``sun_last_cool_h`` (clock
-        hours of the first and last sun, cool season), ``sun_first_by_month`` and ``sun_last_by_month`` (twelve clock
-        times as text), ``cool_months``, ``hot_months`` (as text). Hours are of clear sky where no table of clouds was
-        given, else of sun that clouds leave.
+        With ``sun_cool_morning_h`` (hours of sun before it stands highest, a day of the cool season),
+        ``morning_sun_share`` (the same against open level ground, so that neither clouds nor latitude count),
+        ``sun_year_h`` (a year), ``west_load_kwh_m2`` (light on a west wall, an afternoon of the hot season),
+        ``cool_gain_kwh_m2`` (light on the plot's ground, a day of the cool season), ``sun_first_cool_h`` and
+        ``sun_last_cool_h`` (clock hours of the first and last sun, cool season), ``sun_first_by_month`` and
+        ``sun_last_by_month`` (twelve clock times as text), ``cool_months``, ``hot_months`` (as text). Hours are of
+        clear sky where no table of clouds was given, else of sun that clouds leave.
     """
     values, why = readings.values.copy(), readings.why_unknown.copy()
     seasons = suns.seasons
     values["sun_cool_morning_h"] = season_mean(sun.morning_hours, seasons.cool)
+    open_h = season_mean(sun.open_morning_hours, seasons.cool)
+    morning_h = values["sun_cool_morning_h"].to_numpy(dtype=np.float64)
+    no_morning = open_h <= 0.0
+    values["morning_sun_share"] = np.where(no_morning, np.nan, morning_h / np.where(no_morning, 1.0, open_h))
     values["sun_year_h"] = 365.0 * season_mean(sun.hours, np.ones_like(seasons.cool))
     values["west_load_kwh_m2"] = season_mean(sun.west_wall_kwh_m2, seasons.hot)
     values["cool_gain_kwh_m2"] = season_mean(sun.ground_kwh_m2, seasons.cool)

@@ -88,7 +88,10 @@ def test_level_ground_of_no_direction_is_nearly_certain() -> None:
         ("upland", "cold_deficit_k", 0.0, 2.0),
         ("upland", "ridge_exposure", 0.7, 1.3),
         ("high_upland", "ridge_exposure", 0.7, 1.3),
-        ("high_upland", "sky_hidden_share", 0.01, 0.1),
+        ("upland", "morning_sun_share", 1.0, 0.8),
+        ("high_upland", "morning_sun_share", 1.0, 0.8),
+        ("hot_arid", "west_load_kwh_m2", 2.3, 3.0),
+        ("savannah", "west_load_kwh_m2", 2.3, 3.0),
         ("upland", "facing_ns", 1.0, -1.0),
     ],
 )

@@ -76,14 +76,16 @@ def test_an_unknown_reading_stands_at_its_worst_for_the_rank(plots: Plots, in_zo
 BLANKED = (
     "slope_deg", "aspect_deg", "buildable_share", "rise_m", "breeze_reach", "ventilation", "ridge_exposure",
     "cold_deficit_k", "cold_pool_depth_m", "sky_view", "pond_depth_m", "shore_distance_km", "cold_pool_kind",
+    "morning_sun_share", "west_load_kwh_m2",
 )  # fmt: skip
 RANGES = {
     "slope_deg": (0, 25), "aspect_deg": (0, 360), "buildable_share": (0, 1), "rise_m": (-60, 200),
     "breeze_reach": (0, 1), "ventilation": (0.2, 2.3), "ridge_exposure": (0.3, 2), "cold_deficit_k": (0, 6),
     "cold_pool_depth_m": (0, 30), "sky_view": (0.6, 1), "pond_depth_m": (0, 6), "shore_distance_km": (0, 60),
+    "morning_sun_share": (0, 1), "west_load_kwh_m2": (0, 5),
 }  # fmt: skip
 MARKED = ("slope_deg", "rise_m", "breeze_reach", "ventilation", "ridge_exposure", "cold_deficit_k", "sky_view",
-          "pond_depth_m", "facing_ns", "sky_hidden_share")  # fmt: skip
+          "pond_depth_m", "facing_ns", "morning_sun_share", "west_load_kwh_m2")  # fmt: skip
 
 
 @st.composite

@@ -56,6 +56,9 @@ def test_no_two_criteria_measure_the_same_thing(profile: ZoneProfile) -> None:
         {"slope_deg", "buildable_share"},
         {"breeze_reach", "shore_distance_km"},
         {"sky_view", "slope_deg"},
+        {"cool_gain_kwh_m2", "slope_deg"},
+        {"sun_cool_morning_h", "morning_sun_share"},
+        {"sun_year_h", "sky_view"},
     ]
     for one, other in combinations([criterion.reading for criterion in profile.criteria], 2):
         assert one != other
