@@ -236,7 +236,7 @@ def _judged(
         settings.readings,
         settings.judgement,
     )
-    table = _table(plots, values, fits, judged, sure, inside.table)
+    table = _table(plots, values, fits, judged, sure, inside.table, unchecked)
     why = reasons(judged, why_unknown, profiles, settings.judgement)
     siting = first_sitings(table["plot"].head(REASONS_RECORDED).tolist(), values, sites)
     return Screening(
@@ -349,7 +349,13 @@ def _deficit(values: pd.DataFrame, zones: ZoneShares, settings: Defaults) -> Any
 
 
 def _table(
-    plots: Any, values: pd.DataFrame, fits: pd.DataFrame, judged: Judged, sure: Certainty, inside: pd.DataFrame
+    plots: Any,
+    values: pd.DataFrame,
+    fits: pd.DataFrame,
+    judged: Judged,
+    sure: Certainty,
+    inside: pd.DataFrame,
+    unchecked: tuple[str, ...],
 ) -> Any:
     """Every plot with its identity, readings, marks and geometry; by rank, those set aside last."""
     import geopandas as gpd
@@ -366,6 +372,7 @@ def _table(
     table = pd.concat(parts, axis=1)
     for column in EMPTY_IN_THIS_VERSION:
         table[column] = np.nan
+    table["not_checked"] = ", ".join(unchecked)  # on every row, since silence reads as safe wherever the row goes
     table = gpd.GeoDataFrame(table, geometry=plots.geometry.to_numpy(), crs="EPSG:4326")
     order = np.argsort(table["rank"].astype("Float64").fillna(np.inf).to_numpy(dtype=np.float64), kind="stable")
     return table.iloc[order].reset_index(drop=True)

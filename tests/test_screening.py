@@ -197,6 +197,13 @@ def test_the_breeze_layer_reads_as_the_plots_do(plain: Screening) -> None:
         assert field.values[row, col] == pytest.approx(table.at[plot, "breeze_reach"], abs=0.01)
 
 
+def test_every_row_says_what_nobody_checked(plain: Screening, run: Run) -> None:
+    assert set(plain.table["not_checked"]) == {", ".join(plain.not_checked)}
+    assert "flood levels" in plain.table["not_checked"].iloc[-1]
+    flood = '[[constraint]]\nname = "flood zone"\nfile = "shore.gpkg"'
+    assert not run(SHORE, flood).table["not_checked"].str.contains("flood").any()
+
+
 def test_the_record_can_be_written_and_names_what_went_in(plain: Screening) -> None:
     record = json.loads(json.dumps(plain.record, allow_nan=True))
     assert {stamp["name"] for stamp in record["inputs"]} == {"ground.tif", "shore.gpkg", "plots.gpkg"}

@@ -342,6 +342,7 @@ MORE: Mapping[str, Column] = {
             "The mark that ranks go by is below this in 5 of 100 trials; empty where it is set aside in so many.",
         ),
         _number("drawn_mark_high", 1, "0–100", "mark in the trials, to", "It is above this in 5 of 100 trials."),
+        _text("not_checked", "not checked", "What nobody has looked at here: its absence from this row means nothing."),
         _text(
             "mahoney",
             "Mahoney indicators",
@@ -413,7 +414,7 @@ def in_slot(name: str) -> Column | None:
     return _number(name, own.decimals, own.unit, f"{own.title}, {when}", f"As “{own.title}”, for the {when}.")
 
 
-def _own(name: str) -> Column | None:
+def _own(name: str, profiles: Mapping[str, "ZoneProfile"]) -> Column | None:
     """The columns of a planner's own constraints and criteria, whose names the brief gives."""
     if name.startswith("metres_to_constraint_"):
         title = name.removeprefix("metres_to_constraint_").replace("_", " ")
@@ -422,7 +423,8 @@ def _own(name: str) -> Column | None:
         title = name.removeprefix("constraint_").replace("_", " ")
         return _whole(name, f"own: {title}", f"1 where your constraint “{title}” speaks against the plot.")
     if name.startswith("own_"):
-        title = name.removeprefix("own_").replace("_", " ")
+        titles = (c.title for profile in profiles.values() for c in profile.criteria if c.reading == name)
+        title = next(titles, name.removeprefix("own_").replace("_", " "))
         return _number(name, 2, "", f"own: {title}", f"What your criterion “{title}” looks at: a column, or metres.")
     return None
 

@@ -30,7 +30,7 @@ _NOT_ON_A_LEAF = {
     "lon", "lat", "outcome", "water_disagrees", "zone_provisional", "zone_missing", "known_weight_share", "cells",
     "share_flat_water", "over_water_m", "group", "best_patch_mark", "worst_patch_mark", "mean_patch_mark",
     "patch_side_m", "rank_low_weights", "rank_high_weights", "rank_low_data", "rank_high_data", "drawn_mark_low",
-    "drawn_mark_high",
+    "drawn_mark_high", "not_checked",
 }  # fmt: skip
 
 

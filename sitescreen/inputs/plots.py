@@ -19,6 +19,7 @@ from sitescreen.inputs.sheet_files import SHEET_ENDINGS, read_sheet
 from sitescreen.inputs.stamps import FileStamp, stamp
 from sitescreen.inputs.vector_files import column_named, read_vector
 from sitescreen.notes import Note
+from sitescreen.settings import load_defaults
 
 ID_COLUMNS = ("plot", "plot_id", "plotid", "plot_no", "id", "parcel", "parcel_id", "site", "site_id", "ref", "code")
 """Columns that are taken as the identifier when none is named, in this order. Case does not matter."""
@@ -135,6 +136,8 @@ def read_plots(
     )
     table = pd.concat([table, own.add_prefix("own:").reset_index(drop=True)], axis=1)
     _summarise(table, point_radius_m, notes)
+    if zone_column is None:
+        notes += _unread_zones(own, file.name)
     return Plots(table, stamp(file, rows.crs.to_string()), tuple(notes))
 
 
@@ -299,6 +302,19 @@ def _outside(geometry: NDArray[np.object_], remarks: NDArray[np.object_], outlin
         elif beyond >= 0.005:
             remarks[row].append(f"{100.0 * beyond:.0f} % of it lies outside the terrain")
     return outcome
+
+
+def _unread_zones(own: pd.DataFrame, file: str) -> list[Note]:
+    """A remark where a column seems to state climate zones and nobody asked for it to be read."""
+    known = {name.replace("_", " ") for name in load_defaults().zones.with_normals}
+    for column in own.columns:
+        stated = [_text(value) for value in own[column]]
+        zones = {one for one in stated if one.casefold().replace("_", " ").replace("-", " ") in known}
+        if zones:
+            text = f"The column “{column}” of {file} seems to state climate zones ({', '.join(sorted(zones)[:3])}). "
+            text += f'They are not used unless the brief says so: [plots] zone = "{column}".'
+            return [Note("warning", "plots", text)]
+    return []
 
 
 def _summarise(table: Any, point_radius_m: float, notes: list[Note]) -> None:

@@ -1,5 +1,6 @@
 """Constraints and criteria of the planner's own, from the brief."""
 
+import hashlib
 import re
 import unicodedata
 from collections.abc import Mapping, Sequence
@@ -35,9 +36,15 @@ _MAY_BE_THOUSANDS = re.compile(r"^[+-]?[1-9]\d{0,2}(,\d{3})+$")
 
 
 def short_name(name: str) -> str:
-    """A name as columns can hold it: "Road, paved" → "road_paved"."""
-    plain = unicodedata.normalize("NFKD", name).encode("ascii", "ignore").decode().lower()
-    short = re.sub(r"[^a-z0-9]+", "_", plain).strip("_")
+    """A name as columns can hold it: "Road, paved" → "road_paved".
+
+    Letters outside the Latin alphabet cannot stand in a column's name; a mark made of the whole name takes their place,
+    so that two such names stay two: "水" → "own_327b54".
+    """
+    folded = unicodedata.normalize("NFKD", name.casefold())
+    short = re.sub(r"[^a-z0-9]+", "_", folded.encode("ascii", "ignore").decode()).strip("_")
+    if any(sign.isalnum() and not sign.isascii() for sign in folded):
+        short = f"{short or 'own'}_{hashlib.sha256(name.encode()).hexdigest()[:6]}"
     return short if short[:1].isalpha() else f"own_{short}".rstrip("_")
 
 

@@ -154,6 +154,18 @@ def test_a_mistyped_column_names_the_nearest(tmp_path: Path) -> None:
         read_plots(file, zone_column="zon")
 
 
+def test_zones_that_nobody_asked_to_use_are_remarked_on(tmp_path: Path) -> None:
+    file = text(tmp_path / "p.csv", "id,Zone,lon,lat\nK1,Hot humid coast,39.5,-4.5\nK2,,39.6,-4.5\n")
+    said = [note for note in read_plots(file).notes if "climate zones" in note.text]
+    assert [note.level for note in said] == ["warning"]
+    assert '[plots] zone = "Zone"' in said[0].text
+    asked = read_plots(file, zone_column="Zone")
+    assert asked.table["zone_given"].tolist() == ["Hot humid coast", ""]
+    assert not any("climate zones" in note.text for note in asked.notes)
+    other = text(tmp_path / "q.csv", "id,zone,lon,lat\nK1,residential,39.5,-4.5\n")
+    assert not any("climate zones" in note.text for note in read_plots(other).notes)
+
+
 # where in the world
 
 

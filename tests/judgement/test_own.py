@@ -1,5 +1,6 @@
 """A planner's own constraints and criteria."""
 
+import re
 from pathlib import Path
 from typing import Any
 
@@ -48,9 +49,18 @@ def roads(tmp_path: Path) -> Path:
 
 
 def test_names_become_columns() -> None:
-    assert [short_name(name) for name in ("Road, paved", "rivière", "2020 flood", "水")] == [
-        "road_paved", "riviere", "own_2020_flood", "own",
+    assert [short_name(name) for name in ("Road, paved", "rivière", "2020 flood", "Straße")] == [
+        "road_paved", "riviere", "own_2020_flood", "strasse",
     ]  # fmt: skip
+
+
+def test_names_in_other_scripts_stay_apart() -> None:
+    names = ("水", "道路", "дорога", "дорога 2", "मार्ग", "سڑک", "Road 道")
+    short = [short_name(name) for name in names]
+    assert len(set(short)) == len(names)
+    assert all(re.fullmatch(r"[a-z][a-z0-9_]*", one) for one in short)
+    assert short[-1].startswith("road_")
+    assert short == [short_name(name) for name in names]
 
 
 def test_a_constraint_speaks_within_its_buffer(roads: Path, plots: Any) -> None:
