@@ -382,7 +382,10 @@ def columns_of(table: "pd.DataFrame", profiles: Mapping[str, "ZoneProfile"]) -> 
         *CONTRACT,
         *(_membership(name, profiles) for name in memberships),
         *(MORE.get(name) or _mark(name, profiles.values()) for name in marks),
-        *(MORE.get(name) or in_slot(name) or _own(name) or _unknown_to_us(name, table[name]) for name in others),
+        *(
+            MORE.get(name) or in_slot(name) or _own(name, profiles) or _unknown_to_us(name, table[name])
+            for name in others
+        ),
     )
 
 
