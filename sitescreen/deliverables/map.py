@@ -29,9 +29,8 @@ if TYPE_CHECKING:
     from sitescreen.screening import Screening
 
 SCRIPTS = (
-    "start.js", "weigh.js", "words.js", "frame.js", "landmarks.js", "plan.js", "ladder.js", "leaf.js", "ranking.js",
-    "asks.js",
-    "page.js",
+    "start.js", "weigh.js", "words.js", "frame.js", "landmarks.js", "plan.js", "ladder.js", "leaf.js", "around.js",
+    "section.js", "ranking.js", "asks.js", "page.js",
 )  # fmt: skip
 
 _DANGEROUS = {"&": "\\u0026", "<": "\\u003c", ">": "\\u003e", "\u2028": "\\u2028", "\u2029": "\\u2029"}

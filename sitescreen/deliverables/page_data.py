@@ -12,6 +12,7 @@ from sitescreen.deliverables.landmarks import landmarks
 from sitescreen.deliverables.questions import OVERALL, Asked, View, question_marks
 from sitescreen.deliverables.sheet import Sheet
 from sitescreen.deliverables.steps import in_steps
+from sitescreen.deliverables.strips import strips
 from sitescreen.deliverables.sureness import above_breeze, alike, varies
 from sitescreen.deliverables.table import value_of
 from sitescreen.deliverables.weighing import weighing
@@ -132,6 +133,7 @@ def page_data(
             screening.siting[plot].for_page() if plot in screening.siting else None
             for plot in table["plot"].head(MOST_SITINGS).tolist()
         ],
+        "strips": strips(screening),
         "reasons": [
             _reasons(screening.reasons.get(plot)) if i < MOST_LEAVES else None
             for i, plot in enumerate(table["plot"].tolist())

@@ -1,12 +1,11 @@
 """An invented screening, to test deliverables without running one: twelve plots between a sea and a ridge."""
 
-import dataclasses
 import os
 import shutil
 import tempfile
 import time
 from collections.abc import Callable, Iterator, Mapping
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from types import SimpleNamespace
 from typing import Any
 
@@ -17,6 +16,9 @@ import pytest
 from pyproj import Transformer
 from shapely.geometry import Polygon
 
+from sitescreen.climate.breeze_section import Section
+from sitescreen.climate.drawn_sun import PlotSun
+from sitescreen.climate.sector_winds import SectorWinds
 from sitescreen.climate.zones import ZoneShares
 from sitescreen.deliverables.columns import columns_of
 from sitescreen.deliverables.map import write_map
@@ -48,7 +50,10 @@ class Invented:
     zones: ZoneShares
     patches: Any = None
     context: tuple[Any, ...] = ()
-    siting: Mapping[str, PlotSiting] = dataclasses.field(default_factory=dict)
+    siting: Mapping[str, PlotSiting] = field(default_factory=dict)
+    winds: SectorWinds = field(default_factory=lambda: winds_over(()))
+    sections: Mapping[str, Section] = field(default_factory=dict)
+    suns: Mapping[str, PlotSun] = field(default_factory=dict)
 
     def with_(self, **changes: Any) -> "Invented":
         """The same with some parts replaced; another table is judged anew."""
@@ -70,18 +75,18 @@ def ground(grid: Grid) -> dict[str, Field]:
     shore_km = inland * grid.cols * grid.cell_size_m / 1000
     rise = height - height.mean(axis=1, keepdims=True)
 
-    def field(values: Any, unit: str, what: str) -> Field:
+    def made(values: Any, unit: str, what: str) -> Field:
         return Field(np.asarray(values, np.float32) + np.zeros(grid.shape, np.float32), grid, unit, what)
 
     wind = np.clip(1 + rise / 600, 0.3, 2.2)
     return {
-        "elevation_m": field(height, "m", "Height of the ground"),
-        "slope_deg": field(np.degrees(np.arctan(np.hypot(north, east))), "°", "Slope"),
-        "shore_distance_km": field(shore_km, "km", "Distance to the nearest shore"),
-        "breeze_reach": field(np.exp(-shore_km / 9), "1", "Share of the daytime breeze that gets there"),
-        "ventilation": field(wind, "1", "Mean wind over that of open level ground"),
-        "ridge_exposure": field(wind**1.2, "1", "Strong wind over that of open level ground"),
-        "cold_deficit_k": field(np.where(pit > 0.2, 4 * pit, 0), "K", "Colder than open ground on a clear calm night"),
+        "elevation_m": made(height, "m", "Height of the ground"),
+        "slope_deg": made(np.degrees(np.arctan(np.hypot(north, east))), "°", "Slope"),
+        "shore_distance_km": made(shore_km, "km", "Distance to the nearest shore"),
+        "breeze_reach": made(np.exp(-shore_km / 9), "1", "Share of the daytime breeze that gets there"),
+        "ventilation": made(wind, "1", "Mean wind over that of open level ground"),
+        "ridge_exposure": made(wind**1.2, "1", "Strong wind over that of open level ground"),
+        "cold_deficit_k": made(np.where(pit > 0.2, 4 * pit, 0), "K", "Colder than open ground on a clear calm night"),
     }
 
 
@@ -122,8 +127,8 @@ def build(
         "lat": lat,
         "shore_kind": "sea",
     })  # fmt: skip
-    for key, field in fields.items():
-        table[key] = field.values[rows, cols].astype(np.float64)
+    for key, one in fields.items():
+        table[key] = one.values[rows, cols].astype(np.float64)
     table["cold_pool_kind"] = np.where(table["cold_deficit_k"] > 0, "closed", "none")
     table["pond_depth_m"] = 0.0
     table["onshore_from_deg"] = 92.4
@@ -176,6 +181,46 @@ def build(
         {"version": "0.1.0", "inputs": {"terrain": [{"name": "tile.tif", "sha256": "00"}]}, "seconds": {"read": 0.1}},
         *judgement_on(table, profiles),
     )  # fmt: skip
+
+
+def winds_over(plots: tuple[str, ...]) -> SectorWinds:
+    """Winds that double from the east and are halved from the west."""
+    bearing = np.arange(16) * 22.5
+    ratio = np.tile(1.25 + 0.75 * np.sin(np.radians(bearing)), (len(plots), 1))
+    return SectorWinds(plots, bearing, ratio, np.ones_like(ratio), ratio - 1.0)
+
+
+def sun_over() -> PlotSun:
+    """A sun that rises due east at 6, stands in the north at noon and sets due west; a wall of 30° from 45° to 90°."""
+    hour = np.arange(96) * 0.25 + 0.125
+    height = np.tile(60.0 * np.sin(np.pi * (hour - 6.0) / 12.0), (12, 1)) - np.abs(np.arange(12) - 5.5)[:, None]
+    azimuth = np.tile((90.0 - 15.0 * (hour - 6.0)) % 360.0, (12, 1))
+    skyline = np.where((np.arange(72) >= 9) & (np.arange(72) < 18), 30.0, 2.0).astype(np.float32)
+    lit = (height > 0) & (height > np.interp(azimuth, np.arange(73) * 5.0, np.append(skyline, skyline[0])))
+    first = np.array([hour[row].min() for row in lit])
+    last = np.array([hour[row].max() for row in lit])
+    state = np.where(lit, 2, np.where(height > 0, 1, 0)).astype(np.uint8)[:, ::4]
+    cool, hot = np.arange(12) < 3, np.arange(12) > 8
+    return PlotSun(skyline, hour, height, azimuth, lit, first, last, state, cool, hot, 3.0, clock_is_assumed=True)
+
+
+def drawn(made: Invented) -> Invented:
+    """The same with sun, wind and a section to the shore for every plot."""
+    plots = made.table["plot"].tolist()
+    sun = sun_over()
+    way = np.linspace(0, 6000, 61, dtype=np.float32)
+    ground = (200 - way / 30 + 90 * np.exp(-(((way - 1500) / 200) ** 2))).astype(np.float32)
+    table = made.table.assign(offshore_from_deg=272.4)
+    return made.with_(
+        table=table, winds=winds_over(tuple(plots)), suns=dict.fromkeys(plots, sun),
+        sections=dict.fromkeys(plots, Section(way, ground, 6000.0, 92.0, 1500.0, 240.0)),
+    )  # fmt: skip
+
+
+@pytest.fixture(scope="session")
+def with_drawings() -> Invented:
+    """The usual one, with what the leaves draw."""
+    return drawn(build())
 
 
 def judgement_on(table: pd.DataFrame, profiles: Mapping[str, Any]) -> tuple[Judged, ZoneShares]:
