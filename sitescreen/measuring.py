@@ -16,6 +16,7 @@ from sitescreen.climate.normals import plot_climate
 from sitescreen.climate.plot_sun import PlotSkies, mean_plane, monthly_sun, plot_skies
 from sitescreen.climate.seasons import seasons_from_normals, seasons_without_normals
 from sitescreen.climate.sector_winds import SectorWinds, sector_winds
+from sitescreen.climate.sun_field import sun_hours
 from sitescreen.climate.wind import FIELD_READINGS, Wanted, wind_fields
 from sitescreen.climate.wind_cover import wind_cover
 from sitescreen.grid import Field, Grid
@@ -152,6 +153,7 @@ def measure(
     with progress.step("Measuring the sun"):
         suns = _suns(plots, ground, coverage, readings, inputs, settings)
         readings = with_sun(readings, suns, monthly_sun(suns, settings.sun))
+        sunshine = sun_hours(ground.elevation, block, settings.terrain.sky_azimuths, settings.sun, suns.clear_share)
     fields = {
         "elevation_m": ground.elevation,
         "slope_deg": ground.slope,
@@ -159,6 +161,7 @@ def measure(
         "buildable_chance": ground.buildable,
         "rise_m": ground.rise,
         "sky_view": ground.sky_view,
+        "sun_year_h": sunshine,
         "hollow_depth_m": pools.depth_m,
         # linear flow over hills does not hold on steep ground: no figure is drawn there
         **{name: _masked(field, steep) for name, field in wind.items()},

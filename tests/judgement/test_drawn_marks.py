@@ -80,7 +80,7 @@ def test_each_draw_is_judged_as_a_run_of_its_own(plots: Plots) -> None:
 
 
 def test_data_without_error_spread_nothing(plots: Plots, in_zone: InZone) -> None:
-    readings = plots({}, {"slope_deg": 6.0}, {"ridge_exposure": 1.4}, {"sky_view": 0.9})
+    readings = plots({}, {"slope_deg": 6.0}, {"ridge_exposure": 1.4}, {"morning_sun_share": 0.8})
     zones = in_zone(readings, "upland")
     same = ReadingDraws({"slope_deg": np.repeat(readings[["slope_deg"]].to_numpy(), DRAWS, axis=1)})
     found, alone = sure_of(readings, zones, same).table, sure_of(readings, zones, NO_DRAWS).table
@@ -150,7 +150,7 @@ def test_a_plot_whose_slope_nobody_knows_stays_set_aside_in_every_draw(plots: Pl
 
 
 def test_both_kinds_of_doubt_are_told_apart_and_together(plots: Plots, in_zone: InZone) -> None:
-    readings = plots({}, {"slope_deg": 4.0}, {"ridge_exposure": 1.2}, {"sky_view": 0.9, "slope_deg": 3.0})
+    readings = plots({}, {"slope_deg": 4.0}, {"ridge_exposure": 1.2}, {"morning_sun_share": 0.8, "slope_deg": 3.0})
     zones = in_zone(readings, "upland")
     draws = ReadingDraws({"slope_deg": np.random.default_rng(4).uniform(0.0, 10.0, (4, DRAWS))})
     sure = sure_of(readings, zones, draws)
