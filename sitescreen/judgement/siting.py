@@ -62,6 +62,8 @@ class PlotSiting:
         Bearing of the long axis, 0–179. [°]
     decided_by : str
         "sun", "wind" or "both".
+    sun_axis_deg, wind_axis_deg : float or None
+        Bearing that each would have alone; None where all bearings are alike to it. [°]
     wind : str
         "sea breeze", "lake breeze", "wind", or "" where none is known.
     wind_wanted : bool
@@ -87,6 +89,8 @@ class PlotSiting:
 
     axis_deg: int
     decided_by: str
+    sun_axis_deg: float | None
+    wind_axis_deg: float | None
     wind: str
     wind_wanted: bool
     wind_from_deg: float | None
@@ -140,7 +144,8 @@ def plot_sitings(
     seasons_assumed = ground.suns.seasons.source == ASSUMED
     for some, costs in axis_costs(ground, shares, rows, albedo, settings):
         axis = best_bearing(costs.sun + costs.wind, settings.tie_cost)
-        decided = decided_by(costs, axis, settings.tie_cost)
+        alone = best_alone(costs, settings.tie_cost)
+        decided = decided_by(axis, alone)
         leading = zones[shares.to_numpy(dtype=np.float64)[some].argmax(axis=1)]
         slope, aspect = (values[name].to_numpy(dtype=np.float64)[some] for name in ("slope_deg", "aspect_deg"))
         cool_reach, hot_reach = _reaches(ground, some, axis, slope, aspect, settings)
@@ -153,6 +158,8 @@ def plot_sitings(
             hint = PlotSiting(
                 axis_deg=int(axis[k]),
                 decided_by=decided[k],
+                sun_axis_deg=_or_none(alone.sun_deg[k]),
+                wind_axis_deg=_or_none(alone.wind_deg[k]),
                 wind=_wind(costs, k, str(values["shore_kind"].iat[row])),
                 wind_wanted=not is_unwanted,
                 wind_from_deg=_or_none(costs.wind_from_deg[k]),
@@ -174,7 +181,21 @@ def plot_sitings(
     return out
 
 
-def decided_by(costs: AxisCosts, axis_deg: FloatArray, tie: float) -> list[str]:
+class BestAlone(NamedTuple):
+    """The bearing that each would have alone, arrays of shape (n,). [°] NaN where all bearings are alike to it."""
+
+    sun_deg: FloatArray
+    wind_deg: FloatArray
+
+
+def best_alone(costs: AxisCosts, tie: float) -> BestAlone:
+    """The bearings that sun and wind would have without one another; of those within ``tie`` the nearest to 90°."""
+    return BestAlone(
+        *(np.where(np.ptp(part, axis=1) > tie, best_bearing(part, tie), np.nan) for part in (costs.sun, costs.wind))
+    )
+
+
+def decided_by(axis_deg: FloatArray, alone: BestAlone) -> list[str]:
     """Which of the two the axis serves: that whose own best bearing is nearer to it.
 
     Returns
@@ -183,11 +204,8 @@ def decided_by(costs: AxisCosts, axis_deg: FloatArray, tie: float) -> list[str]:
         "both" where it is equally near to either, or within 5° of both. Where no wind is known, or all bearings are
         alike to it, the sun decides; and the other way round.
     """
-    away = []
-    for part in (costs.sun, costs.wind):
-        turned = np.abs(best_bearing(part, tie) - axis_deg)
-        away.append(np.where(np.ptp(part, axis=1) > tie, np.minimum(turned, 180.0 - turned), np.inf))
-    sun, wind = away
+    turned = (np.abs(best - axis_deg) for best in alone)
+    sun, wind = (np.nan_to_num(np.minimum(away, 180.0 - away), nan=np.inf) for away in turned)
     both = (sun == wind) & np.isfinite(sun) | (sun <= _AT_BEST_DEG) & (wind <= _AT_BEST_DEG)
     return [str(who) for who in np.where(both, "both", np.where(wind < sun, "wind", "sun"))]
 
@@ -277,4 +295,4 @@ def _or_none(value: float) -> float | None:
     return None if math.isnan(value) else round(float(value), 1)
 
 
-__all__: Sequence[str] = ["Eave", "PlotSiting", "Turn", "decided_by", "plot_sitings"]
+__all__: Sequence[str] = ["BestAlone", "Eave", "PlotSiting", "Turn", "best_alone", "decided_by", "plot_sitings"]

@@ -79,7 +79,10 @@ def _because(hint: "PlotSiting", wind_assumed: bool) -> str:
     if not hint.wind_wanted:
         met += " and is to be kept off"
     words = {"sun": "The sun decided", "wind": f"The {hint.wind} decided", "both": f"Sun and {hint.wind} decided alike"}
-    return f"{words[hint.decided_by]}; {met}."
+    alone = ""
+    if hint.sun_axis_deg is not None and hint.wind_axis_deg is not None:
+        alone = f" (for the sun alone {hint.sun_axis_deg:.0f}°, for the {hint.wind} alone {hint.wind_axis_deg:.0f}°)"
+    return f"{words[hint.decided_by]}{alone}; {met}."
 
 
 def _turning(hint: "PlotSiting") -> str:

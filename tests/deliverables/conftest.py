@@ -387,6 +387,8 @@ def hint() -> PlotSiting:
     return PlotSiting(
         axis_deg=77,
         decided_by="sun",
+        sun_axis_deg=90.0,
+        wind_axis_deg=16.0,
         wind="sea breeze",
         wind_wanted=True,
         wind_from_deg=106.0,

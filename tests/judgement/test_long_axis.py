@@ -16,7 +16,7 @@ from sitescreen.judgement.long_axis import (
     long_axis,
     main_bearing,
 )
-from sitescreen.judgement.siting import decided_by
+from sitescreen.judgement.siting import best_alone, decided_by
 from sitescreen.settings import SitingSettings, SitingWeights, load_defaults
 
 ClearYear = Callable[..., SunPath]
@@ -173,7 +173,7 @@ def test_wind_alike_from_all_sides_turns_nothing(clear_year: ClearYear, axis_gro
     found = costs(axis_ground(clear_year(-4.0), flow=np.ones(16)), shares(hot_arid=1.0))
     assert np.ptp(found.wind[0]) < 1e-9
     assert np.isnan(found.wind_from_deg[0])
-    assert decided_by(found, np.array([90.0]), SETTINGS.tie_cost) == ["sun"]
+    assert decided_by(np.array([90.0]), best_alone(found, SETTINGS.tie_cost)) == ["sun"]
 
 
 def test_two_zones_blend_their_costs(clear_year: ClearYear, axis_ground: AxisGround) -> None:

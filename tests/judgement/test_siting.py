@@ -9,7 +9,7 @@ import pytest
 
 from sitescreen.climate.sun_path import SunPath
 from sitescreen.judgement.long_axis import AxisCosts, SitingGround, axis_costs
-from sitescreen.judgement.siting import PlotSiting, decided_by, plot_sitings
+from sitescreen.judgement.siting import PlotSiting, best_alone, decided_by, plot_sitings
 from sitescreen.judgement.siting_words import along, point
 from sitescreen.settings import SitingWeights, load_defaults
 
@@ -67,6 +67,8 @@ def test_sun_decides_where_no_wind_is_known_and_says_so(clear_year: ClearYear, a
 def test_breeze_is_named_with_its_bearing_and_angle(clear_year: ClearYear, axis_ground: AxisGround) -> None:
     found = siting(axis_ground(clear_year(-4.0), breeze_from_deg=150.0), "hot_humid_coast", shore="sea")
     assert (found.axis_deg, found.wind, found.wind_from_deg, found.wind_incidence_deg) == (90, "sea breeze", 150, 30)
+    assert (found.sun_axis_deg, found.wind_axis_deg) == (90, 60)
+    assert "(for the sun alone 90°, for the sea breeze alone 60°)" in found.says[0]
     assert "the sea breeze from the SSE meets the long wall 30° off square" in found.says[0]
 
 
@@ -94,9 +96,12 @@ def test_the_nearer_of_two_bests_decided(sun_best: int, wind_best: int, axis_deg
 
     blank = np.zeros((1, 180))
     costs = AxisCosts(valley(sun_best), valley(wind_best), blank, blank, blank, np.zeros(1), np.zeros(1, dtype=bool))
-    assert decided_by(costs, np.array([float(axis_deg)]), 1e-3) == [who]
-    assert decided_by(costs._replace(wind=blank), np.array([float(axis_deg)]), 1e-3) == ["sun"]
-    assert decided_by(costs._replace(sun=blank), np.array([float(axis_deg)]), 1e-3) == ["wind"]
+    axis = np.array([float(axis_deg)])
+    alone = best_alone(costs, 1e-3)
+    assert (alone.sun_deg[0], alone.wind_deg[0]) == (sun_best, wind_best)
+    assert decided_by(axis, alone) == [who]
+    assert decided_by(axis, best_alone(costs._replace(wind=blank), 1e-3)) == ["sun"]
+    assert decided_by(axis, best_alone(costs._replace(sun=blank), 1e-3)) == ["wind"]
 
 
 @pytest.mark.parametrize(
