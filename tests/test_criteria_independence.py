@@ -86,11 +86,14 @@ def test_no_two_criteria_tell_the_same(screened: Screening, zone: str) -> None:
     one = screened.judged.by_zone[zone]
     marks = one.marks[[str(plot).startswith(f"{zone}-") for plot in one.marks.index]]
     assert len(marks) > 0.9 * CELLS, "the demo region lacks ground of that zone"
+    readings = screened.judged.facts.loc[marks.index]
+    columns = {f"mark_{one.name}": one.column for one in screened.profiles[zone].criteria}
     alike = {}
     for a, b in combinations(marks.columns, 2):
-        both = marks[[a, b]].dropna()
-        if len(both) > 0.5 * CELLS and both.std().min() > 0.0:
-            alike[a, b] = float(np.corrcoef(both[a], both[b])[0, 1])
+        for what, table in (("marks", marks[[a, b]]), ("readings", readings[[columns[a], columns[b]]])):
+            both = table.astype(np.float64).dropna()
+            if len(both) > 0.5 * CELLS and both.std().min() > 0.0:
+                alike[what, a, b] = float(np.corrcoef(both.to_numpy().T)[0, 1])
     too_much = {pair: round(r, 2) for pair, r in alike.items() if abs(r) > MOST_ALIKE}
     assert alike
     assert not too_much

@@ -64,7 +64,7 @@ def facts(row: Mapping[str, Any]) -> dict[str, Any]:
     ):
         if share in known:
             told[name] = 100.0 * known[share]
-    for ratio, name in (("ventilation", "air_pct"), ("ridge_exposure", "wind_pct")):
+    for ratio, name in (("ventilation", "air_pct"), ("ridge_exposure", "wind_pct"), ("driving_rain", "rain_pct")):
         if ratio in known:
             told[f"more_{name}"] = 100.0 * (known[ratio] - 1.0)
             told[f"less_{name}"] = 100.0 * (1.0 - known[ratio])

@@ -44,6 +44,7 @@ def test_good_ground_raises_none(plots: Plots) -> None:
         ("hot_humid_coast", {"pond_depth_m": 1.5}, "ponding", "concern"),
         ("high_upland", {"ridge_exposure": 1.4}, "exposed_ridge", "concern"),
         ("lake_basin", {"ridge_exposure": 1.4}, "windy_ground", "note"),
+        ("high_upland", {"driving_rain": 1.4}, "driving_rain", "note"),
         ("upland", {"wind_outside_share": 0.6}, "steep_for_wind", "note"),
         ("hot_humid_coast", {"elevation_m": 2.0, "sea_km": 0.8}, "low_shore", "concern"),
         ("hot_humid_coast", {"sea_km": 0.2}, "salt_air", "note"),
