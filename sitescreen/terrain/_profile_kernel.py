@@ -31,9 +31,28 @@ def _height(elevation_m: Any, row: Any, col: Any) -> Any:
     return _between(upper, lower, row - r0)
 
 
+TOP_CELLS = 16
+"""Cells along the side of a square whose highest ground is known beforehand. Fixed, so that dividing by it is cheap."""
+
+
+@njit(nogil=True, cache=True, error_model="numpy")
+def tops(elevation_m: Any, out: Any, start: Any, stop: Any) -> None:
+    """Highest ground of each square and of the row and column of cells behind it; infinite where some is unknown."""
+    rows, cols = elevation_m.shape
+    for square in range(start, stop):
+        for across in range(out.shape[1]):
+            top = -math.inf
+            for row in range(square * TOP_CELLS, min((square + 1) * TOP_CELLS + 1, rows)):
+                for col in range(across * TOP_CELLS, min((across + 1) * TOP_CELLS + 1, cols)):
+                    z = elevation_m[row, col]
+                    top = max(top, np.float64(z)) if z == z else math.inf
+            out[square, across] = top
+
+
 @njit(nogil=True, cache=True, error_model="numpy")
 def profiles(
     elevation_m: Any,
+    tops_m: Any,
     cell_size_m: Any,
     point_rows: Any,
     point_cols: Any,
@@ -48,7 +67,8 @@ def profiles(
 ) -> None:
     """Largest tangent along each ray from each point, and the distance to its first unknown ground.
 
-    Rays are read wherever they cross a line through cell centres: there the bilinear surface has its edges.
+    Rays are read wherever they cross a line through cell centres: there the bilinear surface has its edges. Where not
+    even the highest ground of the square would be seen, the surface is not looked up; the answer is the same.
     """
     rows, cols = elevation_m.shape
     for point in range(start, stop):
@@ -81,6 +101,12 @@ def profiles(
                 distance = d * cell_size_m
                 if row < 0.0 or col < 0.0 or row > rows - 1 or col > cols - 1 or distance > reach_m:
                     break
+                top = tops_m[int(row) // TOP_CELLS, int(col) // TOP_CELLS]
+                # a micrometre of room, so that rounding cannot hide ground that would just be seen
+                if top - eye + 1e-6 <= (best + bend_per_m * distance) * distance:
+                    if unbroken:
+                        seen_m[point, k] = distance
+                    continue
                 z = _height(elevation_m, row, col)
                 if z != z:
                     unbroken = False

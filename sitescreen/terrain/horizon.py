@@ -14,7 +14,7 @@ from sitescreen.errors import GridError
 from sitescreen.grid import Field, Grid
 from sitescreen.terrain._horizon_kernel import raise_to_horizon, transpose
 from sitescreen.terrain._march_kernel import near_tangents, reach_tangents
-from sitescreen.terrain._profile_kernel import profiles
+from sitescreen.terrain._profile_kernel import TOP_CELLS, profiles, tops
 from sitescreen.terrain.threads import in_bands
 
 EARTH_RADIUS_M = 6_371_000.0
@@ -359,10 +359,13 @@ def horizon_profile(
     cols = (x - grid.west_m) / grid.cell_size_m - 0.5
     tangent = np.empty((x.size, azimuths.size))
     seen_m = np.empty_like(tangent)
+    squares = np.empty((-(-grid.rows // TOP_CELLS), -(-grid.cols // TOP_CELLS)))
+    in_bands(tops, squares.shape[0], elevation.values, squares)
     in_bands(
         profiles,
         x.size,
         elevation.values,
+        squares,
         grid.cell_size_m,
         rows,
         cols,

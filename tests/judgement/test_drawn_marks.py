@@ -176,14 +176,16 @@ def test_identical_plots_share_a_rank_in_every_draw(plots: Plots, in_zone: InZon
     assert found.at["a", "chance_beats_next"] == 0.5
 
 
-@given(st.integers(0, 2**32 - 1), st.sampled_from(["slope_deg", "ridge_exposure", "cold_deficit_k", "sky_view"]))
+@given(
+    st.integers(0, 2**32 - 1), st.sampled_from(["slope_deg", "ridge_exposure", "cold_deficit_k", "morning_sun_share"])
+)
 @settings(max_examples=15, deadline=None)
 def test_ignorance_wins_in_no_draw(seed: int, blank: str) -> None:
     """A twin with a reading missing, its other readings drawn alike, has no better range and no better chance."""
     rng = np.random.default_rng(seed)
     drawn = {
         "slope_deg": rng.uniform(0, 16, (4, 50)), "ridge_exposure": rng.uniform(0.5, 1.8, (4, 50)),
-        "cold_deficit_k": rng.uniform(0, 4, (4, 50)), "sky_view": rng.uniform(0.7, 1.0, (4, 50)),
+        "cold_deficit_k": rng.uniform(0, 4, (4, 50)), "morning_sun_share": rng.uniform(0.4, 1.0, (4, 50)),
     }  # fmt: skip
     readings: dict[str, Any] = {name: values[:, 0].copy() for name, values in drawn.items()}
     readings |= {"aspect_deg": np.full(4, 180.0), "outcome": ["", "", "", ""]}

@@ -394,7 +394,41 @@ def test_profile_kernel_agrees_with_its_python_form() -> None:
     for form in (lambda f: f, lambda f: f.py_func):
         tangent, seen = np.empty((2, 8)), np.empty((2, 8))
         points = (np.array([6.3, 7.0]), np.array([6.9, 2.0]), np.radians(np.arange(8) * 45.0 + 0.5))
-        form(profile_kernel.profiles)(values, 30.0, *points, 2.0, 1e-7, 300.0, tangent, seen, 0, 2)
+        squares = np.empty((1, 1))
+        form(profile_kernel.tops)(values, squares, 0, 1)
+        form(profile_kernel.profiles)(values, squares, 30.0, *points, 2.0, 1e-7, 300.0, tangent, seen, 0, 2)
         outs.append((tangent, seen))
     for compiled, plain in zip(*outs, strict=True):
         np.testing.assert_allclose(compiled, plain, rtol=1e-9)
+
+
+@pytest.mark.parametrize("has_gap", [False, True])
+def test_ground_that_cannot_be_seen_is_passed_over_without_a_change(has_gap: bool) -> None:
+    """The same bits, and the same distance seen, as when no square's highest ground is known."""
+    rng = np.random.default_rng(8)
+    values = (300.0 * np.sin(np.arange(90) / 9.0)[:, None] + rng.normal(0.0, 40.0, (90, 70))).astype(np.float32)
+    if has_gap:
+        values[30:33, 20:60] = np.nan
+    points = rng.uniform(5.0, 60.0, (2, 12))
+    found = []
+    for knows in (True, False):
+        squares = np.full((6, 5), np.inf)
+        if knows:
+            profile_kernel.tops(values, squares, 0, 6)
+        tangent, seen = np.empty((12, 36)), np.empty((12, 36))
+        azimuths = np.radians(np.arange(36) * 10.0)
+        arguments = (values, squares, 30.0, *points, azimuths, 2.0, 6.8e-8, 1500.0)
+        profile_kernel.profiles(*arguments, tangent, seen, 0, 12)
+        found.append((tangent, seen))
+    assert np.array_equal(found[0][0], found[1][0], equal_nan=True)
+    assert np.array_equal(found[0][1], found[1][1])
+
+
+@pytest.mark.parametrize("kernel", [profile_kernel.tops, profile_kernel.tops.py_func])
+def test_highest_ground_of_squares_takes_in_their_far_edge(kernel: Callable[..., None]) -> None:
+    side = profile_kernel.TOP_CELLS
+    values = np.arange(side * 2 * side, dtype=np.float32).reshape(side, 2 * side)
+    values[-1, -1] = np.nan
+    squares = np.empty((1, 2))
+    kernel(values, squares, 0, 1)
+    assert squares.tolist() == [[values[-1, side], np.inf]]
