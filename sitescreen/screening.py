@@ -25,8 +25,9 @@ from sitescreen.inputs.brief_record import brief_for_record
 from sitescreen.inputs.context import Landmarks
 from sitescreen.inputs.zone_map import zone_at
 from sitescreen.judgement.cautions import load_cautions
-from sitescreen.judgement.certainty import Certainty, Varied, certainty, take_part
-from sitescreen.judgement.draws import ReadingDraws
+from sitescreen.judgement.certainty import Certainty, certainty
+from sitescreen.judgement.doubts import AllWinds, all_swings, data_draws
+from sitescreen.judgement.draws import NO_DRAWS
 from sitescreen.judgement.overall import Judged, judge
 from sitescreen.judgement.own import (
     OwnReadings,
@@ -40,11 +41,11 @@ from sitescreen.judgement.pairs import Compared, compare_for, with_weights
 from sitescreen.judgement.profiles import ZoneProfile, load_profiles, wind_slots
 from sitescreen.judgement.readings import Readings, stack
 from sitescreen.judgement.reasons import Reasons, reasons
-from sitescreen.judgement.rose_draws import rose_draws, rose_varied
 from sitescreen.judgement.siting import PlotSiting
 from sitescreen.judgement.siting_readings import BlockSuns, Sites, first_sitings, with_siting
 from sitescreen.judgement.sun_readings import sun_notes
 from sitescreen.judgement.sway import sway_notes, sways
+from sitescreen.judgement.swings import swing_notes, swung
 from sitescreen.judgement.waters import waters_disagree
 from sitescreen.judgement.wind_notes import method_note, place_notes
 from sitescreen.judgement.wind_readings import assumed_columns
@@ -205,16 +206,31 @@ def _judged(
     halved = assumed_columns(inputs.wind, profiles)
     rules = (*load_cautions(), *own_rules(brief.constraint))
     judged = judge(values, zones, profiles, rules, settings.judgement, halved)
-    draws, varied = _draws(brief, inputs, measured, judged, profiles, settings)
+    air = AllWinds(
+        winds_together([one.winds for one in measured], tuple(plots["plot"]), settings.wind.sectors),
+        inputs.wind,
+        lon,
+        lat,
+    )
+    draws, varied = data_draws(NO_DRAWS, (), air, judged, profiles, brief.judge.seed, brief.judge.shortlist, settings)
     sure = certainty(
         judged, zones, profiles, brief.judge.seed, brief.judge.shortlist, settings.judgement, draws, rules, varied
     )
     found = sways(judged, zones, profiles)
+    swings = swung(
+        all_swings(values, draws, air, profiles, settings),
+        judged,
+        zones,
+        profiles,
+        rules,
+        brief.judge.shortlist,
+        settings.judgement,
+    )
     notes = inputs.notes + inputs.terrain.findings
     notes += climate_notes(climate, settings.zones) if climate is not None else ()
     notes += (method_note(values, settings.wind), *place_notes(inputs.wind, lon, lat, height, settings.wind))
     notes += onset_notes(inputs.normals, inputs.wind) if inputs.normals and inputs.shore else ()
-    notes += (compared.notes() if compared else ()) + sure.notes() + sway_notes(found)
+    notes += (compared.notes() if compared else ()) + sure.notes() + sway_notes(found) + swing_notes(swings)
     notes += sun_notes([one.suns for one in measured], lat, inputs.sky, inputs.sun_choices)
     waters = together([one.disagreement for one in measured])
     if inputs.shore and len(inputs.shore.waters) and not waters.agrees:
@@ -262,6 +278,7 @@ def _judged(
         | {"profiles": {zone: profile.model_dump(mode="json") for zone, profile in profiles.items()}}
         | {"reasons": _recorded(table, why), "siting": {plot: one.says for plot, one in siting.items()}}
         | {"certainty": sure.for_record(), "what_would_change": [one.for_record() for one in found]}
+        | {"swings": [one.for_record() for one in swings]}
         | ({"pairs": compared.for_record()} if compared else {}),
         judged=judged,
         zones=zones,
@@ -285,35 +302,6 @@ def profiles_of(brief: Brief, settings: Defaults) -> tuple[dict[str, ZoneProfile
         return profiles, None
     compared = compare_for(profiles, brief.judge.pairs)
     return with_weights(profiles, compared), compared
-
-
-def _draws(
-    brief: Brief,
-    inputs: Inputs,
-    measured: list[BlockResult],
-    judged: Judged,
-    profiles: Mapping[str, ZoneProfile],
-    settings: Defaults,
-) -> tuple[ReadingDraws, tuple[Varied, ...]]:
-    """The data's draws, one set for all plots, and what they vary."""
-    rows = take_part(judged, brief.judge.shortlist, settings.judgement)
-    plots = inputs.plots.table.iloc[rows]
-    wanted = {criterion.column for profile in profiles.values() for criterion in profile.criteria}
-    roses = rose_draws(
-        winds_together([one.winds for one in measured], tuple(plots["plot"]), settings.wind.sectors),
-        inputs.wind,
-        plots["lon"].to_numpy(),
-        plots["lat"].to_numpy(),
-        wanted,
-        wind_slots(profiles),
-        brief.judge.seed,
-        settings.judgement.data_draws,
-        settings.wind,
-    )
-    drawn = {name: np.full((len(judged.table), values.shape[1]), np.nan) for name, values in roses.items()}
-    for name, values in roses.items():
-        drawn[name][rows] = values
-    return ReadingDraws(drawn), (rose_varied(inputs.wind, settings.wind),) if roses else ()
 
 
 def _outcomes(told: Any, values: pd.DataFrame) -> list[str]:

@@ -288,6 +288,14 @@ class SitingSettings(Section):
     own_zone: ZoneSiting
 
 
+class SwingSettings(Section):
+    """The low and the high end of inputs that are tried one at a time."""
+
+    night: tuple[Annotated[float, Field(gt=0, le=5)], Annotated[float, Field(gt=0, le=5)]]
+    breeze_tail_from_km: tuple[Positive, Positive]
+    terrain_quantiles: tuple[Share, Share]
+
+
 class Defaults(Section):
     """All sections of ``config/defaults.toml``."""
 
@@ -301,6 +309,7 @@ class Defaults(Section):
     cold_layer: ColdLayerSettings
     zones: ZoneSettings
     judgement: JudgementSettings
+    swings: SwingSettings
     siting: SitingSettings
 
 

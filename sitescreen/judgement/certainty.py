@@ -13,7 +13,7 @@ from sitescreen.climate.zones import ZoneShares
 from sitescreen.judgement.cautions import CautionRule
 from sitescreen.judgement.drawn_marks import drawn_marks, stopped
 from sitescreen.judgement.draws import NO_DRAWS, ReadingDraws
-from sitescreen.judgement.other_weights import ZoneWeights, low_marks
+from sitescreen.judgement.other_weights import ZoneWeights, low_marks, run_weights
 from sitescreen.judgement.overall import Judged
 from sitescreen.judgement.profiles import ZoneProfile
 from sitescreen.judgement.uniform import uniform
@@ -271,7 +271,7 @@ def certainty(
     if data is not None:
         for suffix, marks in (
             ("_weights", low_marks(judged, zones, by_rank, weights)),
-            ("_data", low_marks(judged, zones, by_rank, _run_weights(judged, data.count), data, np.arange(data.count))),
+            ("_data", low_marks(judged, zones, by_rank, run_weights(judged, data.count), data, np.arange(data.count))),
         ):
             low, high = _middle(ranks_of(_steps(marks, settings)) + ahead.astype(np.int32))
             enter(by_rank, {f"rank_low{suffix}": low, f"rank_high{suffix}": high})
@@ -306,14 +306,6 @@ def _measured(judged: Judged) -> NDArray[np.bool_]:
     if "outcome" not in judged.facts:
         return has_zone
     return has_zone & np.asarray(judged.facts["outcome"].to_numpy(dtype=object) == "", dtype=np.bool_)
-
-
-def _run_weights(judged: Judged, count: int) -> ZoneWeights:
-    """The weights of the run, so many times."""
-    return {
-        zone: {name: np.full(count, weight) for name, weight in one.weights.items()}
-        for zone, one in judged.by_zone.items()
-    }
 
 
 def _middle(values: NDArray[Any]) -> tuple[NDArray[Any], NDArray[Any]]:

@@ -15,6 +15,14 @@ ZoneWeights = Mapping[str, Mapping[str, FloatArray]]
 """Zone → criterion → the weight in each trial, shape (trials,)."""
 
 
+def run_weights(judged: Judged, count: int) -> ZoneWeights:
+    """The weights of the run, so many times."""
+    return {
+        zone: {name: np.full(count, weight) for name, weight in one.weights.items()}
+        for zone, one in judged.by_zone.items()
+    }
+
+
 def low_marks(
     judged: Judged,
     zones: ZoneShares,

@@ -13,6 +13,7 @@ from sitescreen.climate.sun_path import Skies, SunPath
 from sitescreen.climate.zones import ZoneShares, memberships, zone_shares
 from sitescreen.inputs.wind import SLOTS
 from sitescreen.judgement.long_axis import SitingGround
+from sitescreen.judgement.profiles import Criterion, ZoneProfile
 from sitescreen.settings import load_defaults
 
 ZONES = load_defaults().zones
@@ -104,3 +105,16 @@ def axis_ground() -> Callable[..., SitingGround]:
         )
 
     return ground
+
+
+@pytest.fixture
+def cold_and_slope() -> dict[str, ZoneProfile]:
+    """The upland's profile cut down to two criteria of equal weight: 100 at 0 K and 0°, 0 at 4 K and 20°."""
+    criteria = tuple(
+        Criterion(name=name, reading=reading, question="own", title=name, weight=50.0, curve=curve, source="x")
+        for name, reading, curve in (
+            ("cold", "cold_deficit_k", ((0.0, 100.0), (4.0, 0.0))),
+            ("slope", "slope_deg", ((0.0, 100.0), (20.0, 0.0))),
+        )
+    )
+    return {"upland": ZoneProfile(zone="upland", title="Upland", wants="Two things.", criteria=criteria)}

@@ -17,7 +17,7 @@ from sitescreen.judgement.draws import NO_DRAWS, ReadingDraws
 from sitescreen.judgement.marks import mark
 from sitescreen.judgement.other_weights import low_marks
 from sitescreen.judgement.overall import Judged, judge
-from sitescreen.judgement.profiles import load_profiles
+from sitescreen.judgement.profiles import ZoneProfile, load_profiles
 from sitescreen.settings import load_defaults
 
 DEFAULTS = load_defaults()
@@ -29,19 +29,16 @@ Plots = Callable[..., pd.DataFrame]
 InZone = Callable[..., ZoneShares]
 
 
-def sure_of(readings: pd.DataFrame, zones: ZoneShares, draws: ReadingDraws, shortlist: int = 1) -> Certainty:
-    judged = judge(readings, zones, PROFILES, RULES, DEFAULTS.judgement)
-    return certainty(
-        judged,
-        zones,
-        PROFILES,
-        20,
-        shortlist,
-        DEFAULTS.judgement,
-        draws,
-        RULES,
-        (Varied("the terrain's error", "the slope"),),
-    )
+def sure_of(
+    readings: pd.DataFrame,
+    zones: ZoneShares,
+    draws: ReadingDraws,
+    shortlist: int = 1,
+    profiles: dict[str, ZoneProfile] = PROFILES,
+) -> Certainty:
+    judged = judge(readings, zones, profiles, RULES, DEFAULTS.judgement)
+    varied = (Varied("the terrain's error", "the slope"),)
+    return certainty(judged, zones, profiles, 20, shortlist, DEFAULTS.judgement, draws, RULES, varied)
 
 
 def drawn_again(readings: pd.DataFrame, draws: ReadingDraws, number: int) -> pd.DataFrame:
@@ -80,7 +77,7 @@ def test_each_draw_is_judged_as_a_run_of_its_own(plots: Plots) -> None:
 
 
 def test_data_without_error_spread_nothing(plots: Plots, in_zone: InZone) -> None:
-    readings = plots({}, {"slope_deg": 6.0}, {"ridge_exposure": 1.4}, {"morning_sun_share": 0.8})
+    readings = plots({}, {"slope_deg": 6.0}, {"ridge_exposure": 1.4}, {"sky_view": 0.9})
     zones = in_zone(readings, "upland")
     same = ReadingDraws({"slope_deg": np.repeat(readings[["slope_deg"]].to_numpy(), DRAWS, axis=1)})
     found, alone = sure_of(readings, zones, same).table, sure_of(readings, zones, NO_DRAWS).table
@@ -149,22 +146,27 @@ def test_a_plot_whose_slope_nobody_knows_stays_set_aside_in_every_draw(plots: Pl
     assert found["chance_set_aside"].tolist() == [0.0, 1.0]
 
 
-def test_both_kinds_of_doubt_are_told_apart_and_together(plots: Plots, in_zone: InZone) -> None:
-    readings = plots({}, {"slope_deg": 4.0}, {"ridge_exposure": 1.2}, {"morning_sun_share": 0.8, "slope_deg": 3.0})
+def test_both_kinds_of_doubt_are_told_apart_and_together(
+    plots: Plots, in_zone: InZone, cold_and_slope: dict[str, ZoneProfile]
+) -> None:
+    pairs = ((0.0, 8.0), (1.0, 3.0), (2.0, 0.0), (0.5, 5.0))  # marks of 80, 80, 75 and 81.25
+    readings = plots(*({"cold_deficit_k": cold, "slope_deg": slope} for cold, slope in pairs))
     zones = in_zone(readings, "upland")
     draws = ReadingDraws({"slope_deg": np.random.default_rng(4).uniform(0.0, 10.0, (4, DRAWS))})
-    sure = sure_of(readings, zones, draws)
+    sure = sure_of(readings, zones, draws, profiles=cold_and_slope)
     record = sure.for_record()
     assert record["data_draws"] == DRAWS
     assert record["varied"][1:] == ["the slope"]
     assert record["varies"] == "the weights and the terrain's error"
     assert record["left_out"] == "the wind"
-    alone = sure_of(readings, zones, NO_DRAWS).for_record()
+    alone = sure_of(readings, zones, NO_DRAWS, profiles=cold_and_slope).for_record()
     assert (alone["varies"], alone["left_out"]) == ("the weights only", "the terrain's error and the wind")
     spans = record["ranks_spanned_on_average"]
-    assert spans["weights_alone"] < spans["data_alone"] <= spans["together"] <= 4.0
+    assert 1.0 < spans["data_alone"] < spans["weights_alone"] <= spans["together"] <= 4.0
+    alone = sure_of(readings, zones, NO_DRAWS, profiles=cold_and_slope)
+    assert alone.for_record()["ranks_spanned_on_average"]["together"] == spans["weights_alone"]
     assert "100 draws of the data, the same for all plots: the slope." in sure.notes()[0].text
-    assert "nothing else" in sure_of(readings, zones, NO_DRAWS).notes()[0].text
+    assert "nothing else" in sure_of(readings, zones, NO_DRAWS, profiles=cold_and_slope).notes()[0].text
 
 
 def test_identical_plots_share_a_rank_in_every_draw(plots: Plots, in_zone: InZone) -> None:
@@ -176,16 +178,14 @@ def test_identical_plots_share_a_rank_in_every_draw(plots: Plots, in_zone: InZon
     assert found.at["a", "chance_beats_next"] == 0.5
 
 
-@given(
-    st.integers(0, 2**32 - 1), st.sampled_from(["slope_deg", "ridge_exposure", "cold_deficit_k", "morning_sun_share"])
-)
+@given(st.integers(0, 2**32 - 1), st.sampled_from(["slope_deg", "ridge_exposure", "cold_deficit_k", "sky_view"]))
 @settings(max_examples=15, deadline=None)
 def test_ignorance_wins_in_no_draw(seed: int, blank: str) -> None:
     """A twin with a reading missing, its other readings drawn alike, has no better range and no better chance."""
     rng = np.random.default_rng(seed)
     drawn = {
         "slope_deg": rng.uniform(0, 16, (4, 50)), "ridge_exposure": rng.uniform(0.5, 1.8, (4, 50)),
-        "cold_deficit_k": rng.uniform(0, 4, (4, 50)), "morning_sun_share": rng.uniform(0.4, 1.0, (4, 50)),
+        "cold_deficit_k": rng.uniform(0, 4, (4, 50)), "sky_view": rng.uniform(0.7, 1.0, (4, 50)),
     }  # fmt: skip
     readings: dict[str, Any] = {name: values[:, 0].copy() for name, values in drawn.items()}
     readings |= {"aspect_deg": np.full(4, 180.0), "outcome": ["", "", "", ""]}
