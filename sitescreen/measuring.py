@@ -11,6 +11,9 @@ from sitescreen.climate.breeze import PlotBreeze, lake_reach, plot_breeze
 from sitescreen.climate.breeze_field import breeze_field
 from sitescreen.climate.breeze_section import Section, sections
 from sitescreen.climate.cold_air import closed_pools, smallest_pool_seen_m
+from sitescreen.climate.cold_flow import Balance
+from sitescreen.climate.cold_kinds import KINDS, cold_kinds
+from sitescreen.climate.cold_layer import NightGround, cold_layer, night_ground
 from sitescreen.climate.hill_speed_up import hill_fields
 from sitescreen.climate.normals import plot_climate
 from sitescreen.climate.plot_sun import PlotSkies, mean_plane, monthly_sun, plot_skies
@@ -22,8 +25,9 @@ from sitescreen.climate.wind_cover import wind_cover
 from sitescreen.grid import Field, Grid
 from sitescreen.inputs import Inputs
 from sitescreen.inputs.shore import Shore
+from sitescreen.judgement.cold_readings import with_cold
 from sitescreen.judgement.coverage import Coverage, cover
-from sitescreen.judgement.readings import BlockClimate, Readings, block_readings
+from sitescreen.judgement.readings import Readings, block_readings
 from sitescreen.judgement.shore_readings import with_shore
 from sitescreen.judgement.sun_readings import with_sun
 from sitescreen.judgement.wind_readings import with_wind
@@ -33,7 +37,7 @@ from sitescreen.lattice import Block, blocks_of, convergence_deg, from_true_nort
 from sitescreen.progress import Progress
 from sitescreen.settings import BreezeSettings, Defaults
 from sitescreen.terrain.flat_water import WaterDisagreement, water_disagreement
-from sitescreen.terrain.ground import Ground, read_ground
+from sitescreen.terrain.ground import Ground, open_to_cold_air, read_ground, water_level_m, with_level_water
 from sitescreen.terrain.plot_skyline import plot_skylines
 from sitescreen.terrain.shore_distance import ShoreDistance, nearest_shore, onshore_bearing, shore_distance
 from sitescreen.terrain.shore_fetch import OpenRule, OpenShore, open_segments, open_shores
@@ -42,7 +46,13 @@ from sitescreen.terrain.shore_segments import Segments
 FloatArray = NDArray[np.float64]
 
 BLOCK_MARGIN_M = 12_600.0
-"""Ground computed round a block's core: more than any reading of this version looks. [m]"""
+"""Ground computed round a block's core: more than any reading but the night's cold air looks. [m]"""
+
+NIGHT_MARGIN_M = 27_000.0
+"""Ground round a block's core from which the night's cold air may come. [m]"""
+
+KIND_CODES = tuple(f"{code} {word}" for code, word in enumerate(KINDS))
+"""What the numbers of the layer of kinds stand for."""
 
 
 @dataclass(frozen=True)
@@ -57,6 +67,7 @@ class BlockResult:
     winds: SectorWinds
     sections: dict[str, Section]
     suns: PlotSkies
+    night_balances: tuple[Balance, ...]
 
 
 def plots_by_block(inputs: Inputs) -> Iterator[tuple[Block, NDArray[np.int64]]]:
@@ -96,9 +107,13 @@ def measure(
     plots = inputs.plots.table.iloc[rows]
     lon, lat = plots["lon"].to_numpy(), plots["lat"].to_numpy()
     with progress.step("Reading the ground"):
-        grid = block.window(BLOCK_MARGIN_M, terrain.data_bounds(block.crs))
-        heights = terrain.read(grid)
-        water_kind = shore.water_kind(grid) if shore else np.zeros(grid.shape, dtype=np.uint8)
+        bounds = terrain.data_bounds(block.crs)
+        grid, wide = block.window(BLOCK_MARGIN_M, bounds), block.window(NIGHT_MARGIN_M, bounds)
+        heights = terrain.read(wide)
+        water_kind = shore.water_kind(wide) if shore else np.zeros(wide.shape, dtype=np.uint8)
+        night = _night_ground(heights.ground, water_kind, terrain.vertical_error_m, settings)
+        if grid != wide:
+            heights, water_kind = heights.part(grid.bounds), water_kind[wide.part(grid.bounds)[1]]
     with progress.step("Measuring slope, hollows and sky"):
         ground = read_ground(*heights, water_kind, terrain.vertical_error_m, terrain.error_range_m, settings.terrain)
         # only the core is this block's to report: neighbours would count the margin twice
@@ -117,7 +132,11 @@ def measure(
             met, ground.rise, hills, covered, _block_convergence_deg(grid), inputs.wind, wanted, settings.wind
         )
         steep = ground.slope.values > np.degrees(np.arctan(settings.wind.slope_most))
-    pools = closed_pools(ground.hollows, terrain.vertical_error_m, settings.cold_air)
+    with progress.step("Letting a calm night's cold air flow"):
+        pools = closed_pools(ground.hollows, terrain.vertical_error_m, settings.cold_air)
+        least_m = smallest_pool_seen_m(terrain.vertical_error_m, settings.cold_air)
+        layer = cold_layer(night, ground.sky_view, settings.cold_layer)
+        cold = cold_kinds(layer, pools, ground.elevation, least_m, settings.cold_layer, settings.cold_air.fill_scale_m)
     with progress.step("Measuring distance and way to the shore"):
         coast = _coast(shore, lon, lat, block, ground.elevation, settings.breeze)
     with progress.step("Reading the plots"):
@@ -127,11 +146,10 @@ def measure(
             list(plots["plot"]),
             coverage,
             ground,
-            BlockClimate(pools),
             convergence,
-            smallest_pool_seen_m(terrain.vertical_error_m, settings.cold_air),
             settings.readings,
         )
+        readings = with_cold(readings, coverage, ground.hollows, pools, cold, convergence, least_m, settings)
         winds = sector_winds(
             tuple(plots["plot"]),
             met,
@@ -163,6 +181,9 @@ def measure(
         "sky_view": ground.sky_view,
         "sun_year_h": sunshine,
         "hollow_depth_m": pools.depth_m,
+        "cold_depth_m": cold.depth_m,
+        "cold_kind": Field(cold.kind.astype(np.float32), grid, "code", "cold air: " + ", ".join(KIND_CODES)),
+        "cold_share": Field(cold.fill.values * ground.sky_view.values, grid, "1", cold.fill.what),
         # linear flow over hills does not hold on steep ground: no figure is drawn there
         **{name: _masked(field, steep) for name, field in wind.items()},
         **({"shore_distance_km": coast.distance} if coast.distance is not None else {}),
@@ -171,7 +192,8 @@ def measure(
     cells = plot_cells(coverage, rows, fields, (water_kind > 0) | (ground.flat.label > 0), grid, settings.readings)
     own = {name: field.part(block.core_bounds) for name, field in fields.items()}
     drawn = {plot: one for plot, one in zip(plots["plot"], coast.sections, strict=True) if one is not None}
-    return BlockResult(block, readings, own, cells, disagreement, winds, drawn, suns)
+    balances = tuple(run.balance for run in layer.runs)
+    return BlockResult(block, readings, own, cells, disagreement, winds, drawn, suns, balances)
 
 
 def _own_slots() -> list[tuple[str, str]]:
@@ -210,6 +232,15 @@ def _suns(
         sun,
         choices.utc_offset_h,
     )
+
+
+def _night_ground(
+    elevation: Field, water_kind: NDArray[np.uint8], vertical_error_m: float, settings: Defaults
+) -> NightGround:
+    """The ground over which a block's cold air flows, sea and large lakes as its outlets."""
+    level = with_level_water(elevation, water_kind, water_level_m(elevation, water_kind))
+    water = open_to_cold_air(water_kind, elevation.grid.cell_size_m, settings.terrain.smallest_outlet_km2)
+    return night_ground(level, water, settings.cold_layer, vertical_error_m)
 
 
 class _Coast(NamedTuple):

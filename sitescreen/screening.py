@@ -12,7 +12,7 @@ import pandas as pd
 from sitescreen.brief import Brief
 from sitescreen.climate.breeze_onset import onset_notes
 from sitescreen.climate.breeze_section import Section
-from sitescreen.climate.cold_air import deficit_k
+from sitescreen.climate.cold_strength import plot_strength_k
 from sitescreen.climate.drawn_sun import PlotSun, drawn_suns
 from sitescreen.climate.mahoney import second_opinion
 from sitescreen.climate.normals import climate_notes, plot_climate
@@ -26,6 +26,8 @@ from sitescreen.inputs.context import Landmarks
 from sitescreen.inputs.zone_map import zone_at
 from sitescreen.judgement.cautions import load_cautions
 from sitescreen.judgement.certainty import Certainty, certainty
+from sitescreen.judgement.cold_map import with_cold_deficit
+from sitescreen.judgement.cold_readings import night_notes, with_nights
 from sitescreen.judgement.doubts import AllWinds, all_swings, data_draws
 from sitescreen.judgement.draws import NO_DRAWS
 from sitescreen.judgement.overall import Judged, judge
@@ -57,7 +59,7 @@ from sitescreen.settings import Defaults, load_defaults
 from sitescreen.terrain.flat_water import together
 
 NOT_MEASURED = (
-    "cold air held back by narrows without a closed hollow, and cold air in motion",
+    "how sure a cold pool is, given the terrain model's error",
     "how certain a rank is given the terrain model's error (ranges and chances vary the weights and the wind's rose)",
 )
 
@@ -72,11 +74,7 @@ NOT_CHECKED = (
 
 EMPTY_IN_THIS_VERSION = (
     "cold_pool_chance",
-    "night_minimum_c",
     "floor_height_m",
-    "night_flow_m2_s",
-    "night_flow_speed_m_s",
-    "clear_calm_nights",
 )
 """Columns of the table whose methods are still to come."""
 
@@ -193,7 +191,8 @@ def _judged(
     if inputs.normals is not None and climate is not None:
         opinion = second_opinion(inputs.normals, climate, zones.zone)
         values[opinion.columns] = opinion.to_numpy()
-    values["cold_deficit_k"] = _deficit(values, zones, settings)
+    strength = plot_strength_k(zones, climate, settings.cold_air)
+    values, why_unknown = with_nights(Readings(values, why_unknown), strength, climate, settings.cold_air)
     sites = Sites(
         [BlockSuns(tuple(one.readings.values.index), one.suns, one.winds) for one in measured],
         plots.set_index("plot")[["lon", "lat"]],
@@ -232,6 +231,7 @@ def _judged(
     notes += onset_notes(inputs.normals, inputs.wind) if inputs.normals and inputs.shore else ()
     notes += (compared.notes() if compared else ()) + sure.notes() + sway_notes(found) + swing_notes(swings)
     notes += sun_notes([one.suns for one in measured], lat, inputs.sky, inputs.sun_choices)
+    notes += night_notes(climate, settings.cold_air)
     waters = together([one.disagreement for one in measured])
     if inputs.shore and len(inputs.shore.waters) and not waters.agrees:
         notes += (Note("warning", "shore", waters.sentence),)
@@ -258,7 +258,7 @@ def _judged(
     return Screening(
         brief=brief,
         table=table,
-        fields=_fields(measured),
+        fields=with_cold_deficit(_fields(measured), inputs, brief.zones.force, profiles, settings),
         reasons=why,
         sections={plot: section for one in measured for plot, section in one.sections.items()},
         suns=drawn_suns(
@@ -323,17 +323,6 @@ def _stated_zones(brief: Brief, inputs: Inputs) -> list[str]:
         return stated
     mapped = zone_at(inputs.zone_map, plots["lon"].to_numpy(), plots["lat"].to_numpy())
     return [own or zone for own, zone in zip(stated, mapped, strict=True)]
-
-
-def _deficit(values: pd.DataFrame, zones: ZoneShares, settings: Defaults) -> Any:
-    """Deficit of the plots' closed pools, with the strength of the zones that share each plot. [K]"""
-    strength = settings.cold_air.strength_k
-    ordinary = float(np.median(list(strength.values())))  # for a planner's own zone, of which we know nothing
-    by_zone = np.array([strength.get(zone, ordinary) for zone in zones.shares.columns])
-    total = zones.shares.to_numpy(dtype=np.float64)
-    has_zone = total.sum(axis=1) > 0
-    plot_strength = np.where(has_zone, total @ by_zone, np.nan)
-    return deficit_k(values["cold_pool_depth_m"], plot_strength, values["sky_view"], settings.cold_air)
 
 
 def _table(
@@ -414,6 +403,7 @@ def _record(
         "water_disagreement": asdict(together([one.disagreement for one in measured])),
         "blocks": [
             {**asdict(one.block), "crs": one.block.crs, "water_disagreement": asdict(one.disagreement)}
+            | {"night_air_m3": [{**run._asdict(), "relative_error": run.error} for run in one.night_balances]}
             for one in measured
         ],
         "plots": {

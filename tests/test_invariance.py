@@ -28,7 +28,15 @@ AMONG_OTHERS = {"rank", "rank_in_zone", "rank_low", "rank_high", "chance_first",
 AMONG_OTHERS |= {"chance_shortlist", "chance_first_in_zone", "chance_first_any_weights", "chance_beats_next", "group"}
 MUST_BE_KNOWN = ["elevation_m", "slope_deg", "rise_m", "ventilation", "ridge_exposure", "sheltered_fraction"]
 MUST_BE_KNOWN += ["sun_year_h", "sun_cool_morning_h", "west_load_kwh_m2", "cool_gain_kwh_m2", "sun_first_cool_h"]
-MUST_BE_KNOWN += ["sky_view", "shore_distance_km", "breeze_reach", "cold_pool_depth_m", "overall_mark", "long_axis_deg"]
+MUST_BE_KNOWN += ["sky_view", "shore_distance_km", "breeze_reach", "cold_deficit_most_k", "overall_mark"]
+MUST_BE_KNOWN += ["long_axis_deg"]
+    "sky_view",
+    "shore_distance_km",
+    "breeze_reach",
+    "cold_deficit_most_k",
+    "overall_mark",
+    "long_axis_deg",
+]
 
 
 class Site(NamedTuple):
@@ -216,6 +224,9 @@ def test_the_border_runs_through_the_plots_and_all_is_known(name: str, together:
     assert len(set(blocks)) == site.blocks
     assert len({block.zone for block in blocks}) == site.zones
     assert whole.loc[:, MUST_BE_KNOWN].notna().all().all()
+    # on so small a tile some cold air hangs on ground beyond it; most must be known, of more than one kind
+    assert (whole["cold_pool_kind"] != "unknown").mean() > 0.6
+    assert {"none", "closed"} <= set(whole["cold_pool_kind"])
     assert (whole["cold_pool_depth_m"] > 0).any()
     assert whole["elevation_m"].nunique() == len(whole) == 40
 

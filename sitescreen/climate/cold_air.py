@@ -1,10 +1,10 @@
-"""Where cold air lies on calm clear nights: closed hollows only, in this first version.
+"""Closed hollows that hold cold air on calm clear nights, told from the noise of the terrain model.
 
-Cold air that is held back by a narrow gap without any closed depression ("leaky") and air in motion ("moving") are not
-seen yet. A plot that this version calls ``none`` can therefore still be cold at night, and the outputs say so.
+Air that narrows hold back without any closed hollow, and air in motion, are found by
+:mod:`sitescreen.climate.cold_layer`.
 """
 
-from typing import Any, NamedTuple
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -61,24 +61,3 @@ def closed_pools(hollows: Hollows, vertical_error_m: float, settings: ColdAirSet
         Field(depth, hollows.depth_m.grid, "m", "depth of cold air in closed hollows, below the sill"),
         cut[hollows.pool_id],
     )
-
-
-def deficit_k(depth_m: Any, strength_k: Any, sky_view: Any, settings: ColdAirSettings) -> NDArray[np.float64]:
-    """How much colder the hollow is than open level ground on a calm clear night, ΔT·(1 − e^(−d/h0))·sky view. [K]
-
-    Parameters
-    ----------
-    depth_m : array
-        Mean depth of the pool over the plot. [m]
-    strength_k : array
-        ΔT of the plot's climate, the deficit of a deep pool under an open sky. [K]
-    sky_view : array
-        0–1; the most important terrain parameter for small basins (Whiteman et al. 2004, J. Appl. Meteor.
-        43:1224–1236).
-
-    Notes
-    -----
-    h0 = 15 m and the form are our closure. The calm share of the night's wind and the heat budget are not in yet.
-    """
-    depth = np.asarray(depth_m, dtype=np.float64)
-    return np.asarray(strength_k * (1.0 - np.exp(-depth / settings.fill_scale_m)) * sky_view, dtype=np.float64)

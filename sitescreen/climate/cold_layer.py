@@ -2,15 +2,27 @@
 
 Air over the ground cools on a calm clear night, runs down slopes, stands in basins and squeezes through gaps. The layer
 finds what no flooding of hollows sees: cold air held back behind narrows that have an outlet at floor level.
+
+It runs on any window of the lattice: :func:`night_ground` averages the window's ground and water to 90 m,
+:func:`cold_layer` lets the air of a night flow over it, :func:`sitescreen.climate.cold_kinds.cold_kinds` says what lies
+on each fine cell. A simulation calls all three again with its own heights and its own :class:`Source`.
 """
 
-import math
-from typing import Literal, NamedTuple
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
-from sitescreen.climate._cold_layer_kernel import night
+from sitescreen.climate.cold_flow import (
+    CRITICAL,
+    Edge,
+    Night,
+    Source,
+    level_depth_m,
+    reduced_gravity_m_s2,
+    run_night,
+    supply_m_s,
+)
 from sitescreen.errors import GridError
 from sitescreen.grid import Field, Grid
 from sitescreen.settings import ColdLayerSettings
@@ -18,235 +30,54 @@ from sitescreen.terrain.coarse import CoarseGround, block_means, coarse_ground, 
 from sitescreen.terrain.position import disc_mean
 from sitescreen.terrain.threads import in_bands
 
-GRAVITY_M_S2 = 9.80665
-"""Standard gravity (3rd CGPM, 1901). [m/s²]"""
-
-HEAT_CAPACITY_J_KG_K = 1005.0
-"""Of dry air at constant pressure. [J/(kg K)]"""
-
-CRITICAL = (2.0 / 3.0) ** 1.5
-"""0.544: the most that passes over a sill is this × √g' × head^1.5 for each metre of width (broad-crested weir)."""
-
-CACHE_BYTES = 1_500_000
-"""Rows kept at work in the processor's cache. Speed only, never results. [bytes]"""
-
 FloatArray = NDArray[np.float64]
-Edge = Literal["open", "walled"]
 
 
-class Source(NamedTuple):
-    """What cools the air: drawn together in simulations, since a smaller deficit makes more air.
+class NightGround(NamedTuple):
+    """Ground for a night at 90 m. ``wet``, bool, shape (rows, cols): cells of water. ``fine``: the grid averaged."""
 
-    ``heat_w_m2``: sensible heat taken from the air. [W/m²] ``deficit_k``: by how much the layer is colder than the air
-    above. [K]
+    ground: CoarseGround
+    wet: NDArray[np.bool_]
+    fine: Grid
+
+
+class Air(NamedTuple):
+    """What one run says of each 90 m cell, float32 arrays of shape (rows, cols), NaN where the ground is unknown.
+
+    ``depth_m``; ``discharge_m2_s``: what passes each metre of width; ``froude``: flux over depth over wave speed;
+    ``speed_m_s``: of the moving air, (g'·q·sin α/C)^⅓.
     """
 
-    heat_w_m2: float
-    deficit_k: float
-
-
-class Balance(NamedTuple):
-    """Where the air of one run went, all in m³: ``supplied`` + ``came_in`` over open edges = ``stored`` + ``sunk``."""
-
-    supplied_m3: float
-    came_in_m3: float
-    stored_m3: float
-    sunk_m3: float
-
-    @property
-    def error(self) -> float:
-        """What is missing, as a share of what was supplied and came or went over the edges."""
-        missing = self.supplied_m3 + self.came_in_m3 - self.stored_m3 - self.sunk_m3
-        return abs(missing) / max(self.supplied_m3 + abs(self.came_in_m3), 1e-9)
-
-
-class Night(NamedTuple):
-    """One run, arrays of shape (rows, cols) at 90 m, NaN where the ground is unknown, 0 in water.
-
-    ``depth_m`` at the end of the night; ``east_m2_s``, ``north_m2_s``: flux per metre of width, toward the grid's east
-    and north, mean of a cell's two sides. ``step_s``, ``steps``: the time step and how many there were.
-    """
-
-    depth_m: FloatArray
-    east_m2_s: FloatArray
-    north_m2_s: FloatArray
-    balance: Balance
-    step_s: float
-    steps: int
+    depth_m: NDArray[np.float32]
+    discharge_m2_s: NDArray[np.float32]
+    froude: NDArray[np.float32]
+    speed_m_s: NDArray[np.float32]
 
 
 class ColdLayer(NamedTuple):
-    """The layer over a block, 90 m fields; NaN where unknown.
+    """The layer over a block at 90 m; NaN where unknown.
 
-    ``depth_m``; ``level_m``: depth that the same night gives on endless level ground; ``discharge_m2_s``: what passes
-    each metre of width; ``froude``: flux over depth over wave speed; ``speed_m_s``: of the moving air,
-    (g'·q·sin α/C)^⅓; ``level_most_m2_s``: the most that air of ``level_m`` can pass; ``rise_m``: height over the mean
-    within 3 km, unknown where any of that is; ``edge_differs``: cells whose depth depends on what lies beyond the known
-    ground; ``runs``: the open and the walled run.
+    ``level_m``: depth that the same night gives on endless level ground; ``level_most_m2_s``: the most that air of that
+    depth can pass; ``rise_m``: height over the mean within 3 km, or as far as the known ground reaches all round, and
+    at least a third of that; ``opened``, ``walled``: the night if the ground beyond the known one goes on as it ends,
+    and if it turns back up there; ``deficit_k``: by how much the air of the layer is colder than that above; ``runs``:
+    the two runs themselves.
     """
 
     ground: CoarseGround
-    depth_m: Field
     level_m: Field
-    discharge_m2_s: Field
-    froude: Field
-    speed_m_s: Field
     level_most_m2_s: Field
     rise_m: Field
-    edge_differs: NDArray[np.bool_]
+    opened: Air
+    walled: Air
+    deficit_k: float
     runs: tuple[Night, Night]
 
 
-def air_density_kg_m3(elevation_m: FloatArray) -> FloatArray:
-    """Density of the standard atmosphere (ICAO Doc 7488) at a height. [kg/m³]"""
-    return np.asarray(1.225 * np.maximum(1.0 - 2.25577e-5 * elevation_m, 0.1) ** 4.2559, dtype=np.float64)
-
-
-def supply_m_s(source: Source, elevation_m: FloatArray) -> FloatArray:
-    """Depth of air that cools in a second over open level ground, Q_H / (ρ c_p Δθ). [m/s]"""
-    return source.heat_w_m2 / (air_density_kg_m3(elevation_m) * HEAT_CAPACITY_J_KG_K * source.deficit_k)
-
-
-def level_depth_m(supply: FloatArray, settings: ColdLayerSettings) -> FloatArray:
-    """Depth at the end of the night on endless level ground, h_s·(1 − e^(−q·t/h_s)). [m]"""
-    return settings.fill_m * -np.expm1(-supply * settings.night_h * 3600.0 / settings.fill_m)
-
-
-def reduced_gravity_m_s2(deficit_k: float, settings: ColdLayerSettings) -> float:
-    """Gravity that drives the layer, g' = g·Δθ/θ. [m/s²]"""
-    return GRAVITY_M_S2 * deficit_k / settings.temperature_k
-
-
-def time_step_s(gravity: float, cell_m: float, settings: ColdLayerSettings) -> float:
-    """The longest step for waves on a layer as deep as the stated bound; never from the ground of the day. [s]"""
-    return settings.step_share * cell_m / math.sqrt(gravity * settings.depth_bound_m)
-
-
-def run_night(
-    ground: CoarseGround,
-    water: NDArray[np.bool_],
-    supply: FloatArray,
-    deficit_k: float,
-    edge: Edge,
-    settings: ColdLayerSettings,
-    seconds: float | None = None,
-) -> Night:
-    """One night over one ground, on one processor (it releases the interpreter, so several may run side by side).
-
-    Parameters
-    ----------
-    ground : CoarseGround
-    water : bool array, shape (rows, cols)
-        Sea and lakes: whatever reaches them is gone.
-    supply : array, shape (rows, cols)
-        Air that cools, by :func:`supply_m_s` times sky view and cover. [m/s]
-    deficit_k : float
-        Δθ. [K]
-    edge : "open" or "walled"
-        Beyond the known ground depth and flow go on as they are at its edge; or nothing passes.
-    seconds : float, optional
-        Length of the run; the night of the settings without it. [s]
-
-    Returns
-    -------
-    Night
-
-    Raises
-    ------
-    GridError
-        If an array is not on the ground's grid.
-
-    Notes
-    -----
-    Depth-averaged flow without advection (after Bates, Horritt & Fewtrell 2010, J. Hydrol. 387:33–45, their eq. 11)
-    with reduced gravity, quadratic drag, flux never above critical, and outflow of a cell cut to what it holds. The
-    cooling of each cell falls linearly with depth to none at ``fill_m``. All in float64.
-    """
-    grid = ground.grid
-    if water.shape != grid.shape or supply.shape != grid.shape:
-        raise GridError(
-            f"water of {water.shape} and supply of {supply.shape} were given for ground of {grid.shape}",
-            "one value a cell is needed",
-            "Build them on the coarse grid of the ground",
-        )
-    known = ~np.isnan(ground.bed_m)
-    gravity = reduced_gravity_m_s2(deficit_k, settings)
-    length = settings.night_h * 3600.0 if seconds is None else seconds
-    steps = math.ceil(length / time_step_s(gravity, grid.cell_size_m, settings) - 1e-9)
-    step = length / steps
-    depth = np.zeros(grid.shape)
-    flux_x, flux_y = np.zeros((grid.rows, grid.cols + 1)), np.zeros((grid.rows + 1, grid.cols))
-    supply_m = np.where(water & known, -1.0, np.where(known, supply * step, -2.0))
-    if np.isnan(supply_m).any():
-        raise GridError(
-            "the supply of cold air is unknown over known ground",
-            "a supply for each known cell is needed",
-            "Fill gaps of the sky view with 1 first",
-        )
-    supplied, sunk = np.zeros(grid.cols), np.zeros(grid.cols)
-    at_once = max(1, min(8, (CACHE_BYTES // (72 * grid.cols) - 3) // 2))
-    came_in = night(
-        depth,
-        flux_x,
-        flux_y,
-        np.where(known, ground.bed_m, 0.0),
-        ground.sill_x_m,
-        ground.sill_y_m,
-        ground.width_x,
-        ground.width_y,
-        supply_m,
-        *_open_edges(known & ~water if edge == "open" else np.zeros_like(known), known),
-        steps,
-        step,
-        grid.cell_size_m,
-        gravity,
-        settings.friction,
-        settings.depth_bound_m,
-        CRITICAL,
-        settings.fill_m,
-        at_once,
-        supplied,
-        sunk,
-    )
-    area = grid.cell_size_m**2
-    balance = Balance(*(float(np.sum(one)) * area for one in (supplied, came_in, depth, sunk)))
-    per_second = grid.cell_size_m / step
-    x, y = flux_x * per_second, flux_y * per_second
-    unknown = np.where(known, 0.0, np.nan)
-    return Night(
-        depth + unknown,
-        0.5 * (x[:, :-1] + x[:, 1:]) + unknown,
-        -0.5 * (y[:-1] + y[1:]) + unknown,
-        balance,
-        step,
-        steps,
-    )
-
-
-def _open_edges(
-    inside: NDArray[np.bool_], known: NDArray[np.bool_]
-) -> tuple[NDArray[np.int64], NDArray[np.int64], NDArray[np.int64]]:
-    """Sides of known land that look on unknown ground or out of the grid: where each row's begin, column, side."""
-    wide = np.pad(known, 1)
-    beyond = (wide[1:-1, :-2], wide[1:-1, 2:], wide[:-2, 1:-1], wide[2:, 1:-1])
-    found = [np.nonzero(inside & ~there) for there in beyond]
-    row = np.concatenate([rows for rows, _ in found])
-    col = np.concatenate([cols for _, cols in found])
-    side = np.repeat(np.arange(4), [len(rows) for rows, _ in found])
-    order = np.lexsort((col, side, row))
-    first = np.searchsorted(row[order], np.arange(known.shape[0] + 1))
-    return first.astype(np.int64), col[order].astype(np.int64), side[order].astype(np.int64)
-
-
-def cold_layer(
-    elevation: Field,
-    water: NDArray[np.bool_],
-    sky_view: Field | None,
-    settings: ColdLayerSettings,
-    source: Source | None = None,
-    vertical_error_m: float = 0.0,
-) -> ColdLayer:
-    """The layer at the end of a calm clear night over a block.
+def night_ground(
+    elevation: Field, water: NDArray[np.bool_], settings: ColdLayerSettings, vertical_error_m: float = 0.0
+) -> NightGround:
+    """Average a window's ground and water to 90 m, with narrow ways through kept open.
 
     Parameters
     ----------
@@ -254,53 +85,82 @@ def cold_layer(
         Height on the lattice, cells of 5, 10, 30 or 90 m; water at its level. [m] NaN where unknown. Give 27 km of
         ground round the plots where there are data.
     water : bool array, shape (rows, cols)
-        Sea and lakes.
-    sky_view : Field, optional
-        0–1, on the same grid or a part of it; where it is unknown or does not reach, the open sky.
+        Sea and lakes: what reaches them is gone. See :func:`sitescreen.terrain.ground.open_to_cold_air`.
     settings : ColdLayerSettings
-    source : Source, optional
-        The settings' own without it.
     vertical_error_m : float
         One standard deviation of the terrain's height; gorges count from three times that. [m]
-
-    Returns
-    -------
-    ColdLayer
-        On the 90 m lattice. Unknown where the ground is, and where an open and a walled edge of the ground disagree.
 
     Raises
     ------
     GridError
         If the arrays are not on one grid of the lattice.
     """
-    if water.shape != elevation.grid.shape or (sky_view is not None and not _lies_in(sky_view.grid, elevation.grid)):
+    if water.shape != elevation.grid.shape:
         raise GridError(
-            "ground, water and sky view on different grids were given",
-            "one grid is needed, or a sky view on a part of it",
+            f"water of {water.shape} and ground of {elevation.grid.shape} on different grids were given",
+            "one grid is needed",
             "Compute them from the same elevation field",
         )
-    source = source or Source(settings.heat_w_m2, settings.deficit_k)
     ground = coarse_ground(elevation, max(settings.gorge_depth_m, 3.0 * vertical_error_m), settings.section_m)
-    grid = ground.grid
-    known = ~np.isnan(ground.bed_m)
-    per_cell = round(grid.cell_size_m / elevation.grid.cell_size_m)
+    wet_share = _averaged(Field(water.astype(np.float32), elevation.grid, "1", "share of water"), ground.grid)
+    return NightGround(ground, np.nan_to_num(wet_share, nan=0.0) >= 0.5, elevation.grid)
 
-    def averaged(field: Field) -> FloatArray:
-        return block_means(on_coarse_edges(field, grid), per_cell)
 
-    wet_share = averaged(Field(water.astype(np.float32), elevation.grid, "1", "share of water"))
-    wet = np.nan_to_num(wet_share, nan=0.0) >= 0.5
-    sky = np.ones(grid.shape) if sky_view is None else np.nan_to_num(averaged(sky_view), nan=1.0)
-    open_supply = supply_m_s(source, np.where(known, ground.bed_m, 0.0))
+def cold_layer(
+    night: NightGround,
+    sky_view: Field | None,
+    settings: ColdLayerSettings,
+    source: Source | None = None,
+    cover: Field | None = None,
+) -> ColdLayer:
+    """The layer at the end of a calm clear night over a block.
+
+    Parameters
+    ----------
+    night : NightGround
+    sky_view, cover : Field, optional
+        Share of the open sky, 0–1, and how much cold air the ground cover makes, 1 for open ground; on the fine grid
+        of the ground or a part of it. Where unknown or out of reach, 1.
+    settings : ColdLayerSettings
+    source : Source, optional
+        The settings' own without it.
+
+    Returns
+    -------
+    ColdLayer
+        Where its two runs disagree is for :func:`sitescreen.climate.cold_kinds.cold_kinds` to say.
+
+    Raises
+    ------
+    GridError
+        If sky view or cover do not lie in the ground's grid.
+    """
+    ground, grid = night.ground, night.ground.grid
+    source = source or Source(settings.heat_w_m2, settings.deficit_k)
+    share = np.ones(grid.shape)
+    for field in (sky_view, cover):
+        if field is not None:
+            if not _lies_in(field.grid, night.fine):
+                raise GridError(
+                    "ground, and sky view or cover, on different grids were given",
+                    "one grid is needed, or a part of it",
+                    "Compute them from the same elevation field",
+                )
+            share *= np.nan_to_num(_averaged(field, grid), nan=1.0)
+    open_supply = supply_m_s(source, np.where(np.isnan(ground.bed_m), 0.0, ground.bed_m))
     edges: tuple[Edge, Edge] = ("open", "walled")
     runs: dict[Edge, Night] = {}
 
     def run(first: int, stop: int) -> None:
         for edge in edges[first:stop]:
-            runs[edge] = run_night(ground, wet, open_supply * sky, source.deficit_k, edge, settings)
+            runs[edge] = run_night(ground, night.wet, open_supply * share, source.deficit_k, edge, settings)
 
     in_bands(run, len(edges))
     return _layer(ground, runs["open"], runs["walled"], level_depth_m(open_supply, settings), source, settings)
+
+
+def _averaged(field: Field, grid: Grid) -> FloatArray:
+    return block_means(on_coarse_edges(field, grid), round(grid.cell_size_m / field.grid.cell_size_m))
 
 
 def _lies_in(part: Grid, whole: Grid) -> bool:
@@ -314,38 +174,43 @@ def _lies_in(part: Grid, whole: Grid) -> bool:
 def _layer(
     ground: CoarseGround, opened: Night, walled: Night, level: FloatArray, source: Source, settings: ColdLayerSettings
 ) -> ColdLayer:
-    """The open run, which keeps a plain a plain up to its edge, where the walled one agrees."""
     grid = ground.grid
     gravity = reduced_gravity_m_s2(source.deficit_k, settings)
-    depth, east, north = opened.depth_m, opened.east_m2_s, opened.north_m2_s
-    allowed = np.maximum(settings.edge_differ_m, settings.edge_differ_share * depth)
-    differs = np.abs(opened.depth_m - walled.depth_m) > allowed
-    discharge = np.hypot(east, north)
-    with np.errstate(invalid="ignore", divide="ignore"):
-        froude = np.where(depth > 0.01, discharge / (depth * np.sqrt(gravity * depth)), 0.0)
-    fall = _fall_along(ground.bed_m + depth, east, north, discharge, grid)
-    speed = np.cbrt(gravity * discharge * fall / settings.friction)
-    bed = Field(ground.bed_m.astype(np.float32), grid, "m", "height at 90 m")
-    surroundings = disc_mean(bed, settings.surroundings_m).values.astype(np.float64)
-    unknown = np.where(differs | np.isnan(depth), np.nan, 0.0)
+    unknown = np.where(np.isnan(ground.bed_m), np.nan, 0.0)
 
     def field(values: FloatArray, unit: str, what: str) -> Field:
         return Field((values + unknown).astype(np.float32), grid, unit, what)
 
+    most = CRITICAL * np.sqrt(gravity * level**3)
     return ColdLayer(
         ground=ground,
-        depth_m=field(depth, "m", "depth of the night's cold air"),
         level_m=field(level, "m", "depth of the night's cold air on level ground"),
-        discharge_m2_s=field(discharge, "m²/s", "cold air that passes each metre of width"),
-        froude=field(froude, "1", "speed of the cold air over the speed of its waves"),
-        speed_m_s=field(speed, "m/s", "speed of the night air"),
-        level_most_m2_s=field(
-            CRITICAL * np.sqrt(gravity * level**3), "m²/s", "the most that level ground's air can pass"
-        ),
-        rise_m=Field((ground.bed_m - surroundings).astype(np.float32), grid, "m", "height over the wider surroundings"),
-        edge_differs=differs,
+        level_most_m2_s=field(most, "m²/s", "the most that level ground's air can pass"),
+        rise_m=_rise_m(ground, settings),
+        opened=_air(opened, ground, gravity, settings),
+        walled=_air(walled, ground, gravity, settings),
+        deficit_k=source.deficit_k,
         runs=(opened, walled),
     )
+
+
+def _air(run: Night, ground: CoarseGround, gravity: float, settings: ColdLayerSettings) -> Air:
+    discharge = np.hypot(run.east_m2_s, run.north_m2_s)
+    with np.errstate(invalid="ignore", divide="ignore"):
+        froude = np.where(run.depth_m > 0.01, discharge / (run.depth_m * np.sqrt(gravity * run.depth_m)), 0.0)
+    fall = _fall_along(ground.bed_m + run.depth_m, run.east_m2_s, run.north_m2_s, discharge, ground.grid)
+    speed = np.cbrt(gravity * discharge * fall / settings.friction)
+    froude[np.isnan(run.depth_m)] = np.nan
+    return Air(*(values.astype(np.float32) for values in (run.depth_m, discharge, froude, speed)))
+
+
+def _rise_m(ground: CoarseGround, settings: ColdLayerSettings) -> Field:
+    """Height over the mean of the surroundings, smaller ones where the known ground ends nearer."""
+    bed = Field(ground.bed_m.astype(np.float32), ground.grid, "m", "height at 90 m")
+    mean = disc_mean(bed, settings.surroundings_m).values
+    for share in (2.0 / 3.0, 1.0 / 3.0):
+        mean = np.where(np.isnan(mean), disc_mean(bed, share * settings.surroundings_m).values, mean)
+    return Field(bed.values - mean, ground.grid, "m", "height over the wider surroundings")
 
 
 def _fall_along(top: FloatArray, east: FloatArray, north: FloatArray, discharge: FloatArray, grid: Grid) -> FloatArray:

@@ -17,6 +17,14 @@ FloatArray = NDArray[np.float64]
 COOL_SEASON_MONTHS = 3
 """The cool season is the three coolest months of the year: our choice, no source."""
 
+COOL_SEASON = {
+    "cool_season_min_c": "t_min_c",
+    "cool_season_mean_c": "t_mean_c",
+    "cool_season_rh": "rh_mean",
+    "clear_calm_nights": "clear_calm_nights",
+}
+"""Columns that are means over those months, and the monthly column each is the mean of."""
+
 
 def station_climate(normals: "Normals") -> pd.DataFrame:
     """The year of each station, from its twelve months.
@@ -30,8 +38,8 @@ def station_climate(normals: "Normals") -> pd.DataFrame:
     -------
     DataFrame, one row a station
         station, lon, lat, elevation_m; t_mean_c, mean of the monthly (max + min)/2; t_range_k, mean of the monthly
-        ranges; rh_mean [%]; hottest_month_max_c; coolest_month_min_c; rain_year_mm; clear_calm_nights, a month in the
-        three coolest months, NaN where not given.
+        ranges; rh_mean [%]; hottest_month_max_c; coolest_month_min_c; rain_year_mm; of the three coolest months
+        cool_season_min_c, cool_season_mean_c, cool_season_rh, and clear_calm_nights a month, NaN where not given.
     """
     months = normals.stations
     if "clear_calm_nights" not in months:
@@ -52,7 +60,9 @@ def station_climate(normals: "Normals") -> pd.DataFrame:
         rain_year_mm=("rain_mm", "sum"),
     )
     coolest = months.sort_values(["station", "t_mean_c", "month"]).groupby("station").head(COOL_SEASON_MONTHS)
-    table["clear_calm_nights"] = coolest.groupby("station")["clear_calm_nights"].mean()
+    cool = coolest.groupby("station")
+    for name, column in COOL_SEASON.items():
+        table[name] = cool[column].mean()
     return table.reset_index()
 
 
@@ -73,8 +83,9 @@ def plot_climate(
     Returns
     -------
     DataFrame, n rows
-        t_mean_c, t_range_k, rh_mean, hottest_month_max_c, coolest_month_min_c, rain_year_mm, clear_calm_nights,
-        station, station_distance_km, station_rise_m (plot above station). Indexed as ``elevation_m`` if that is.
+        t_mean_c, t_range_k, rh_mean, hottest_month_max_c, coolest_month_min_c, rain_year_mm, those of
+        :data:`COOL_SEASON`, station, station_distance_km, station_rise_m (plot above station). Indexed as
+        ``elevation_m`` if that is.
 
     Notes
     -----
@@ -113,6 +124,9 @@ def plot_climate(
             "hottest_month_max_c": at["hottest_month_max_c"].to_numpy(np.float64) - cooler_k,
             "coolest_month_min_c": at["coolest_month_min_c"].to_numpy(np.float64) - cooler_k,
             "rain_year_mm": at["rain_year_mm"].to_numpy(np.float64),
+            "cool_season_min_c": at["cool_season_min_c"].to_numpy(np.float64) - cooler_k,
+            "cool_season_mean_c": at["cool_season_mean_c"].to_numpy(np.float64) - cooler_k,
+            "cool_season_rh": at["cool_season_rh"].to_numpy(np.float64),
             "clear_calm_nights": at["clear_calm_nights"].to_numpy(np.float64),
             "station": at["station"].to_numpy(),
             "station_distance_km": distance_km,

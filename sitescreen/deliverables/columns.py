@@ -133,14 +133,14 @@ CONTRACT: tuple[Column, ...] = (
     _text(
         "cold_pool_kind",
         "cold air",
-        "Whether cold air lies there on calm clear nights: none, closed, leaky, moving, unknown.",
+        "Cold air on calm clear nights: none, closed (a hollow), leaky (held back), moving, unknown.",
     ),
-    _number("cold_pool_depth_m", 1, "m", "cold air depth", "Depth of the cold air below the lip that holds it."),
+    _number("cold_pool_depth_m", 1, "m", "cold air depth", "Depth of the cold air; to the lip of a closed hollow."),
     _number(
         "cold_pool_chance", 2, "0–1", "cold air chance", "How sure the cold air is, given the terrain model's error."
     ),
     _number(
-        "cold_deficit_k", 1, "°C", "colder by", "How much colder than open ground the air is on a calm clear night."
+        "cold_deficit_k", 1, "°C", "colder by", "How much colder than level ground the air is on a calm clear night."
     ),
     _number(
         "smallest_pool_seen_m",
@@ -149,7 +149,7 @@ CONTRACT: tuple[Column, ...] = (
         "smallest seen",
         "Hollows shallower than this cannot be seen in this terrain model.",
     ),
-    _number("night_minimum_c", 1, "°C", "night minimum", "Expected night minimum in the cool season."),
+    _number("night_minimum_c", 1, "°C", "night minimum", "Expected minimum of a calm clear night in the cool season."),
     _number("floor_height_m", 1, "m", "above the channel", "Height above the nearest channel floor."),
     _number("sky_view", 3, "0–1", "open sky", "Share of the sky that the ground around leaves open."),
     _number(
@@ -193,14 +193,14 @@ CONTRACT: tuple[Column, ...] = (
         "Bearing the offshore breeze of the night comes from.",
     ),
     _number("breeze_arrival_h", 1, "h", "breeze arrives at", "Hour of the day, by the sun, when the breeze arrives."),
-    _number("night_flow_m2_s", 2, "m²/s", "night air flow", "Cold air passing through on calm clear nights."),
+    _number("night_flow_m2_s", 2, "m²/s", "night air flow", "Cold air that passes each metre of width at night."),
     _number("night_flow_speed_m_s", 2, "m/s", "night air speed", "Speed of that air."),
     _number(
         "clear_calm_nights",
         1,
         "nights a month",
         "calm clear nights",
-        "Nights in the cool season that are clear and calm.",
+        "Nights a month in the cool season that are clear and calm; 10 is assumed where the normals do not say.",
     ),
     _number(
         "driving_rain", 2, "× open ground", "driving rain", "Strong wind of the rainy season compared with open ground."
@@ -231,6 +231,21 @@ MORE: Mapping[str, Column] = {
         _number(
             "share_flat_water", 2, "0–1", "on flat water", "Share that looks like a water surface in the terrain model."
         ),
+        _number(
+            "cold_deficit_least_k",
+            1,
+            "°C",
+            "colder by at least",
+            "As “colder by”; where that is unknown, the least that ground beyond the terrain model leaves open.",
+        ),
+        _number("cold_deficit_most_k", 1, "°C", "colder by at most", "The most that it leaves open."),
+        _number(
+            "still_air", 2, "0–1", "still air", "How far the night’s air stands in a hollow or behind narrows; 0 moves."
+        ),
+        _number("sill_distance_m", 0, "m", "hollow spills at", "Distance to where the plot’s closed hollow spills."),
+        _number("sill_bearing_deg", 0, "° from true north", "hollow spills to", "Bearing of that place."),
+        _number("pool_catchment_ha", 1, "ha", "hollow’s catchment", "Ground that drains into that hollow."),
+        _number("pool_fill_h", 2, "h", "hollow fills in", "How long that ground’s cold air takes to fill it."),
         _text("zone_2", "second zone", "A second zone that shares the plot."),
         _number(
             "zone_2_share", 2, "0–1", "share of the second", "How much of the judgement comes from the second zone."

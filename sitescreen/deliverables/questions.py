@@ -70,8 +70,8 @@ ASKED = (
         "cold",
         "Cold air at night?",
         "Cold air",
-        "Hollows without an outlet, where cold air lies on calm clear nights. "
-        "Cold air held back by narrows, or passing through, is not yet seen.",
+        "Where cold air lies on calm clear nights: in hollows without an outlet, and where the air of a computed night "
+        "is held back, deeper than on level ground. How sure that is, given the terrain’s error, is not yet measured.",
     ),
     Asked(
         "sun",
@@ -90,8 +90,8 @@ PLAIN: Mapping[str, tuple[tuple[str, Curve, str], ...]] = {
          "Distance to the nearest shore"),
     ),
     "cold": (
-        ("hollow_depth_m", ((0.0, 100.0), (1.0, 80.0), (3.0, 60.0), (6.0, 40.0), (12.0, 20.0), (24.0, 0.0)),
-         "Depth of closed hollows"),
+        ("cold_deficit_k", ((0.0, 100.0), (0.5, 80.0), (1.0, 60.0), (2.0, 40.0), (4.0, 20.0), (6.0, 0.0)),
+         "Colder than level ground"),
     ),
     "ground": (
         ("slope_deg", ((0.0, 100.0), (3.0, 80.0), (6.0, 60.0), (9.0, 40.0), (14.0, 20.0), (20.0, 0.0)), "Slope"),
@@ -106,6 +106,7 @@ they mark nothing."""
 
 _OTHER_COLUMNS = {
     "hollow_depth_m": Column("hollow_depth_m", "number", 1, "m", "hollow depth", ""),
+    "cold_depth_m": Column("cold_depth_m", "number", 0, "m", "depth of cold air", ""),
 }
 
 MOST_VIEWS = 6

@@ -41,6 +41,10 @@ class Heights(NamedTuple):
     stored: Field
     """Of the model's own cell under each centre: exact, for telling level water."""
 
+    def part(self, bounds: Bounds) -> "Heights":
+        """Both inside bounds that lie on the grid's cell edges."""
+        return Heights(self.ground.part(bounds), self.stored.part(bounds))
+
 
 @dataclass
 class Terrain:

@@ -32,7 +32,8 @@ class Coverage:
     share: FloatArray
     cells: FloatArray
 
-    def _total(self, per_cell: FloatArray) -> FloatArray:
+    def total(self, per_cell: FloatArray) -> FloatArray:
+        """Sum over each plot of one number for each of the entries. Shape (n,)."""
         # bincount adds each plot's cells in their own order, so a plot's sum cannot depend on the other plots
         return np.asarray(np.bincount(self.plot, weights=per_cell, minlength=len(self.cells)), dtype=np.float64)
 
@@ -40,7 +41,7 @@ class Coverage:
         """The part of each plot's ground where a raster has a value, 0–1. Shape (n,); 0 where the plot has no cells."""
         known = np.isfinite(values.ravel()[self.cell])
         with np.errstate(invalid="ignore", divide="ignore"):
-            share = self._total(self.share * known) / self.cells
+            share = self.total(self.share * known) / self.cells
         return np.where(self.cells > 0, share, 0.0)
 
     def mean(self, values: NDArray[Any], least_known: float) -> FloatArray:
@@ -62,7 +63,7 @@ class Coverage:
         known = np.isfinite(picked)
         weight = self.share * known
         with np.errstate(invalid="ignore", divide="ignore"):
-            mean = self._total(weight * np.where(known, picked, 0.0)) / self._total(weight)
+            mean = self.total(weight * np.where(known, picked, 0.0)) / self.total(weight)
         return np.where(self.known_share(values) >= least_known, mean, np.nan)
 
     def largest(self, values: NDArray[Any], least_share: float = 0.5) -> FloatArray:
@@ -72,7 +73,7 @@ class Coverage:
         """
         picked = values.ravel()[self.cell].astype(np.float64)
         inside = self.share >= least_share
-        has_inside = self._total(inside.astype(np.float64)) > 0
+        has_inside = self.total(inside.astype(np.float64)) > 0
         use = np.isfinite(picked) & (inside | ~has_inside[self.plot])
         out = np.full(len(self.cells), -np.inf)
         np.maximum.at(out, self.plot[use], picked[use])

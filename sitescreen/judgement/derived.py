@@ -55,7 +55,8 @@ def possible_range(reading: str, readings: pd.DataFrame) -> tuple[FloatArray, Fl
     -------
     low, high : float64 arrays, shape (n,)
         −inf and inf where nothing limits it. Ground of unknown direction faces any way as far as its slope allows, so
-        that level ground is close to 0 for certain.
+        that level ground is close to 0 for certain. Cold that depends on ground beyond the terrain model lies between
+        what two opposite guesses at that ground give.
     """
     low = np.full(len(readings), -np.inf)
     high = np.full(len(readings), np.inf)
@@ -64,6 +65,9 @@ def possible_range(reading: str, readings: pd.DataFrame) -> tuple[FloatArray, Fl
         # an unknown slope leaves the whole range
         high = np.where(np.isnan(strength), 1.0, strength)
         low = -high
+    elif reading == "cold_deficit_k":
+        least, most = _column(readings, "cold_deficit_least_k"), _column(readings, "cold_deficit_most_k")
+        low, high = np.where(np.isnan(least), -np.inf, least), np.where(np.isnan(most), np.inf, most)
     return low, high
 
 

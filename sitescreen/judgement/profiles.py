@@ -40,6 +40,8 @@ MEASURED_READINGS = (
     "sun_year_h",
     "west_load_kwh_m2",
     "cool_gain_kwh_m2",
+    "night_flow_speed_m_s",
+    "still_air",
     "pond_depth_m",
     "area_ha",
 )

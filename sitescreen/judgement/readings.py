@@ -1,13 +1,11 @@
 """The readings: what was measured of each plot, and why a value is missing where it is."""
 
-from dataclasses import dataclass
 from typing import Any, NamedTuple
 
 import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
-from sitescreen.climate.cold_air import ClosedPools
 from sitescreen.judgement.coverage import Coverage
 from sitescreen.settings import ReadingSettings
 from sitescreen.terrain.ground import Ground
@@ -26,20 +24,11 @@ class Readings(NamedTuple):
     why_unknown: pd.DataFrame
 
 
-@dataclass(frozen=True)
-class BlockClimate:
-    """The climate stage's fields of one block."""
-
-    pools: ClosedPools
-
-
 def block_readings(
     plot_ids: list[str],
     coverage: Coverage,
     ground: Ground,
-    climate: BlockClimate,
     convergence_deg: FloatArray,
-    smallest_pool_m: float,
     settings: ReadingSettings,
 ) -> Readings:
     """Readings of one block's plots, from its fields.
@@ -49,12 +38,10 @@ def block_readings(
     plot_ids : list of str, length n
     coverage : Coverage
         The cells under those plots.
-    ground, climate : Ground, BlockClimate
+    ground : Ground
         Fields on the same grid.
     convergence_deg : float64 array, shape (n,)
         Bearing of grid north from true north at each plot. [°]
-    smallest_pool_m : float
-        The shallowest hollow that counts. [m]
     settings : ReadingSettings
 
     Returns
@@ -100,19 +87,6 @@ def block_readings(
 
     reading("rise_m", mean(ground.rise.values), "the terrain model ends within 1 km of the plot")
     reading("sky_view", mean(ground.sky_view.values), no_ground)
-
-    depth = mean(climate.pools.depth_m.values)
-    in_pool = mean((climate.pools.depth_m.values > 0).astype(np.float32)) >= settings.pool_share_least
-    cut = mean(climate.pools.cut.astype(np.float32)) >= settings.pool_share_least
-    unknown = cut | np.isnan(depth)
-    depth = np.where(in_pool & ~unknown, depth, np.where(unknown, np.nan, 0.0))
-    out["cold_pool_kind"] = np.where(unknown, "unknown", np.where(in_pool, "closed", "none")).astype(object)
-    if cut.any():
-        gap("cold_pool_depth_m", cut, "the hollow runs off the edge of the terrain model")
-    reading("cold_pool_depth_m", depth, no_ground)
-    out["smallest_pool_seen_m"] = np.where(np.isnan(out["elevation_m"]), np.nan, smallest_pool_m)
-    pond = coverage.largest(np.where(climate.pools.cut, np.nan, climate.pools.depth_m.values))
-    reading("pond_depth_m", np.where(unknown, np.nan, pond), "the hollow runs off the edge of the terrain model")
 
     out["cells"] = coverage.cells
     out["share_flat_water"] = mean((ground.flat.label > 0).astype(np.float32))

@@ -72,6 +72,10 @@ def facts(row: Mapping[str, Any]) -> dict[str, Any]:
         told["morning_lost_pct"] = 100.0 * (1.0 - known["morning_sun_share"])
     if "slope_deg" in known:
         told["slope_pct"] = 100.0 * math.tan(math.radians(known["slope_deg"]))
+    if "cold_pool_kind" in known:
+        told["cold_does"] = "flows through here" if known["cold_pool_kind"] == "moving" else "lies here"
+    if {"sill_distance_m", "sill_bearing_deg"} <= known.keys():
+        told["sill_away"] = _away(known["sill_distance_m"], known["sill_bearing_deg"])
     if "rise_m" in known:
         told["below_m"] = -known["rise_m"]
         if known["rise_m"] >= LEVEL_WITH_M:
@@ -94,9 +98,13 @@ def facts(row: Mapping[str, Any]) -> dict[str, Any]:
 
 
 def _ridge(above_m: float, away_m: float, bearing_deg: float, skyline_deg: float) -> str:
+    return f"a {above_m:.0f} m ridge {_away(away_m, bearing_deg)} stands {skyline_deg:.0f}° above the plot"
+
+
+def _away(away_m: float, bearing_deg: float) -> str:
+    """Where something lies as people say it: "640 m to the east", "1.2 km to the south-west"."""
     away = f"{away_m / 1000.0:.1f} km" if away_m >= 950.0 else f"{max(round(away_m, -1), 10.0):.0f} m"
-    where = f"{away} to the {compass_word(bearing_deg)}"
-    return f"a {above_m:.0f} m ridge {where} stands {skyline_deg:.0f}° above the plot"
+    return f"{away} to the {compass_word(bearing_deg)}"
 
 
 def is_known(value: Any) -> bool:

@@ -1,10 +1,10 @@
-"""Closed hollows as cold pools, and what they cost in warmth."""
+"""Closed hollows as cold pools."""
 
 import numpy as np
 import pytest
 from scipy.ndimage import gaussian_filter
 
-from sitescreen.climate.cold_air import closed_pools, deficit_k, smallest_pool_seen_m
+from sitescreen.climate.cold_air import closed_pools, smallest_pool_seen_m
 from sitescreen.grid import Field, Grid
 from sitescreen.settings import load_defaults
 from sitescreen.terrain.hollows import hollows
@@ -72,9 +72,3 @@ def test_unknown_ground_stays_unknown() -> None:
 def test_smallest_pool_seen_follows_the_terrains_error() -> None:
     assert smallest_pool_seen_m(4.0, COLD) == 8.0
     assert smallest_pool_seen_m(0.1, COLD) == COLD.least_depth_m
-
-
-def test_deficit_grows_with_depth_towards_the_climates_strength() -> None:
-    """ΔT·(1 − e^(−d/15 m))·sky view: at one fill scale 63.2 % of it (computed)."""
-    deficit = deficit_k(np.array([0.0, 15.0, 1000.0]), 6.0, np.array([1.0, 1.0, 0.9]), COLD)
-    assert deficit == pytest.approx([0.0, 6.0 * (1 - np.exp(-1)), 5.4])

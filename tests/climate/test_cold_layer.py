@@ -5,19 +5,20 @@ import math
 import numpy as np
 import pytest
 
-from sitescreen.climate import cold_layer as module
-from sitescreen.climate._cold_layer_kernel import night as kernel
-from sitescreen.climate.cold_layer import (
+from sitescreen.climate import cold_flow as module
+from sitescreen.climate._cold_flow_kernel import night as kernel
+from sitescreen.climate.cold_flow import (
     CRITICAL,
+    Edge,
     Night,
     Source,
-    cold_layer,
     level_depth_m,
     reduced_gravity_m_s2,
     run_night,
     supply_m_s,
     time_step_s,
 )
+from sitescreen.climate.cold_layer import ColdLayer, cold_layer, night_ground
 from sitescreen.errors import GridError
 from sitescreen.grid import Field, Grid
 from sitescreen.settings import load_defaults
@@ -38,6 +39,11 @@ def _coarse(values: np.ndarray, cell_m: float = 90.0) -> CoarseGround:
     return coarse_ground(_field(values, cell_m), SETTINGS.gorge_depth_m, SETTINGS.section_m)
 
 
+def _layer(values: np.ndarray) -> ColdLayer:
+    """The layer over ground without water."""
+    return cold_layer(night_ground(_field(values), _dry(values), SETTINGS), None, SETTINGS)
+
+
 def _dry(values: np.ndarray) -> np.ndarray:
     return np.zeros(values.shape, dtype=bool)
 
@@ -47,7 +53,7 @@ def _hills(rows: int = 40, cols: int = 50) -> np.ndarray:
     return 300.0 + 90.0 * np.sin(x / 5.0) * np.cos(y / 7.0) + 2.0 * x
 
 
-def _run(values: np.ndarray, edge: module.Edge = "open", hours: float = 1.0) -> Night:
+def _run(values: np.ndarray, edge: Edge = "open", hours: float = 1.0) -> Night:
     ground = _coarse(values)
     supply = supply_m_s(SOURCE, np.nan_to_num(ground.bed_m))
     return run_night(ground, _dry(values), supply, SOURCE.deficit_k, edge, SETTINGS, 3600.0 * hours)
@@ -68,23 +74,18 @@ def test_supply_follows_from_the_heat(heat_w_m2: float, deficit_k: float, elevat
 def test_level_ground_is_the_reference(window_km: int, turned: bool) -> None:
     """A plain of 0.05 % slope, three cells wide (nothing crosses it): depth h_s(1 − e^(−q·t/h_s)), whatever the window.
 
-    The depth itself is compared, not the clipped deficit. The walled edge piles air up and starves; it must not
-    reach the middle, nor make anything unknown that lies 12 km from the edge.
+    The depth itself is compared, not the clipped deficit. The walled edge piles air up and starves; it must not reach
+    the middle.
     """
     cells = round(window_km * 1000 / 90)
     height = np.repeat(0.0005 * 90.0 * np.arange(cells)[None], 3, axis=0)
     height = height.T.copy() if turned else height
-    layer = cold_layer(_field(height), _dry(height), None, SETTINGS)
+    layer = _layer(height)
     q = 3600.0 * 30.0 / (1.225 * 1005.0 * 8.0)
     level = 50.0 * (1.0 - math.exp(-q * 6.0 / 50.0))
     opened, walled = (run.depth_m.T if turned else run.depth_m for run in layer.runs)
     assert opened == pytest.approx(level, abs=0.1)  # the plain's own 42 m of rise thin the air a little
     assert walled[1, cells // 2] == pytest.approx(level, abs=1.0)
-    differs = layer.edge_differs.T if turned else layer.edge_differs
-    inner = round(11_950 / 90)
-    assert not differs[:, inner : cells - inner].any()
-    reported = layer.depth_m.values.T if turned else layer.depth_m.values
-    assert reported[:, inner : cells - inner] == pytest.approx(level, abs=0.1)
 
 
 def test_level_depth_is_the_models_own() -> None:
@@ -97,7 +98,7 @@ def test_level_depth_is_the_models_own() -> None:
 def test_no_pool_on_a_mesa() -> None:
     y, x = np.mgrid[-40:41, -40:41] * 90.0
     height = 300.0 * (np.maximum(abs(x), abs(y)) < 1500.0) + 0.0
-    layer = cold_layer(_field(height), _dry(height), None, SETTINGS)
+    layer = _layer(height)
     top = height == 300.0
     assert (layer.runs[0].depth_m[top] < layer.level_m.values[top].min()).all()
     assert (layer.rise_m.values[38:43, 38:43] > 100.0).all()
@@ -143,7 +144,7 @@ def test_a_closed_bowl_fills_level() -> None:
 
 
 @pytest.mark.parametrize("edge", ["open", "walled"])
-def test_no_air_is_lost(edge: module.Edge) -> None:
+def test_no_air_is_lost(edge: Edge) -> None:
     height = _hills()
     height[10:14, 20:30] = np.nan
     height[30:, :4] = np.nan
@@ -200,8 +201,8 @@ def test_threads_and_the_cache_change_nothing(monkeypatch: pytest.MonkeyPatch) -
     for processors, cache_bytes in ((1, 1_500_000), (2, 1_500_000), (2, 1)):
         monkeypatch.setattr(threads, "thread_count", lambda processors=processors: processors)
         monkeypatch.setattr(module, "CACHE_BYTES", cache_bytes)
-        layer = cold_layer(_field(height), _dry(height), None, SETTINGS)
-        results.append([part for run in layer.runs for part in run[:3]] + [layer.depth_m.values])
+        layer = _layer(height)
+        results.append([part for run in layer.runs for part in run[:3]] + [*layer.opened, *layer.walled])
     for other in results[1:]:
         assert all(np.array_equal(a, b, equal_nan=True) for a, b in zip(results[0], other, strict=True))
 
@@ -265,16 +266,26 @@ def test_a_wall_of_unknown_ground_is_a_wall() -> None:
     assert np.array_equal(other.depth_m[:, :9], only_left.depth_m)
 
 
-def test_a_slope_cut_by_the_edge_is_unknown_there() -> None:
-    """At the foot of a long slope walled air piles up and open air runs off: nobody can say. At its head both agree."""
+def test_the_two_edges_differ_at_the_foot_of_a_cut_slope() -> None:
+    """There walled air piles up and open air runs off; at the head of the slope both agree."""
     height = np.repeat(500.0 - 2.7 * abs(np.arange(201) - 100.0)[None], 3, axis=0)
-    layer = cold_layer(_field(height), _dry(height), None, SETTINGS)
-    opened, walled = (run.depth_m for run in layer.runs)
-    assert (walled[:, 0] > 2.0 * opened[:, 0]).all()
-    assert layer.edge_differs[:, [0, 1, 2, -3, -2, -1]].all()
-    assert np.isnan(layer.depth_m.values[:, 0]).all()
-    assert not layer.edge_differs[:, 80:121].any()
-    assert np.isfinite(layer.depth_m.values[:, 80:121]).all()
+    layer = _layer(height)
+    assert (layer.walled.depth_m[:, 0] > 2.0 * layer.opened.depth_m[:, 0]).all()
+    assert layer.walled.depth_m[:, 80:121] == pytest.approx(layer.opened.depth_m[:, 80:121], abs=0.5)
+
+
+def test_the_surroundings_shrink_toward_the_end_of_the_ground() -> None:
+    """To a third, and never to a part of a disc: on a plane the rise is 0 wherever it is known."""
+    row, col = np.mgrid[0:120, 0:120] * 90.0
+    rise = _layer(1000.0 + 0.01 * row + 0.004 * col).rise_m.values
+    known = np.isfinite(rise)
+    # the disc's outermost cell is 11 cells away, at a radius of 1 km
+    assert known[11:-11, 11:-11].all()
+    assert not known[:11].any()
+    assert abs(rise[known]).max() < 0.01
+    hill = _layer(np.hypot(row - 5400.0, col - 5400.0) * -0.1 + 900.0).rise_m.values
+    # a cone's mean within R lies 2/3 of R's fall below its top (by geometry)
+    assert hill[60, 60] == pytest.approx(0.1 * 3000.0 * 2.0 / 3.0, rel=0.03)
 
 
 def test_sky_and_water_reach_the_coarse_cells() -> None:
@@ -282,13 +293,18 @@ def test_sky_and_water_reach_the_coarse_cells() -> None:
     sea = np.zeros(height.shape, dtype=bool)
     sea[:, :9] = True
     half = Field(np.full(height.shape, 0.5), _field(height, 30.0).grid, "1", "sky view")
-    layer = cold_layer(_field(height, 30.0), sea, half, SETTINGS)
-    whole = cold_layer(_field(height, 30.0), sea, None, SETTINGS)
+    ground = night_ground(_field(height, 30.0), sea, SETTINGS)
+    layer, whole = cold_layer(ground, half, SETTINGS), cold_layer(ground, None, SETTINGS)
     assert layer.runs[1].balance.supplied_m3 < 0.7 * whole.runs[1].balance.supplied_m3
-    part = cold_layer(_field(height, 30.0), sea, half.part((450.0, 0.0, 900.0, 900.0)), SETTINGS)
+    part = cold_layer(ground, half.part((450.0, 0.0, 900.0, 900.0)), SETTINGS)
     assert layer.runs[1].balance.supplied_m3 < part.runs[1].balance.supplied_m3 < whole.runs[1].balance.supplied_m3
     assert (layer.runs[1].depth_m[:, :3] == 0.0).all()
     assert (layer.runs[1].depth_m[:, 3:] > 0.0).all()
+    # what grows on the ground counts as the sky does, and both together
+    covered = cold_layer(ground, None, SETTINGS, cover=half)
+    assert covered.runs[1].balance == layer.runs[1].balance
+    both = cold_layer(ground, half, SETTINGS, cover=half)
+    assert both.runs[1].balance.supplied_m3 < 0.7 * layer.runs[1].balance.supplied_m3
 
 
 def test_what_does_not_fit_is_refused() -> None:
@@ -298,4 +314,6 @@ def test_what_does_not_fit_is_refused() -> None:
     with pytest.raises(GridError, match="supply"):
         run_night(_coarse(height), _dry(height), np.full((6, 6), np.nan), 8.0, "open", SETTINGS)
     with pytest.raises(GridError, match="different grids"):
-        cold_layer(_field(height), _dry(height), _field(height, 30.0), SETTINGS)
+        cold_layer(night_ground(_field(height), _dry(height), SETTINGS), _field(height, 30.0), SETTINGS)
+    with pytest.raises(GridError, match=r"\(6, 5\)"):
+        night_ground(_field(height), _dry(height)[:, :5], SETTINGS)

@@ -37,10 +37,11 @@ def test_good_ground_raises_none(plots: Plots) -> None:
         ("upland", {"share_flat_water": 1.0, "water_disagrees": True}, "level_as_water", "concern"),
         ("upland", {"buildable_share": 0.4}, "little_gentle_ground", "concern"),
         ("upland", {"cold_pool_kind": "closed", "cold_deficit_k": 0.5}, "cold_hollow", "concern"),
-        ("high_upland", {"cold_pool_kind": "leaky"}, "cold_hollow", "concern"),
+        ("high_upland", {"cold_pool_kind": "leaky", "cold_deficit_k": 0.6}, "cold_held_back", "concern"),
+        ("upland", {"cold_pool_kind": "moving", "cold_deficit_k": 1.1}, "cold_stream", "concern"),
+        ("hot_humid_coast", {"cold_pool_kind": "leaky", "still_air": 0.4}, "still_air", "note"),
         ("savannah", {"cold_deficit_k": 3.0}, "cold_hollow_mild", "note"),
         ("upland", {"cold_pool_kind": "unknown"}, "cold_pool_unknown", "concern"),
-        ("upland", {"cold_pool_kind": "none", "rise_m": -8.0}, "narrows_not_looked_at", "note"),
         ("hot_humid_coast", {"pond_depth_m": 1.5}, "ponding", "concern"),
         ("high_upland", {"ridge_exposure": 1.4}, "exposed_ridge", "concern"),
         ("lake_basin", {"ridge_exposure": 1.4}, "windy_ground", "note"),
@@ -68,6 +69,9 @@ def test_every_rule_is_tried_above() -> None:
     ("zone", "change"),
     [
         ("hot_humid_coast", {"cold_pool_kind": "closed"}),
+        ("upland", {"cold_pool_kind": "leaky", "cold_deficit_k": 0.4}),
+        ("upland", {"cold_pool_kind": "moving", "cold_deficit_k": 0.9}),
+        ("upland", {"cold_pool_kind": "unknown", "cold_deficit_least_k": 0.0, "cold_deficit_most_k": 0.9}),
         ("hot_arid", {"cold_deficit_k": 3.0}),
         ("hot_humid_coast", {"elevation_m": 2.0, "shore_kind": "lake", "shore_distance_km": 0.5, "sea_km": np.nan}),
         ("hot_humid_coast", {"elevation_m": 2.0, "sea_km": 1.5}),
@@ -116,7 +120,7 @@ def test_the_gravest_comes_first_and_figures_are_said(plots: Plots) -> None:
 
 def test_a_sentence_without_its_figure_says_less(plots: Plots) -> None:
     found = cautions(plots({"cold_pool_kind": "closed", "cold_deficit_k": np.nan}), ["upland"], RULES)["a"]
-    assert found[0].text == "lies in a hollow where cold air gathers on still clear nights"
+    assert found[0].text == "lies in a hollow where cold air gathers on calm clear nights"
 
 
 def test_plots_that_were_not_measured_are_left_alone(plots: Plots) -> None:

@@ -77,15 +77,18 @@ BLANKED = (
     "slope_deg", "aspect_deg", "buildable_share", "rise_m", "breeze_reach", "ventilation", "ridge_exposure",
     "cold_deficit_k", "cold_pool_depth_m", "sky_view", "pond_depth_m", "shore_distance_km", "cold_pool_kind",
     "morning_sun_share", "west_load_kwh_m2",
+    "night_flow_speed_m_s", "still_air",
 )  # fmt: skip
 RANGES = {
     "slope_deg": (0, 25), "aspect_deg": (0, 360), "buildable_share": (0, 1), "rise_m": (-60, 200),
     "breeze_reach": (0, 1), "ventilation": (0.2, 2.3), "ridge_exposure": (0.3, 2), "cold_deficit_k": (0, 6),
     "cold_pool_depth_m": (0, 30), "sky_view": (0.6, 1), "pond_depth_m": (0, 6), "shore_distance_km": (0, 60),
     "morning_sun_share": (0, 1), "west_load_kwh_m2": (0, 5),
+    "night_flow_speed_m_s": (0, 6), "still_air": (0, 1),
 }  # fmt: skip
 MARKED = ("slope_deg", "rise_m", "breeze_reach", "ventilation", "ridge_exposure", "cold_deficit_k", "sky_view",
-          "pond_depth_m", "facing_ns", "morning_sun_share", "west_load_kwh_m2")  # fmt: skip
+          "pond_depth_m", "facing_ns", "morning_sun_share", "west_load_kwh_m2", "night_flow_speed_m_s",
+          "still_air")  # fmt: skip
 
 
 @st.composite
@@ -182,14 +185,14 @@ def test_ranks_within_zones_count_each_zone(plots: Plots, in_zone: InZone) -> No
 def test_the_weakest_known_mark_is_named(plots: Plots, in_zone: InZone) -> None:
     readings = plots({"slope_deg": 11.31, "ventilation": np.nan}, {"pond_depth_m": 4.0})
     table = judged(readings, in_zone(readings, "hot_humid_coast")).table
-    assert table["weakest"].tolist() == ["slope (25)", "standing water and stagnant air (0)"]
+    assert table["weakest"].tolist() == ["slope (25)", "standing water (0)"]
 
 
 # --- set aside -------------------------------------------------------------------------------------------------------
 
 
 def test_plots_with_an_outcome_are_set_aside_with_it_and_cause_no_other_alarm(plots: Plots, in_zone: InZone) -> None:
-    blank = dict.fromkeys(("slope_deg", "ventilation", "breeze_reach", "pond_depth_m"), np.nan)
+    blank = dict.fromkeys(("slope_deg", "ventilation", "breeze_reach", "pond_depth_m", "still_air"), np.nan)
     readings = plots({}, {"outcome": "outside the terrain model", **blank})
     table = judged(readings, in_zone(readings, "hot_humid_coast")).table
     assert table.at["b", "set_aside"] == "outside the terrain model"

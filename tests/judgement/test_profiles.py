@@ -53,6 +53,7 @@ def test_no_two_criteria_measure_the_same_thing(profile: ZoneProfile) -> None:
     families = [
         {"ventilation", "ridge_exposure", "rise_m"},
         {"cold_deficit_k", "cold_pool_depth_m", "pond_depth_m"},
+        {"cold_deficit_k", "cold_pool_depth_m", "still_air"},
         {"slope_deg", "buildable_share"},
         {"breeze_reach", "shore_distance_km"},
         {"sky_view", "slope_deg"},

@@ -31,13 +31,13 @@ def told(
 
 
 def test_what_gains_and_what_costs_most_comes_first(plots: Plots, in_zone: InZone) -> None:
-    """Against an ordinary coastal plot: breeze +14, ventilation −14 (0.35·(25 − 65)), ponding −13.5, slope −9."""
+    """Against an ordinary coastal plot: breeze +14, ventilation −14 (0.35·(25 − 65)), ponding −9, slope −7.2."""
     readings = plots({"ventilation": 0.6, "pond_depth_m": 4.0, "slope_deg": 11.31, "rise_m": -20.0})
     one = told(readings, in_zone(readings, "hot_humid_coast"))["a"]
     assert one.for_ == ("The sea breeze reaches it almost undiminished, from the south-east, 3.0 km from the shore.",)
     assert one.against == (
         "Lies 20 m below the ground within 1 km: hot-afternoon winds are 40 % weaker here than over open level ground.",
-        "Partly in a hollow where water could stand up to 4.0 m deep, and stale air with it.",
+        "Partly in a hollow where water could stand up to 4.0 m deep.",
         "Steep, 20 % on average: building needs terraces.",
     )
 
@@ -100,7 +100,7 @@ def test_cautions_are_told_with_their_level(plots: Plots, in_zone: InZone) -> No
 
 def test_a_plot_that_was_not_measured_gets_no_reasons(plots: Plots, in_zone: InZone) -> None:
     readings = plots({}, {})
-    readings.loc["b", ["slope_deg", "breeze_reach", "ventilation", "pond_depth_m"]] = np.nan
+    readings.loc["b", ["slope_deg", "breeze_reach", "ventilation", "pond_depth_m", "still_air"]] = np.nan
     readings.loc["b", "outcome"] = "outside the terrain model"
     assert told(readings, in_zone(readings, "hot_humid_coast"))["b"] == Reasons((), ())
 

@@ -1,4 +1,4 @@
-"""Compiled loops of :mod:`sitescreen.climate.cold_layer`: one night of cold air in motion over known ground."""
+"""Compiled loops of :mod:`sitescreen.climate.cold_flow`: one night of cold air in motion over known ground."""
 
 import math
 from typing import Any
