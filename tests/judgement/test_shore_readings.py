@@ -46,7 +46,7 @@ def read(near_m: float = 300.0, **other: Any) -> Readings:
         one("sea"), one(0), one(near_m), one(0.0), one(0.0), one(0.0), one(near_m), one(0.0), one(np.nan), one(np.nan),
         one(np.nan), one(-1), one(""),
     )  # fmt: skip
-    nothing = OpenShore(*(one(np.nan) for _ in range(5)))
+    nothing = OpenShore(*(one(np.nan) for _ in OpenShore._fields))
     return with_shore(BARE, near, nothing, breeze, one(told["onshore"]), BREEZE)
 
 
