@@ -30,13 +30,6 @@ MUST_BE_KNOWN = ["elevation_m", "slope_deg", "rise_m", "ventilation", "ridge_exp
 MUST_BE_KNOWN += ["sun_year_h", "sun_cool_morning_h", "west_load_kwh_m2", "cool_gain_kwh_m2", "sun_first_cool_h"]
 MUST_BE_KNOWN += ["sky_view", "shore_distance_km", "breeze_reach", "cold_deficit_most_k", "overall_mark"]
 MUST_BE_KNOWN += ["long_axis_deg"]
-    "sky_view",
-    "shore_distance_km",
-    "breeze_reach",
-    "cold_deficit_most_k",
-    "overall_mark",
-    "long_axis_deg",
-]
 
 
 class Site(NamedTuple):
