@@ -206,7 +206,7 @@ def views(
     wanted: dict[tuple[str, tuple[tuple[float, float], ...]], list[tuple[str, str]]] = {}
     for zone in zones_here(table):
         asked = [c for c in profiles[zone].criteria if c.question == question] if zone in profiles else []
-        drawn = [c for c in asked if c.column in groups]
+        drawn = [c for c in asked if c.column in groups and not c.kinds]
         if drawn:
             best = max(drawn, key=lambda c: c.weight)
             wanted.setdefault((best.column, tuple(best.curve)), []).append((zone, best.title))

@@ -65,7 +65,7 @@ def marks(readings: pd.DataFrame, profile: ZoneProfile) -> pd.DataFrame:
         ``mark_<criterion>``, 0–100, NaN where the reading is unknown; in the profile's order.
     """
     return pd.DataFrame(
-        {f"mark_{one.name}": mark(_values(readings, one.column), one) for one in profile.criteria},
+        {f"mark_{one.name}": mark(_values(readings, one), one) for one in profile.criteria},
         index=readings.index,
     )
 
@@ -83,13 +83,17 @@ def mark_limits(readings: pd.DataFrame, profile: ZoneProfile) -> tuple[pd.DataFr
 
 def limits_of(readings: pd.DataFrame, criterion: Criterion) -> tuple[FloatArray, FloatArray]:
     """The lowest and the highest mark of one criterion; two arrays of shape (n,)."""
-    value = _values(readings, criterion.column)
+    value = _values(readings, criterion)
     from_value, to_value = possible_range(criterion.reading, readings)
     unknown = np.isnan(value)
     return mark_range(np.where(unknown, from_value, value), np.where(unknown, to_value, value), criterion)
 
 
-def _values(readings: pd.DataFrame, reading: str) -> FloatArray:
-    if reading not in readings:
+def _values(readings: pd.DataFrame, criterion: Criterion) -> FloatArray:
+    """The reading as numbers; of words, their place among the criterion's kinds. NaN where unknown."""
+    if criterion.column not in readings:
         return np.full(len(readings), np.nan)
-    return np.asarray(readings[reading].to_numpy(dtype=np.float64))
+    if criterion.kinds:
+        places = {kind: float(place) for place, kind in enumerate(criterion.kinds)}
+        return np.array([places.get(str(word), np.nan) for word in readings[criterion.column]], dtype=np.float64)
+    return np.asarray(readings[criterion.column].to_numpy(dtype=np.float64))

@@ -4,7 +4,7 @@ from collections.abc import Collection, Mapping
 from functools import cached_property
 from itertools import pairwise
 from pathlib import Path
-from typing import Annotated, Literal
+from typing import Annotated, Any, Literal
 
 from pydantic import AfterValidator, Field, model_validator
 
@@ -48,6 +48,13 @@ MEASURED_READINGS = (
 """Readings of this version that a criterion may look at, beside those derived from them."""
 
 
+KIND_READINGS: Mapping[str, tuple[str, ...]] = {
+    "cold_pool_kind": ("none", "closed", "leaky", "moving"),
+    "shore_kind": ("sea", "lake"),
+}
+"""Readings that are words, and the words that a criterion must give a mark to; any other word is unknown."""
+
+
 def _rises(curve: tuple[tuple[float, float], ...]) -> tuple[tuple[float, float], ...]:
     if any(later[0] <= earlier[0] for earlier, later in pairwise(curve)):
         raise ValueError("a curve whose first numbers rise from point to point")
@@ -86,6 +93,8 @@ class Criterion(Section):
         How far experts would disagree about the weight, ± %.
     curve : points (value, mark)
         Linear between its points and level beyond them. Fixed: never stretched over the candidates.
+    kinds : mapping of word to mark
+        In place of a curve, for readings that are words, such as ``cold_pool_kind``: a mark for each of its kinds.
     ordinary_mark : float
         What an ordinary plot of the zone gets; reasons speak of what differs from it.
     source : str
@@ -103,9 +112,30 @@ class Criterion(Section):
     weight: Annotated[float, Field(gt=0, le=1000)]
     weight_spread_pct: Annotated[float, Field(ge=0, le=100)] = 30.0
     curve: Annotated[tuple[tuple[float, Mark], ...], Field(min_length=2, max_length=40), AfterValidator(_rises)]
+    kinds: Mapping[str, Mark] = {}
     ordinary_mark: Mark = 60.0
     source: Text
     says: Annotated[str, AfterValidator(check_template)] = ""
+
+    @model_validator(mode="before")
+    @classmethod
+    def _kinds_are_points_of_a_curve(cls, given: Any) -> Any:
+        """The kinds' marks as a curve over the places of their words."""
+        kinds = given.get("kinds") if isinstance(given, Mapping) else None
+        if not isinstance(kinds, Mapping) or not kinds:
+            return given
+        points = [[float(place), mark] for place, mark in enumerate(kinds.values())]
+        if "curve" in given and [[float(x), y] for x, y in given["curve"]] != points:
+            raise ValueError("either a curve or kinds")
+        return {**given, "curve": points}
+
+    @model_validator(mode="after")
+    def _kinds_fit_the_reading(self) -> "Criterion":
+        wanted = KIND_READINGS.get(self.reading, ())
+        if set(self.kinds) != set(wanted):
+            each = f"kinds with a mark for each of {', '.join(wanted)}"
+            raise ValueError(each if wanted else f"a curve, since {self.reading} is a number,")
+        return self
 
     @model_validator(mode="after")
     def _only_the_wind_has_slots(self) -> "Criterion":
@@ -134,6 +164,8 @@ class Criterion(Section):
 
     def curve_in_words(self) -> str:
         """The points as ``0.3 → 0, 1 → 70``, with the unit."""
+        if self.kinds:
+            return ", ".join(f"{kind} → {mark:g}" for kind, mark in self.kinds.items())
         points = ", ".join(f"{value:g} → {mark:g}" for value, mark in self.curve)
         return f"{points} ({self.unit})" if self.unit not in ("", "1") else points
 
@@ -199,7 +231,7 @@ def load_profiles(extra_folder: Path | None = None, own_readings: tuple[str, ...
     ConfigError
         If a file is wrong; the message names file, key and allowed range.
     """
-    readings = (*MEASURED_READINGS, *DERIVED_READINGS, *own_readings)
+    readings = (*MEASURED_READINGS, *KIND_READINGS, *DERIVED_READINGS, *own_readings)
     shipped = _read_folder(config_folder() / "zones", readings)
     profiles = {zone: shipped[zone] for zone in load_defaults().cold_air.strength_k if zone in shipped}
     profiles |= shipped

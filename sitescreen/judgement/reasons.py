@@ -201,6 +201,11 @@ def _gains(one: ZoneMarks, row: int, profile: ZoneProfile) -> list[_Gain]:
 
 
 def _known_sentence(one: Criterion, told: Mapping[str, Any], words: Words) -> str:
+    if one.kinds:
+        word = str(told[one.column])
+        more = {**told, "value": word, "title": one.title, "amount": word, "mark": float(one.kinds[word])}
+        text = fill((one.says, words.words.any) if one.says else (words.words.any,), more)
+        return text[:1].upper() + text[1:]
     value = float(told[one.column])
     amount = f"{value:.2f} {one.unit}" if one.unit not in ("", "1") else f"{value:.2f}"
     more = {**told, "value": value, "title": one.title, "amount": amount, "mark": mark(value, one).item()}

@@ -173,9 +173,10 @@ def _cell_marks(
     criteria = [criterion for profile in profiles.values() for criterion in profile.criteria]
     wanted = {one.column for one in criteria}
     wanted |= {name for one in criteria for name in DERIVED_READINGS.get(one.reading, ())}
-    own = {name: readings[name].to_numpy(dtype=np.float64)[cells.plot] for name in sorted(wanted) if name in readings}
+    own = {name: readings[name].to_numpy()[cells.plot] for name in sorted(wanted) if name in readings}
     for name in own:
         if name in cells.readings:
+            own[name] = own[name].astype(np.float64)
             here = cells.readings[name].astype(np.float64)
             own[name] = np.where(np.isnan(own[name]) | np.isnan(here), own[name], here)
     table = with_derived(pd.DataFrame(own, index=pd.RangeIndex(len(cells.plot))))

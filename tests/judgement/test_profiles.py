@@ -1,13 +1,20 @@
 """Zone profiles: what is shipped, and a planner's own."""
 
+import json
+from collections.abc import Callable
 from itertools import combinations
 from pathlib import Path
 
+import numpy as np
+import pandas as pd
 import pytest
 
+from sitescreen.climate.zones import ZoneShares
 from sitescreen.errors import ConfigError
+from sitescreen.judgement.marks import mark_limits, marks
+from sitescreen.judgement.overall import judge
 from sitescreen.judgement.profiles import ZoneProfile, load_profiles
-from sitescreen.judgement.reasons import load_words
+from sitescreen.judgement.reasons import load_words, reasons
 from sitescreen.settings import config_folder, load_defaults
 
 PROFILES = load_profiles()
@@ -159,3 +166,60 @@ def test_two_profiles_for_one_zone_are_refused(tmp_path: Path) -> None:
 
 def test_the_files_are_named_after_their_zones() -> None:
     assert sorted(path.stem for path in (config_folder() / "zones").glob("*.toml")) == sorted(PROFILES)
+
+
+KINDS = """
+zone = "mine"
+title = "Mine"
+wants = "Air that moves."
+[[criteria]]
+name = "air"
+reading = "cold_pool_kind"
+question = "cold"
+title = "night air"
+weight = 10
+kinds = {none = 60, closed = 0, leaky = 20, moving = 100}
+source = "x"
+says = "At night the air there is {cold_pool_kind}."
+"""
+
+
+def test_words_earn_marks_by_their_kind(tmp_path: Path) -> None:
+    (tmp_path / "mine.toml").write_text(KINDS, encoding="utf-8")
+    profile = load_profiles(tmp_path)["mine"]
+    readings = pd.DataFrame({"cold_pool_kind": ["moving", "none", "leaky", "closed", "unknown", ""]})
+    assert marks(readings, profile)["mark_air"].tolist() == pytest.approx([100, 60, 20, 0, np.nan, np.nan], nan_ok=True)
+    lowest, highest = mark_limits(readings, profile)
+    assert lowest["mark_air"].tolist() == [100, 60, 20, 0, 0, 0]
+    assert highest["mark_air"].tolist() == [100, 60, 20, 0, 100, 100]
+    assert profile.by_name["air"].curve_in_words() == "none → 60, closed → 0, leaky → 20, moving → 100"
+    # as the record keeps it
+    assert ZoneProfile.model_validate(json.loads(profile.model_dump_json())) == profile
+
+
+@pytest.mark.parametrize(
+    ("change", "says"),
+    [
+        (("leaky = 20, ", ""), "a mark for each of none, closed, leaky, moving"),
+        (("none = 60", "nothing = 60"), "a mark for each of none, closed, leaky, moving"),
+        (("moving = 100", "moving = 101"), "101"),
+        (('"cold_pool_kind"', '"slope_deg"'), "slope_deg is a number"),
+        (("source", "curve = [[0, 0], [1, 100]]\nsource"), "either a curve or kinds"),
+        (("kinds = {none = 60, closed = 0, leaky = 20, moving = 100}", "curve = [[0, 0], [1, 9]]"), "kinds with a mark"),
+    ],
+)  # fmt: skip
+def test_kinds_are_checked(tmp_path: Path, change: tuple[str, str], says: str) -> None:
+    (tmp_path / "mine.toml").write_text(KINDS.replace(*change), encoding="utf-8")
+    with pytest.raises(ConfigError, match=says):
+        load_profiles(tmp_path)
+
+
+def test_a_kind_has_its_reason(
+    plots: Callable[..., pd.DataFrame], in_zone: Callable[..., ZoneShares], tmp_path: Path
+) -> None:
+    (tmp_path / "mine.toml").write_text(KINDS.replace('"mine"', '"upland"'), encoding="utf-8")
+    profiles = load_profiles(tmp_path)
+    readings = plots({"cold_pool_kind": "moving"})
+    judged = judge(readings, in_zone(readings, "upland"), profiles, (), load_defaults().judgement)
+    told = reasons(judged, pd.DataFrame(index=readings.index), profiles, load_defaults().judgement)
+    assert told["a"].for_ == ("At night the air there is moving.",)
