@@ -26,6 +26,7 @@ from sitescreen.screening import screen
 # What only a comparison with other plots can say. Everything else in the table must not know of them.
 AMONG_OTHERS = {"rank", "rank_in_zone", "rank_low", "rank_high", "chance_first", "chance_top_quarter"}
 AMONG_OTHERS |= {"chance_shortlist", "chance_first_in_zone", "chance_first_any_weights", "chance_beats_next", "group"}
+AMONG_OTHERS |= {"rank_low_weights", "rank_high_weights", "rank_low_data", "rank_high_data"}
 MUST_BE_KNOWN = ["elevation_m", "slope_deg", "rise_m", "ventilation", "ridge_exposure", "sheltered_fraction"]
 MUST_BE_KNOWN += ["sun_year_h", "sun_cool_morning_h", "west_load_kwh_m2", "cool_gain_kwh_m2", "sun_first_cool_h"]
 MUST_BE_KNOWN += ["sky_view", "shore_distance_km", "breeze_reach", "cold_deficit_most_k", "overall_mark"]
