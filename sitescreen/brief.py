@@ -1,8 +1,7 @@
 """The brief: the TOML file that names the inputs and the choices of one screening.
 
 Only ``[terrain] files`` and ``[plots] file`` are required. Paths are relative to the brief and are made absolute when
-it is read; whether the files can be used is for ``inputs/`` to say. Keys that a later version will use are checked
-already, and :meth:`Brief.not_used_yet` names them.
+it is read; whether the files can be used is for ``inputs/`` to say.
 """
 
 import re
@@ -286,13 +285,6 @@ class Brief(_Part):
         if out is not None:
             changes["output"] = self.output.model_copy(update={"folder": _called(out, "--out")})
         return self.model_copy(update=changes)
-
-    def not_used_yet(self) -> list[str]:
-        """Keys that were given and checked, but that this version does nothing with, as the brief writes them."""
-        given = {
-            "[terrain] canopy_height": self.terrain.canopy_height is not None,
-        }
-        return [key for key, is_given in given.items() if is_given]
 
 
 _NO_BRIEFS = (

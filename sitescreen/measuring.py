@@ -24,6 +24,7 @@ from sitescreen.climate.wind import FIELD_READINGS, Wanted, wind_fields
 from sitescreen.climate.wind_cover import wind_cover
 from sitescreen.grid import Field, Grid
 from sitescreen.inputs import Inputs
+from sitescreen.inputs.cover import Cover
 from sitescreen.inputs.shore import Shore
 from sitescreen.judgement.cold_readings import with_cold
 from sitescreen.judgement.coverage import Coverage, cover
@@ -135,7 +136,7 @@ def measure(
     with progress.step("Letting a calm night's cold air flow"):
         pools = closed_pools(ground.hollows, terrain.vertical_error_m, settings.cold_air)
         least_m = smallest_pool_seen_m(terrain.vertical_error_m, settings.cold_air)
-        layer = cold_layer(night, ground.sky_view, settings.cold_layer)
+        layer = cold_layer(night, ground.sky_view, settings.cold_layer, cover=_cold_factor(inputs.cover, wide))
         cold = cold_kinds(layer, pools, ground.elevation, least_m, settings.cold_layer, settings.cold_air.fill_scale_m)
     with progress.step("Measuring distance and way to the shore"):
         coast = _coast(shore, lon, lat, block, ground.elevation, settings.breeze)
@@ -149,7 +150,9 @@ def measure(
             convergence,
             settings.readings,
         )
-        readings = with_cold(readings, coverage, ground.hollows, pools, cold, convergence, least_m, settings)
+        readings = with_cold(
+            readings, coverage, ground.hollows, pools, cold, convergence, least_m, terrain.surface == "canopy", settings
+        )
         winds = sector_winds(
             tuple(plots["plot"]),
             met,
@@ -232,6 +235,14 @@ def _suns(
         sun,
         choices.utc_offset_h,
     )
+
+
+def _cold_factor(cover: Cover | None, grid: Grid) -> Field | None:
+    """How much cold air the ground cover makes, 1 for open ground and where no class is mapped."""
+    if cover is None:
+        return None
+    made = cover.values(cover.classes(grid), "cold_air_factor", 1.0)
+    return Field(made, grid, "1", "cold air that the ground cover makes")
 
 
 def _night_ground(

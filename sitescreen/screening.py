@@ -237,9 +237,6 @@ def _judged(
         notes += (Note("warning", "shore", waters.sentence),)
     unchecked, checked = still_unchecked(NOT_CHECKED, brief.constraint)
     notes += own.notes + checked
-    if brief.not_used_yet():
-        given = ", ".join(brief.not_used_yet())
-        notes += (Note("warning", "brief", f"Read and checked, but not used by this version: {given}."),)
     inside = within_plots(
         [one.cells for one in measured],
         values,

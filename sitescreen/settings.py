@@ -139,6 +139,8 @@ class ColdAirSettings(Section):
     mean_noise_factor: Annotated[float, Field(ge=0, le=10)]
     least_cells: Annotated[int, Field(ge=1, le=10_000)]
     fill_scale_m: Positive
+    tree_pool_ha: Positive
+    tree_rim_m: Positive
     assumed_clear_calm_nights: Annotated[float, Field(ge=0, le=31)]
     strength_k: Mapping[str, Annotated[float, Field(ge=0, le=30)]]
 

@@ -95,7 +95,6 @@ def test_two_keys_are_enough_and_the_rest_has_defaults(tmp_path: Path) -> None:
     )
     assert brief.terrain.vertical_error_m is None
     assert brief.output.layers is True
-    assert brief.not_used_yet() == []
 
 
 def test_every_key_of_the_full_brief_arrives(tmp_path: Path) -> None:
@@ -113,12 +112,6 @@ def test_every_key_of_the_full_brief_arrives(tmp_path: Path) -> None:
     assert brief.criterion[0].curve == [(0, 100), (500, 80.5), (3000, 0)]
     assert brief.context[0].name == "name"
     assert brief.output.layers is False
-
-
-def test_keys_without_effect_are_named_as_they_are_written(tmp_path: Path) -> None:
-    assert load_brief(write(tmp_path, WHOLE)).not_used_yet() == [
-        "[terrain] canopy_height",
-    ]
 
 
 def test_paths_hang_on_the_brief_and_not_on_the_current_folder(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:

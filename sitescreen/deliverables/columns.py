@@ -244,6 +244,7 @@ MORE: Mapping[str, Column] = {
         ),
         _number("sill_distance_m", 0, "m", "hollow spills at", "Distance to where the plot’s closed hollow spills."),
         _number("sill_bearing_deg", 0, "° from true north", "hollow spills to", "Bearing of that place."),
+        _whole("may_be_trees", "may be trees", "1 where the hollow may be a clearing between trees shown as ground."),
         _number("pool_catchment_ha", 1, "ha", "hollow’s catchment", "Ground that drains into that hollow."),
         _number("pool_fill_h", 2, "h", "hollow fills in", "How long that ground’s cold air takes to fill it."),
         _text("zone_2", "second zone", "A second zone that shares the plot."),

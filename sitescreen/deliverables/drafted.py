@@ -101,7 +101,9 @@ def _terrain(tiles: Sequence[Found], canopy: Sequence[Found]) -> str:
     lines.append(
         f"files = [{', '.join(_quoted(one.file.name) for one in tiles)}]   # where they overlap the first counts"
     )
-    lines.append('# surface = "canopy"      # if the model shows treetops and roofs')
+    off = "" if canopy else "# "
+    why = "so that the heights of trees below can be taken off" if canopy else "if the model shows treetops and roofs"
+    lines.append(f'{off}surface = "canopy"      # {why}')
     lines.append("# vertical_error_m = 2.5  # one standard deviation, from the model's own description")
     if canopy:
         lines += [_said(canopy[0], canopy[1:]), f"canopy_height = {_quoted(canopy[0].file.name)}"]

@@ -10,12 +10,12 @@ from numpy.typing import NDArray
 from pyproj import CRS, Transformer
 
 from sitescreen.brief import TerrainBrief
-from sitescreen.errors import GridError, InputError
+from sitescreen.errors import BriefError, GridError, InputError
 from sitescreen.grid import Bounds, Field, Grid
-from sitescreen.inputs.datum import Datum, to_wgs84
+from sitescreen.inputs.canopy import Canopy, open_canopy
 from sitescreen.inputs.stamps import FileStamp, stamp
 from sitescreen.inputs.terrain_headers import read_header
-from sitescreen.inputs.terrain_mosaic import Mosaic, mosaics
+from sitescreen.inputs.terrain_mosaic import Mosaic, mosaic_datum, mosaics
 from sitescreen.inputs.terrain_products import Surface, terrain_error
 from sitescreen.inputs.terrain_voids import WIDTH_CELLS
 from sitescreen.inputs.terrain_warp import CLOSED, OUTSIDE, VOID, central_meridian_deg, is_wgs84_degrees, warped
@@ -63,6 +63,8 @@ class Terrain:
     surface : "bare" or "canopy"
         What the heights show.
     stamps : tuple of FileStamp
+    canopy : Canopy, optional
+        Heights of trees and roofs, which :meth:`read` takes off.
     notes : tuple of Note
         What opening the files told. See also :attr:`findings`.
     """
@@ -74,6 +76,7 @@ class Terrain:
     surface: Surface
     stamps: tuple[FileStamp, ...]
     notes: tuple[Note, ...]
+    canopy: Canopy | None = None
     _closed_km2: float = field(default=0.0, repr=False)
     _void_km2: float = field(default=0.0, repr=False)
     _read_km2: float = field(default=0.0, repr=False)
@@ -128,7 +131,8 @@ class Terrain:
         -------
         Heights
             Height above the files' vertical datum. [m] NaN outside the files and in their gaps, save gaps up to three
-            cells wide, which are closed from their rims.
+            cells wide, which are closed from their rims. Of a surface of tree tops with a canopy layer the ground
+            below; what the model holds stays with its trees.
 
         Raises
         ------
@@ -139,7 +143,9 @@ class Terrain:
         under: NDArray[np.uint8] = np.full(grid.shape, OUTSIDE, dtype=np.uint8)
         stored: NDArray[np.float32] = np.full(grid.shape, np.nan, dtype=np.float32)
         for mosaic in self.mosaics:
-            warped(mosaic, _datum(mosaic), grid, heights, under, stored)
+            warped(mosaic, mosaic_datum(mosaic), grid, heights, under, stored)
+        if self.canopy is not None:
+            heights -= self.canopy.height_m(grid)
         cell_km2 = (grid.cell_size_m / 1000.0) ** 2
         self._closed_km2 += cell_km2 * float(np.count_nonzero(under == CLOSED))
         self._void_km2 += cell_km2 * float(np.count_nonzero(under == VOID))
@@ -169,19 +175,9 @@ def _km2(area: float) -> str:
     return f"{area:.2g} km²" if area < 10.0 else f"{area:,.0f} km²"
 
 
-def _datum(mosaic: Mosaic) -> Datum:
-    """How a mosaic's coordinates become WGS 84; not kept, since it cannot travel between processes."""
-    outline = mosaic.outline()
-    crs = mosaic.crs
-    plain = Transformer.from_crs(crs, "EPSG:4326", always_xy=True)
-    west, south, east, north = plain.transform_bounds(*outline.bounds)
-    near = (west, south, east, north) if west <= east and math.isfinite(west + south + east + north) else None
-    return to_wgs84(crs, mosaic.files[0].name, near)
-
-
 def _lonlat_outline(mosaic: Mosaic) -> Any:
     """A mosaic's outline, EPSG:4326; longitudes as its files count them."""
-    datum, outline = _datum(mosaic), mosaic.outline()
+    datum, outline = mosaic_datum(mosaic), mosaic.outline()
     if is_wgs84_degrees(datum):
         return outline
 
@@ -228,15 +224,26 @@ def open_terrain(brief: TerrainBrief) -> Terrain:
         )
     groups = mosaics(files)
     for mosaic in groups:
-        _datum(mosaic)  # refuses a datum that no published way leads from, before any work is done
+        mosaic_datum(mosaic)  # refuses a datum that no published way leads from, before any work is done
     step = cell_size_m(min(_spacing_m(mosaic) for mosaic in groups))
     notes = [*error.notes, *_said_once([(file.name, note) for file in files for note in file.notes])]
     if empty:
         notes.append(Note("warning", "terrain", f"No height at all is in {', '.join(empty)}."))
-    notes += [Note("info", "terrain", said) for mosaic in groups if (said := _datum(mosaic).said)]
+    notes += [Note("info", "terrain", said) for mosaic in groups if (said := mosaic_datum(mosaic).said)]
     notes += _spacing_notes(groups, step)
     stamps = tuple(stamp(file.path, _short_crs(file.crs)) for file in files)
-    return Terrain(groups, step, error.vertical_error_m, error.error_range_m, error.surface, stamps, tuple(notes))
+    surface, canopy = error.surface, None
+    if brief.canopy_height is not None:
+        if surface == "bare":
+            raise BriefError(
+                "[terrain] canopy_height was given for a model of bare ground",
+                "a model that shows tree tops and roofs is needed for it",
+                'Set surface = "canopy", or leave canopy_height out',
+            )
+        canopy = open_canopy(brief.canopy_height)
+        surface, stamps = "bare", (*stamps, canopy.stamp)
+        notes += canopy.notes
+    return Terrain(groups, step, error.vertical_error_m, error.error_range_m, surface, stamps, tuple(notes), canopy)
 
 
 def _short_crs(crs: CRS) -> str:

@@ -14,8 +14,9 @@ from typing import Any
 import numpy as np
 import shapely
 from numpy.typing import NDArray
-from pyproj import CRS
+from pyproj import CRS, Transformer
 
+from sitescreen.inputs.datum import Datum, to_wgs84
 from sitescreen.inputs.terrain_files import RasterFile, opened
 
 MISFIT_CELLS = 0.05
@@ -215,3 +216,13 @@ def mosaics(files: Sequence[RasterFile]) -> tuple[Mosaic, ...]:
         places = tuple(place for one in members if (place := lattice.place(one)) is not None)
         found.append(Mosaic(lattice, tuple(members), places))
     return tuple(found)
+
+
+def mosaic_datum(mosaic: Mosaic) -> Datum:
+    """How a mosaic's coordinates become WGS 84; not kept, since it cannot travel between processes."""
+    outline = mosaic.outline()
+    crs = mosaic.crs
+    plain = Transformer.from_crs(crs, "EPSG:4326", always_xy=True)
+    west, south, east, north = plain.transform_bounds(*outline.bounds)
+    near = (west, south, east, north) if west <= east and math.isfinite(west + south + east + north) else None
+    return to_wgs84(crs, mosaic.files[0].name, near)

@@ -35,6 +35,7 @@ def with_cold(
     cold: ColdKinds,
     convergence_deg: FloatArray,
     smallest_pool_m: float,
+    shows_trees: bool,
     settings: Defaults,
 ) -> Readings:
     """The readings with those of the night's cold air added.
@@ -51,6 +52,8 @@ def with_cold(
         Bearing of grid north from true north at each plot. [°]
     smallest_pool_m : float
         The shallowest hollow that counts. [m]
+    shows_trees : bool
+        Whether the ground is a surface of tree tops and roofs.
     settings : Defaults
 
     Returns
@@ -102,6 +105,10 @@ def with_cold(
     values["cold_cap_k"] = np.where(
         pool > 0, _cap_k(hollows, source, settings.cold_layer.night_h)[pool], source.deficit_k
     )
+    # a clearing in a wood is such a hollow
+    air, rim, hectares = settings.cold_air, hollows.pools.deepest_m, hollows.pools.cells * _cell_ha(hollows)
+    trees = np.concatenate([[False], (hectares < air.tree_pool_ha) & (rim < air.tree_rim_m)])
+    values["may_be_trees"] = shows_trees & trees[pool]
     reading("night_flow_m2_s", mean(cold.discharge_m2_s.values), (no_ground, NO_GROUND), (always, BEYOND))
     reading("night_flow_speed_m_s", mean(cold.speed_m_s.values), (no_ground, NO_GROUND), (always, BEYOND))
     values["smallest_pool_seen_m"] = np.where(no_ground, np.nan, smallest_pool_m)
@@ -139,6 +146,10 @@ def _main_pool(coverage: Coverage, pool_id: NDArray[Any], wanted: NDArray[np.boo
         most = total.loc[total.groupby("plot")["share"].idxmax()]
         out[most["plot"].to_numpy()] = most["pool"].to_numpy()
     return out
+
+
+def _cell_ha(hollows: Hollows) -> float:
+    return hollows.depth_m.grid.cell_size_m**2 / 1e4
 
 
 def _cap_k(hollows: Hollows, source: Source, night_h: float) -> FloatArray:

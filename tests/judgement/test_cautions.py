@@ -39,6 +39,7 @@ def test_good_ground_raises_none(plots: Plots) -> None:
         ("upland", {"cold_pool_kind": "closed", "cold_deficit_k": 0.5}, "cold_hollow", "concern"),
         ("high_upland", {"cold_pool_kind": "leaky", "cold_deficit_k": 0.6}, "cold_held_back", "concern"),
         ("upland", {"cold_pool_kind": "moving", "cold_deficit_k": 1.1}, "cold_stream", "concern"),
+        ("hot_arid", {"may_be_trees": True}, "may_be_trees", "note"),
         ("hot_humid_coast", {"cold_pool_kind": "leaky", "still_air": 0.4}, "still_air", "note"),
         ("savannah", {"cold_deficit_k": 3.0}, "cold_hollow_mild", "note"),
         ("upland", {"cold_pool_kind": "unknown"}, "cold_pool_unknown", "concern"),
