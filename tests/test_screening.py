@@ -278,3 +278,48 @@ def test_a_wind_table_turns_the_axis_in_dry_zones(run: Run) -> None:
     turned = (table.loc[list("abcdef"), "long_axis_deg"] - 90.0).abs()
     assert turned.between(4.0, 20.0).all()
     assert screening.siting["c"].wind_from_deg == pytest.approx(90.0, abs=3.0)
+
+
+# --- sun -------------------------------------------------------------------------------------------------------------
+
+
+def test_without_clouds_normals_or_clock_the_sun_is_measured_and_all_that_is_assumed_said(plain: Screening) -> None:
+    table = _table(plain)
+    assert table.loc[list("abcdef"), ["sun_year_h", "sun_cool_morning_h", "west_load_kwh_m2"]].notna().all(axis=None)
+    assert table.loc["a", "sun_year_h"] == pytest.approx(365 * 12.08, rel=0.01)  # open ground near the equator
+    assert table.loc["a", "cool_months"] == "May Jun Jul"
+    said = " ".join(note.text for note in plain.notes if note.level == "assumed")
+    assert "those of a sky without clouds" in said
+    assert "universal time +3 h" in said
+    assert "no more than a guess" in said
+    assert "sun_year_h" in plain.fields
+    assert "hours of sun" not in " ".join(plain.not_measured)
+    sun = plain.suns["a"]
+    assert sun.clock_is_assumed
+    assert sun.hour_state.shape == (12, 24)
+
+
+def test_clouds_seasons_and_clock_of_the_brief_serve(run: Run, country: Path, plain: Screening) -> None:
+    rows = [
+        f"{month},{part},{share}" for month in range(1, 13) for part, share in (("morning", 0.4), ("afternoon", 0.8))
+    ]
+    (country / "cloud.csv").write_text("\n".join(["month,part,clear_share", *rows]), encoding="utf-8")
+    found = run(
+        SHORE,
+        '[sky]\nfile = "cloud.csv"\nutc_offset_h = 4',
+        "[climate]\ncool_months = [7, 8]\nhot_months = [2]",
+    )
+    table, clear = _table(found), _table(plain)
+    assert table.loc["a", "sun_year_h"] == pytest.approx(0.6 * clear.loc["a", "sun_year_h"], rel=0.01)
+    assert table.loc["a", "morning_sun_share"] == pytest.approx(clear.loc["a", "morning_sun_share"], abs=0.01)
+    assert (table.loc["a", "cool_months"], table.loc["a", "hot_months"]) == ("Jul Aug", "Feb")
+    first = [one.suns["a"].first_h[6] for one in (found, plain)]
+    assert first[0] - first[1] == pytest.approx(1.0, abs=0.02)
+    assert not found.suns["a"].clock_is_assumed
+    said = " ".join(note.text for note in found.notes)
+    assert "without clouds" not in said
+    assert "universal time" not in said
+    assert "a guess" not in said
+    assert any(one["name"] == "cloud.csv" for one in found.record["inputs"])
+    values = [np.nanmedian(one.fields["sun_year_h"].values) for one in (found, plain)]
+    assert values[0] / values[1] == pytest.approx(0.6, abs=0.01)
