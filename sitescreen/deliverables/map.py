@@ -30,7 +30,7 @@ if TYPE_CHECKING:
 
 SCRIPTS = (
     "start.js", "weigh.js", "words.js", "frame.js", "landmarks.js", "plan.js", "ladder.js", "leaf.js", "around.js",
-    "section.js", "ranking.js", "asks.js", "page.js",
+    "section.js", "ranking.js", "asks.js", "paper.js", "page.js",
 )  # fmt: skip
 
 _DANGEROUS = {"&": "\\u0026", "<": "\\u003c", ">": "\\u003e", "\u2028": "\\u2028", "\u2029": "\\u2029"}

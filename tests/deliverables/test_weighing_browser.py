@@ -112,7 +112,7 @@ def test_a_weight_changes_answer_ladder_map_and_table_together(read: Any, screen
     page.press("#back")
     assert page.text("#answer") == first
     assert page.text("#change").startswith("Back to the zone profile: ")
-    assert page.text("#leaf .leaf-top span").startswith("1st of 10")
+    assert page.text("#leaf .leaf-top .place").startswith("1st of 10")
     assert page.problems() == []
 
 

@@ -4,7 +4,7 @@ const around = (() => {
   const INK = "#2b2a27", SOFT = "#6a6457", HAIR = "#cfc7b6", PAPER = "#faf7f0";
   const MONTHS = ["January", "February", "March", "April", "May", "June", "July", "August", "September", "October", "November", "December"];
   const POINTS = ["N", "NNE", "NE", "ENE", "E", "ESE", "SE", "SSE", "S", "SSW", "SW", "WSW", "W", "WNW", "NW", "NNW", "N"];
-  const SKY = 168, AXIS = 20, WIND = 84, BREEZE = 19, LONG = 24;
+  const SKY = 168, AXIS = 20, WIND = 86, BREEZE = 19, LONG = 34;
   const ALIKE_PCT = 10; // of what the worst bearing costs: within this the long axis may turn
 
   const reading = (name, i) => { const one = data.readings.find((each) => each.name === name); return one ? one.values[i] : null; };
@@ -12,13 +12,13 @@ const around = (() => {
   const line = (x0, y0, x1, y1, stroke = INK, wide = 1, extra = {}) => draw("line", { x1: x0, y1: y0, x2: x1, y2: y1, stroke, "stroke-width": wide, ...extra });
   const clock = (hours) => { const m = Math.round(hours * 60); return `${Math.floor(m / 60)}:${String(m % 60).padStart(2, "0")}`; };
 
-  function strip(i) {
+  function strip(i, room) {
     const one = data.strips.plots[i], siting = (data.siting || [])[i] || null;
     const onshore = reading("onshore_from_deg", i), offshore = reading("offshore_from_deg", i);
     const hasSun = one && one.skyline, hasWind = one && one.winds, hasBreeze = onshore !== null;
     if (!hasSun && !hasWind && !hasBreeze && !siting) return [];
     const svg = draw("svg", { class: "around", role: "img" });
-    const width = Math.max(320, holderWidth()), isNarrow = width < 700, left = isNarrow ? 6 : 104, right = isNarrow ? 8 : 14;
+    const width = Math.max(300, room), isNarrow = width < 700, left = isNarrow ? 6 : 104, right = isNarrow ? 8 : 14;
     const at = (bearing) => left + (bearing / 360) * (width - left - right);
     let y = 6;
     const told = [];
@@ -56,7 +56,7 @@ const around = (() => {
     }
     if (siting) {
       drawAxis(svg, siting, at, y, LONG);
-      label("Long axis", y + 14);
+      label("Long axis", y + 14, ["grey: costs little"]);
       y += LONG;
       told.push(`The long axis that serves sun and wind best lies along ${siting.axis_deg}° and ${siting.axis_deg + 180}°.`);
     }
@@ -67,9 +67,8 @@ const around = (() => {
     svg.setAttribute("height", y + 4);
     svg.setAttribute("aria-label", told.join(" "));
     const clockNote = hasSun ? ` Clock: ${one.clock[0] < 0 ? "−" : "+"}${Math.abs(one.clock[0])} h to universal time${one.clock[1] ? ", assumed from the longitude" : ""}.` : "";
-    return [make("h3", { class: "strip-head" }, "All round the plot, by bearing from true north"), svg, make("p", { class: "strip-note" }, told.slice(0, 1).join(" ") + clockNote)];
+    return [make("h3", { class: "strip-head" }, "All round the plot, by bearing from true north"), svg, make("p", { class: "strip-note" }, (hasSun ? told[0] : "") + clockNote + (siting ? ` Long axis, grey: turning it there costs a tenth of what the worst bearing would, at most.` : ""))];
   }
-  const holderWidth = () => document.getElementById("leaf").clientWidth;
 
   // which arcs are drawn strong, with their months and clock times: the two ends of the year and the middle
   function strongMonths(sky) {
@@ -179,7 +178,8 @@ const around = (() => {
     svg.append(text(isRight ? at(Math.min(bearing + 22.5, 360)) + 6 : at(bearing - 22.5) - 6, y + height - 7, `${words}, ${bearing.toFixed(0)}°`, { "text-anchor": isRight ? "start" : "end", class: "tiny halo" }));
   }
 
-  function drawAxis(svg, siting, at, y, height) {
+  function drawAxis(svg, siting, at, y, room) {
+    const height = Math.min(room, 24);
     const costs = siting.cost_pct, step = 180 / costs.length;
     for (const turn of [0, 180]) {
       for (let k = 0; k < costs.length; k++) {
@@ -188,7 +188,10 @@ const around = (() => {
       }
       const bearing = siting.axis_deg + turn;
       svg.append(line(at(bearing), y + 2, at(bearing), y + height - 2, INK, 3));
-      svg.append(text(at(bearing) + 7, y + height - 8, `${bearing}°${turn ? "" : ", grey: turning there costs a tenth of the worst at most"}`, { class: "tiny halo" }));
+      let end = 0; // of the grey on that side, for the figure to stand beside it
+      while (end < 85 && costs[Math.round((siting.axis_deg + end) / step) % costs.length] <= ALIKE_PCT) end += step;
+      const where = bearing + end + 2 > 345 ? at(bearing) - 8 : at(bearing + end) + 4;
+      svg.append(text(where, y + height - 8, `${bearing}°`, { class: "tiny strong halo", "text-anchor": where < at(bearing) ? "end" : "start" }));
     }
   }
   leaf.strips.push(strip);

@@ -8,7 +8,8 @@ const ladder = (() => {
   const head = document.getElementById("ladder-head"), note = document.getElementById("ladder-note");
   const canvas = document.createElement("canvas");
   canvas.className = "leaders leaflet-zoom-hide";
-  const isCalm = window.matchMedia("(prefers-reduced-motion: reduce)"), isNarrow = window.matchMedia("(max-width: 760px)");
+  const isCalm = window.matchMedia("(prefers-reduced-motion: reduce)"), isNarrow = window.matchMedia("screen and (max-width: 760px)");
+  const isList = () => isNarrow.matches && !document.body.classList.contains("on-paper");
   let rungs = [], at = new Map(), sliding = 0, height = 0;
 
   const top = (mark) => TOP + ((100 - mark) / 100) * (height - TOP - BOTTOM);
@@ -77,7 +78,7 @@ const ladder = (() => {
   // where the lines stand at one moment of a slide: mark and label of every rung
   function drawLines() {
     const line = (x0, y0, x1, y1, stroke, wide) => draw("line", { x1: x0, y1: y0, x2: x1, y2: y1, stroke, "stroke-width": wide });
-    const parts = [];
+    const parts = [], from = document.body.classList.contains("on-paper") ? -20 : 0; // browsers print a canvas a little too narrow
     const edges = [0, ...data.edges, 100];
     for (let k = 0; k < 5; k++) {
       parts.push(draw("rect", { x: X.band, y: top(edges[k + 1]), width: X.wide, height: top(edges[k]) - top(edges[k + 1]), fill: data.ramp[k] }));
@@ -89,10 +90,10 @@ const ladder = (() => {
       const y = at.get(rung.i).y, labelY = at.get(rung.i).label, isChosen = rung.i === state.chosen;
       const out = rung.lane < 0 ? X.tick + 2 : X.lanes + (rung.lane + 1) * LANE;
       if (rung.lane >= 0) {
-        const x = X.lanes + rung.lane * LANE, from = y + top(rung.high) - top(rung.mark), to = y + top(rung.low) - top(rung.mark);
-        parts.push(draw("path", { d: `M${x - 3} ${from} H${x} V${to} H${x - 3}`, fill: "none", stroke: INK, "stroke-width": isChosen ? 1.6 : 1 }));
+        const x = X.lanes + rung.lane * LANE, start = y + top(rung.high) - top(rung.mark), to = y + top(rung.low) - top(rung.mark);
+        parts.push(draw("path", { d: `M${x - 3} ${start} H${x} V${to} H${x - 3}`, fill: "none", stroke: INK, "stroke-width": isChosen ? 1.6 : 1 }));
       }
-      if (plan.groundOf(rung.i)) parts.push(line(0, y, X.band, y, INK, isChosen ? 1.5 : 0.8));
+      if (plan.groundOf(rung.i)) parts.push(line(from, y, X.band, y, INK, isChosen ? 1.5 : 0.8));
       parts.push(line(X.band - 3, y, X.tick, y, "#faf7f0", isChosen ? 6 : 4.6), line(X.band - 3, y, X.tick, y, INK, isChosen ? 3.4 : 2.2));
       parts.push(draw("path", { d: `M${out} ${y} L${X.labels - 12} ${labelY} H${X.labels - 4}`, fill: "none", stroke: INK, "stroke-width": isChosen ? 1.2 : 0.7 }));
     }
@@ -121,7 +122,7 @@ const ladder = (() => {
     canvas.style.width = `${size.x}px`;
     canvas.style.height = `${size.y}px`;
     L.DomUtil.setPosition(canvas, window.map_plan.containerPointToLayerPoint([0, 0]));
-    if (isNarrow.matches || window.map_plan.getContainer().classList.contains("printing")) return;
+    if (isList() || window.map_plan.getContainer().classList.contains("printing")) return;
     const pen = canvas.getContext("2d");
     pen.scale(sharp, sharp);
     paintLeaders(pen, size);
@@ -149,7 +150,7 @@ const ladder = (() => {
   function place() {
     for (const item of list.children) {
       const where = at.get(Number(item.dataset.plot));
-      if (where) item.style.transform = isNarrow.matches ? "" : `translateY(${where.label - ROW / 2}px)`;
+      if (where) item.style.transform = isList() ? "" : `translateY(${where.label - ROW / 2}px)`;
     }
     drawLines();
     drawLeaders();
@@ -157,7 +158,7 @@ const ladder = (() => {
 
   // ticks slide from where they stood to where they stand now, while the ground stays
   function show(isSlide) {
-    height = svg.clientHeight || 560;
+    height = svg.clientHeight || Math.max(200, window.map_plan.getSize().y - 70);
     const before = at;
     rungs = layOut();
     const after = new Map(rungs.map((rung) => [rung.i, { y: top(rung.mark ?? 0), label: rung.label }]));

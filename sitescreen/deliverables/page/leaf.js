@@ -17,9 +17,11 @@ const leaf = (() => {
     const isShared = rank !== null && now.rank.filter((other) => other === rank).length > 1 ? ", shared" : "";
     const inZone = now.rankInZone[i] === null || rank === null ? "" : `, ${page.ordinal(now.rankInZone[i])} in its zone`;
     const turn = (text, to) => make("button", { type: "button", disabled: to < 0 || to >= order.length, onclick: () => page.change({ chosen: order[to] }) }, text);
+    const title = document.getElementById("title").textContent, caution = document.querySelector(".caution").textContent;
     return make("div", { class: "leaf-top" },
-      make("span", {}, isAside ? "Set aside" : rank === null ? "No rank: nothing that its zone asks for counts" : `${page.ordinal(rank)} of ${page.ranked.length}${isShared}${inZone}`),
-      make("span", { class: "turn" }, turn("previous", place - 1), turn("next", place + 1)));
+      make("span", { class: "on-leaf" }, title),
+      make("span", { class: "place" }, isAside ? "Set aside" : rank === null ? "No rank: nothing that its zone asks for counts" : `${page.ordinal(rank)} of ${page.ranked.length}${isShared}${inZone}`),
+      make("span", { class: "turn" }, turn("previous", place - 1), turn("next", place + 1)), make("span", { class: "on-leaf" }, caution));
   }
 
   function markLine(i) {
@@ -65,11 +67,8 @@ const leaf = (() => {
     return make("details", {}, make("summary", {}, "All readings"), make("dl", { class: "readings" }, ...items));
   }
 
-  function show() {
-    const i = page.state.chosen;
-    holder.hidden = i === null;
-    if (i === null) return;
-    const isOpen = holder.querySelector("details[open]") !== null;
+  // everything a leaf holds, as wide as its holder
+  function parts(i, width) {
     const why = data.reasons[i], zone = data.zones[plots.zone[i]];
     const share = plots.zone_share[i];
     const about = [make("h2", { class: "leaf-name" }, make("bdi", {}, plots.name[i] === null ? `Plot ${plots.plot[i]}` : plots.name[i]))];
@@ -88,12 +87,22 @@ const leaf = (() => {
       reasons.push(line("This page holds the reasons of the leading plots only; its readings are below and in the table."));
     }
     doubts.push(...criteria(i));
-    if (data.siting[i]) about.push(...list("How to place a house here", data.siting[i].says, "siting"));
+    if (data.siting[i]) reasons.push(...list("How to place a house here", data.siting[i].says, "siting"));
     const column = (kind, parts) => make("div", { class: kind }, ...parts.filter((part) => part));
-    holder.replaceChildren(top(i), make("div", { class: "leaf-columns" }, column("about", about), column("reasons", reasons), column("doubts", doubts)),
-      ...strips.flatMap((strip) => strip(i)), readings(i));
+    return [top(i), make("div", { class: "leaf-columns" }, column("about", about), column("reasons", reasons), column("doubts", doubts)),
+      ...strips.flatMap((strip) => strip(i, width)), readings(i)];
+  }
+
+  function show(width) {
+    const i = page.state.chosen;
+    holder.hidden = i === null;
+    if (i === null) return;
+    const isOpen = holder.querySelector("details[open]") !== null;
+    holder.replaceChildren(...parts(i, width || holder.clientWidth));
     if (isOpen && holder.querySelector("details")) holder.querySelector("details").open = true;
   }
   page.watchers.push((what) => { if ("chosen" in what || "weights" in what) show(); });
-  return { show, strips };
+  let wide = 0;
+  window.addEventListener("resize", () => { if (holder.clientWidth !== wide) { wide = holder.clientWidth; show(); } });
+  return { show, parts, strips };
 })();

@@ -43,17 +43,13 @@
       make("ul", {}, ...block.lines.map((line) => make("li", {}, line))))));
   }
 
-  // an @page rule in a style element would break the page's own policy
-  const paper = new CSSStyleSheet();
-  paper.replaceSync("@page { size: A4; margin: 14mm; }");
-  document.adoptedStyleSheets = [...document.adoptedStyleSheets, paper];
-
   asks.start();
   trust();
   landmarks.start();
   plan.start();
   ladder.start();
   ranking.start();
+  paper.start();
   page.watchers.push((what) => {
     if ("question" in what || "view" in what) showLegend();
     if ("chosen" in what && state.chosen !== null) plan.reveal(state.chosen);

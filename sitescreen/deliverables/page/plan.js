@@ -255,22 +255,18 @@ const plan = (() => {
       if ("question" in what || "view" in what) showField();
       redraw();
     });
-    let before = null;
     showOnline();
-    window.addEventListener("beforeprint", () => {
-      before = [map.getCenter(), map.getZoom()];
-      holder.classList.add("printing");
-      map.invalidateSize({ animate: false });
-      whole();
-      redraw();
-    });
-    window.addEventListener("afterprint", () => {
-      holder.classList.remove("printing");
-      map.invalidateSize({ animate: false });
-      if (before) map.setView(before[0], before[1], { animate: false });
-      redraw();
-    });
     tell(null);
+    redraw();
+  }
+
+  // on paper the map has a size of its own and shows all plots
+  function print(isPrinting) {
+    holder.classList.toggle("printing", isPrinting);
+    // outside the panes, which paper draws a little smaller than the frame around them
+    (isPrinting ? holder : map.getPane("plots")).append(canvas);
+    map.invalidateSize({ animate: false });
+    if (isPrinting) whole();
     redraw();
   }
 
@@ -305,5 +301,5 @@ const plan = (() => {
     const spot = spots.find((one) => one.i === i);
     return spot ? { x: spot.x, y: spot.y, half: Math.min(spot.half, 400) } : null;
   }
-  return { start, reveal, groundOf, movers, screenOf: (i) => { const s = spots.find((spot) => spot.i === i); return s ? [s.x, s.y] : null; } };
+  return { start, reveal, print, groundOf, movers, screenOf: (i) => { const s = spots.find((spot) => spot.i === i); return s ? [s.x, s.y] : null; } };
 })();

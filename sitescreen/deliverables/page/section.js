@@ -85,9 +85,9 @@ const section = (() => {
     return make("div", {}, make("h3", { class: "strip-head" }, "Sun through the year, by the clock"), svg, make("p", { class: "strip-note" }, told));
   }
 
-  leaf.strips.push((i) => {
-    const width = Math.max(300, document.getElementById("leaf").clientWidth), isNarrow = width < 860;
-    const half = isNarrow ? width : Math.floor((width - 40) / 2);
+  leaf.strips.push((i, room) => {
+    // side by side on wide screens, and on paper
+    const width = Math.max(300, room), half = width < 640 ? width : Math.floor((width - (width < 860 ? 24 : 40)) / 2);
     const parts = [toShore(i, half), year(i, half)].filter((part) => part);
     return parts.length ? [make("div", { class: "pair" }, ...parts)] : [];
   });
