@@ -13,7 +13,7 @@ from affine import Affine
 from shapely.geometry import Point, box
 
 from sitescreen.brief import load_brief
-from sitescreen.deliverables.columns import CONTRACT
+from sitescreen.deliverables.columns import CONTRACT, columns_of
 from sitescreen.errors import BriefError
 from sitescreen.screening import Screening, screen
 
@@ -161,6 +161,74 @@ def test_a_wind_table_takes_the_assumption_away(run: Run, plain: Screening) -> N
     assert row["mark_in_zone"] == pytest.approx(by_hand)
     # 1.2 km behind a shore that rises by 0.4 % to the west, the wind comes off open water in both runs
     assert _table(screening).at["f", "sheltered_fraction"] == pytest.approx(0.0, abs=0.01)
+
+
+def test_a_profile_that_names_another_slot_gets_its_column_layer_and_words(run: Run, country: Path) -> None:
+    """East winds all year, but hot nights have west winds off the slope."""
+    from sitescreen.settings import config_folder
+
+    own = country / "own_profiles"
+    own.mkdir(exist_ok=True)
+    text = (config_folder() / "zones" / "hot_humid_coast.toml").read_text(encoding="utf-8")
+    assert 'slot = "hot_afternoon"' in text
+    (own / "coast.toml").write_text(text.replace('slot = "hot_afternoon"', 'slot = "hot_night"'), encoding="utf-8")
+    rows = "season,part,direction_deg,share,speed_m_s\nyear,all,90,1,4\nhot,afternoon,90,1,4\nhot,night,270,1,2\n"
+    (country / "nights.csv").write_text(rows, encoding="utf-8")
+    wind, force = '[wind]\nfile = "nights.csv"', '[zones]\nforce = "hot_humid_coast"'
+    screening = run(SHORE, wind, force, '[judge]\nprofiles = "own_profiles"')
+    table = _table(screening)
+    row = screening.winds.plots.index("c")
+    assert table.at["c", "ventilation_hot_night"] == pytest.approx(screening.winds.speed_ratio[row, 12])
+    assert table.at["c", "ventilation"] == pytest.approx(screening.winds.speed_ratio[row, 4])
+    assert "ventilation_hot_night" in screening.fields
+    assert "ventilation_hot_night" not in _table(run(SHORE, wind, force))
+    columns = {one.name: one for one in columns_of(screening.table, screening.profiles)}
+    assert columns["ventilation_hot_night"].title == "ventilation, hot-night winds"
+    told = screening.reasons["c"]
+    assert not any("hot-afternoon" in text.casefold() for text in (*told.for_, *told.against))
+
+
+def test_trees_upwind_take_the_wind_away(run: Run, country: Path) -> None:
+    """A wood of 20 m from 280 m east of plot c on: the east wind has lost speed behind it, the west wind none."""
+    count = round(SIDE / STEP)
+    classes = np.zeros((count, count), np.uint8)
+    classes[:, round(0.0725 / STEP) :] = 1
+    transform = Affine(STEP, 0, WEST, 0, -STEP, SOUTH + SIDE)
+    profile = {"driver": "GTiff", "width": count, "height": count, "count": 1, "dtype": "uint8", "crs": "EPSG:4326"}
+    with rasterio.open(country / "cover.tif", "w", transform=transform, nodata=0, **profile) as out:
+        out.write(classes, 1)
+    cover = (
+        '[cover]\nfile = "cover.tif"\n[cover.classes]\n1 = { roughness_m = 1.0, canopy_m = 20, cold_air_factor = 1 }'
+    )
+    bare, wooded = run(SHORE), run(SHORE, cover)
+    row = bare.winds.plots.index("c")
+    again = wooded.winds.plots.index("c")
+    assert wooded.winds.speed_ratio[again, 4] < 0.75 * bare.winds.speed_ratio[row, 4]
+    assert wooded.winds.speed_ratio[again, 12] == pytest.approx(bare.winds.speed_ratio[row, 12], abs=0.05)
+    assert _table(wooded).at["c", "ventilation"] < _table(bare).at["c", "ventilation"] - 0.02
+    assert not any("[cover]" in note.text for note in wooded.notes)
+
+
+def test_several_places_blend_by_distance_in_plots_and_layers(run: Run, country: Path) -> None:
+    """East winds at the southern end and west winds at the northern, on a slope that tells them apart."""
+    head = "season,part,direction_deg,share,speed_m_s,lon,lat,elevation_m\n"
+    slots = (("hot", "afternoon"), ("hot", "night"), ("cool", "night"), ("year", "all"))
+    at = ((90, WEST + 0.07, SOUTH + 0.02), (270, WEST + 0.07, SOUTH + 0.12))
+    rows = [f"{season},{part},{d},1,4,{x},{y},20" for season, part in slots for d, x, y in at]
+    (country / "two.csv").write_text(head + "\n".join(rows), encoding="utf-8")
+    blended = run(SHORE, '[wind]\nfile = "two.csv"\nplaces = "inverse_distance"')
+    row = blended.winds.plots.index("c")
+    east, west = blended.winds.speed_ratio[row, [4, 12]]
+    assert _table(blended).at["c", "ventilation"] == pytest.approx(0.5 * (east + west), abs=1e-3)  # it lies midway
+    field = blended.fields["ventilation"]
+    from pyproj import Transformer
+
+    x, y = Transformer.from_crs("EPSG:4326", field.grid.crs, always_xy=True).transform(WEST + 0.07, SOUTH + SIDE / 2)
+    col, line = int((x - field.grid.west_m) // 90.0), int((field.grid.north_m - y) // 90.0)
+    assert field.values[line, col] == pytest.approx(_table(blended).at["c", "ventilation"], abs=0.01)
+    said = [note.text for note in blended.notes if "counts, with the others" in note.text]
+    assert len(said) == 2
+    assert "+" in said[0]
 
 
 def test_driving_rain_needs_rows_for_the_rainy_season(run: Run, plain: Screening, country: Path) -> None:

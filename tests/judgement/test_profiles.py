@@ -13,7 +13,7 @@ from sitescreen.climate.zones import ZoneShares
 from sitescreen.errors import ConfigError
 from sitescreen.judgement.marks import mark_limits, marks
 from sitescreen.judgement.overall import judge
-from sitescreen.judgement.profiles import ZoneProfile, load_profiles
+from sitescreen.judgement.profiles import ZoneProfile, load_profiles, wind_slots
 from sitescreen.judgement.reasons import load_words, reasons
 from sitescreen.settings import config_folder, load_defaults
 
@@ -140,6 +140,28 @@ def test_an_unknown_key_is_refused_with_the_nearest(tmp_path: Path) -> None:
     path.write_text(path.read_text(encoding="utf-8").replace("question =", "questions ="), encoding="utf-8")
     with pytest.raises(ConfigError, match=r"unknown key 'criteria\.1\.questions'.*'question' was meant"):
         load_profiles(tmp_path)
+
+
+def test_only_readings_of_the_wind_have_slots_and_only_those_there_are(tmp_path: Path) -> None:
+    text = own(tmp_path).joinpath("mine.toml").read_text(encoding="utf-8")
+    slope = text.replace('question = "ground"', 'slot = "year"\nquestion = "ground"')
+    (tmp_path / "mine.toml").write_text(slope, encoding="utf-8")
+    with pytest.raises(ConfigError, match="a slot only with one of the readings ventilation"):
+        load_profiles(tmp_path)
+    (tmp_path / "mine.toml").write_text(slope.replace("slope_deg", "ventilation"), encoding="utf-8")
+    criterion = load_profiles(tmp_path)["my_island"].criteria[0]
+    assert criterion.column == "ventilation_year"
+    assert wind_slots(load_profiles(tmp_path)) == {("ventilation", "year")}
+    wrong = slope.replace("slope_deg", "ventilation").replace('"year"', '"noon"')
+    (tmp_path / "mine.toml").write_text(wrong, encoding="utf-8")
+    with pytest.raises(ConfigError, match=r"criteria\.1\.slot.*'hot_afternoon', 'hot_night', 'cool_night' or 'year'"):
+        load_profiles(tmp_path)
+
+
+def test_the_shipped_profiles_name_the_slot_of_their_wind() -> None:
+    winds = {one.reading: one.slot for profile in PROFILES.values() for one in profile.criteria if one.slot}
+    assert winds == {"ventilation": "hot_afternoon", "ridge_exposure": "year"}
+    assert wind_slots(PROFILES) == frozenset()
 
 
 def test_a_name_twice_is_refused(tmp_path: Path) -> None:
