@@ -147,6 +147,8 @@ def test_what_stands_in_for_missing_rows_is_assumed(tmp_path: Path) -> None:
     """A table without whole-year rows must not count in full for the year."""
     found = table(tmp_path, year((90, 1.0, 3), season="hot", part="afternoon"))
     assert [found.is_assumed(slot) for slot in SLOTS] == [False, True, True, True]
+    found = table(tmp_path, year((90, 1.0, 3)) + year((0, 1.0, 3), season="hot"))
+    assert [found.is_assumed(slot) for slot in SLOTS] == [True, True, True, False]
     everything = [line for season, part in SLOTS.values() for line in year((90, 1.0, 3), season=season, part=part)]
     assert not any(table(tmp_path, everything).is_assumed(slot) for slot in SLOTS)
     assert all(assumed_wind().is_assumed(slot) for slot in SLOTS)
