@@ -18,6 +18,9 @@ SCREENED_SHARE = 0.1
 SEEN_FROM_DEG = 1.5
 """A lower skyline is not worth naming: high ground in general holds the breeze back there. (our choice) [°]"""
 
+NARROW_LAKE_KM = 20.0
+"""A lake narrower than this makes too little of a breeze not to be said: our choice, no source."""
+
 _WORDS = ("shore", "from_shore", "stands_high", "stands_low", "screened_by", "outcome", "weakest", "cautions")
 """Facts that are words, beside those that end in ``_kind`` and ``_word``; no number format fits them."""
 
@@ -64,6 +67,8 @@ def facts(row: Mapping[str, Any]) -> dict[str, Any]:
     ):
         if share in known:
             told[name] = 100.0 * known[share]
+    if told.get("buildable_pct", 1.0) < 0.5:
+        del told["buildable_pct"]  # "only 0 %" is no way to say none
     for ratio, name in (("ventilation", "air_pct"), ("ridge_exposure", "wind_pct"), ("driving_rain", "rain_pct")):
         if ratio in known:
             told[f"more_{name}"] = 100.0 * (known[ratio] - 1.0)
@@ -87,6 +92,8 @@ def facts(row: Mapping[str, Any]) -> dict[str, Any]:
             told[name] = compass_word(known[bearing])
     if known.get("shore_kind") in ("sea", "lake"):
         told["shore"] = known["shore_kind"]
+    if known.get("shore_kind") == "lake" and known.get("lake_width_km", NARROW_LAKE_KM) < NARROW_LAKE_KM:
+        told["narrow_lake_km"] = known["lake_width_km"]
     if "shore_distance_km" in known:
         told["from_shore"] = from_shore(known["shore_distance_km"])
     if known.get("breeze_screen", 0.0) >= SCREENED_SHARE:

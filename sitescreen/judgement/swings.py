@@ -105,11 +105,15 @@ def night_swings(readings: pd.DataFrame, settings: SwingSettings) -> list[Swing]
     return [
         Swing(
             "night",
-            f"cold air on still nights were {factor:g} times as cold",
+            f"cold air on still nights were {_colder(factor)}",
             {"cold_deficit_k": deficit * factor},
         )
         for factor in settings.night
     ]
+
+
+def _colder(factor: float) -> str:
+    return f"{100 * (factor - 1):.0f} % colder" if factor > 1.0 else f"{100 * (1 - factor):.0f} % less cold"
 
 
 def breeze_swings(readings: pd.DataFrame, breeze: BreezeSettings, settings: SwingSettings) -> list[Swing]:

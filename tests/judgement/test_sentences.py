@@ -72,3 +72,12 @@ def test_templates_that_reach_too_far_are_refused(template: str) -> None:
 )
 def test_distances_from_the_shore_are_said_as_people_say_them(distance_km: float, said: str) -> None:
     assert from_shore(distance_km) == said
+
+
+def test_a_narrow_lake_is_named_and_no_share_of_nothing() -> None:
+    assert facts({"shore_kind": "lake", "lake_width_km": 11.0})["narrow_lake_km"] == 11.0
+    assert "narrow_lake_km" not in facts({"shore_kind": "sea", "lake_width_km": 11.0})
+    assert "narrow_lake_km" not in facts({"shore_kind": "lake", "lake_width_km": 60.0})
+    assert "narrow_lake_km" not in facts({"shore_kind": "lake"})
+    assert facts({"buildable_share": 0.2})["buildable_pct"] == pytest.approx(20.0)
+    assert "buildable_pct" not in facts({"buildable_share": 0.002})
