@@ -88,6 +88,15 @@ def reduced_gravity_m_s2(deficit_k: float, settings: ColdLayerSettings) -> float
     return GRAVITY_M_S2 * deficit_k / settings.temperature_k
 
 
+def flow_speed_m_s(discharge_m2_s: FloatArray, fall: FloatArray, gravity: float, friction: float) -> FloatArray:
+    """Speed at which drag balances the weight of air that falls with a slope's sine, (g'·q·sin α/C)^⅓. [m/s]
+
+    With q = u·h it is the bulk balance of a drainage layer, u² = g'·h·sin α/C (as in Manins & Sawford 1979, J. Atmos.
+    Sci. 36:619–630; from memory). The flow's own speed is held down by the limit of critical flow.
+    """
+    return np.asarray(np.cbrt(gravity * discharge_m2_s * fall / friction), dtype=np.float64)
+
+
 def time_step_s(gravity: float, cell_m: float, settings: ColdLayerSettings) -> float:
     """The longest step for waves on a layer as deep as the stated bound; never from the ground of the day. [s]"""
     return settings.step_share * cell_m / math.sqrt(gravity * settings.depth_bound_m)

@@ -18,6 +18,7 @@ from sitescreen.climate.cold_flow import (
     Edge,
     Night,
     Source,
+    flow_speed_m_s,
     level_depth_m,
     reduced_gravity_m_s2,
     run_night,
@@ -199,7 +200,7 @@ def _air(run: Night, ground: CoarseGround, gravity: float, settings: ColdLayerSe
     with np.errstate(invalid="ignore", divide="ignore"):
         froude = np.where(run.depth_m > 0.01, discharge / (run.depth_m * np.sqrt(gravity * run.depth_m)), 0.0)
     fall = _fall_along(ground.bed_m + run.depth_m, run.east_m2_s, run.north_m2_s, discharge, ground.grid)
-    speed = np.cbrt(gravity * discharge * fall / settings.friction)
+    speed = flow_speed_m_s(discharge, fall, gravity, settings.friction)
     froude[np.isnan(run.depth_m)] = np.nan
     return Air(*(values.astype(np.float32) for values in (run.depth_m, discharge, froude, speed)))
 

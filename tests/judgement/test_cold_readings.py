@@ -68,6 +68,36 @@ def test_a_plot_in_a_hollow_reads_its_depth_sill_catchment_and_filling() -> None
     assert values.at["b", "cold_pool_depth_m"] == values.at["b", "cold_fill"] == 0.0
 
 
+def test_a_cone_on_a_dome_fills_as_its_volume_and_area_say() -> None:
+    """A cone 20 m deep and 200 m wide holds 20/3 m over its own area, all its catchment: 0.59 h at 11.3 m³/(m² h)."""
+    y, x = np.mgrid[0:CELLS, 0:CELLS] * 30.0 + 15.0
+    away = np.hypot(x - 1800.0, y - 1800.0)
+    height = np.where(away < 200.0, 280.0 + 0.1 * away, 300.0 - 0.05 * (away - 200.0))
+    values = read(height, (1800.0, 1800.0)).values
+    density = 1.225 * (1.0 - 2.25577e-5 * 300.0) ** 4.2559
+    supply_m_h = 3600.0 * 30.0 / (density * 1005.0 * 8.0)
+    assert values.at["a", "pool_fill_h"] == pytest.approx(20.0 / 3.0 / supply_m_h, rel=0.1)
+    assert values.at["a", "pool_catchment_ha"] == pytest.approx(12.57, rel=0.15)
+
+
+def test_pits_of_very_different_catchment_are_alike_cold() -> None:
+    """Pits with the same view of the sky were about equally cold, though one had many times the other's drainage area.
+
+    Whiteman, Haiden et al. 2004 (J. Appl. Meteor. 43:1224–1236, abstract): the sky view is what counts.
+    """
+    y, x = np.mgrid[0:CELLS, 0:CELLS] * 30.0 + 15.0
+    height = 300.0 - 0.02 * y
+    for east, south in ((900.0, 420.0), (2700.0, 3000.0)):
+        height -= 18.0 * (np.hypot(x - east, y - south) < 150.0)
+    found = read(height, (900.0, 420.0), (2700.0, 3000.0))
+    assert found.values["cold_pool_kind"].tolist() == ["closed", "closed"]
+    upper, lower = found.values["pool_catchment_ha"]
+    assert lower > 4.0 * upper
+    deficit = with_nights(found, np.array([6.0, 6.0]), None, AIR).values["cold_deficit_k"]
+    assert deficit.min() > 2.0
+    assert deficit["a"] == pytest.approx(deficit["b"], rel=0.15)
+
+
 def test_half_of_a_plot_decides_its_kind() -> None:
     height = slope_with_hollow(side_m=600.0)
     # the hollow's western edge is at 1,500 m
