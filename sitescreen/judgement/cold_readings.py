@@ -108,7 +108,7 @@ def with_cold(
     # a clearing in a wood is such a hollow
     air, rim, hectares = settings.cold_air, hollows.pools.deepest_m, hollows.pools.cells * _cell_ha(hollows)
     trees = np.concatenate([[False], (hectares < air.tree_pool_ha) & (rim < air.tree_rim_m)])
-    values["may_be_trees"] = shows_trees & trees[pool]
+    values["may_be_trees"] = (shows_trees & trees[pool]).astype(np.float64)
     reading("night_flow_m2_s", mean(cold.discharge_m2_s.values), (no_ground, NO_GROUND), (always, BEYOND))
     reading("night_flow_speed_m_s", mean(cold.speed_m_s.values), (no_ground, NO_GROUND), (always, BEYOND))
     values["smallest_pool_seen_m"] = np.where(no_ground, np.nan, smallest_pool_m)
