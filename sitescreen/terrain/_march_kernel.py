@@ -18,62 +18,6 @@ _CHUNK = 1024
 
 
 @njit(nogil=True, cache=True, error_model="numpy")
-def near_tangents(
-    elevation_m: Any,
-    ahead: Any,
-    whole: Any,
-    part: Any,
-    spacing_m: Any,
-    bend_per_m: Any,
-    out: Any,
-    start: Any,
-    stop: Any,
-) -> None:
-    """Largest tangent to the samples 1 … n of each cell's ray along the columns, n even.
-
-    Unknown samples are passed over. −∞ where none of them is known, NaN where the cell itself is unknown.
-    """
-    rows, cols = elevation_m.shape
-    nowhere = np.full(cols, _NAN, dtype=np.float32)
-    for row in range(start, stop):
-        here, best = elevation_m[row], out[row]
-        for i in range(cols):
-            best[i] = _LOWEST if here[i] == here[i] else _NAN
-        # two samples at a time: half the traffic through ``best``
-        for sample in range(1, whole.shape[0] - 1, 2):
-            p1, p2 = part[sample], part[sample + 1]
-            r1, r2 = row + whole[sample], row + whole[sample + 1]
-            s1, s2 = r1 + (1 if p1 > 0 else 0), r2 + (1 if p2 > 0 else 0)
-            inside1, inside2 = r1 >= 0 and s1 < rows, r2 >= 0 and s2 < rows
-            if not (inside1 or inside2):
-                continue
-            a1, b1 = (elevation_m[r1], elevation_m[s1]) if inside1 else (nowhere, nowhere)
-            a2, b2 = (elevation_m[r2], elevation_m[s2]) if inside2 else (nowhere, nowhere)
-            m1, m2 = np.float32(1.0 / (spacing_m * sample)), np.float32(1.0 / (spacing_m * (sample + 1)))
-            d1, d2 = np.float32(bend_per_m * spacing_m * sample), np.float32(bend_per_m * spacing_m * (sample + 1))
-            cells = cols - sample - 1
-            if ahead < 0:
-                base, target = here[sample + 1 :], best[sample + 1 :]
-                a1, b1 = a1[1:], b1[1:]
-                only, at = sample, 0
-            else:
-                base, target = here, best
-                a1, b1, a2, b2 = a1[sample:], b1[sample:], a2[sample + 1 :], b2[sample + 1 :]
-                only, at = cols - 1 - sample, cols - 1
-            for i in range(cells):
-                t1 = ((a1[i] + p1 * (b1[i] - a1[i])) - base[i]) * m1 - d1
-                t2 = ((a2[i] + p2 * (b2[i] - a2[i])) - base[i]) * m2 - d2
-                so_far = target[i]
-                so_far = t1 if t1 > so_far else so_far
-                target[i] = t2 if t2 > so_far else so_far
-            # the one cell whose first sample is inside the grid and whose second is not
-            if inside1 and 0 <= only < cols:
-                z = elevation_m[r1, at] + p1 * (elevation_m[s1, at] - elevation_m[r1, at])
-                t1 = (z - here[only]) * m1 - d1
-                best[only] = t1 if t1 > best[only] else best[only]
-
-
-@njit(nogil=True, cache=True, error_model="numpy")
 def reach_tangents(
     elevation_m: Any,
     by_row: Any,

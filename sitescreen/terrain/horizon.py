@@ -12,8 +12,8 @@ from numpy.typing import NDArray
 
 from sitescreen.errors import GridError
 from sitescreen.grid import Field, Grid
-from sitescreen.terrain._horizon_kernel import raise_to_horizon, transpose
-from sitescreen.terrain._march_kernel import near_tangents, reach_tangents
+from sitescreen.terrain._horizon_kernel import GAP, sweep_strips, transpose
+from sitescreen.terrain._march_kernel import reach_tangents
 from sitescreen.terrain._profile_kernel import TOP_CELLS, profiles, tops
 from sitescreen.terrain.threads import in_bands
 
@@ -24,24 +24,25 @@ REFRACTION = 0.13
 """Share of the Earth's curvature that refraction takes back (Gauss's mean coefficient, common practice)."""
 
 _NEAR_STEPS = 24
-"""Ground up to this many steps ahead is read along each cell's own ray, the rest along lines. Even."""
+"""Ground up to this many steps ahead is read along each cell's own ray, the rest along lines."""
 
-_GAP = 3
-"""Cells from line to line."""
+_CROSSING_STEPS = 4
+"""Up to this many steps ahead a ray is read where it crosses the lines of cell centres between two steps, too."""
 
-_STRIP = 6
+_STRIP = 128
 """Lines in a strip."""
 
 
 class _Lines(NamedTuple):
     """Skewed lines along one azimuth; the words are those of the kernel's drawing."""
 
-    transposed: bool
+    by_row: bool
     ascending: bool
     side_a_step: float
     whole: NDArray[np.int64]
     part: NDArray[np.float32]
     spacing_m: float
+    first_step: int
     first_line: int
     lines: int
 
@@ -50,25 +51,26 @@ def _lines(grid: Grid, azimuth_deg: float) -> _Lines:
     """Lines along an azimuth whose place depends on the absolute lattice, not on where the grid's window begins."""
     azimuth = math.radians(azimuth_deg % 360.0)
     d_col, d_row = math.sin(azimuth), -math.cos(azimuth)
-    transposed = sweeps_transposed(azimuth_deg)
-    along, across = (d_row, d_col) if transposed else (d_col, d_row)
-    steps, sides = (grid.rows, grid.cols) if transposed else (grid.cols, grid.rows)
+    by_row = _sweeps_rows(azimuth_deg)
+    along, across = (d_row, d_col) if by_row else (d_col, d_row)
+    steps, sides = (grid.rows, grid.cols) if by_row else (grid.cols, grid.rows)
     row0, col0 = round(-grid.north_m / grid.cell_size_m), round(grid.west_m / grid.cell_size_m)
-    step0, side0 = (row0, col0) if transposed else (col0, row0)
+    step0, side0 = (row0, col0) if by_row else (col0, row0)
     shift = (across / along) * (step0 + np.arange(steps, dtype=np.float64)) - side0
     whole, part = _whole_and_part(shift)
     # lines are numbered within the window, but stay in their places on the lattice
-    whole -= _GAP * (whole.min() // _GAP)
-    first_line = -_GAP * (int(whole.max()) // _GAP + 1)
+    whole -= GAP * (whole.min() // GAP)
+    first_line = -GAP * (int(whole.max()) // GAP + 1)
     return _Lines(
-        transposed=transposed,
+        by_row=by_row,
         ascending=along < 0,
         side_a_step=across / abs(along),
         whole=whole,
         part=part,
         spacing_m=grid.cell_size_m * math.hypot(1.0, across / along),
+        first_step=step0,
         first_line=first_line,
-        lines=(sides - first_line) // _GAP + 1,
+        lines=(sides - first_line) // GAP + 1,
     )
 
 
@@ -84,6 +86,31 @@ def _rays(lines: _Lines, samples: int) -> tuple[int, NDArray[np.int64], NDArray[
     """Samples 0 … n of any cell's ray, one a step: the way along the steps, and how far aside they lie."""
     whole, part = _whole_and_part(lines.side_a_step * np.arange(samples + 1))
     return -1 if lines.ascending else 1, whole, part
+
+
+def _near_samples(lines: _Lines) -> tuple[NDArray[np.int64], NDArray[np.float32], NDArray[np.float64]]:
+    """Where any cell's ray is read nearby: two cells each (step and side, twice), the second one's share, distance."""
+    ahead = -1 if lines.ascending else 1
+    _, whole, part = _rays(lines, _NEAR_STEPS)
+    cells, share = [], []
+    for n in range(1, _NEAR_STEPS + 1):
+        aside = int(whole[n])
+        cells.append((ahead * n, aside, ahead * n, aside + int(part[n] > 0)))
+        share.append(float(part[n]))
+    steps = [float(n) for n in range(1, _NEAR_STEPS + 1)]
+    for side in range(1, _CROSSING_STEPS + 1):
+        if abs(lines.side_a_step) * _CROSSING_STEPS < side:
+            break
+        crossed = side / abs(lines.side_a_step)
+        before, between = _whole_and_part(np.array([crossed]))
+        if between[0] > 0:
+            n, aside = int(before[0]), side if lines.side_a_step > 0 else -side
+            cells.append((ahead * n, aside, ahead * (n + 1), aside))
+            share.append(float(between[0]))
+            steps.append(crossed)
+    order = np.argsort(steps, kind="stable")
+    distance_m = lines.spacing_m * np.array(steps)[order]
+    return np.array(cells, dtype=np.int64)[order], np.array(share, dtype=np.float32)[order], distance_m
 
 
 def _bend_per_m(earth_curvature: bool) -> float:
@@ -102,8 +129,8 @@ def transposed(values: NDArray[np.float32]) -> NDArray[np.float32]:
     return out
 
 
-def sweeps_transposed(azimuth_deg: float) -> bool:
-    """Whether an azimuth lies within 45° of north or south and is swept over the transposed ground."""
+def _sweeps_rows(azimuth_deg: float) -> bool:
+    """Whether an azimuth lies within 45° of north or south: its steps are rows; else they are columns."""
     azimuth = math.radians(azimuth_deg % 360.0)
     return abs(math.cos(azimuth)) >= abs(math.sin(azimuth)) * (1.0 - 1e-12)
 
@@ -147,48 +174,37 @@ def _tangents(
     seen.flags.writeable = False
     turned, turned_out = None, np.empty((0, 0), dtype=np.float32)
     for azimuth in azimuths_deg:
-        if sweeps_transposed(azimuth):
+        if _sweeps_rows(azimuth):
+            _sweep(elevation.values, grid, azimuth, earth_curvature, out)
+        else:
             if turned is None:
                 turned, turned_out = transposed(elevation.values), np.empty(grid.shape[::-1], dtype=np.float32)
             _sweep(turned, grid, azimuth, earth_curvature, turned_out)
             in_bands(transpose, grid.rows, turned_out, out)
-        else:
-            _sweep(elevation.values, grid, azimuth, earth_curvature, out)
         yield azimuth, seen
 
 
 def _sweep(
     values: NDArray[np.float32], grid: Grid, azimuth_deg: float, earth_curvature: bool, out: NDArray[np.float32]
 ) -> None:
-    """Write the tangents of :func:`horizon_tangent` to ``out``.
-
-    Parameters
-    ----------
-    values, out : float32 arrays
-        Heights [m] and tangents, both transposed where :func:`sweeps_transposed` says so.
-    grid : Grid
-        Of the ground as it lies.
-    azimuth_deg : float
-    earth_curvature : bool
-    """
+    """Write the tangents of :func:`horizon_tangent` to ``out``; steps are rows of ``values`` and of ``out``."""
     lines = _lines(grid, azimuth_deg)
-    bend = _bend_per_m(earth_curvature)
-    in_bands(near_tangents, values.shape[0], values, *_rays(lines, _NEAR_STEPS), lines.spacing_m, bend, out)
     in_bands(
-        raise_to_horizon,
+        sweep_strips,
         -(-lines.lines // _STRIP),
         values,
         lines.ascending,
-        _GAP,
+        *_near_samples(lines),
+        _NEAR_STEPS,
         lines.whole,
         lines.part,
         lines.spacing_m,
-        bend,
-        _NEAR_STEPS,
+        _bend_per_m(earth_curvature),
+        lines.first_step,
         lines.first_line,
         _STRIP,
         out,
-        bands_a_thread=8,
+        bands_a_thread=16,
     )
 
 
@@ -301,7 +317,7 @@ def upwind_tangent(elevation: Field, azimuth_deg: float, reach_m: float, recepto
         reach_tangents,
         grid.rows,
         elevation.values,
-        lines.transposed,
+        lines.by_row,
         *_rays(lines, samples),
         lines.spacing_m,
         height,
