@@ -113,6 +113,7 @@ LIMITS_S = {
     "filled surface": 0.25,
     "flow direction and accumulation": 0.4,
     "hollows: sills, pools, catchments": 2.0,
+    "horizon, one azimuth": 6.5e-9 * 3601**2,
     "sky view, 36 azimuths": 3.5,
     "upwind angle to 3 km, one azimuth": 0.1,
     "coverage of 1,000 plots": 0.3,
@@ -251,16 +252,16 @@ def others_s(f: Field) -> dict[str, float]:
 # the whole stage, and starting
 
 
-def every_quantity(f: Field, sky_azimuths: int = 36) -> list[Any]:
-    """What the main job asks of the terrain, but for the water, with the shipped settings."""
-    from sitescreen.terrain.buildable import chance_buildable
-    from sitescreen.terrain.hollows import hollows
-    from sitescreen.terrain.position import rise_m
-    from sitescreen.terrain.sky_view import sky_view
-    from sitescreen.terrain.slope import aspect_deg, gradient, slope_deg
+def every_quantity(f: Field, sky_azimuths: int = 36, reach_m: float = 3000.0) -> None:
+    """What a run asks of the terrain, water and all 16 sectors of the wind included, with the shipped settings."""
+    from sitescreen.settings import load_defaults
+    from sitescreen.terrain.ground import read_ground
+    from sitescreen.terrain.horizon import upwind_tangent
 
-    found = [quantity(f) for quantity in (gradient, slope_deg, aspect_deg, rise_m, hollows)]
-    return [*found, chance_buildable(f, 15.0, 2.5, 90.0), sky_view(f, sky_azimuths)]
+    settings = load_defaults().terrain.model_copy(update={"sky_azimuths": sky_azimuths})
+    ground_of_block = read_ground(f, f, np.zeros(f.grid.shape, dtype=np.uint8), 2.5, 90.0, settings)
+    for sector in range(16):
+        upwind_tangent(ground_of_block.elevation, 22.5 * sector, reach_m)
 
 
 def stage(tile: str) -> None:
@@ -296,10 +297,7 @@ def first_use() -> None:
     """Import and call every terrain quantity of the main job once on little ground; print the seconds."""
     f = ground(80)
     begun = time.perf_counter()
-    every_quantity(f, 8)
-    from sitescreen.terrain.horizon import upwind_tangent
-
-    upwind_tangent(f, 30.0, 300.0)
+    every_quantity(f, 8, 300.0)
     print(time.perf_counter() - begun, time.process_time())
 
 

@@ -9,6 +9,7 @@ from numba import njit
 # Levels are only ever compared and copied, never added, so float32 in gives exactly the same levels as float64 would.
 # Volumes are added up in float64.
 _INF = np.float32(math.inf)
+_NAN = np.float32(math.nan)
 
 INTERIOR, RIM, OUTLET, UNKNOWN = 0, 1, 2, 3
 
@@ -186,40 +187,49 @@ def _flood_group(
 
 
 @njit(nogil=True, cache=True, error_model="numpy")
-def fill(elevation_m: Any, kind: Any, level_m: Any) -> None:
-    """The lowest surface on and above the ground from which every cell drains to the rim or an outlet.
+def drained_levels(elevation_m: Any, kind: Any, level_m: Any, start: Any, stop: Any) -> None:
+    """Where the fill starts from: ground that drains at its own height, everything else at no limit yet."""
+    for row in range(start, stop):
+        ground, what, level = elevation_m[row], kind[row], level_m[row]
+        for col in range(ground.shape[0]):
+            level[col] = ground[col] if what[col] == RIM or what[col] == OUTLET else _INF
 
-    Two raster sweeps, down and up, come first. Levels only ever fall to the filled surface and never pass the ground,
-    so a cell whose level equals its ground is final, in any order: on real terrain about nine in ten. Each group of
-    cells left over is then flooded by itself from its settled neighbours with a heap of its own.
+
+@njit(nogil=True, cache=True, error_model="numpy")
+def sweep_levels(elevation_m: Any, level_m: Any) -> None:
+    """Two raster sweeps, down and up.
+
+    Levels only ever fall to the filled surface and never pass the ground, so a cell whose level equals its ground is
+    final, in any order: on real terrain about nine in ten.
     """
-    rows, cols = elevation_m.shape
-    for row in range(rows):
-        for col in range(cols):
-            z = elevation_m[row, col]
-            level_m[row, col] = z if kind[row, col] == RIM or kind[row, col] == OUTLET else _INF
     _sweep(elevation_m, level_m, True)
     _sweep(elevation_m, level_m, False)
 
+
+@njit(nogil=True, cache=True, error_model="numpy")
+def open_cells(elevation_m: Any, kind: Any, level_m: Any, state: Any, start: Any, stop: Any) -> None:
+    """Mark in ``state`` the cells whose level is not final, with 1; unknown ground gets no level."""
+    for row in range(start, stop):
+        ground, what, level, open_ = elevation_m[row], kind[row], level_m[row], state[row]
+        for col in range(ground.shape[0]):
+            open_[col] = 1 if level[col] > ground[col] else 0
+            level[col] = _NAN if what[col] == UNKNOWN else level[col]
+
+
+@njit(nogil=True, cache=True, error_model="numpy")
+def flood_open_cells(elevation_m: Any, level_m: Any, state: Any, count: Any) -> None:
+    """Flood each group of the ``count`` open cells by itself, from its settled neighbours with a heap of its own."""
+    cols = elevation_m.shape[1]
     # open cells are never on the outer ring, which drains: all their neighbours exist
     around = np.array([-cols - 1, -cols, -cols + 1, -1, 1, cols - 1, cols, cols + 1])
-    ground, level = elevation_m.reshape(-1), level_m.reshape(-1)
-    state = np.empty(rows * cols, dtype=np.uint8)
-    left = 0
-    for cell in range(rows * cols):
-        state[cell] = 1 if level[cell] > ground[cell] else 0
-        left += int(state[cell])
-    members = np.empty(left, dtype=np.int64)
+    ground, level, mark = elevation_m.reshape(-1), level_m.reshape(-1), state.reshape(-1)
+    members = np.empty(count, dtype=np.int32)
     # a cell enters the heap at most once from settled neighbours and once from within
-    keys = np.empty(2 * left + 1, dtype=np.float32)
-    cells = np.empty(2 * left + 1, dtype=np.int64)
-    for cell in range(rows * cols):
-        if state[cell] == 1:
-            _flood_group(cell, around, ground, level, state, members, keys, cells)
-    for row in range(rows):
-        for col in range(cols):
-            if kind[row, col] == UNKNOWN:
-                level_m[row, col] = math.nan
+    keys = np.empty(2 * count + 1, dtype=np.float32)
+    cells = np.empty(2 * count + 1, dtype=np.int32)
+    for cell in range(mark.shape[0]):
+        if mark[cell] == 1:
+            _flood_group(cell, around, ground, level, mark, members, keys, cells)
 
 
 @njit(nogil=True, cache=True, error_model="numpy")

@@ -47,7 +47,13 @@ def _aspect_deg(east: Any, north: Any) -> Any:
     flat_side = wide > tall
     low = tall if flat_side else wide
     high = wide if flat_side else tall
-    angle = _atan_deg(low / high)
+    # the arc tangent of low / high ≤ 1 with one division: 45° + atan((low − high) / (low + high)) in its upper half
+    middle = low > _TAN_22_5 * high
+    over = low - high if middle else low
+    under = low + high if middle else high
+    y = over / under
+    u = y * y
+    angle = (_45_DEG if middle else _ZERO) + y * (_A0 + u * (_A1 + u * (_A2 + u * (_A3 + u * _A4))))
     angle = _90_DEG - angle if flat_side else angle
     angle = _180_DEG - angle if north > _ZERO else angle
     angle = _360_DEG - angle if east > _ZERO else angle

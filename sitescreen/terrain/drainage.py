@@ -15,7 +15,13 @@ from sitescreen.terrain._drainage_kernel import (
     heights_above_channel,
     steepest_ways,
 )
-from sitescreen.terrain._hollows_kernel import cell_kinds, fill
+from sitescreen.terrain._hollows_kernel import (
+    cell_kinds,
+    drained_levels,
+    flood_open_cells,
+    open_cells,
+    sweep_levels,
+)
 from sitescreen.terrain.threads import in_bands
 
 LEAVES, UNKNOWN = 4, 9
@@ -75,7 +81,11 @@ def filled(elevation: Field, outlets: NDArray[np.bool_] | None = None) -> tuple[
     kind = np.empty(shape, dtype=np.uint8)
     in_bands(cell_kinds, shape[0], elevation.values, taking, kind)
     level = np.empty(shape, dtype=np.float32)
-    fill(elevation.values, kind, level)
+    in_bands(drained_levels, shape[0], elevation.values, kind, level)
+    sweep_levels(elevation.values, level)
+    state = np.empty(shape, dtype=np.uint8)
+    in_bands(open_cells, shape[0], elevation.values, kind, level, state)
+    flood_open_cells(elevation.values, level, state, np.count_nonzero(state))
     return level, kind
 
 

@@ -15,7 +15,7 @@ from sitescreen.terrain.hollows import Hollows, hollows
 from sitescreen.terrain.horizon import HorizonConsumer, horizon_stream
 from sitescreen.terrain.position import rise_m
 from sitescreen.terrain.sky_view import SkySum, even_azimuths
-from sitescreen.terrain.slope import Gradient, aspect_deg, gradient, slope_deg
+from sitescreen.terrain.slope import Gradient, gradient, slope_and_aspect
 
 STRIP_CELLS = 3.0
 """Unknown ground this close to mapped water takes its level, as other gaps of that width are closed. [cells]"""
@@ -153,6 +153,7 @@ def read_ground(
     flat = flat_water(with_level_water(stored, water_kind, level), settings.smallest_water_km2)
     outlets = open_to_cold_air(water_kind, ground.grid.cell_size_m, settings.smallest_outlet_km2)
     slope = gradient(ground)
+    steepness, aspect = slope_and_aspect(ground)
     sky = SkySum(slope)
     horizon_stream(ground, even_azimuths(settings.sky_azimuths), [sky, *on_horizon])
     return Ground(
@@ -161,8 +162,8 @@ def read_ground(
         over_water_m=ground.values - level,
         flat=flat,
         gradient=slope,
-        slope=slope_deg(ground),
-        aspect=aspect_deg(ground),
+        slope=steepness,
+        aspect=aspect,
         buildable=chance_buildable(ground, settings.buildable_limit_pct, vertical_error_m, error_range_m),
         rise=rise_m(ground, settings.rise_radius_m),
         sky_view=sky.sky_view(),

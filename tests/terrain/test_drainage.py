@@ -7,8 +7,15 @@ from hypothesis.extra.numpy import arrays
 
 from sitescreen.grid import Field, Grid
 from sitescreen.terrain import _drainage_kernel as kernel
-from sitescreen.terrain import _hollows_kernel as flood
-from sitescreen.terrain.drainage import LEAVES, UNKNOWN, catchment_cells, channels, drainage, height_above_channel_m
+from sitescreen.terrain.drainage import (
+    LEAVES,
+    UNKNOWN,
+    catchment_cells,
+    channels,
+    drainage,
+    filled,
+    height_above_channel_m,
+)
 from sitescreen.terrain.hollows import hollows
 
 small_ground = arrays(
@@ -100,10 +107,7 @@ def test_kernels_agree_with_their_python_forms() -> None:
     """Compiled and interpreted give the same ways and counts, plateaus and a hole included."""
     values = np.round(np.random.default_rng(9).normal(0, 2, (12, 13))).astype(np.float32)
     values[6, 6] = np.nan
-    kind = np.empty(values.shape, dtype=np.uint8)
-    level = np.empty(values.shape, dtype=np.float32)
-    flood.cell_kinds(values, np.zeros(values.shape, dtype=bool), kind, 0, 12)
-    flood.fill(values, kind, level)
+    level, kind = filled(Field(values, Grid("EPSG:32637", 0.0, 0.0, 30.0, 12, 13), "m", "test ground"))
     results = []
     for form in (lambda f: f, lambda f: f.py_func):
         direction = np.empty(values.shape, dtype=np.uint8)

@@ -261,7 +261,11 @@ def test_fill_agrees_with_its_python_form() -> None:
         level = np.empty(values.shape, dtype=np.float32)
         pool = np.empty(values.shape, dtype=np.int32)
         form(kernel.cell_kinds)(values, outlets, kind, 0, 14)
-        form(kernel.fill)(values, kind, level)
+        state = np.empty(values.shape, dtype=np.uint8)
+        form(kernel.drained_levels)(values, kind, level, 0, 14)
+        form(kernel.sweep_levels)(values, level)
+        form(kernel.open_cells)(values, kind, level, state, 0, 14)
+        form(kernel.flood_open_cells)(values, level, state, np.count_nonzero(state))
         pools = form(kernel.label_pools)(values, level, pool)
         figures = [np.zeros(pools + 1) for _ in range(2)] + [np.zeros(pools + 1, dtype=np.int64), np.zeros(pools + 1)]
         form(kernel.pool_figures)(values, level, pool, *figures)
