@@ -7,8 +7,10 @@ from pathlib import Path
 import pytest
 from click.testing import CliRunner, Result
 
+from sitescreen.brief import Brief
 from sitescreen.cli.main import run
 from sitescreen.inputs.results import read_result
+from sitescreen.swapping import SECTIONS
 from tests.test_cli import BRIEF, METRIC, rolling, three_plots, write_terrain
 
 
@@ -134,3 +136,9 @@ def test_a_folder_without_results_is_refused(runs: Path, tmp_path: Path) -> None
     told = call("compare", runs / "first", tmp_path)
     assert told.exit_code == 2
     assert "record.json" in told.output
+
+
+def test_every_section_of_a_brief_belongs_to_a_part_or_moves_no_rank() -> None:
+    told = {name for names in SECTIONS.values() for name in names}
+    # judge: the profiles that it amounts to are kept whole, seed and shortlist move no rank
+    assert told | {"title", "judge", "context", "output"} == set(Brief.model_fields)

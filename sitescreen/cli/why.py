@@ -42,6 +42,7 @@ def command(result: Path, plot: str) -> None:
 
 
 def _place(row: Mapping[str, str], plots: Mapping[str, Any], certainty: Mapping[str, Any]) -> Iterator[str]:
+    from sitescreen.deliverables.sureness import of_trials
     from sitescreen.deliverables.table import whole_mark
 
     yield f"Plot {row['plot']}, {row['name']}" if row["name"] else f"Plot {row['plot']}"
@@ -63,23 +64,26 @@ def _place(row: Mapping[str, str], plots: Mapping[str, Any], certainty: Mapping[
         )
     if row.get("zone_missing"):
         yield f"Its rank is provisional: {row['zone_missing']} is missing to tell its zone."
+    if row["rank_low"]:
+        yield (
+            f"In {certainty['trials']:,} trials, which vary {certainty['varies']}, mostly "
+            f"{_span(row['rank_low'], row['rank_high'])}; first {of_trials(float(row['chance_first']))}."
+        )
     if row.get("rank_low_data"):
         yield (
-            f"By the weights alone rank {row['rank_low_weights']} to {row['rank_high_weights']}, by the data alone "
-            f"rank {row['rank_low_data']} to {row['rank_high_data']}; set aside in "
-            f"{100 * float(row['chance_set_aside']):.0f} of 100 draws."
+            f"By the weights alone {_span(row['rank_low_weights'], row['rank_high_weights'])}, by the data alone "
+            f"{_span(row['rank_low_data'], row['rank_high_data'])}."
         )
+    if float(row.get("chance_set_aside") or 0.0) > 0.0:
+        yield f"Set aside in {100 * float(row['chance_set_aside']):.0f} of 100 draws of the data."
     if row.get("where_on_plot"):
         yield row["where_on_plot"]
     if row.get("mahoney_says"):
         yield f"Second opinion on the climate: {row['mahoney_says']} ({row['mahoney']})"
-    if row["rank_low"]:
-        low, high = row["rank_low"], row["rank_high"]
-        span = f"rank {low}" if low == high else f"rank {low} to {high}"
-        yield (
-            f"In {certainty['trials']:,} trials, which vary {certainty['varies']}, mostly {span}, "
-            f"first in {100 * float(row['chance_first']):.0f} of 100."
-        )
+
+
+def _span(low: str, high: str) -> str:
+    return f"rank {low}" if low == high else f"rank {low} to {high}"
 
 
 def _in_zone(row: Mapping[str, str], zone: str, share: str, mark: str) -> str:

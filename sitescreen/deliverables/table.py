@@ -36,7 +36,7 @@ def value_of(column: Column, value: Any) -> str | int | float | None:
     if value is None or value is _na() or (isinstance(value, float) and math.isnan(value)):
         return None
     if isinstance(value, bool | np.bool_):
-        return "yes" if value else "no"
+        return int(value) if column.kind == "whole" else "yes" if value else "no"
     if column.kind == "text":
         return str(value) or None
     if not math.isfinite(value):

@@ -5,10 +5,11 @@ import io
 from pathlib import Path
 from typing import Any
 
+import numpy as np
 import pandas as pd
 import pytest
 
-from sitescreen.deliverables.columns import BY_NAME, CONTRACT, columns_of
+from sitescreen.deliverables.columns import BY_NAME, CONTRACT, Column, columns_of
 from sitescreen.deliverables.table import cell, safe_text, value_of, write_csv
 
 # typed in from the design of the table, not read from the code
@@ -118,3 +119,8 @@ def test_a_bearing_just_short_of_north_is_north() -> None:
     assert value_of(BY_NAME["onshore_from_deg"], 359.7) == 0.0
     assert value_of(BY_NAME["onshore_from_deg"], 359.4) == 359.0
     assert value_of(BY_NAME["slope_deg"], 360.0) == 360.0, "only bearings go round"
+
+
+def test_a_truth_is_a_number_in_a_column_of_whole_numbers() -> None:
+    assert value_of(Column("a", "whole", 0, "", "a", ""), np.bool_(True)) == 1
+    assert value_of(Column("a", "text", 0, "", "a", ""), False) == "no"
