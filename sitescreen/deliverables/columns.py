@@ -239,6 +239,7 @@ MORE: Mapping[str, Column] = {
             "As “colder by”; where that is unknown, the least that ground beyond the terrain model leaves open.",
         ),
         _number("cold_deficit_most_k", 1, "°C", "colder by at most", "The most that it leaves open."),
+        _number("cold_strength_k", 1, "°C", "coldest pools", "How cold a deep pool of its climate can grow."),
         _number(
             "still_air", 2, "0–1", "still air", "How far the night’s air stands in a hollow or behind narrows; 0 moves."
         ),

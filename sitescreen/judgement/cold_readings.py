@@ -199,6 +199,7 @@ def with_nights(
     Returns
     -------
     Readings
+        ``cold_strength_k``: ΔT, as given. [K]
         ``cold_deficit_k``: how much colder than open level ground the air is on a calm clear night. [K]
         ``cold_deficit_least_k``, ``cold_deficit_most_k``: between what it lies where it is unknown.
         ``night_minimum_c``: mean minimum of the three coolest months at the plot's height, less that. [°C]
@@ -207,6 +208,7 @@ def with_nights(
     """
     values, why = readings.values.copy(), readings.why_unknown.copy()
     fill, sky, cap = (values[name].to_numpy(dtype=np.float64) for name in ("cold_fill", "sky_view", "cold_cap_k"))
+    values["cold_strength_k"] = strength_k
     values["cold_deficit_k"] = deficit_k(strength_k, fill, sky, cap)
     for limit in ("least", "most"):
         of = values[f"cold_fill_{limit}"].to_numpy(dtype=np.float64)

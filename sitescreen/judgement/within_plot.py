@@ -23,7 +23,8 @@ FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
 READINGS_OF_FIELDS: Mapping[str, tuple[str, ...]] = {
-    "hollow_depth_m": ("pond_depth_m", "cold_pool_depth_m"),
+    "hollow_depth_m": ("pond_depth_m",),
+    "cold_depth_m": ("cold_pool_depth_m",),
     "buildable_chance": ("buildable_share",),
 }
 """Readings that fields of another name are read into; a field serves the reading of its own name anyway."""
@@ -174,10 +175,15 @@ def _cell_marks(
     wanted = {one.column for one in criteria}
     wanted |= {name for one in criteria for name in DERIVED_READINGS.get(one.reading, ())}
     own = {name: readings[name].to_numpy()[cells.plot] for name in sorted(wanted) if name in readings}
+    measured = dict(cells.readings)
+    if "cold_share" in measured and "cold_strength_k" in readings:
+        # what gathers differs from cell to cell; the climate's strength is the plot's
+        strength = readings["cold_strength_k"].to_numpy(dtype=np.float64)[cells.plot]
+        measured["cold_deficit_k"] = strength * measured["cold_share"].astype(np.float64)
     for name in own:
-        if name in cells.readings:
+        if name in measured:
             own[name] = own[name].astype(np.float64)
-            here = cells.readings[name].astype(np.float64)
+            here = measured[name].astype(np.float64)
             own[name] = np.where(np.isnan(own[name]) | np.isnan(here), own[name], here)
     table = with_derived(pd.DataFrame(own, index=pd.RangeIndex(len(cells.plot))))
     shares = zones.at(cells.plot)

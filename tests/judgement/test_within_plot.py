@@ -38,6 +38,7 @@ def look(
     slope: np.ndarray,
     *,
     water: np.ndarray | None = None,
+    cold_share: np.ndarray | None = None,
     footprint_m2: float = 400.0,
 ) -> WithinPlots:
     import geopandas as gpd
@@ -45,6 +46,8 @@ def look(
     outlines = gpd.GeoSeries(shapes, crs=GRID.crs)
     middle = outlines.representative_point().to_crs("EPSG:4326")
     fields = {"slope_deg": Field(slope, GRID, "°", "slope")}
+    if cold_share is not None:
+        fields["cold_share"] = Field(cold_share, GRID, "1", "share of the climate's cold")
     dry = np.zeros(GRID.shape, dtype=bool) if water is None else water
     cells = plot_cells(cover(outlines, GRID), np.arange(len(shapes)), fields, dry, GRID, SETTINGS.readings)
     return within_plots(
@@ -164,3 +167,18 @@ def test_a_plot_without_a_zone_has_no_squares(plots: Plots, in_zone: Zones) -> N
 )
 def test_squares_hold_the_footprint_and_nine_cells(footprint_m2: float, cell_m: float, side: int) -> None:
     assert patch_side_cells(footprint_m2, cell_m, 9.0) == side
+
+
+def test_the_warm_end_of_a_plot_half_in_cold_air_is_the_best(plots: Plots, in_zone: Zones) -> None:
+    """6 K in the west, none in the east: the square's mark is that of a plot without cold air."""
+    readings = plots({"elevation_m": 1800.0, "cold_deficit_k": 3.0, "cold_strength_k": 6.0, "slope_deg": 2.0})
+    zones = in_zone(readings, "upland")
+    share = np.zeros(GRID.shape)
+    share[:, :12] = 1.0
+    found = look([square(4, 4, 6, 16)], readings, zones, np.full(GRID.shape, 2.0), cold_share=share)
+    warm = plot_mark(readings.assign(cold_deficit_k=0.0), zones)
+    assert found.table.at["a", "best_patch_mark"] == pytest.approx(warm)
+    assert found.table.at["a", "worst_patch_mark"] == pytest.approx(
+        plot_mark(readings.assign(cold_deficit_k=6.0), zones)
+    )
+    assert "east" in found.table.at["a", "where_on_plot"]
