@@ -19,7 +19,7 @@ from sitescreen.climate.normals import plot_climate
 from sitescreen.climate.plot_sun import PlotSkies, mean_plane, monthly_sun, plot_skies
 from sitescreen.climate.seasons import seasons_from_normals, seasons_without_normals
 from sitescreen.climate.sector_winds import SectorWinds, sector_winds
-from sitescreen.climate.sun_field import sun_hours
+from sitescreen.climate.sun_field import SunField
 from sitescreen.climate.wind import FIELD_READINGS, Wanted, wind_fields
 from sitescreen.climate.wind_cover import wind_cover
 from sitescreen.grid import Field, Grid
@@ -43,6 +43,7 @@ from sitescreen.terrain.plot_skyline import plot_skylines
 from sitescreen.terrain.shore_distance import ShoreDistance, nearest_shore, onshore_bearing, shore_distance
 from sitescreen.terrain.shore_fetch import OpenRule, OpenShore, open_segments, open_shores
 from sitescreen.terrain.shore_segments import Segments
+from sitescreen.terrain.sky_view import even_azimuths
 
 FloatArray = NDArray[np.float64]
 
@@ -116,7 +117,11 @@ def measure(
         if grid != wide:
             heights, water_kind = heights.part(grid.bounds), water_kind[wide.part(grid.bounds)[1]]
     with progress.step("Measuring slope, hollows and sky"):
-        ground = read_ground(*heights, water_kind, terrain.vertical_error_m, terrain.error_range_m, settings.terrain)
+        clear_share = inputs.sky.share if inputs.sky else None
+        sunshine = SunField(block, grid, even_azimuths(settings.terrain.sky_azimuths), settings.sun, clear_share)
+        ground = read_ground(
+            *heights, water_kind, terrain.vertical_error_m, terrain.error_range_m, settings.terrain, [sunshine]
+        )
         # only the core is this block's to report: neighbours would count the margin twice
         core, inside = grid.part(block.core_bounds)
         disagreement = water_disagreement(
@@ -174,7 +179,6 @@ def measure(
     with progress.step("Measuring the sun"):
         suns = _suns(plots, ground, coverage, readings, inputs, settings)
         readings = with_sun(readings, suns, monthly_sun(suns, settings.sun))
-        sunshine = sun_hours(ground.elevation, block, settings.terrain.sky_azimuths, settings.sun, suns.clear_share)
     fields = {
         "elevation_m": ground.elevation,
         "slope_deg": ground.slope,
@@ -182,7 +186,7 @@ def measure(
         "buildable_chance": ground.buildable,
         "rise_m": ground.rise,
         "sky_view": ground.sky_view,
-        "sun_year_h": sunshine,
+        "sun_year_h": sunshine.hours(ground.elevation),
         "hollow_depth_m": pools.depth_m,
         "cold_depth_m": cold.depth_m,
         "cold_kind": Field(cold.kind.astype(np.float32), grid, "code", "cold air: " + ", ".join(KIND_CODES)),

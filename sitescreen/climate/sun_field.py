@@ -9,7 +9,6 @@ from sitescreen.climate.sun_path import DAYS_IN_MONTH, sun_path
 from sitescreen.grid import Field, Grid
 from sitescreen.lattice import Block, convergence_deg
 from sitescreen.settings import SunSettings
-from sitescreen.terrain.horizon import horizon_tangent
 from sitescreen.terrain.threads import in_bands
 
 FloatArray = NDArray[np.float64]
@@ -22,7 +21,7 @@ _ENTRIES = 1024
 
 
 class SunField:
-    """Adds up a block's hours of sun from one direction of the horizon after another.
+    """Adds up a block's hours of sun from one direction of the horizon after another, beside the sky view.
 
     The sun of a year stands, in each direction, for so many hours above each height. A direction's hours past a cell's
     horizon are then one look into a table, and their sum over all directions is the year's. A sun between two
@@ -72,12 +71,6 @@ class SunField:
         self._northward = ((grid.y_centres_m() - south) / (north - south)).astype(np.float32)
         self._total = np.zeros(grid.shape, dtype=np.float32)
         self._grid = grid
-
-    @property
-    def needed_deg(self) -> list[float]:
-        """The directions in which the sun stands at some time of the year. [°]"""
-        has_sun = np.maximum(self._south[:, 0], self._north[:, 0]) > 0.0
-        return [float(azimuth) for azimuth in self._azimuths_deg[has_sun]]
 
     def __call__(self, azimuth_deg: float, tangent: NDArray[np.float32]) -> None:
         """Add one direction.
@@ -142,34 +135,3 @@ def hours_above(
     table = (towards @ above).astype(np.float32)
     table[:, -1] = 0.0
     return table
-
-
-def sun_hours(
-    elevation: Field,
-    block: Block,
-    azimuths: int,
-    settings: SunSettings,
-    clear_share: FloatArray | None = None,
-) -> Field:
-    """Hours of sun in a year, by a pass of its own over the directions in which the sun ever stands.
-
-    Parameters
-    ----------
-    elevation : Field
-        Height. [m]
-    block : Block
-    azimuths : int
-        Directions all round, evenly spaced from grid north.
-    settings : SunSettings
-    clear_share : float64 array, shape (12, 2), optional
-
-    Returns
-    -------
-    Field
-        [h] See :class:`SunField`.
-    """
-    every: FloatArray = 360.0 / azimuths * np.arange(azimuths, dtype=np.float64)
-    sun = SunField(block, elevation.grid, every, settings, clear_share)
-    for azimuth in sun.needed_deg:
-        sun(azimuth, horizon_tangent(elevation, azimuth))
-    return sun.hours(elevation)

@@ -9,11 +9,12 @@ from pyproj import Transformer
 from sitescreen.climate._sun_field_kernel import add_hours
 from sitescreen.climate.plot_sun import PlotSkies, monthly_sun
 from sitescreen.climate.seasons import seasons_without_normals
-from sitescreen.climate.sun_field import SunField, hours_above, sun_hours
+from sitescreen.climate.sun_field import SunField, hours_above
 from sitescreen.climate.sun_path import DAYS_IN_MONTH, sun_paths
 from sitescreen.grid import Field, Grid
 from sitescreen.lattice import block_of, convergence_deg
 from sitescreen.settings import load_defaults
+from sitescreen.terrain.horizon import horizon_stream
 from sitescreen.terrain.plot_skyline import plot_skylines
 
 SUN = load_defaults().sun
@@ -60,7 +61,9 @@ def test_hills_leave_the_hours_that_plots_have() -> None:
     row, col = np.mgrid[:240, :240]
     heights = 400.0 * np.sin(row / 25.0) * np.cos(col / 31.0) + 150.0 * np.sin(col / 9.0)
     field = Field(heights.astype(np.float32), grid, "m", "")
-    found = sun_hours(field, block, 36, SUN)
+    sun = SunField(block, grid, EVERY, SUN)
+    horizon_stream(field, EVERY, [sun])
+    found = sun.hours(field)
     at = np.arange(50, 190, 20)
     rows, cols = (one.ravel() for one in np.meshgrid(at, at))
     x, y = grid.x_centres_m()[cols], grid.y_centres_m()[rows]
@@ -102,7 +105,7 @@ def test_unknown_ground_has_no_hours_and_hides_nothing() -> None:
     tangent[1, 1] = np.nan
     heights = np.zeros(grid.shape, dtype=np.float32)
     heights[0, 0] = np.nan
-    for azimuth in sun.needed_deg:
+    for azimuth in EVERY:
         sun(azimuth, tangent)
     found = sun.hours(Field(heights, grid, "m", "")).values
     assert np.isnan(found[0, 0])
