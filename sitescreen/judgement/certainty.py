@@ -65,7 +65,7 @@ class Certainty:
         ``chance_top_quarter``, ``chance_shortlist`` (among the first k), ``chance_first_in_zone``,
         ``chance_first_any_weights`` (if nothing were known of the weights), ``chance_beats_next`` (the plot next in
         rank), ``group`` (plots that cannot be told apart from the first of their group), ``chance_set_aside`` (also of
-        plots that are); the range of ranks if the weights alone vary, or the data alone; ``drawn_mark_low`` and
+        plots that are, where their ground was drawn); the range of ranks if the weights alone vary, or the data alone; ``drawn_mark_low`` and
         ``drawn_mark_high``, the 5–95 % range of the mark that ranks go by. Missing where a plot has no rank or took no
         part.
     trials : int
@@ -256,7 +256,7 @@ def certainty(
             found.iloc[rows, found.columns.get_loc(name)] = values
 
     if draws.count:
-        measured = drawn if len(drawn) < len(ranked) else np.flatnonzero(_measured(judged))
+        measured = drawn if len(drawn) < len(ranked) else np.flatnonzero(_told_by_draws(judged, rules, draws))
         enter(measured, {"chance_set_aside": stopped(judged, zones, rules, draws, measured).mean(axis=0)})
     if not len(drawn):
         return Certainty(found, settings.trials, draws.count, varied, 0, len(ranked))
@@ -300,12 +300,15 @@ def certainty(
     return Certainty(found, settings.trials, draws.count, varied, len(drawn), len(ranked))
 
 
-def _measured(judged: Judged) -> NDArray[np.bool_]:
-    """Plots that were measured and have a zone."""
+def _told_by_draws(judged: Judged, rules: Sequence[CautionRule], draws: ReadingDraws) -> NDArray[np.bool_]:
+    """Ranked plots, and those set aside whose ground was drawn all the same: of others the draws tell nothing."""
     has_zone = np.asarray(judged.table["zone"].to_numpy(dtype=object) != "", dtype=np.bool_)
-    if "outcome" not in judged.facts:
-        return has_zone
-    return has_zone & np.asarray(judged.facts["outcome"].to_numpy(dtype=object) == "", dtype=np.bool_)
+    looked_at = {one.reading for rule in rules if rule.level == "stop" for one in rule.when}
+    drawn = np.zeros(len(has_zone), dtype=np.bool_)
+    for name in looked_at.intersection(draws.values):
+        values = draws.values[name]
+        drawn |= ((values != "") if values.dtype == object else ~np.isnan(values)).any(axis=1)
+    return np.asarray(judged.table["rank"].notna().to_numpy(dtype=np.bool_) | (has_zone & drawn))
 
 
 def _middle(values: NDArray[Any]) -> tuple[NDArray[Any], NDArray[Any]]:

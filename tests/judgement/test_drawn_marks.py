@@ -137,13 +137,14 @@ def test_the_chance_of_being_set_aside_is_the_share_of_draws(plots: Plots, in_zo
     assert table["rank_high"].iloc[0] == 2.0
 
 
-def test_a_plot_whose_slope_nobody_knows_stays_set_aside_in_every_draw(plots: Plots, in_zone: InZone) -> None:
-    readings = plots({}, {"slope_deg": np.nan})
+def test_of_a_plot_that_no_draw_touched_no_chance_is_told(plots: Plots, in_zone: InZone) -> None:
+    """Set aside, and its slope never drawn: 1 would claim what nobody looked at. A drawn twin has its share."""
+    readings = plots({}, {"slope_deg": 20.0}, {"slope_deg": 20.0})
     zones = in_zone(readings, "savannah")
-    slope = np.full((2, DRAWS), np.nan)
-    slope[0] = 3.0
+    slope = np.full((3, DRAWS), np.nan)
+    slope[0], slope[2] = 3.0, np.where(np.arange(DRAWS) < 20, 9.0, 25.0)
     found = sure_of(readings, zones, ReadingDraws({"slope_deg": slope})).table
-    assert found["chance_set_aside"].tolist() == [0.0, 1.0]
+    assert found["chance_set_aside"].tolist() == pytest.approx([0.0, np.nan, 0.8], nan_ok=True)
 
 
 def test_both_kinds_of_doubt_are_told_apart_and_together(
