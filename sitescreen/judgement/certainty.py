@@ -65,7 +65,8 @@ class Certainty:
         ``chance_top_quarter``, ``chance_shortlist`` (among the first k), ``chance_first_in_zone``,
         ``chance_first_any_weights`` (if nothing were known of the weights), ``chance_beats_next`` (the plot next in
         rank), ``group`` (plots that cannot be told apart from the first of their group), ``chance_set_aside`` (also of
-        plots that are, where their ground was drawn); the range of ranks if the weights alone vary, or the data alone; ``drawn_mark_low`` and
+        plots that are, where their ground was drawn);
+        the range of ranks if the weights alone vary, or the data alone; ``drawn_mark_low`` and
         ``drawn_mark_high``, the 5–95 % range of the mark that ranks go by. Missing where a plot has no rank or took no
         part.
     trials : int
@@ -308,6 +309,8 @@ def _told_by_draws(judged: Judged, rules: Sequence[CautionRule], draws: ReadingD
     for name in looked_at.intersection(draws.values):
         values = draws.values[name]
         drawn |= ((values != "") if values.dtype == object else ~np.isnan(values)).any(axis=1)
+    if "outcome" in judged.facts:
+        has_zone &= np.asarray(judged.facts["outcome"].to_numpy(dtype=object) == "", dtype=np.bool_)
     return np.asarray(judged.table["rank"].notna().to_numpy(dtype=np.bool_) | (has_zone & drawn))
 
 
