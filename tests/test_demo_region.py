@@ -14,19 +14,14 @@ from rasterio.features import geometry_mask
 from shapely.validation import make_valid
 from skimage.morphology import reconstruction
 
+from sitescreen.deliverables.columns import BY_NAME, MORE
 from sitescreen.lattice import block_of
 
 REGION = Path(__file__).parents[1] / "demo_region"
 TRUTH = tomllib.loads((REGION / "truth.toml").read_text(encoding="utf-8"))
 
-# The columns of the ranking table that a truth may speak of (README, "What comes out").
-READINGS = {
-    "elevation_m", "slope_deg", "aspect_deg", "buildable_share", "rise_m", "shore_kind", "shore_distance_km",
-    "onshore_from_deg", "breeze_reach", "shore_skyline_deg", "ventilation", "ridge_exposure", "sheltered_fraction",
-    "cold_pool_kind", "cold_pool_depth_m", "cold_pool_chance", "cold_deficit_k", "smallest_pool_seen_m",
-    "night_minimum_c", "floor_height_m", "sky_view", "sun_cool_morning_h", "sun_year_h", "west_load_kwh_m2",
-    "pond_depth_m", "long_axis_deg", "wind_incidence_deg", "area_ha",
-}  # fmt: skip
+# The columns of the ranking table that a truth may speak of: all that there are.
+READINGS = {*BY_NAME, *MORE}
 
 
 @pytest.fixture(scope="module")

@@ -228,7 +228,7 @@ def test_several_places_blend_by_distance_in_plots_and_layers(run: Run, country:
     assert field.values[line, col] == pytest.approx(_table(blended).at["c", "ventilation"], abs=0.01)
     said = [note.text for note in blended.notes if "counts, with the others" in note.text]
     assert len(said) == 2
-    assert "+" in said[0]
+    assert "m above it (it lies at 20 m)" in said[0]
 
 
 def test_driving_rain_needs_rows_for_the_rainy_season(run: Run, plain: Screening, country: Path) -> None:

@@ -81,9 +81,9 @@ def _note(station: str, hot: pd.DataFrame, wind: "WindTable") -> Note:
     rose = wind.rose("hot_afternoon", float(hot["lon"].iloc[0]), float(hot["lat"].iloc[0]))
     speed = float((rose.share * rose.speed_m_s).sum() / rose.share.sum())
     index = onset_index(speed, land, water)
-    outcome = "a day breeze sets in" if index < ONSET else "the wind of the day mostly keeps a breeze of its own down"
+    outcome = "a day breeze sets in" if index < ONSET else "that wind mostly stops a day breeze from setting in"
     said = (
-        f"{where}, mean wind {speed:.1f} m/s: index {index:.1f}, limit {ONSET:g}, so {outcome}; up to {limit:.1f} m/s "
-        f"it does ({source}). The table's wind may hold the breeze itself, which makes the index too high."
+        f"{where}, mean wind {speed:.1f} m/s: index {index:.1f}, limit {ONSET:g}, so {outcome}; winds of up to "
+        f"{limit:.1f} m/s would let it ({source}). The table's wind may hold the breeze itself, which makes the index too high."
     )
     return Note("info", "breeze", said)

@@ -40,6 +40,10 @@ def method_note(values: pd.DataFrame, settings: WindSettings) -> Note:
     return Note("warning", "wind", f"{said}: {of_all}; their wind figures are weak.")
 
 
+def _against(rise_m: float) -> str:
+    return f"{abs(rise_m):,.0f} m {'below' if rise_m < 0.0 else 'above'}"
+
+
 def place_notes(
     table: WindTable, lon: FloatArray, lat: FloatArray, height_m: FloatArray, settings: WindSettings
 ) -> tuple[Note, ...]:
@@ -73,7 +77,9 @@ def place_notes(
         if np.isnan(table.place_m[number]):
             notes.append(Note("info", "wind", f"{said}; its height is not given (column elevation_m)."))
             continue
-        said += f", {rise.min():+.0f} to {rise.max():+.0f} m above it (it lies at {table.place_m[number]:.0f} m)."
+        lowest, highest = _against(float(rise.min())), _against(float(rise.max()))
+        between = lowest if lowest == highest else f"{lowest} to {highest}"
+        said += f", {between} it (it lies at {table.place_m[number]:,.0f} m)."
         too_high = bool(np.abs(rise).max() > settings.place_high_m)
         if too_high:
             said += f" Over {settings.place_high_m:.0f} m higher or lower another wind blows: a nearer table tells."

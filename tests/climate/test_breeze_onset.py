@@ -58,9 +58,9 @@ def test_the_note_goes_by_the_hot_season_and_the_windy_time() -> None:
     (light,), (strong,) = onset_notes(normals(26.0), wind(3.0)), onset_notes(normals(26.0), wind(5.0))
     assert "index 1.8" in light.text
     assert "so a day breeze sets in" in light.text
-    assert "up to 3.9 m/s" in light.text
+    assert "winds of up to 3.9 m/s" in light.text
     assert "index 5.0" in strong.text
-    assert "keeps a breeze of its own down" in strong.text
+    assert "stops a day breeze" in strong.text
 
 
 def test_without_a_water_temperature_nothing_is_said() -> None:

@@ -35,10 +35,10 @@ LON, LAT, HEIGHT = np.array([39.1, 39.2, 39.9, 39.3]), np.zeros(4), np.array([12
 def test_each_place_says_whom_it_serves_how_far_off_and_how_much_lower() -> None:
     """0.1° on the equator is 11.1 km."""
     low, high = place_notes(table(100.0, 900.0), LON, LAT, HEIGHT, WIND)
-    assert "serves 2 plots, 11 to 22 km away, +20 to +850 m above it (it lies at 100 m)" in low.text
+    assert "serves 2 plots, 11 to 22 km away, 20 m above to 850 m above it (it lies at 100 m)" in low.text
     assert "another wind blows" in low.text
     assert low.level == "warning"
-    assert "serves 1 plot, 11 to 11 km away, -20 to -20 m above it" in high.text
+    assert "serves 1 plot, 11 to 11 km away, 20 m below it (it lies at 900 m)" in high.text
     assert high.level == "info"
 
 
