@@ -84,6 +84,6 @@ def _note(station: str, hot: pd.DataFrame, wind: "WindTable") -> Note:
     outcome = "a day breeze sets in" if index < ONSET else "that wind mostly stops a day breeze from setting in"
     said = (
         f"{where}, mean wind {speed:.1f} m/s: index {index:.1f}, limit {ONSET:g}, so {outcome}; winds of up to "
-        f"{limit:.1f} m/s would let it ({source}). The table's wind may hold the breeze itself, which makes the index too high."
+        f"{limit:.1f} m/s would let it ({source}). The table's wind may hold the breeze itself: too high then."
     )
     return Note("info", "breeze", said)
