@@ -105,6 +105,7 @@ def test_other_plots_change_nothing(plots: Plots, in_zone: Zones) -> None:
     rng = np.random.default_rng(3)
     slope = rng.uniform(1, 15, GRID.shape).astype(np.float32)
     shapes = [square(8, 8, 5, 6), square(8, 14, 5, 6), square(8, 20, 5, 4), square(9, 0, 5, 4), square(16, 3, 4, 9)]
+    shapes += [square(0, 3, 4, 9)]  # where the count of cells would go on after the plot before
     many = plots(*[{} for _ in shapes])
     together = look(shapes, many, in_zone(many, "upland"), slope).table
     for row, shape in enumerate(shapes):
@@ -126,6 +127,20 @@ def test_squares_are_those_of_a_plain_search(plots: Plots, in_zone: Zones) -> No
     assert found["best_patch_mark"] == pytest.approx(max(means), abs=1e-9)
     assert found["worst_patch_mark"] == pytest.approx(min(means), abs=1e-9)
     assert found["mean_patch_mark"] == pytest.approx(np.mean(means), abs=1e-9)
+
+
+def test_no_square_goes_round_the_edge_of_the_grid(plots: Plots, in_zone: Zones) -> None:
+    """A plot as wide as the grid: 2 × 22 squares, and none of the last cells of a row with the first of the next."""
+    slope = slopes(2.0)
+    slope[:, [0, 1, 22, 23]] = 12.0
+    readings = plots({})
+    zones = in_zone(readings, "upland")
+    found = look([square(4, 0, 4, 24)], readings, zones, slope).table.iloc[0]
+    gentle, steep = (plot_mark(readings.assign(slope_deg=value), zones) for value in (2.0, 12.0))
+    by_column = np.where(slope[0] > 2.0, steep, gentle)
+    means = [by_column[col : col + 3].mean() for col in range(22)]
+    assert found["mean_patch_mark"] == pytest.approx(np.mean(means), abs=1e-9)
+    assert found["worst_patch_mark"] == pytest.approx(min(means), abs=1e-9)
 
 
 def test_what_is_unknown_of_the_plot_stays_unknown_in_its_squares(plots: Plots, in_zone: Zones) -> None:
