@@ -342,10 +342,12 @@ def table(cells: int) -> None:
     seconds, gigabytes, cpu_s = stage_figures(f)
     ours["whole stage, from the file"] = Taken(seconds, cpu_s)
     scale = (cells / 3601) ** 2
-    print(f"{'ours':36}{'wall s':>9}{'cpu s':>9}{'ns/cell':>9}{'limit s':>9}   the same array with")
+    copy_s = theirs["plain copy of the array"]
+    print(f"{'ours':36}{'wall s':>9}{'cpu s':>9}{'ns/cell':>9}{'limit s':>9}{'copies':>9}   the same array with")
     for name, taken in ours.items():
         limit = f"{LIMITS_S[name] * scale:9.3f}" if name in LIMITS_S else " " * 9
-        line = f"{name:36}{taken.wall_s:9.3f}{taken.cpu_s:9.3f}{taken.wall_s / cells**2 * 1e9:9.2f}{limit}   "
+        line = f"{name:36}{taken.wall_s:9.3f}{taken.cpu_s:9.3f}{taken.wall_s / cells**2 * 1e9:9.2f}{limit}"
+        line += f"{taken.wall_s / copy_s:9.1f}   "
         others = [(other, theirs[other]) for other in BESIDE.get(name, []) if other in theirs]
         print(line + "; ".join(f"{other} {s:.3f} s = {s / taken.wall_s:.1f} ×" for other, s in others))
     print(f"\nhighest memory of the whole stage: {gigabytes:.2f} GB; load {os.getloadavg()[0]:.1f} after")

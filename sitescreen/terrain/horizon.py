@@ -29,8 +29,8 @@ _NEAR_STEPS = 24
 _CROSSING_STEPS = 4
 """Up to this many steps ahead a ray is read where it crosses the lines of cell centres between two steps, too."""
 
-_STRIP = 128
-"""Lines in a strip."""
+_STRIP = 143
+"""Lines in a strip; with the one beyond its edge a whole number of cache lines."""
 
 
 class _Lines(NamedTuple):
