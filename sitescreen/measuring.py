@@ -28,6 +28,7 @@ from sitescreen.inputs.cover import Cover
 from sitescreen.inputs.shore import Shore
 from sitescreen.judgement.cold_readings import with_cold
 from sitescreen.judgement.coverage import Coverage, cover
+from sitescreen.judgement.draws import DrawableBlock, drawable_block
 from sitescreen.judgement.readings import Readings, block_readings
 from sitescreen.judgement.shore_readings import with_shore
 from sitescreen.judgement.sun_readings import with_sun
@@ -70,6 +71,7 @@ class BlockResult:
     sections: dict[str, Section]
     suns: PlotSkies
     night_balances: tuple[Balance, ...]
+    drawable: DrawableBlock
 
 
 def plots_by_block(inputs: Inputs) -> Iterator[tuple[Block, NDArray[np.int64]]]:
@@ -141,7 +143,8 @@ def measure(
     with progress.step("Letting a calm night's cold air flow"):
         pools = closed_pools(ground.hollows, terrain.vertical_error_m, settings.cold_air)
         least_m = smallest_pool_seen_m(terrain.vertical_error_m, settings.cold_air)
-        layer = cold_layer(night, ground.sky_view, settings.cold_layer, cover=_cold_factor(inputs.cover, wide))
+        made = _cold_factor(inputs.cover, wide)
+        layer = cold_layer(night, ground.sky_view, settings.cold_layer, cover=made)
         cold = cold_kinds(layer, pools, ground.elevation, least_m, settings.cold_layer, settings.cold_air.fill_scale_m)
     with progress.step("Measuring distance and way to the shore"):
         coast = _coast(shore, lon, lat, block, ground.elevation, settings.breeze)
@@ -200,7 +203,9 @@ def measure(
     own = {name: field.part(block.core_bounds) for name, field in fields.items()}
     drawn = {plot: one for plot, one in zip(plots["plot"], coast.sections, strict=True) if one is not None}
     balances = tuple(run.balance for run in layer.runs)
-    return BlockResult(block, readings, own, cells, disagreement, winds, drawn, suns, balances)
+    error = (terrain.vertical_error_m, terrain.error_range_m)
+    drawable = drawable_block(rows, plots.geometry.to_crs(block.crs), ground, night, layer, made, error, settings)
+    return BlockResult(block, readings, own, cells, disagreement, winds, drawn, suns, balances, drawable)
 
 
 def _own_slots() -> list[tuple[str, str]]:

@@ -28,5 +28,8 @@ class Progress:
     def started(self, text: str) -> None:
         """Show that a stage begins."""
 
+    def goes_on(self, text: str) -> None:
+        """Show how far the present stage is."""
+
     def ended(self, text: str) -> None:
         """Show that a stage has ended."""

@@ -25,11 +25,11 @@ from sitescreen.inputs.brief_record import brief_for_record
 from sitescreen.inputs.context import Landmarks
 from sitescreen.inputs.zone_map import zone_at
 from sitescreen.judgement.cautions import load_cautions
-from sitescreen.judgement.certainty import Certainty, certainty
+from sitescreen.judgement.certainty import TERRAIN, Certainty, Varied, certainty, take_part
 from sitescreen.judgement.cold_map import with_cold_deficit
 from sitescreen.judgement.cold_readings import night_notes, with_nights
 from sitescreen.judgement.doubts import AllWinds, all_swings, data_draws
-from sitescreen.judgement.draws import NO_DRAWS
+from sitescreen.judgement.draws import draws_for, terrain_in_words, with_chance
 from sitescreen.judgement.overall import Judged, judge
 from sitescreen.judgement.own import (
     OwnReadings,
@@ -58,10 +58,7 @@ from sitescreen.progress import Progress
 from sitescreen.settings import Defaults, load_defaults
 from sitescreen.terrain.flat_water import together
 
-NOT_MEASURED = (
-    "how sure a cold pool is, given the terrain model's error",
-    "how certain a rank is given the terrain model's error (ranges and chances vary the weights and the wind's rose)",
-)
+NOT_MEASURED: tuple[str, ...] = ()
 
 NOT_CHECKED = (
     "flood levels",
@@ -72,10 +69,7 @@ NOT_CHECKED = (
     "roads, water and power",
 )
 
-EMPTY_IN_THIS_VERSION = (
-    "cold_pool_chance",
-    "floor_height_m",
-)
+EMPTY_IN_THIS_VERSION = ("floor_height_m",)
 """Columns of the table whose methods are still to come."""
 
 
@@ -204,6 +198,13 @@ def _judged(
     values, why_unknown = with_siting(Readings(values, why_unknown), sites)
     halved = assumed_columns(inputs.wind, profiles)
     rules = (*load_cautions(), *own_rules(brief.constraint))
+    # judged once without the chance of cold air, to draw the ground and the nights of those plots only that take part
+    judged = judge(values, zones, profiles, rules, settings.judgement, halved)
+    rows = take_part(judged, brief.judge.shortlist, settings.judgement)
+    with progress.step("Drawing the terrain's error and nights"):
+        blocks = [one.drawable for one in measured]
+        ground, nights = draws_for(rows, blocks, values, strength, brief.judge.seed, settings, progress.goes_on)
+    values = with_chance(values, nights)
     judged = judge(values, zones, profiles, rules, settings.judgement, halved)
     air = AllWinds(
         winds_together([one.winds for one in measured], tuple(plots["plot"]), settings.wind.sectors),
@@ -211,7 +212,11 @@ def _judged(
         lon,
         lat,
     )
-    draws, varied = data_draws(NO_DRAWS, (), air, judged, profiles, brief.judge.seed, brief.judge.shortlist, settings)
+    in_words = terrain_in_words(inputs.terrain.vertical_error_m, inputs.terrain.error_range_m, settings)
+    of_ground = (Varied(TERRAIN, in_words),) if ground.count else ()
+    draws, varied = data_draws(
+        ground, of_ground, air, judged, profiles, brief.judge.seed, brief.judge.shortlist, settings
+    )
     sure = certainty(
         judged, zones, profiles, brief.judge.seed, brief.judge.shortlist, settings.judgement, draws, rules, varied
     )
@@ -276,6 +281,7 @@ def _judged(
         | {"reasons": _recorded(table, why), "siting": {plot: one.says for plot, one in siting.items()}}
         | {"certainty": sure.for_record(), "what_would_change": [one.for_record() for one in found]}
         | {"swings": [one.for_record() for one in swings]}
+        | {"simulated_nights": nights.for_record()}
         | ({"pairs": compared.for_record()} if compared else {}),
         judged=judged,
         zones=zones,

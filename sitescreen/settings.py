@@ -167,6 +167,28 @@ class ColdLayerSettings(Section):
     moving_share: Annotated[float, Field(gt=0, le=10)]
 
 
+class ColdChanceSettings(Section):
+    """How sure the night's cold air is, given the terrain's error and what nights differ in."""
+
+    draws_first: Annotated[int, Field(ge=5, le=10_000)]
+    cold_from_k: Positive
+    likely: Share
+    possible: Share
+    nest_core_m: Annotated[float, Field(ge=900, le=20_000, multiple_of=90)]
+    nest_margin_m: Annotated[float, Field(ge=900, le=20_000, multiple_of=90)]
+    warm_up_h: Annotated[float, Field(gt=0, le=24)]
+    feed_every_s: Annotated[float, Field(ge=10, le=3600)]
+    ring_cells: Annotated[int, Field(ge=1, le=10)]
+    depth_bound_m: Annotated[float, Field(ge=50, le=1000)]
+    heat_least_w_m2: Annotated[float, Field(gt=0, le=200)]
+    heat_most_w_m2: Annotated[float, Field(gt=0, le=200)]
+    deficit_least_k: Annotated[float, Field(ge=1, le=30)]
+    deficit_most_k: Annotated[float, Field(ge=1, le=30)]
+    source_together: Share
+    near_m: Annotated[float, Field(ge=0, le=100)]
+    near_errors: Annotated[float, Field(ge=0, le=10)]
+
+
 class ZoneFit(Section):
     """One zone's ramps. Each is a condition; a condition left out does not limit the zone."""
 
@@ -310,6 +332,7 @@ class Defaults(Section):
     sun: SunSettings
     cold_air: ColdAirSettings
     cold_layer: ColdLayerSettings
+    cold_chance: ColdChanceSettings
     zones: ZoneSettings
     judgement: JudgementSettings
     swings: SwingSettings

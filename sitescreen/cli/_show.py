@@ -35,6 +35,13 @@ class TerminalProgress(Progress):
         elif time.perf_counter() - self._begun > QUIET_S or text.startswith(("Compiling", "Reading the ground")):
             click.echo(f"{text} …", err=True)
 
+    def goes_on(self, text: str) -> None:
+        """Show how far the stage is, on a terminal only."""
+        if self._status is not None:
+            from rich.markup import escape
+
+            self._status.update(escape(f"{text} …"))
+
     def ended(self, text: str) -> None:  # noqa: ARG002  (a subclass may want to know which)
         """Clear the live line."""
         if self._status is not None:

@@ -1,6 +1,7 @@
 """One calm clear night of cold air in motion over known ground: the supply, the flow, and the ledger of the air."""
 
 import math
+from collections.abc import Callable
 from typing import Literal, NamedTuple
 
 import numpy as np
@@ -68,6 +69,19 @@ class Night(NamedTuple):
     steps: int
 
 
+class Feed(NamedTuple):
+    """What a run over wider ground says of the air in a window of it, arrays of the window's shape.
+
+    ``start_m``: depth to begin with. [m] ``ring``: cells of land along the window's edge, whose depth is set to
+    ``ring_m(seconds since the start)``, one value each in reading order, every ``every_s`` seconds.
+    """
+
+    start_m: FloatArray
+    ring: NDArray[np.bool_]
+    ring_m: Callable[[float], FloatArray]
+    every_s: float
+
+
 def air_density_kg_m3(elevation_m: FloatArray) -> FloatArray:
     """Density of the standard atmosphere (ICAO Doc 7488) at a height. [kg/m³]"""
     return np.asarray(1.225 * np.maximum(1.0 - 2.25577e-5 * elevation_m, 0.1) ** 4.2559, dtype=np.float64)
@@ -78,9 +92,10 @@ def supply_m_s(source: Source, elevation_m: FloatArray) -> FloatArray:
     return source.heat_w_m2 / (air_density_kg_m3(elevation_m) * HEAT_CAPACITY_J_KG_K * source.deficit_k)
 
 
-def level_depth_m(supply: FloatArray, settings: ColdLayerSettings) -> FloatArray:
-    """Depth at the end of the night on endless level ground, h_s·(1 − e^(−q·t/h_s)). [m]"""
-    return settings.fill_m * -np.expm1(-supply * settings.night_h * 3600.0 / settings.fill_m)
+def level_depth_m(supply: FloatArray, settings: ColdLayerSettings, hours: float | None = None) -> FloatArray:
+    """Depth on endless level ground at the end of the night, or after so many hours, h_s·(1 − e^(−q·t/h_s)). [m]"""
+    hours = settings.night_h if hours is None else hours
+    return settings.fill_m * -np.expm1(-supply * hours * 3600.0 / settings.fill_m)
 
 
 def reduced_gravity_m_s2(deficit_k: float, settings: ColdLayerSettings) -> float:
@@ -110,6 +125,7 @@ def run_night(
     edge: Edge,
     settings: ColdLayerSettings,
     seconds: float | None = None,
+    feed: Feed | None = None,
 ) -> Night:
     """One night over one ground, on one processor (it releases the interpreter, so several may run side by side).
 
@@ -126,6 +142,8 @@ def run_night(
         Beyond the known ground depth and flow go on as they are at its edge; or nothing passes.
     seconds : float, optional
         Length of the run; the night of the settings without it. [s]
+    feed : Feed, optional
+        What a run over wider ground says of the air here; this run then begins with it instead of with none.
 
     Returns
     -------
@@ -154,7 +172,8 @@ def run_night(
     length = settings.night_h * 3600.0 if seconds is None else seconds
     steps = math.ceil(length / time_step_s(gravity, grid.cell_size_m, settings) - 1e-9)
     step = length / steps
-    depth = np.zeros(grid.shape)
+    land = known & ~water
+    depth = np.zeros(grid.shape) if feed is None else np.where(land, feed.start_m, 0.0)
     flux_x, flux_y = np.zeros((grid.rows, grid.cols + 1)), np.zeros((grid.rows + 1, grid.cols))
     supply_m = np.where(water & known, -1.0, np.where(known, supply * step, -2.0))
     if np.isnan(supply_m).any():
@@ -165,29 +184,41 @@ def run_night(
         )
     supplied, sunk = np.zeros(grid.cols), np.zeros(grid.cols)
     at_once = max(1, min(8, (CACHE_BYTES // (72 * grid.cols) - 3) // 2))
-    came_in = night(
-        depth,
-        flux_x,
-        flux_y,
+    arguments = (
         np.where(known, ground.bed_m, 0.0),
         ground.sill_x_m,
         ground.sill_y_m,
         ground.width_x,
         ground.width_y,
         supply_m,
-        *_open_edges(known & ~water if edge == "open" else np.zeros_like(known), known),
-        steps,
-        step,
-        grid.cell_size_m,
-        gravity,
-        settings.friction,
-        settings.depth_bound_m,
-        CRITICAL,
-        settings.fill_m,
-        at_once,
-        supplied,
-        sunk,
+        *_open_edges(land if edge == "open" else np.zeros_like(known), known),
     )
+    came_in, done = float(np.sum(depth)), 0
+    while done < steps:
+        count = steps - done
+        if feed is not None:
+            count = min(count, max(1, round(feed.every_s / step)))
+            told = feed.ring_m(done * step)
+            came_in += float(np.sum(told) - np.sum(depth[feed.ring]))
+            depth[feed.ring] = told
+        came_in += night(
+            depth,
+            flux_x,
+            flux_y,
+            *arguments,
+            count,
+            step,
+            grid.cell_size_m,
+            gravity,
+            settings.friction,
+            settings.depth_bound_m,
+            CRITICAL,
+            settings.fill_m,
+            at_once,
+            supplied,
+            sunk,
+        )
+        done += count
     area = grid.cell_size_m**2
     balance = Balance(*(float(np.sum(one)) * area for one in (supplied, came_in, depth, sunk)))
     per_second = grid.cell_size_m / step

@@ -103,7 +103,7 @@ def night_ground(
             "Compute them from the same elevation field",
         )
     ground = coarse_ground(elevation, max(settings.gorge_depth_m, 3.0 * vertical_error_m), settings.section_m)
-    wet_share = _averaged(Field(water.astype(np.float32), elevation.grid, "1", "share of water"), ground.grid)
+    wet_share = averaged(Field(water.astype(np.float32), elevation.grid, "1", "share of water"), ground.grid)
     return NightGround(ground, np.nan_to_num(wet_share, nan=0.0) >= 0.5, elevation.grid)
 
 
@@ -147,7 +147,7 @@ def cold_layer(
                     "one grid is needed, or a part of it",
                     "Compute them from the same elevation field",
                 )
-            share *= np.nan_to_num(_averaged(field, grid), nan=1.0)
+            share *= np.nan_to_num(averaged(field, grid), nan=1.0)
     open_supply = supply_m_s(source, np.where(np.isnan(ground.bed_m), 0.0, ground.bed_m))
     edges: tuple[Edge, Edge] = ("open", "walled")
     runs: dict[Edge, Night] = {}
@@ -157,10 +157,12 @@ def cold_layer(
             runs[edge] = run_night(ground, night.wet, open_supply * share, source.deficit_k, edge, settings)
 
     in_bands(run, len(edges))
-    return _layer(ground, runs["open"], runs["walled"], level_depth_m(open_supply, settings), source, settings)
+    level = level_depth_m(open_supply, settings)
+    return layer_of(ground, (runs["open"], runs["walled"]), level, rise_m(ground, settings), source, settings)
 
 
-def _averaged(field: Field, grid: Grid) -> FloatArray:
+def averaged(field: Field, grid: Grid) -> FloatArray:
+    """Mean of a fine field in each cell of a coarse grid that covers it, NaN where less than half is known."""
     return block_means(on_coarse_edges(field, grid), round(grid.cell_size_m / field.grid.cell_size_m))
 
 
@@ -172,9 +174,28 @@ def _lies_in(part: Grid, whole: Grid) -> bool:
     )
 
 
-def _layer(
-    ground: CoarseGround, opened: Night, walled: Night, level: FloatArray, source: Source, settings: ColdLayerSettings
+def layer_of(
+    ground: CoarseGround,
+    runs: tuple[Night, Night],
+    level: FloatArray,
+    rise: Field,
+    source: Source,
+    settings: ColdLayerSettings,
 ) -> ColdLayer:
+    """What two runs say of the layer; twice the same run where wider ground feeds its edge.
+
+    Parameters
+    ----------
+    ground : CoarseGround
+    runs : pair of Night
+        With an open and a walled edge.
+    level : array, shape (rows, cols)
+        :func:`level_depth_m` of the source over open ground. [m]
+    rise : Field
+        :func:`rise_m`.
+    source : Source
+    settings : ColdLayerSettings
+    """
     grid = ground.grid
     gravity = reduced_gravity_m_s2(source.deficit_k, settings)
     unknown = np.where(np.isnan(ground.bed_m), np.nan, 0.0)
@@ -182,16 +203,17 @@ def _layer(
     def field(values: FloatArray, unit: str, what: str) -> Field:
         return Field((values + unknown).astype(np.float32), grid, unit, what)
 
+    air = _air(runs[0], ground, gravity, settings)
     most = CRITICAL * np.sqrt(gravity * level**3)
     return ColdLayer(
         ground=ground,
         level_m=field(level, "m", "depth of the night's cold air on level ground"),
         level_most_m2_s=field(most, "m²/s", "the most that level ground's air can pass"),
-        rise_m=_rise_m(ground, settings),
-        opened=_air(opened, ground, gravity, settings),
-        walled=_air(walled, ground, gravity, settings),
+        rise_m=rise,
+        opened=air,
+        walled=air if runs[1] is runs[0] else _air(runs[1], ground, gravity, settings),
         deficit_k=source.deficit_k,
-        runs=(opened, walled),
+        runs=runs,
     )
 
 
@@ -205,7 +227,7 @@ def _air(run: Night, ground: CoarseGround, gravity: float, settings: ColdLayerSe
     return Air(*(values.astype(np.float32) for values in (run.depth_m, discharge, froude, speed)))
 
 
-def _rise_m(ground: CoarseGround, settings: ColdLayerSettings) -> Field:
+def rise_m(ground: CoarseGround, settings: ColdLayerSettings) -> Field:
     """Height over the mean of the surroundings, smaller ones where the known ground ends nearer."""
     bed = Field(ground.bed_m.astype(np.float32), ground.grid, "m", "height at 90 m")
     mean = disc_mean(bed, settings.surroundings_m).values

@@ -137,7 +137,11 @@ CONTRACT: tuple[Column, ...] = (
     ),
     _number("cold_pool_depth_m", 1, "m", "cold air depth", "Depth of the cold air; to the lip of a closed hollow."),
     _number(
-        "cold_pool_chance", 2, "0–1", "cold air chance", "How sure the cold air is, given the terrain model's error."
+        "cold_pool_chance",
+        2,
+        "0–1",
+        "cold air chance",
+        "Share of simulated nights, each with its own error of the terrain, over 1 °C colder than level ground.",
     ),
     _number(
         "cold_deficit_k", 1, "°C", "colder by", "How much colder than level ground the air is on a calm clear night."
@@ -231,6 +235,25 @@ MORE: Mapping[str, Column] = {
         _number(
             "share_flat_water", 2, "0–1", "on flat water", "Share that looks like a water surface in the terrain model."
         ),
+        _text(
+            "cold_pool_sure",
+            "cold air is",
+            "likely (eight or more of ten simulated nights leave the plot over 1 °C colder than level ground), "
+            "possible (two to eight of ten), or none.",
+        ),
+        _number("cold_nights", 0, "nights", "cold nights", "So many of the simulated nights were cold."),
+        _number(
+            "cold_nights_of",
+            0,
+            "nights",
+            "of nights",
+            "How many calm clear nights were simulated, each with its own error of the terrain; empty where cold air "
+            "is far from mattering.",
+        ),
+        _number(
+            "cold_depth_low_m", 0, "m", "at least deep", "Depth of the air in all but the shallowest tenth of them."
+        ),
+        _number("cold_depth_high_m", 0, "m", "at most deep", "Depth of the air in all but the deepest tenth of them."),
         _number(
             "cold_deficit_least_k",
             1,

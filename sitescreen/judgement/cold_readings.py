@@ -1,6 +1,6 @@
 """The readings that the night's cold air gives: its kind and depth, how cold, how much passes, where it spills."""
 
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 import pandas as pd
@@ -83,28 +83,21 @@ def with_cold(
     def mean(field: NDArray[Any], least_known: float = known_share) -> FloatArray:
         return coverage.mean(field, least_known)
 
-    kind = _kind(coverage, cold.kind, least_share)
-    lies, unknown = np.isin(kind, ("closed", "leaky", "moving")), kind == "unknown"
+    at_plot = cold_at(coverage, hollows, hollows.pool_id, cold, source, settings)
+    kind, pool, unknown = at_plot.kind, at_plot.pool, at_plot.kind == "unknown"
     no_ground = np.isnan(values["elevation_m"].to_numpy(dtype=np.float64))
     cut = mean(pools.cut.astype(np.float32)) >= least_share
     always = np.ones(len(kind), dtype=np.bool_)
     whys = ((no_ground, NO_GROUND), (cut, CUT), (always, BEYOND))
 
-    def in_cold(field: NDArray[Any]) -> FloatArray:
-        # a plot lies in it from a part of its ground on, so that part is enough for its mean
-        return np.where(unknown, np.nan, np.where(lies, mean(field, least_share), 0.0))
-
     values["cold_pool_kind"] = kind
-    reading("cold_pool_depth_m", in_cold(cold.depth_m.values), *whys)
-    reading("cold_fill", in_cold(cold.fill.values), *whys)
+    reading("cold_pool_depth_m", at_plot.depth_m, *whys)
+    reading("cold_fill", at_plot.fill, *whys)
     for column, bound in (("cold_fill_least", cold.fill_least), ("cold_fill_most", cold.fill_most)):
         # one that is known has no limits of its own
         values[column] = np.where(unknown, mean(bound.values, 0.0), values["cold_fill"])
     reading("still_air", np.where(kind == "moving", 0.0, values["cold_fill"].to_numpy(dtype=np.float64)), *whys)
-    pool = _main_pool(coverage, np.where(cold.kind == KINDS.index("closed"), hollows.pool_id, 0), kind == "closed")
-    values["cold_cap_k"] = np.where(
-        pool > 0, _cap_k(hollows, source, settings.cold_layer.night_h)[pool], source.deficit_k
-    )
+    values["cold_cap_k"] = at_plot.cap_k
     # a clearing in a wood is such a hollow
     air, rim, hectares = settings.cold_air, hollows.pools.deepest_m, hollows.pools.cells * _cell_ha(hollows)
     trees = np.concatenate([[False], (hectares < air.tree_pool_ha) & (rim < air.tree_rim_m)])
@@ -117,6 +110,48 @@ def with_cold(
     for column, got in zip(POOL_COLUMNS, _of_pool(pool, coverage, hollows, convergence_deg, source), strict=True):
         values[column] = got
     return Readings(values, why)
+
+
+class PlotCold(NamedTuple):
+    """Cold air at plots, arrays of shape (n,): see :func:`with_cold`; ``pool``: number of the hollow, 0 for none."""
+
+    kind: NDArray[np.object_]
+    depth_m: FloatArray
+    fill: FloatArray
+    cap_k: FloatArray
+    pool: NDArray[np.int64]
+
+
+def cold_at(
+    coverage: Coverage, hollows: Hollows, pool_id: NDArray[Any], cold: ColdKinds, source: Source, settings: Defaults
+) -> PlotCold:
+    """What of the cold air lies on plots: the one rule, in the run itself and in every draw.
+
+    Parameters
+    ----------
+    coverage : Coverage
+    hollows : Hollows
+        That ``pool_id`` numbers.
+    pool_id : int array
+        On the grid of the coverage, as ``cold``.
+    cold : ColdKinds
+    source : Source
+        That cooled the air.
+    settings : Defaults
+    """
+    least_share = settings.readings.pool_share_least
+    kind = _kind(coverage, cold.kind, least_share)
+    lies, unknown = np.isin(kind, ("closed", "leaky", "moving")), kind == "unknown"
+
+    def in_cold(field: NDArray[Any]) -> FloatArray:
+        # a plot lies in it from a part of its ground on, so that part is enough for its mean
+        return np.where(unknown, np.nan, np.where(lies, coverage.mean(field, least_share), 0.0))
+
+    pool = _main_pool(coverage, np.where(cold.kind == KINDS.index("closed"), pool_id, 0), kind == "closed")
+    cap = np.full(len(kind), source.deficit_k)
+    if (pool > 0).any():
+        cap = np.where(pool > 0, _cap_k(hollows, source, settings.cold_layer.night_h)[pool], cap)
+    return PlotCold(kind, in_cold(cold.depth_m.values), in_cold(cold.fill.values), cap, pool)
 
 
 def _kind(coverage: Coverage, kind: NDArray[np.uint8], least_share: float) -> NDArray[np.object_]:
@@ -141,10 +176,12 @@ def _main_pool(coverage: Coverage, pool_id: NDArray[Any], wanted: NDArray[np.boo
     use = (picked > 0) & wanted[coverage.plot]
     out = np.zeros(len(coverage.cells), dtype=np.int64)
     if use.any():
-        pairs = pd.DataFrame({"plot": coverage.plot[use], "pool": picked[use], "share": coverage.share[use]})
-        total = pairs.groupby(["plot", "pool"], sort=True)["share"].sum().reset_index()
-        most = total.loc[total.groupby("plot")["share"].idxmax()]
-        out[most["plot"].to_numpy()] = most["pool"].to_numpy()
+        keys, each = np.unique(coverage.plot[use] * (picked[use].max() + 1) + picked[use], return_inverse=True)
+        plot, pool = np.divmod(keys, picked[use].max() + 1)
+        size = np.bincount(each, weights=coverage.share[use])
+        # by size, the largest last, of equal ones the first by number: what is written last stays
+        order = np.lexsort((-pool, size, plot))
+        out[plot[order]] = pool[order]
     return out
 
 

@@ -21,7 +21,18 @@ SEEN_FROM_DEG = 1.5
 NARROW_LAKE_KM = 20.0
 """A lake narrower than this makes too little of a breeze not to be said: our choice, no source."""
 
-_WORDS = ("shore", "from_shore", "stands_high", "stands_low", "screened_by", "outcome", "weakest", "cautions")
+_WORDS = (
+    "shore",
+    "from_shore",
+    "stands_high",
+    "stands_low",
+    "screened_by",
+    "outcome",
+    "weakest",
+    "cautions",
+    "cold_in_nights",
+    "cold_in_none",
+)
 """Facts that are words, beside those that end in ``_kind`` and ``_word``; no number format fits them."""
 
 _CREST = ("crest_above_plot_m", "crest_distance_m", "crest_bearing_deg")
@@ -79,6 +90,8 @@ def facts(row: Mapping[str, Any]) -> dict[str, Any]:
         told["slope_pct"] = 100.0 * math.tan(math.radians(known["slope_deg"]))
     if "cold_pool_kind" in known:
         told["cold_does"] = "flows through here" if known["cold_pool_kind"] == "moving" else "lies here"
+    if known.get("cold_nights_of", 0.0) > 0:
+        told.update(_nights(known))
     if {"sill_distance_m", "sill_bearing_deg"} <= known.keys():
         told["sill_away"] = _away(known["sill_distance_m"], known["sill_bearing_deg"])
     if "rise_m" in known:
@@ -102,6 +115,18 @@ def facts(row: Mapping[str, Any]) -> dict[str, Any]:
             above_m, away_m, bearing_deg = (known[name] for name in _CREST)
             told["screened_by"] = _ridge(above_m, away_m, bearing_deg, known["shore_skyline_deg"])
     return told
+
+
+def _nights(known: Mapping[str, Any]) -> dict[str, str]:
+    """How many of the simulated nights bring cold air, as in “in 22 of 25 simulated nights 30–45 m of cold air”."""
+    cold, of = round(known.get("cold_nights", 0.0)), round(known["cold_nights_of"])
+    if not cold:
+        return {"cold_in_none": f"in none of {of} simulated nights"}
+    often = f"in {cold} of {of} simulated nights"
+    if not {"cold_depth_low_m", "cold_depth_high_m"} <= known.keys():
+        return {"cold_in_nights": f"{often} cold air"}
+    low, high = (round(known[name]) for name in ("cold_depth_low_m", "cold_depth_high_m"))
+    return {"cold_in_nights": f"{often} {f'{low}–{high}' if low < high else max(low, 1)} m of cold air"}
 
 
 def _ridge(above_m: float, away_m: float, bearing_deg: float, skyline_deg: float) -> str:

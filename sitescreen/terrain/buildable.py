@@ -10,37 +10,11 @@ from sitescreen.errors import GridError
 from sitescreen.grid import Field
 from sitescreen.terrain._buildable_kernel import chances
 from sitescreen.terrain.slope import gradient
+from sitescreen.terrain.terrain_error import error_correlation
 from sitescreen.terrain.threads import in_bands
-
-SHORT_SHARE = 0.7
-"""Share of the height error's variance that is of short range; the rest is of long range (our closure)."""
-
-LONG_RANGE_M = 1500.0
-"""Practical range of the long part (our closure; radar terrain models show parts of 1–20 km)."""
 
 _U_MOST = 6.0
 _HORN_EAST = np.array([[-1.0, 0.0, 1.0], [-2.0, 0.0, 2.0], [-1.0, 0.0, 1.0]]) / 8.0
-
-
-def error_correlation(distance_m: NDArray[np.float64], error_range_m: float) -> NDArray[np.float64]:
-    """How alike the height errors of two places are, 1 at the same place.
-
-    Parameters
-    ----------
-    distance_m : array
-        [m]
-    error_range_m : float
-        Practical range of the short part: where its correlation has fallen to 5 %. [m] 0 stands for errors that differ
-        from cell to cell.
-
-    Notes
-    -----
-    0.7·exp(−3 d²/a²) + 0.3·exp(−3 d/1500 m): Gaussian and exponential models with practical ranges, as Oksanen and
-    Sarjakoski (2005, Comput. Geosci. 31:1015–1027) used them; the split is ours.
-    """
-    distance = np.asarray(distance_m, dtype=np.float64)
-    short = np.exp(-3.0 * (distance / error_range_m) ** 2) if error_range_m > 0 else (distance == 0).astype(np.float64)
-    return SHORT_SHARE * short + (1.0 - SHORT_SHARE) * np.exp(-3.0 * distance / LONG_RANGE_M)
 
 
 def gradient_error(vertical_error_m: float, error_range_m: float, cell_size_m: float) -> float:
@@ -51,7 +25,7 @@ def gradient_error(vertical_error_m: float, error_range_m: float, cell_size_m: f
     vertical_error_m : float
         One standard deviation of the height. [m]
     error_range_m : float
-        See :func:`error_correlation`. [m]
+        See :func:`sitescreen.terrain.terrain_error.error_correlation`. [m]
     cell_size_m : float
         [m]
 

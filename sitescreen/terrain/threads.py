@@ -1,6 +1,7 @@
 """Runs a compiled kernel over bands of rows or lines on every processor this process may use."""
 
 import os
+import threading
 from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
 from itertools import pairwise
@@ -12,6 +13,14 @@ def thread_count() -> int:
     if hasattr(os, "sched_getaffinity"):
         return len(os.sched_getaffinity(0))
     return os.cpu_count() or 1
+
+
+_own = threading.local()
+
+
+def work_alone() -> None:
+    """Let this thread run its kernels by itself: for pools that have a thread a processor at work already."""
+    _own.alone = True
 
 
 def in_bands(kernel: Callable[..., None], count: int, *arguments: Any, bands_a_thread: int = 1) -> None:
@@ -29,7 +38,7 @@ def in_bands(kernel: Callable[..., None], count: int, *arguments: Any, bands_a_t
     bands_a_thread : int
         More than 1 where bands differ in cost, so that no processor waits long for another.
     """
-    threads = thread_count()
+    threads = 1 if getattr(_own, "alone", False) else thread_count()
     bands = max(1, min(count, threads * bands_a_thread))
     edges = [count * band // bands for band in range(bands + 1)]
     if bands == 1 or threads == 1:

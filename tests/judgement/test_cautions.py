@@ -41,6 +41,13 @@ def test_good_ground_raises_none(plots: Plots) -> None:
         ("upland", {"cold_pool_kind": "moving", "cold_deficit_k": 1.1}, "cold_stream", "concern"),
         ("hot_arid", {"may_be_trees": True}, "may_be_trees", "note"),
         ("hot_humid_coast", {"cold_pool_kind": "leaky", "still_air": 0.4}, "still_air", "note"),
+        ("upland", {"cold_pool_kind": "none", "cold_pool_sure": "possible"}, "cold_possible", "note"),
+        (
+            "upland",
+            {"cold_pool_kind": "leaky", "cold_deficit_k": 1.5, "cold_pool_sure": "none"},
+            "cold_doubtful",
+            "note",
+        ),
         ("savannah", {"cold_deficit_k": 3.0}, "cold_hollow_mild", "note"),
         ("upland", {"cold_pool_kind": "unknown"}, "cold_pool_unknown", "concern"),
         ("hot_humid_coast", {"pond_depth_m": 1.5}, "ponding", "concern"),
@@ -71,6 +78,8 @@ def test_every_rule_is_tried_above() -> None:
     [
         ("hot_humid_coast", {"cold_pool_kind": "closed"}),
         ("upland", {"cold_pool_kind": "leaky", "cold_deficit_k": 0.4}),
+        ("upland", {"cold_pool_kind": "closed", "cold_deficit_k": 0.4, "cold_pool_sure": "none"}),
+        ("upland", {"cold_pool_kind": "none", "cold_pool_sure": "none"}),
         ("upland", {"cold_pool_kind": "moving", "cold_deficit_k": 0.9}),
         ("upland", {"cold_pool_kind": "unknown", "cold_deficit_least_k": 0.0, "cold_deficit_most_k": 0.9}),
         ("hot_arid", {"cold_deficit_k": 3.0}),

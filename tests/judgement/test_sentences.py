@@ -81,3 +81,23 @@ def test_a_narrow_lake_is_named_and_no_share_of_nothing() -> None:
     assert "narrow_lake_km" not in facts({"shore_kind": "lake"})
     assert facts({"buildable_share": 0.2})["buildable_pct"] == pytest.approx(20.0)
     assert "buildable_pct" not in facts({"buildable_share": 0.002})
+
+
+@pytest.mark.parametrize(
+    ("readings", "told"),
+    [
+        (
+            {"cold_nights": 22.0, "cold_nights_of": 25.0, "cold_depth_low_m": 30.2, "cold_depth_high_m": 44.6},
+            {"cold_in_nights": "in 22 of 25 simulated nights 30–45 m of cold air"},
+        ),
+        (
+            {"cold_nights": 3.0, "cold_nights_of": 100.0, "cold_depth_low_m": 4.1, "cold_depth_high_m": 4.3},
+            {"cold_in_nights": "in 3 of 100 simulated nights 4 m of cold air"},
+        ),
+        ({"cold_nights": 0.0, "cold_nights_of": 25.0}, {"cold_in_none": "in none of 25 simulated nights"}),
+        ({"cold_nights": float("nan"), "cold_nights_of": float("nan")}, {}),
+    ],
+)
+def test_simulated_nights_are_counted_in_words(readings: dict[str, float], told: dict[str, str]) -> None:
+    """With numbers and a range of depths; nothing where no night was simulated."""
+    assert {name: text for name, text in facts(readings).items() if name.startswith("cold_in_")} == told

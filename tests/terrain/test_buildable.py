@@ -8,8 +8,9 @@ import pytest
 from sitescreen.errors import GridError
 from sitescreen.grid import Field, Grid
 from sitescreen.terrain import _buildable_kernel as kernel
-from sitescreen.terrain.buildable import _chance_table, chance_buildable, error_correlation, gradient_error
+from sitescreen.terrain.buildable import _chance_table, chance_buildable, gradient_error
 from sitescreen.terrain.slope import gradient, slope_deg
+from sitescreen.terrain.terrain_error import error_correlation
 
 ERROR_M, RANGE_M = 4.4, 90.0
 

@@ -1,5 +1,9 @@
 """The number of threads changes no bit of any result."""
 
+import threading
+import time
+from concurrent.futures import ThreadPoolExecutor
+
 import numpy as np
 import pytest
 
@@ -71,3 +75,17 @@ def test_an_error_in_a_band_comes_out() -> None:
 
     with pytest.raises(ValueError, match="0"):
         threads.in_bands(kernel, 10)
+
+
+def test_threads_of_a_pool_work_alone(monkeypatch: pytest.MonkeyPatch) -> None:
+    """A pool that has a thread a processor at work starts no more of them: one thread does every band."""
+    monkeypatch.setattr(threads, "thread_count", lambda: 4)
+    names: set[int] = set()
+
+    def who(start: int, stop: int) -> None:
+        names.add(threading.get_ident())
+        time.sleep(0.01)  # so that no one thread of several could do them all
+
+    with ThreadPoolExecutor(1, initializer=threads.work_alone) as pool:
+        pool.submit(threads.in_bands, who, 100).result()
+    assert len(names) == 1
