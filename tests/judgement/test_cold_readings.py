@@ -68,6 +68,15 @@ def test_a_plot_in_a_hollow_reads_its_depth_sill_catchment_and_filling() -> None
     assert values.at["b", "cold_pool_depth_m"] == values.at["b", "cold_fill"] == 0.0
 
 
+def test_the_sill_lies_where_the_ground_falls() -> None:
+    """The same hollow on ground that falls to each side in turn; the sill is on the lower rim, a cell behind it."""
+    for turns, bearing_deg in ((0, 180.0), (1, 90.0), (2, 0.0), (3, 270.0)):
+        values = read(np.rot90(slope_with_hollow(), turns).copy(), (1800.0, 1800.0)).values
+        off = abs((values.at["a", "sill_bearing_deg"] - bearing_deg + 180.0) % 360.0 - 180.0)
+        assert off <= 50.0  # the rim's cells are level with one another; the first of them is taken
+        assert 165.0 <= values.at["a", "sill_distance_m"] <= 300.0
+
+
 def test_a_cone_on_a_dome_fills_as_its_volume_and_area_say() -> None:
     """A cone 20 m deep and 200 m wide holds 20/3 m over its own area, all its catchment: 0.59 h at 11.3 m³/(m² h)."""
     y, x = np.mgrid[0:CELLS, 0:CELLS] * 30.0 + 15.0
