@@ -15,6 +15,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from sitescreen.deliverables.answer import CAUTION, answer, trust
+from sitescreen.deliverables.budget import budget_bytes, fit_pictures
 from sitescreen.deliverables.columns import Column
 from sitescreen.deliverables.page_data import page_data
 from sitescreen.deliverables.questions import asked_here, views
@@ -65,6 +66,11 @@ def map_page(screening: "Screening", columns: Sequence[Column]) -> str:
     data["answer"] = answer(table)
     data["trust"] = trust(screening)
     relief_address = _BLANK_PICTURE if relief is None else webp(relief, lossless=False)
+    page = _page(screening, sheet, relief_address, data)
+    over = len(page.encode("utf-8", errors="replace")) - budget_bytes(len(table))
+    if over <= 0:
+        return page
+    data["left_out"] += fit_pictures(data["questions"], over)
     return _page(screening, sheet, relief_address, data)
 
 

@@ -21,8 +21,9 @@ from sitescreen.grid import Bounds
 if TYPE_CHECKING:
     from sitescreen.screening import Screening
 
-MOST_LEAVES = 2_000
-"""Plots whose reasons go into the page, the best first; those of the others would make it too heavy to mail."""
+MOST_LEAVES = 500
+"""Plots whose reasons and readings go into the page, the best first and those set aside after them; those of the others
+would make it too heavy to mail."""
 
 MOST_SITINGS = 200
 """Plots whose siting hint goes into the page, the best first."""
@@ -76,7 +77,7 @@ def page_data(
         if column.name in _MARKS_BY_ZONE and "zone_2" in by_name:  # where one zone alone judges it is the overall mark
             values = [v if shared else None for v, shared in zip(values, column_values("zone_2"), strict=True)]
         if column.says and column.name not in _NOT_ON_A_LEAF and any(value is not None for value in values):
-            readings.append(_words(column) | {"values": values})
+            readings.append(_words(column) | {"values": values[:MOST_LEAVES]})
     return {
         "title": screening.brief.title or "",
         "bounds": _corners(sheet.bounds_deg),
@@ -123,7 +124,7 @@ def page_data(
         "online": _online(screening.brief),
         "shapes": [_shape(geometry) for geometry in table.geometry],
         "marks": {
-            name.removeprefix("mark_"): column_values(name)
+            name.removeprefix("mark_"): column_values(name)[:MOST_LEAVES]
             for name in names
             if name.startswith("mark_") and name not in ("mark_low", "mark_high", *_MARKS_BY_ZONE)
         },

@@ -38,17 +38,20 @@ def strips(screening: "Screening") -> dict[str, Any]:
     breeze = load_defaults().breeze
     names = screening.table["plot"].head(MOST_STRIPS).tolist()
     winds = screening.winds.of(tuple(names))
-    skies: dict[int, int] = {}
+    skies: dict[bytes, int] = {}
     drawn: list[dict[str, Any]] = []
     out = []
     for row, plot in enumerate(names):
         one: dict[str, Any] = {}
         sun = screening.suns.get(plot)
         if sun is not None:
-            if id(sun.elevation_deg) not in skies:
-                skies[id(sun.elevation_deg)] = len(drawn)
+            # suns alike to a quarter of a degree, half a pixel, share their arcs
+            arcs = np.rint(4.0 * np.stack([sun.elevation_deg, sun.azimuth_deg])[:, ::3, ::8])
+            alike = (arcs * (sun.elevation_deg[::3, ::8] > 0)).tobytes()
+            if alike not in skies:
+                skies[alike] = len(drawn)
                 drawn.append(_sky(sun))
-            one |= _sun(sun) | {"sky": skies[id(sun.elevation_deg)]}
+            one |= _sun(sun) | {"sky": skies[alike]}
         if np.isfinite(winds.speed_ratio[row]).any():
             one["winds"] = _rounded(winds.speed_ratio[row], 2)
         section = screening.sections.get(plot)

@@ -29,7 +29,7 @@ def weighing(screening: "Screening") -> dict[str, Any]:
         ``tie``: marks that differ by less are equal. ``open``: places in the table whose zone is undecided.
         ``zones``: for each zone that has a share in a ranked plot its ``rows`` (places in the table), their ``shares``
         and ``criteria``, each with its ``question``, its ``weight`` in this run, its ``known`` marks (NaN where
-        unknown) and, where some are unknown, their ``low`` and ``high`` limits.
+        unknown) and, where some are unknown, ``gaps`` (which) with their ``low`` and ``high`` limits.
     """
     judged, zones = screening.judged, screening.zones
     place_of = {plot: place for place, plot in enumerate(screening.table["plot"].tolist())}
@@ -48,7 +48,8 @@ def weighing(screening: "Screening") -> dict[str, Any]:
             known, low, high = (
                 frame[name].to_numpy(dtype=np.float64)[kept] for frame in (one.marks, one.lowest, one.highest)
             )
-            limits = {} if np.isfinite(known).all() else {"low": packed(low), "high": packed(high)}
+            gaps = np.flatnonzero(np.isnan(known))
+            limits = {"gaps": gaps.tolist(), "low": packed(low[gaps]), "high": packed(high[gaps])} if gaps.size else {}
             criteria.append(
                 {
                     "name": criterion.name,
@@ -67,6 +68,8 @@ def weighing(screening: "Screening") -> dict[str, Any]:
     }
 
 
-def packed(values: NDArray[np.float64]) -> str:
-    """Numbers as the bytes of little-endian doubles, in base 64."""
+def packed(values: NDArray[np.float64]) -> str | float:
+    """Numbers as the bytes of little-endian doubles, in base 64; the number itself where all are the same."""
+    if values.size and np.all(values == values[0]):
+        return float(values[0])
     return base64.b64encode(np.ascontiguousarray(values, dtype="<f8").tobytes()).decode("ascii")

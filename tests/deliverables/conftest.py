@@ -370,6 +370,10 @@ class Reading:
         """A click that needs the element in no special place."""
         self.run("document.querySelector(arguments[0]).click()", selector)
 
+    def wait(self, condition: Callable[[], bool]) -> None:
+        """Until a condition holds."""
+        wait(condition)
+
     def problems(self) -> list[str]:
         """What the console complains of."""
         return [entry["message"] for entry in self.browser.get_log("browser")]

@@ -166,6 +166,7 @@ const ladder = (() => {
     const one = page.question();
     head.textContent = `${one ? `Mark for ${words.noun(one)}` : "Overall mark"}, of 100`;
     cancelAnimationFrame(sliding);
+    sliding = 0;
     at = after;
     if (isSlide && !isCalm.matches && before.size) {
       const start = performance.now();
@@ -176,7 +177,7 @@ const ladder = (() => {
           return [i, { y: from.y + (to.y - from.y) * ease, label: from.label + (to.label - from.label) * ease }];
         }));
         place();
-        if (t < 1) sliding = requestAnimationFrame(step);
+        sliding = t < 1 ? requestAnimationFrame(step) : 0;
       };
       step(start);
     } else {
@@ -199,5 +200,5 @@ const ladder = (() => {
     page.watchers.push((what) => show("weights" in what || "question" in what));
     show(false);
   }
-  return { start, show, paintLeaders, shown, rungs: () => rungs, places: () => at };
+  return { start, show, isStill: () => !sliding, paintLeaders, shown, rungs: () => rungs, places: () => at };
 })();

@@ -61,10 +61,19 @@ const leaf = (() => {
       const words = page.readingWords(reading, i);
       if (words !== null) items.push(make("div", {}, make("dt", { title: reading.says }, reading.title), make("dd", {}, words)));
     }
+    if (data.reasons[i] === null) return null;
     if (data.readings.every((reading) => reading.values[i] === null || reading.name === "area_ha")) {
       return make("p", { class: "leaf-zone" }, "It has no readings.");
     }
     return make("details", {}, make("summary", {}, "All readings"), make("dl", { class: "readings" }, ...items));
+  }
+
+  // the drawings do not hang on the weights: the last ones serve again while plot and room stay the same
+  let last = { i: null, width: 0, parts: [] };
+  function drawn(i, width) {
+    if (document.body.classList.contains("on-paper")) return strips.flatMap((strip) => strip(i, width));
+    if (last.i !== i || last.width !== width) last = { i, width, parts: strips.flatMap((strip) => strip(i, width)) };
+    return last.parts;
   }
 
   // everything a leaf holds, as wide as its holder
@@ -84,13 +93,13 @@ const leaf = (() => {
       reasons.push(...list("For it", why.for, "for"), ...list("Against it", why.against, "against"));
       doubts.push(...list("Cautions", why.cautions, "alerts"), ...list("Unknown", why.unknown, "unknown"));
     } else if (plots.rank[i] !== null) {
-      reasons.push(line("This page holds the reasons of the leading plots only; its readings are below and in the table."));
+      reasons.push(line("This page holds reasons and readings of the leading plots only; those of this one are in ranking.csv."));
     }
     doubts.push(...criteria(i));
     if (data.siting[i]) reasons.push(...list("How to place a house here", data.siting[i].says, "siting"));
     const column = (kind, parts) => make("div", { class: kind }, ...parts.filter((part) => part));
     return [top(i), make("div", { class: "leaf-columns" }, column("about", about), column("reasons", reasons), column("doubts", doubts)),
-      ...strips.flatMap((strip) => strip(i, width)), readings(i)];
+      ...drawn(i, width), readings(i)].filter((part) => part);
   }
 
   function show(width) {

@@ -2,12 +2,16 @@
 const plan = (() => {
   const { data, plots, count, state } = page;
   const INK = "#2b2a27", PAPER = "#faf7f0";
-  const STEP = 100000, SIGN = 5, LARGE = 16, MOST_NUMBERS = 150;
+  const STEP = 100000, SIGN = 5, LARGE = 16, MOST_NUMBERS = 150, MOST_NUMBERED = 400;
   const ROOM = [34, 30, 40, 52]; // left, top, right, bottom: no plot under a rank's edge or the scale bar at first [px]
   const map = window.map_plan;
   const holder = document.getElementById("map_plan");
   const bounds = L.latLngBounds(data.bounds), focus = L.latLngBounds(data.focus);
-  const toMercator = (lon, lat) => map.project(L.latLng(lat, lon), 0);
+  // Web Mercator at zoom 0, as the map library has it; spelt out, since ten thousand plots have many corners
+  function toMercator(lon, lat) {
+    const sine = Math.sin((Math.max(-85.0511287798, Math.min(85.0511287798, lat)) * Math.PI) / 180);
+    return { x: 128 + (lon * 128) / 180, y: 128 - (Math.log((1 + sine) / (1 - sine)) * 64) / Math.PI };
+  }
 
   // corners once, in the map's own units at zoom 0; a zoom only scales them
   const shapes = data.shapes.map((rings) => rings.map((steps) => {
@@ -25,12 +29,21 @@ const plan = (() => {
     return shapes[i].length ? shapes[i][0][0] : null;
   });
 
+  // how far a plot reaches from its place, at zoom 0
+  const reaches = shapes.map((rings, i) => {
+    let reach = 0;
+    if (places[i]) for (const ring of rings) for (const p of ring) reach = Math.max(reach, Math.abs(p.x - places[i].x), Math.abs(p.y - places[i].y));
+    return reach;
+  });
+
   const canvas = document.createElement("canvas");
   canvas.className = "plots leaflet-zoom-hide";
   let scale = 1, origin = L.point(0, 0), spots = [], overlay = null;
   const movers = []; // told whenever the ground has moved under the glass
 
+  let hatched = null;
   function hatch(context) {
+    if (hatched) return hatched;
     const tile = document.createElement("canvas");
     tile.width = tile.height = 6;
     const pen = tile.getContext("2d");
@@ -41,9 +54,10 @@ const plan = (() => {
     pen.moveTo(-1, 1); pen.lineTo(1, -1);
     pen.moveTo(5, 7); pen.lineTo(7, 5);
     pen.stroke();
-    return context.createPattern(tile, "repeat");
+    hatched = context.createPattern(tile, "repeat");
+    return hatched;
   }
-  const onScreen = (point) => L.point(point.x * scale - origin.x, point.y * scale - origin.y);
+  const onScreen = (point) => ({ x: point.x * scale - origin.x, y: point.y * scale - origin.y });
 
   function redraw() {
     const size = map.getSize(), ratio = Math.max(window.devicePixelRatio || 1, holder.classList.contains("printing") ? 3 : 1);
@@ -95,58 +109,66 @@ const plan = (() => {
       if (!places[i]) continue;
       const at = onScreen(places[i]);
       if (at.x < -60 || at.y < -60 || at.x > size.x + 60 || at.y > size.y + 60) continue;
-      const path = outline(i, at);
+      const half = reaches[i] * scale, isSign = 2 * half < LARGE;
       const isAside = plots.rank[i] === null, mark = isAside ? null : marks[i];
       const number = page.classOf(mark);
-      context.lineJoin = "miter";
-      // the chosen plot has a double outline in ink
-      for (const [colour, wide] of i === chosen ? [[PAPER, 12], [INK, 9], [PAPER, 6]] : [[PAPER, 3.6]]) {
-        context.strokeStyle = colour;
-        context.lineWidth = wide;
-        context.stroke(path.shape);
-      }
-      if (isAside) {
+      const colour = isAside ? stripes : number === null ? PAPER : data.ramp[number];
+      const shape = isSign && i !== chosen && !isAside ? null : outline(i, at, isSign);
+      if (shape) drawShape(context, shape, colour, isAside, i === chosen);
+      else { // a sign of one colour, in the fewest strokes: there may be ten thousand
+        const x = at.x - SIGN, y = at.y - SIGN, side = 2 * SIGN;
         context.fillStyle = PAPER;
-        context.globalAlpha = 0.7;
-        context.fill(path.shape, "evenodd");
-        context.globalAlpha = 1;
-        context.fillStyle = stripes;
-      } else {
-        context.fillStyle = number === null ? PAPER : data.ramp[number];
+        context.fillRect(x - 1.8, y - 1.8, side + 3.6, side + 3.6);
+        context.fillStyle = INK;
+        context.fillRect(x - 0.6, y - 0.6, side + 1.2, side + 1.2);
+        context.fillStyle = colour;
+        context.fillRect(x + 0.6, y + 0.6, side - 1.2, side - 1.2);
       }
-      context.fill(path.shape, "evenodd");
-      context.strokeStyle = INK;
-      context.lineWidth = 1.2;
-      context.setLineDash(isAside ? [2.6, 2] : []);
-      context.stroke(path.shape);
-      context.setLineDash([]);
       if (!isAside && number === null && page.asks(i)) {
         context.fillStyle = INK;
         context.beginPath();
         context.arc(at.x, at.y, 1.5, 0, 7);
         context.fill();
       }
-      spots.push({ i, x: at.x, y: at.y, half: path.half, shape: path.shape });
-      taken.push([at.x - path.half, at.y - path.half, at.x + path.half, at.y + path.half]);
+      const room = isSign ? SIGN : half;
+      spots.push({ i, x: at.x, y: at.y, half: room, shape });
+      taken.push([at.x - room, at.y - room, at.x + room, at.y + room]);
     }
     drawNumbers(context, size, taken);
     return taken;
   }
 
-  function outline(i, at) {
-    const shape = new Path2D();
-    const rings = shapes[i].map((ring) => ring.map(onScreen));
-    let half = 0;
-    for (const ring of rings) for (const p of ring) half = Math.max(half, Math.abs(p.x - at.x), Math.abs(p.y - at.y));
-    if (2 * half < LARGE) {
-      shape.rect(at.x - SIGN, at.y - SIGN, 2 * SIGN, 2 * SIGN);
-      return { shape, half: SIGN };
+  function drawShape(context, shape, colour, isAside, isChosen) {
+    context.lineJoin = "miter";
+    // the chosen plot has a double outline in ink
+    for (const [around, wide] of isChosen ? [[PAPER, 12], [INK, 9], [PAPER, 6]] : [[PAPER, 3.6]]) {
+      context.strokeStyle = around;
+      context.lineWidth = wide;
+      context.stroke(shape);
     }
-    for (const ring of rings) {
-      ring.forEach((p, k) => (k ? shape.lineTo(p.x, p.y) : shape.moveTo(p.x, p.y)));
+    if (isAside) {
+      context.fillStyle = PAPER;
+      context.globalAlpha = 0.7;
+      context.fill(shape, "evenodd");
+      context.globalAlpha = 1;
+    }
+    context.fillStyle = colour;
+    context.fill(shape, "evenodd");
+    context.strokeStyle = INK;
+    context.lineWidth = 1.2;
+    context.setLineDash(isAside ? [2.6, 2] : []);
+    context.stroke(shape);
+    context.setLineDash([]);
+  }
+
+  function outline(i, at, isSign) {
+    const shape = new Path2D();
+    if (isSign) shape.rect(at.x - SIGN, at.y - SIGN, 2 * SIGN, 2 * SIGN);
+    else for (const ring of shapes[i]) {
+      ring.map(onScreen).forEach((p, k) => (k ? shape.lineTo(p.x, p.y) : shape.moveTo(p.x, p.y)));
       shape.closePath();
     }
-    return { shape, half };
+    return shape;
   }
 
   // ranks beside their ground: the chosen plot and the shortlist always, others where there is room
@@ -157,7 +179,7 @@ const plan = (() => {
     const first = byRank.filter((s) => s.i === state.chosen);
     for (const spot of [...first, ...byRank.filter((s) => s.i !== state.chosen)].slice(0, MOST_NUMBERS)) {
       const rank = ranks[spot.i], isChosen = spot.i === state.chosen, isShort = rank <= data.shortlist;
-      if (!isShort && !isChosen && size.x < 600) continue;
+      if (!isShort && !isChosen && (size.x < 600 || spots.length > MOST_NUMBERED)) continue;
       context.font = `${isShort || isChosen ? "bold 15" : "12"}px ${getComputedStyle(document.body).getPropertyValue("--serif")}`;
       const text = page.ordinal(rank), wide = context.measureText(text).width, tall = isShort || isChosen ? 15 : 12;
       const gap = spot.half + (isChosen ? 9 : 5);
@@ -189,7 +211,7 @@ const plan = (() => {
     for (const spot of spots) {
       const away = Math.max(Math.abs(spot.x - point.x), Math.abs(spot.y - point.y));
       if (away < nearest && away <= Math.max(spot.half, 9)) { best = spot.i; nearest = away; }
-      else if (best === null && spot.half > 12 && context.isPointInPath(spot.shape, point.x * ratio, point.y * ratio)) best = spot.i;
+      else if (best === null && spot.half > 12 && spot.shape && context.isPointInPath(spot.shape, point.x * ratio, point.y * ratio)) best = spot.i;
     }
     return best;
   }
@@ -215,7 +237,7 @@ const plan = (() => {
   function whole() {
     map.fitBounds(focus, { animate: false });
     map.panInsideBounds(bounds, { animate: false }); // no bare paper on one side where there is ground on the other
-    const shown = places.filter((place) => place && focus.contains(map.unproject(place, 0))).map((place) => map.unproject(place, 0));
+    const shown = places.filter((place) => place && focus.contains(map.unproject(L.point(place), 0))).map((place) => map.unproject(L.point(place), 0));
     const size = map.getSize(), [left, top, right, bottom] = ROOM;
     const hasRoom = shown.map((where) => map.latLngToContainerPoint(where))
       .every((at) => at.x >= left && at.y >= top && at.x <= size.x - right && at.y <= size.y - bottom);
@@ -293,7 +315,7 @@ const plan = (() => {
   // bring a plot into view, without moving the map when it is there already
   function reveal(i) {
     if (!places[i]) return;
-    const where = map.unproject(places[i], 0);
+    const where = map.unproject(L.point(places[i]), 0);
     if (!map.getBounds().pad(-0.05).contains(where) && bounds.pad(0.5).contains(where)) map.panTo(where, { animate: false });
   }
   // where a plot's ground lies on the map's window, and how far its sign reaches; null where it is out of sight

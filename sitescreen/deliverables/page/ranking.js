@@ -9,7 +9,8 @@ const ranking = (() => {
 
   const first = (lines) => (lines && lines.length ? lines[0] : "");
   const reason = (i, kind) => (data.reasons[i] ? first(data.reasons[i][kind]) : "");
-  const searchable = plots.plot.map((plot, i) =>
+  let searchable = null; // made when somebody first looks for something
+  const searched = () => plots.plot.map((plot, i) =>
     [plot, plots.name[i], page.zoneTitle(i), reason(i, "for"), reason(i, "against")].join(" ").toLowerCase());
 
   function columns() {
@@ -50,6 +51,11 @@ const ranking = (() => {
     return one.marks[i] === null ? "unknown" : [one.marks[i].toFixed(0), ruler(one.marks[i], null, null, 86, 14)];
   }
 
+  function byRank(isDown) {
+    const place = new Int32Array(plots.plot.length).fill(plots.plot.length);
+    page.now.order.forEach((i, k) => { place[i] = k; });
+    return (a, b) => (isDown ? place[b] - place[a] : place[a] - place[b]) || a - b;
+  }
   function compare(column) {
     const turn = sorted.down ? -1 : 1, place = new Map(page.now.order.map((i, k) => [i, k]));
     const order = (a, b) => (place.get(a) ?? Infinity) - (place.get(b) ?? Infinity) || a - b;
@@ -66,7 +72,8 @@ const ranking = (() => {
     if (!all.some((column) => column.key === sorted.key)) sorted = { key: "rank", down: false };
     const by = all.find((column) => column.key === sorted.key);
     const wanted = find.value.trim().toLowerCase();
-    const fits = page.ranked.filter((i) => !wanted || searchable[i].includes(wanted)).sort(compare(by));
+    if (wanted && !searchable) searchable = searched();
+    const fits = page.ranked.filter((i) => !wanted || searchable[i].includes(wanted)).sort(by.key === "rank" ? byRank(sorted.down) : compare(by));
     heads.replaceChildren(...all.map((column) => {
       const sort = () => {
         sorted = { key: column.key, down: sorted.key === column.key ? !sorted.down : Boolean(column.best) };
@@ -106,7 +113,23 @@ const ranking = (() => {
     if (!page.aside.length) document.getElementById("aside-lead").textContent = "No plot is set aside.";
   }
 
+  // the table as it stands, every row of it; what looks like a formula stays text in a spreadsheet
+  function csv() {
+    const all = columns(), quoted = (text) => `"${(/^[=+\-@\t\n]/.test(text) ? `'${text}` : text).replace(/"/g, '""')}"`;
+    const field = (value) => (value === null || value === undefined ? "" : typeof value === "number" ? String(value) : quoted(value));
+    const lines = page.now.order.map((i) => [plots.plot[i], ...all.map((column) => column.value(i))].map(field).join(","));
+    const weighed = weigh.changed().map((one) => `${words.noun(one)} ${weigh.STOPS[weigh.stops[one.name]].counting}`);
+    const head = ["plot id", ...all.map((column) => (column.unit ? `${column.head} [${column.unit}]` : column.head))];
+    return [head.map(quoted).join(","), ...lines, ...(weighed.length ? [quoted(`weighed with ${weighed.join(", ")}`)] : [])].join("\n") + "\n";
+  }
+  function download() {
+    const address = URL.createObjectURL(new Blob(["\ufeff", csv()], { type: "text/csv" }));
+    make("a", { href: address, download: "ranking as shown.csv" }).click();
+    setTimeout(() => URL.revokeObjectURL(address), 1000);
+  }
+
   function start() {
+    document.getElementById("download").addEventListener("click", download);
     document.getElementById("table-holder").hidden = false;
     document.getElementById("ranking-tools").hidden = false;
     find.addEventListener("input", () => { shown = PAGE_ROWS; show(); });
@@ -120,5 +143,5 @@ const ranking = (() => {
     shelf();
     show();
   }
-  return { start };
+  return { start, csv };
 })();

@@ -4,6 +4,9 @@ const page = (() => {
   const data = JSON.parse(document.getElementById("data").textContent);
   const plots = data.plots;
   const count = plots.plot.length;
+  for (const one of data.questions) one.views = one.views.filter((view) => view.picture); // some may be left out
+  // of many plots the page holds readings and marks of the leading ones only
+  for (const values of [...data.readings.map((reading) => reading.values), ...Object.values(data.marks)]) while (values.length < count) values.push(null);
   const ranked = [], aside = [];
   for (let i = 0; i < count; i++) (plots.rank[i] === null ? aside : ranked).push(i);
 

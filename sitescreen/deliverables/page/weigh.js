@@ -13,7 +13,8 @@ const weigh = (() => {
   const stops = Object.fromEntries(data.questions.map((one) => [one.name, PROFILE]));
   let zones = null;
 
-  function unpacked(text) {
+  function unpacked(text, count) {
+    if (typeof text === "number") return new Float64Array(count).fill(text);
     const letters = atob(text), bytes = new Uint8Array(letters.length);
     for (let k = 0; k < letters.length; k++) bytes[k] = letters.charCodeAt(k);
     const view = new DataView(bytes.buffer), out = new Float64Array(bytes.length / 8);
@@ -24,10 +25,13 @@ const weigh = (() => {
     return data.weighing.zones.map((zone) => ({
       name: zone.zone,
       rows: zone.rows,
-      shares: unpacked(zone.shares),
+      shares: unpacked(zone.shares, zone.rows.length),
       criteria: zone.criteria.map((one) => {
-        const known = unpacked(one.known);
-        return { question: one.question, weight: one.weight, known, low: one.low ? unpacked(one.low) : known, high: one.high ? unpacked(one.high) : known };
+        const known = unpacked(one.known, zone.rows.length);
+        if (!one.gaps) return { question: one.question, weight: one.weight, known, low: known, high: known };
+        const low = known.slice(), high = known.slice(), lows = unpacked(one.low, one.gaps.length), highs = unpacked(one.high, one.gaps.length);
+        one.gaps.forEach((k, n) => { low[k] = lows[n]; high[k] = highs[n]; });
+        return { question: one.question, weight: one.weight, known, low, high };
       }),
     }));
   }
@@ -115,6 +119,9 @@ const weigh = (() => {
 
   const atProfile = { mark: plots.overall_mark, low: plots.mark_low, high: plots.mark_high, rank: plots.rank, rankInZone: plots.rank_in_zone, order: page.ranked, isProfile: true };
   page.now = atProfile;
+
+  // made ready while nobody waits, so that the first change is as quick as the others
+  (window.requestIdleCallback || ((then) => setTimeout(then, 300)))(() => { zones = zones || unpackedZones(); });
 
   function apply(what) {
     const before = page.now;
