@@ -27,9 +27,10 @@ def test_each_tick_stands_at_its_mark_and_leads_to_its_ground(read: Any, screeni
     """Ticks by the ruler's own 0 and 100; the leader begins at the plot and ends at the tick's height."""
     page = read(screening)
     numerals = page.run(
-        "return [...document.querySelectorAll('#ladder-lines text')].map((t) => [t.textContent, parseFloat(t.getAttribute('y'))])"
+        "return [...document.querySelectorAll('#ladder-lines text')]"
+        ".map((t) => [t.textContent, parseFloat(t.getAttribute('y'))])"
     )
-    ends = {text: y for text, y in numerals}
+    ends = dict(numerals)
     places = page.run("return ladder.rungs().map((r) => [r.i, r.mark, ladder.places().get(r.i).y])")
     assert len(places) == 3
     for _, mark, y in places:
