@@ -37,8 +37,9 @@ def test_each_tick_stands_at_its_mark_and_leads_to_its_ground(read: Any, screeni
         assert y == pytest.approx(ends["0"] - 3.5 + mark / 100 * (ends["100"] - ends["0"]), abs=0.01)
     lines = page.run(
         "const out = [], pen = CanvasRenderingContext2D.prototype, from = pen.moveTo, to = pen.lineTo;"
-        "pen.moveTo = function (x, y) { if (this.canvas.className.includes('leaders')) out.push([x, y]); from.call(this, x, y); };"
-        "pen.lineTo = function (x, y) { if (this.canvas.className.includes('leaders')) out[out.length - 1].push(x, y); to.call(this, x, y); };"
+        "const isOurs = (one) => one.canvas.className.includes('leaders');"
+        "pen.moveTo = function (x, y) { if (isOurs(this)) out.push([x, y]); from.call(this, x, y); };"
+        "pen.lineTo = function (x, y) { if (isOurs(this)) out[out.length - 1].push(x, y); to.call(this, x, y); };"
         "ladder.show(false); pen.moveTo = from; pen.lineTo = to;"
         "return [out, map_plan.getSize().x, ladder.rungs().map((r) => plan.screenOf(r.i))]"
     )
@@ -82,7 +83,8 @@ def test_the_keyboard_alone_reaches_everything(read: Any, screening: Any) -> Non
         ActionChains(page.browser).send_keys(Keys.TAB).perform()
         seen.append(
             page.run(
-                "const e = document.activeElement; return e.dataset.paper || e.dataset.question || e.name || e.id || (e.closest('[id]') || {}).id"
+                "const e = document.activeElement;"
+                " return e.dataset.paper || e.dataset.question || e.name || e.id || (e.closest('[id]') || {}).id"
             )
         )
     for wanted in (
@@ -111,7 +113,8 @@ def test_landmarks_and_headings_tell_the_page(read: Any, screening: Any) -> None
     assert len(page.texts("main, header, footer")) == 3
     assert len(page.texts("h1")) == 1
     labels = page.run(
-        "return [...document.querySelectorAll('section')].map((s) => s.getAttribute('aria-label') || s.getAttribute('aria-labelledby'))"
+        "return [...document.querySelectorAll('section')]"
+        ".map((s) => s.getAttribute('aria-label') || s.getAttribute('aria-labelledby'))"
     )
     assert all(labels)
     assert page.run("return document.querySelector('#ladder-list').tagName") == "OL"
@@ -126,7 +129,8 @@ def test_the_accessibility_checker_finds_nothing(read: Any, with_drawings: Any, 
     page = read(with_drawings, width, 900)
     page.browser.execute_cdp_cmd("Runtime.evaluate", {"expression": Path(script).read_text(encoding="utf-8")})
     run = (
-        "const done = arguments[0]; axe.run(document, { runOnly: ['wcag2a', 'wcag2aa', 'wcag21a', 'wcag21aa', 'wcag22aa'] })"
+        "const done = arguments[0];"
+        "axe.run(document, { runOnly: ['wcag2a', 'wcag2aa', 'wcag21a', 'wcag21aa', 'wcag22aa'] })"
         ".then((r) => done(JSON.stringify(r.violations.map((v) => [v.id, v.nodes.map((n) => n.html.slice(0, 160))]))));"
     )
     assert json.loads(page.browser.execute_async_script(run)) == []
