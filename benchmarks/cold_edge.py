@@ -2,8 +2,8 @@
 
 Run from the repository: ``python benchmarks/cold_edge.py [seed …]``. Invented hills of several sizes on ground that
 falls from west to east are run whole, 110 km wide; then cut at a western or an eastern edge. Cells 6, 12, 20 and 28 km
-behind that edge, of which the whole knows the cold air, are compared with it. The whole holds only two or three large
-valleys: shares differ by half between seeds.
+behind that edge, of which the whole knows the cold air, are compared with it. The whole holds few large valleys, so the
+shares hang on the seed and on how much of the ground is looked at.
 """
 
 import sys
