@@ -76,6 +76,8 @@ class Certainty:
         What the data's draws vary.
     drawn, ranked : int
         Plots that took part, and plots that have a rank.
+    rank : Series of float, indexed by plot
+        The ranks of the run itself; NaN where there is none.
     """
 
     table: pd.DataFrame
@@ -84,6 +86,7 @@ class Certainty:
     varied: tuple[Varied, ...]
     drawn: int
     ranked: int
+    rank: pd.Series
 
     def for_record(self) -> dict[str, Any]:
         """What ``record.json`` keeps of it."""
@@ -103,6 +106,12 @@ class Certainty:
             },
         }
 
+    @property
+    def outside(self) -> tuple[str, ...]:
+        """Plots whose rank in the run lies outside the range of their ranks under the data's draws."""
+        low, high = self.table["rank_low_data"], self.table["rank_high_data"]
+        return tuple(str(plot) for plot in self.table.index[(self.rank < low) | (self.rank > high)])
+
     def _mean_span(self, suffix: str) -> float | None:
         """Mean number of ranks from the best to the worst of the range."""
         span = (self.table[f"rank_high{suffix}"] - self.table[f"rank_low{suffix}"]).dropna()
@@ -117,7 +126,7 @@ class Certainty:
             "± % of its profile"
         )
         if self.draws:
-            in_full = listed([one.in_full for one in self.varied])
+            in_full = "; ".join(one.in_full for one in self.varied)
             text += (
                 f" and with one of {self.draws:,} draws of the data, the same for all plots: {in_full}. "
                 "Unknown readings stand at their worst throughout."
@@ -134,6 +143,16 @@ class Certainty:
                 "and the wind's are not in them, and unknown readings stand at their worst throughout."
             )
         notes = [Note("info", "judgement", text)]
+        if self.outside:
+            notes.append(
+                Note(
+                    "info",
+                    "judgement",
+                    f"Plots whose own rank lies outside their range: {listed(self.outside)}. The terrain model's noise "
+                    "makes their ground read otherwise than it most likely is; look at them on site before ruling them "
+                    "in or out.",
+                )
+            )
         if self.drawn < self.ranked:
             notes.append(
                 Note(
@@ -248,6 +267,7 @@ def certainty(
     """
     varied = varied if draws.count else ()
     table = judged.table
+    rank = table["rank"].astype("Float64").astype(np.float64)
     ranked = np.flatnonzero(table["rank"].notna().to_numpy())
     drawn = take_part(judged, shortlist, settings)
     found = pd.DataFrame({name: np.full(len(table), np.nan) for name in COLUMNS}, index=table.index)
@@ -260,7 +280,7 @@ def certainty(
         measured = drawn if len(drawn) < len(ranked) else np.flatnonzero(_told_by_draws(judged, rules, draws))
         enter(measured, {"chance_set_aside": stopped(judged, zones, rules, draws, measured).mean(axis=0)})
     if not len(drawn):
-        return Certainty(found, settings.trials, draws.count, varied, 0, len(ranked))
+        return Certainty(found, settings.trials, draws.count, varied, 0, len(ranked), rank)
     by_rank = drawn[np.argsort(table["rank"].to_numpy(dtype=np.float64)[drawn], kind="stable")]
     zone = table["zone"].to_numpy(dtype=object)
     ahead, ahead_in_zone = _ahead(_steps(table["mark_low"].to_numpy(np.float64), settings), zone, by_rank, ranked)
@@ -298,7 +318,7 @@ def certainty(
     )
     low, high = _middle(ranks)
     enter(by_rank, {"rank_low": low, "rank_high": high})
-    return Certainty(found, settings.trials, draws.count, varied, len(drawn), len(ranked))
+    return Certainty(found, settings.trials, draws.count, varied, len(drawn), len(ranked), rank)
 
 
 def _told_by_draws(judged: Judged, rules: Sequence[CautionRule], draws: ReadingDraws) -> NDArray[np.bool_]:

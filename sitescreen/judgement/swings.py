@@ -40,6 +40,10 @@ class Swing(NamedTuple):
     readings: Mapping[str, FloatArray]
 
 
+def _called(plots: Sequence[str]) -> str:
+    return f"plot {plots[0]}" if len(plots) == 1 else f"plots {listed(plots)}"
+
+
 @dataclass(frozen=True)
 class Swung:
     """What the first places do if one input is at one end.
@@ -75,11 +79,11 @@ class Swung:
         """In plain words."""
         said = []
         if self.is_first_new:
-            said.append(f"plot {' and '.join(self.first)} would be first")
+            said.append(f"{_called(self.first)} would be first")
         if self.entered:
-            said.append(f"plot {', '.join(self.entered)} would come onto the first {self.shortlist}")
+            said.append(f"{_called(self.entered)} would come onto the first {self.shortlist}")
         if self.left:
-            said.append(f"plot {', '.join(self.left)} would leave the first {self.shortlist}")
+            said.append(f"{_called(self.left)} would leave the first {self.shortlist}")
         if not said:
             said.append(f"the first {self.shortlist} would stay the same plots")
         return f"If {self.swing.says}, {listed(said)}."

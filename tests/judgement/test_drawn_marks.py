@@ -205,3 +205,18 @@ def test_ignorance_wins_in_no_draw(seed: int, blank: str) -> None:
         assert found.at["t", column] >= found.at["a", column]
     for column in ("chance_first", "chance_shortlist", "chance_top_quarter"):
         assert found.at["t", column] <= found.at["a", column]
+
+
+def test_a_rank_outside_its_own_range_is_said(plots: Plots, in_zone: InZone) -> None:
+    """The run reads 12° where every draw of the ground has 1 to 2°: noise in the model as it stands."""
+    readings = plots({"slope_deg": 12.0}, {"slope_deg": 6.0})
+    zones = in_zone(readings, "upland")
+    drawn = np.stack([np.linspace(1.0, 2.0, DRAWS), np.full(DRAWS, 6.0)])
+    sure = sure_of(readings, zones, ReadingDraws({"slope_deg": drawn}))
+    assert sure.outside == ("a", "b")
+    assert "outside their range: a and b." in sure.notes()[1].text
+    same = sure_of(
+        readings, zones, ReadingDraws({"slope_deg": np.repeat(readings[["slope_deg"]].to_numpy(), 9, axis=1)})
+    )
+    assert same.outside == ()
+    assert len(same.notes()) == 1
