@@ -71,8 +71,9 @@ const leaf = (() => {
   // the drawings do not hang on the weights: the last ones serve again while plot and room stay the same
   let last = { i: null, width: 0, parts: [] };
   function drawn(i, width) {
-    if (document.body.classList.contains("on-paper")) return strips.flatMap((strip) => strip(i, width));
-    if (last.i !== i || last.width !== width) last = { i, width, parts: strips.flatMap((strip) => strip(i, width)) };
+    const made = () => [...strips.flatMap((strip) => strip(i, width)), readings(i)].filter((part) => part);
+    if (document.body.classList.contains("on-paper")) return made();
+    if (last.i !== i || last.width !== width) last = { i, width, parts: made() };
     return last.parts;
   }
 
@@ -99,7 +100,7 @@ const leaf = (() => {
     if (data.siting[i]) reasons.push(...list("How to place a house here", data.siting[i].says, "siting"));
     const column = (kind, parts) => make("div", { class: kind }, ...parts.filter((part) => part));
     return [top(i), make("div", { class: "leaf-columns" }, column("about", about), column("reasons", reasons), column("doubts", doubts)),
-      ...drawn(i, width), readings(i)].filter((part) => part);
+      ...drawn(i, width)];
   }
 
   function show(width) {
@@ -110,7 +111,7 @@ const leaf = (() => {
     holder.replaceChildren(...parts(i, width || holder.clientWidth));
     if (isOpen && holder.querySelector("details")) holder.querySelector("details").open = true;
   }
-  page.watchers.push((what) => { if ("chosen" in what || "weights" in what) show(); });
+  page.watchers.push((what) => { if ("chosen" in what || "weights" in what) show("weights" in what ? last.width : 0); });
   let wide = 0;
   window.addEventListener("resize", () => { if (holder.clientWidth !== wide) { wide = holder.clientWidth; show(); } });
   return { show, parts, strips };
