@@ -20,6 +20,9 @@ ON_SITE = (
 )
 
 
+_TURNS = re.compile("[\u0590-\u08ff\u200f\u202a-\u202e\u2066-\u2069\ufb1d-\ufdff\ufe70-\ufefc]")
+
+
 def answer(table: "pd.DataFrame") -> str:
     """The result in one plain sentence.
 
@@ -48,7 +51,12 @@ def answer(table: "pd.DataFrame") -> str:
 
 def _called(row: Any) -> str:
     name, plot = value_of(BY_NAME["name"], row.get("name")), str(row["plot"])
-    return f"{name} (plot\u00a0{plot})" if name else f"plot\u00a0{plot}"
+    return f"{isolated(str(name))} (plot\u00a0{isolated(plot)})" if name else f"plot\u00a0{isolated(plot)}"
+
+
+def isolated(text: str) -> str:
+    """Text that runs from right to left, or turns what stands around it, kept to itself (Unicode's FSI and PDI)."""
+    return f"\u2068{text}\u2069" if _TURNS.search(text) else text
 
 
 def _list(words: list[str]) -> str:

@@ -224,6 +224,13 @@ def test_answer_names_the_leaders_and_counts_the_shelf(screening: Any) -> None:
     assert said.endswith("2 are set aside.")
 
 
+def test_a_name_cannot_turn_the_answer_around(screening: Any) -> None:
+    table = screening.table.copy()
+    table.loc[0, "name"] = "\u202egnp.exe"
+    assert "\u2068\u202egnp.exe\u2069 (plot" in answer(table)
+    assert "\u2068" not in answer(screening.table)
+
+
 def test_answer_shares_a_shared_first_place(screening: Any) -> None:
     table = screening.table.copy()
     table.loc[:1, "rank"] = 1

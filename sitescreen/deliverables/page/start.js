@@ -63,8 +63,12 @@ const page = (() => {
     const tens = n % 100;
     return n + (tens > 10 && tens < 14 ? "th" : ["th", "st", "nd", "rd"][n % 10] || "th");
   }
+  // text that runs from right to left, or turns what stands around it, is kept to itself
+  function isolated(text) {
+    return /[\u0590-\u08ff\u200f\u202a-\u202e\u2066-\u2069\ufb1d-\ufdff\ufe70-\ufefc]/.test(text) ? `\u2068${text}\u2069` : text;
+  }
   function called(i) {
-    return plots.name[i] === null ? `Plot ${plots.plot[i]}` : `${plots.name[i]} (plot ${plots.plot[i]})`;
+    return plots.name[i] === null ? `Plot ${isolated(plots.plot[i])}` : `${isolated(plots.name[i])} (plot ${isolated(plots.plot[i])})`;
   }
   function zoneTitle(i) {
     const zone = data.zones[plots.zone[i]];
