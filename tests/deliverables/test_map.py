@@ -14,6 +14,7 @@ import folium
 import numpy as np
 import pandas as pd
 import pytest
+import shapely
 from PIL import Image
 
 import sitescreen.deliverables.scaffold as scaffold
@@ -89,7 +90,10 @@ def hostile_screening(invent: Any) -> Any:
     }
     brief = SimpleNamespace(**{**vars(made.brief), "title": "</title><script>alert(1)</script>{{ 7*7 }}"})
     notes = tuple(Note("assumed", "wind", text) for text in HOSTILE)
-    return made.with_(table=table, reasons=reasons, brief=brief, notes=notes, profiles=profiles)
+    middle = made.table.geometry.iloc[0].centroid
+    points = np.array([shapely.Point(middle.x + k * 2e-3, middle.y) for k in range(len(HOSTILE))], dtype=object)
+    layers = tuple(SimpleNamespace(name=text, shapes=points[:1], labels=(text,)) for text in HOSTILE)
+    return made.with_(table=table, reasons=reasons, brief=brief, notes=notes, profiles=profiles, context=layers)
 
 
 def test_hostile_text_changes_no_tag(invent: Any) -> None:

@@ -307,6 +307,7 @@ def test_hostile_text_stays_text(opened: Any, invent: Any) -> None:
     shelf = texts(page, "#shelf li span")
     assert shelf == ["</li><script>alert(1)</script>{{ 7*7 }}"] * len(shelf)
     assert "<b>{{ 7*7 }}" in texts(page, "#rows td.zone")[0]
+    assert set(texts(page, "#legend .legend-item bdi")) == set(tests.HOSTILE)
     assert texts(page, "title") == ["</title><script>alert(1)</script>{{ 7*7 }}"]
     assert page.execute_script("return document.scripts.length") == 4
     assert page.execute_script("return document.documentElement.scrollWidth") <= 1440
