@@ -31,7 +31,9 @@ const asks = (() => {
   }
   function show() {
     back.disabled = page.now.isProfile;
-    document.getElementById("weighed").textContent = page.now.isProfile ? "weighed by each zone’s profile" : "weighed as set here";
+    const weighed = document.getElementById("weighed");
+    weighed.textContent = page.now.isProfile ? "weighed by each zone’s profile" : "weighed as set here";
+    weighed.classList.toggle("changed", !page.now.isProfile);
     for (const one of data.questions) {
       const stop = weigh.stops[one.name], input = row.querySelector(`input[name="weight-${one.name}"][value="${stop}"]`);
       input.checked = true;
