@@ -32,6 +32,7 @@ from sitescreen.judgement.draws import DrawableBlock, drawable_block
 from sitescreen.judgement.readings import Readings, block_readings
 from sitescreen.judgement.shore_readings import with_shore
 from sitescreen.judgement.sun_readings import with_sun
+from sitescreen.judgement.watercourse_readings import with_watercourses
 from sitescreen.judgement.wind_readings import with_wind
 from sitescreen.judgement.wind_slots import SLOT_OF, wind_column
 from sitescreen.judgement.within_plot import PlotCells, plot_cells
@@ -45,6 +46,7 @@ from sitescreen.terrain.shore_distance import ShoreDistance, nearest_shore, onsh
 from sitescreen.terrain.shore_fetch import OpenRule, OpenShore, open_segments, open_shores
 from sitescreen.terrain.shore_segments import Segments
 from sitescreen.terrain.sky_view import even_azimuths
+from sitescreen.terrain.watercourses import watercourses
 
 FloatArray = NDArray[np.float64]
 
@@ -129,6 +131,12 @@ def measure(
         disagreement = water_disagreement(
             water_kind[inside], ground.flat.part(core, inside), heights.ground.part(block.core_bounds)
         )
+        beds = watercourses(
+            ground.elevation,
+            water_kind,
+            settings.terrain.watercourse_least_km2,
+            settings.terrain.watercourse_near_m,
+        )
     with progress.step("Measuring wind and shelter"):
         covered = wind_cover(inputs.cover, ground.elevation, settings.wind) if inputs.cover else None
         met = covered.raised(settings.wind) if covered else ground.elevation
@@ -178,6 +186,7 @@ def measure(
             np.where(np.isnan(ground.slope.values), np.nan, steep), settings.readings.known_share_least
         )
         readings = with_wind(readings, winds, inputs.wind, lon, lat, steep_share, slots, settings.wind)
+        readings = with_watercourses(readings, coverage, beds, settings.readings.known_share_least)
         readings = with_shore(readings, coast.near, coast.lake, coast.breeze, coast.onshore_from_deg, settings.breeze)
     with progress.step("Measuring the sun"):
         suns = _suns(plots, ground, coverage, readings, inputs, settings)
@@ -191,6 +200,7 @@ def measure(
         "sky_view": ground.sky_view,
         "sun_year_h": sunshine.hours(ground.elevation),
         "hollow_depth_m": pools.depth_m,
+        "floor_height_m": beds.height_m,
         "cold_depth_m": cold.depth_m,
         "cold_kind": Field(cold.kind.astype(np.float32), grid, "code", "cold air: " + ", ".join(KIND_CODES)),
         "cold_share": Field(cold.fill.values * ground.sky_view.values, grid, "1", cold.fill.what),

@@ -69,10 +69,6 @@ NOT_CHECKED = (
     "roads, water and power",
 )
 
-EMPTY_IN_THIS_VERSION = ("floor_height_m",)
-"""Columns of the table whose methods are still to come."""
-
-
 SUNS_DRAWN = 200
 """The sun's arcs are kept for so many plots, the first in rank: what a page can draw."""
 
@@ -350,8 +346,6 @@ def _table(
         inside.reset_index(drop=True),
     ]
     table = pd.concat(parts, axis=1)
-    for column in EMPTY_IN_THIS_VERSION:
-        table[column] = np.nan
     table["not_checked"] = ", ".join(unchecked)  # on every row, since silence reads as safe wherever the row goes
     table = gpd.GeoDataFrame(table, geometry=plots.geometry.to_numpy(), crs="EPSG:4326")
     order = np.argsort(table["rank"].astype("Float64").fillna(np.inf).to_numpy(dtype=np.float64), kind="stable")

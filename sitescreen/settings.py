@@ -61,6 +61,8 @@ class TerrainSettings(Section):
     sky_azimuths: Annotated[int, Field(ge=4, le=360)]
     smallest_water_km2: Positive
     smallest_outlet_km2: Positive
+    watercourse_least_km2: Positive
+    watercourse_near_m: Annotated[float, Field(ge=0, le=1000)]
 
 
 class ShoreSettings(Section):

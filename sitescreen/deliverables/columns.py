@@ -154,7 +154,9 @@ CONTRACT: tuple[Column, ...] = (
         "Hollows shallower than this cannot be seen in this terrain model.",
     ),
     _number("night_minimum_c", 1, "°C", "night minimum", "Expected minimum of a calm clear night in the cool season."),
-    _number("floor_height_m", 1, "m", "above the channel", "Height above the nearest channel floor."),
+    _number(
+        "floor_height_m", 1, "m", "above the watercourse", "Height above the watercourse that its ground drains to."
+    ),
     _number("sky_view", 3, "0–1", "open sky", "Share of the sky that the ground around leaves open."),
     _number(
         "sun_cool_morning_h",
@@ -265,6 +267,14 @@ MORE: Mapping[str, Column] = {
         _number("cold_strength_k", 1, "°C", "coldest pools", "How cold a deep pool of its climate can grow."),
         _number(
             "still_air", 2, "0–1", "still air", "How far the night’s air stands in a hollow or behind narrows; 0 moves."
+        ),
+        _number(
+            "watercourse_km2",
+            1,
+            "km²",
+            "drains past it",
+            "Ground that drains through the largest watercourse, dry or wet, on the plot or within some 90 m of it; at "
+            "least, since the terrain may go on. 0 where there is none.",
         ),
         _number("sill_distance_m", 0, "m", "hollow spills at", "Distance to where the plot’s closed hollow spills."),
         _number("sill_bearing_deg", 0, "° from true north", "hollow spills to", "Bearing of that place."),

@@ -51,6 +51,9 @@ def test_good_ground_raises_none(plots: Plots) -> None:
         ("savannah", {"cold_deficit_k": 3.0}, "cold_hollow_mild", "note"),
         ("upland", {"cold_pool_kind": "unknown"}, "cold_pool_unknown", "concern"),
         ("hot_humid_coast", {"pond_depth_m": 1.5}, "ponding", "concern"),
+        ("hot_arid", {"watercourse_km2": 1.5, "floor_height_m": 4.0}, "flash_flood", "concern"),
+        ("savannah", {"watercourse_km2": 120.0, "floor_height_m": np.nan}, "flash_flood", "concern"),
+        ("upland", {"watercourse_km2": 12.0, "floor_height_m": 0.0}, "watercourse", "concern"),
         ("high_upland", {"ridge_exposure": 1.4}, "exposed_ridge", "concern"),
         ("lake_basin", {"ridge_exposure": 1.4}, "windy_ground", "note"),
         ("high_upland", {"driving_rain": 1.4}, "driving_rain", "note"),
@@ -88,6 +91,9 @@ def test_every_rule_is_tried_above() -> None:
         ("hot_humid_coast", {"elevation_m": 4.0, "sea_km": 0.5}),
         ("upland", {"slope_deg": 16.6}),
         ("upland", {"pond_depth_m": 0.9}),
+        ("upland", {"watercourse_km2": 9.0, "floor_height_m": 0.0}),
+        ("hot_arid", {"watercourse_km2": 40.0, "floor_height_m": 12.0}),
+        ("hot_arid", {"watercourse_km2": 0.0, "floor_height_m": 0.5}),
     ],
 )
 def test_what_is_no_cause_for_alarm(plots: Plots, zone: str, change: dict[str, Any]) -> None:
