@@ -10,7 +10,7 @@ const ladder = (() => {
   canvas.className = "leaders leaflet-zoom-hide";
   const isCalm = window.matchMedia("(prefers-reduced-motion: reduce)"), isNarrow = window.matchMedia("screen and (max-width: 760px)");
   const isList = () => isNarrow.matches && !document.body.classList.contains("on-paper");
-  let rungs = [], at = new Map(), sliding = 0, height = 0;
+  let rungs = [], hairs = [], at = new Map(), sliding = 0, height = 0;
 
   const top = (mark) => TOP + ((100 - mark) / 100) * (height - TOP - BOTTOM);
   // the shortlist as it stands now, and the chosen plot
@@ -84,7 +84,7 @@ const ladder = (() => {
       parts.push(draw("rect", { x: X.band, y: top(edges[k + 1]), width: X.wide, height: top(edges[k]) - top(edges[k + 1]), fill: data.ramp[k] }));
     }
     parts.push(draw("rect", { x: X.band, y: top(100), width: X.wide, height: top(0) - top(100), fill: "none", stroke: INK, "stroke-width": 1 }));
-    parts.push(...others().map(([y, wide]) => line(X.hairs, y, X.hairs + wide, y, SOFT, 1)));
+    parts.push(...hairs.map(([y, wide]) => line(X.hairs, y, X.hairs + wide, y, SOFT, 1)));
     for (const rung of rungs) {
       if (rung.mark === null) continue;
       const y = at.get(rung.i).y, labelY = at.get(rung.i).label, isChosen = rung.i === state.chosen;
@@ -161,6 +161,7 @@ const ladder = (() => {
     height = svg.clientHeight || Math.max(200, window.map_plan.getSize().y - 70);
     const before = at;
     rungs = layOut();
+    hairs = others();
     const after = new Map(rungs.map((rung) => [rung.i, { y: top(rung.mark ?? 0), label: rung.label }]));
     list.replaceChildren(...rungs.map(label));
     const one = page.question();

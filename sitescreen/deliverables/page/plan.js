@@ -38,7 +38,7 @@ const plan = (() => {
 
   const canvas = document.createElement("canvas");
   canvas.className = "plots leaflet-zoom-hide";
-  let scale = 1, origin = L.point(0, 0), spots = [], overlay = null;
+  let scale = 1, origin = L.point(0, 0), spots = [], spotOf = new Map(), overlay = null;
   const movers = []; // told whenever the ground has moved under the glass
 
   let hatched = null;
@@ -98,42 +98,61 @@ const plan = (() => {
     context.globalAlpha = 1;
   }
 
+  // signs of small plots, each drawn once and then stamped: there may be ten thousand
+  const STAMP = 2 * SIGN + 4;
+  let stamps = null;
+  function stamp(kind, ratio) {
+    if (!stamps || stamps.ratio !== ratio) stamps = { ratio };
+    if (stamps[kind]) return stamps[kind];
+    const tile = document.createElement("canvas");
+    tile.width = tile.height = Math.ceil(STAMP * ratio);
+    const pen = tile.getContext("2d");
+    pen.scale(ratio, ratio);
+    const shape = new Path2D();
+    shape.rect(STAMP / 2 - SIGN, STAMP / 2 - SIGN, 2 * SIGN, 2 * SIGN);
+    drawShape(pen, shape, kind === "aside" ? hatch(pen) : data.ramp[kind] || PAPER, kind === "aside", false);
+    if (kind === "unknown") drawDot(pen, STAMP / 2, STAMP / 2);
+    stamps[kind] = tile;
+    return tile;
+  }
+  function drawDot(context, x, y) {
+    context.fillStyle = INK;
+    context.beginPath();
+    context.arc(x, y, 1.5, 0, 7);
+    context.fill();
+  }
+  let drawing = null; // those set aside lie lowest, the first rank on top
+  const drawingOrder = () => (drawing = drawing || [...page.aside, ...[...page.ranked].reverse()].filter((i) => places[i]));
+
   function drawPlots(context, size) {
-    const marks = page.marks(), stripes = hatch(context);
-    const taken = [];
+    const marks = page.marks(), stripes = hatch(context), ratio = canvas.width / size.x;
+    const taken = [], chosen = state.chosen;
     spots = [];
-    const order = [...page.aside, ...[...page.ranked].reverse()].filter((i) => i !== state.chosen);
-    const chosen = state.chosen;
-    if (chosen !== null) order.push(chosen);
-    for (const i of order) {
-      if (!places[i]) continue;
-      const at = onScreen(places[i]);
-      if (at.x < -60 || at.y < -60 || at.x > size.x + 60 || at.y > size.y + 60) continue;
+    spotOf = new Map();
+    const drawOne = (i) => {
+      const x = places[i].x * scale - origin.x, y = places[i].y * scale - origin.y;
+      if (x < -60 || y < -60 || x > size.x + 60 || y > size.y + 60) return;
       const half = reaches[i] * scale, isSign = 2 * half < LARGE;
       const isAside = plots.rank[i] === null, mark = isAside ? null : marks[i];
-      const number = page.classOf(mark);
-      const colour = isAside ? stripes : number === null ? PAPER : data.ramp[number];
-      const shape = isSign && i !== chosen && !isAside ? null : outline(i, at, isSign);
-      if (shape) drawShape(context, shape, colour, isAside, i === chosen);
-      else { // a sign of one colour, in the fewest strokes: there may be ten thousand
-        const x = at.x - SIGN, y = at.y - SIGN, side = 2 * SIGN;
-        context.fillStyle = PAPER;
-        context.fillRect(x - 1.8, y - 1.8, side + 3.6, side + 3.6);
-        context.fillStyle = INK;
-        context.fillRect(x - 0.6, y - 0.6, side + 1.2, side + 1.2);
-        context.fillStyle = colour;
-        context.fillRect(x + 0.6, y + 0.6, side - 1.2, side - 1.2);
-      }
-      if (!isAside && number === null && page.asks(i)) {
-        context.fillStyle = INK;
-        context.beginPath();
-        context.arc(at.x, at.y, 1.5, 0, 7);
-        context.fill();
+      const number = page.classOf(mark), isUnknown = !isAside && number === null && page.asks(i);
+      let shape = null;
+      if (isSign && i !== chosen) {
+        const kind = isAside ? "aside" : number !== null ? number : isUnknown ? "unknown" : "unasked";
+        const left = Math.round((x - STAMP / 2) * ratio) / ratio, top = Math.round((y - STAMP / 2) * ratio) / ratio; // whole pixels stay sharp
+        const tile = stamp(kind, ratio);
+        context.drawImage(tile, left, top, tile.width / ratio, tile.height / ratio);
+      } else {
+        shape = outline(i, { x, y }, isSign);
+        drawShape(context, shape, isAside ? stripes : number === null ? PAPER : data.ramp[number], isAside, i === chosen);
+        if (isUnknown) drawDot(context, x, y);
       }
       const room = isSign ? SIGN : half;
-      spots.push({ i, x: at.x, y: at.y, half: room, shape });
-      taken.push([at.x - room, at.y - room, at.x + room, at.y + room]);
-    }
+      spotOf.set(i, spots.length);
+      spots.push({ i, x, y, half: room, shape });
+      taken.push([x - room, y - room, x + room, y + room]);
+    };
+    for (const i of drawingOrder()) if (i !== chosen) drawOne(i);
+    if (chosen !== null && places[chosen]) drawOne(chosen);
     drawNumbers(context, size, taken);
     return taken;
   }
@@ -175,12 +194,13 @@ const plan = (() => {
   function drawNumbers(context, size, taken) {
     context.textBaseline = "middle";
     const ranks = page.now.rank;
-    const byRank = spots.filter((s) => ranks[s.i] !== null).sort((a, b) => ranks[a.i] - ranks[b.i]);
-    const first = byRank.filter((s) => s.i === state.chosen);
-    for (const spot of [...first, ...byRank.filter((s) => s.i !== state.chosen)].slice(0, MOST_NUMBERS)) {
+    const seen = page.now.order.map((i) => spotOf.get(i)).filter((k) => k !== undefined).map((k) => spots[k]);
+    const first = seen.filter((s) => s.i === state.chosen);
+    const serif = getComputedStyle(document.body).getPropertyValue("--serif");
+    for (const spot of [...first, ...seen.filter((s) => s.i !== state.chosen)].slice(0, MOST_NUMBERS)) {
       const rank = ranks[spot.i], isChosen = spot.i === state.chosen, isShort = rank <= data.shortlist;
       if (!isShort && !isChosen && (size.x < 600 || spots.length > MOST_NUMBERED)) continue;
-      context.font = `${isShort || isChosen ? "bold 15" : "12"}px ${getComputedStyle(document.body).getPropertyValue("--serif")}`;
+      context.font = `${isShort || isChosen ? "bold 15" : "12"}px ${serif}`;
       const text = page.ordinal(rank), wide = context.measureText(text).width, tall = isShort || isChosen ? 15 : 12;
       const gap = spot.half + (isChosen ? 9 : 5);
       const tries = [[gap, 0], [-gap - wide, 0], [-wide / 2, -gap - tall / 2], [-wide / 2, gap + tall / 2]];
@@ -320,8 +340,8 @@ const plan = (() => {
   }
   // where a plot's ground lies on the map's window, and how far its sign reaches; null where it is out of sight
   function groundOf(i) {
-    const spot = spots.find((one) => one.i === i);
+    const spot = spots[spotOf.get(i)];
     return spot ? { x: spot.x, y: spot.y, half: Math.min(spot.half, 400) } : null;
   }
-  return { start, reveal, print, groundOf, movers, screenOf: (i) => { const s = spots.find((spot) => spot.i === i); return s ? [s.x, s.y] : null; } };
+  return { start, reveal, print, groundOf, movers, screenOf: (i) => { const s = spots[spotOf.get(i)]; return s ? [s.x, s.y] : null; } };
 })();

@@ -51,10 +51,10 @@ const ranking = (() => {
     return one.marks[i] === null ? "unknown" : [one.marks[i].toFixed(0), ruler(one.marks[i], null, null, 86, 14)];
   }
 
+  // the ranking is in order already; plots without a rank stand at its end
   function byRank(isDown) {
-    const place = new Int32Array(plots.plot.length).fill(plots.plot.length);
-    page.now.order.forEach((i, k) => { place[i] = k; });
-    return (a, b) => (isDown ? place[b] - place[a] : place[a] - place[b]) || a - b;
+    const { order, rank } = page.now, rest = order.length < page.ranked.length ? page.ranked.filter((i) => rank[i] === null) : [];
+    return isDown ? [...rest.reverse(), ...[...order].reverse()] : [...order, ...rest];
   }
   function compare(column) {
     const turn = sorted.down ? -1 : 1, place = new Map(page.now.order.map((i, k) => [i, k]));
@@ -73,7 +73,8 @@ const ranking = (() => {
     const by = all.find((column) => column.key === sorted.key);
     const wanted = find.value.trim().toLowerCase();
     if (wanted && !searchable) searchable = searched();
-    const fits = page.ranked.filter((i) => !wanted || searchable[i].includes(wanted)).sort(by.key === "rank" ? byRank(sorted.down) : compare(by));
+    const inOrder = by.key === "rank" ? byRank(sorted.down) : [...page.ranked].sort(compare(by));
+    const fits = wanted ? inOrder.filter((i) => searchable[i].includes(wanted)) : inOrder;
     heads.replaceChildren(...all.map((column) => {
       const sort = () => {
         sorted = { key: column.key, down: sorted.key === column.key ? !sorted.down : Boolean(column.best) };
