@@ -1,5 +1,7 @@
 """How heavy the page may be, and which pictures go when it would be heavier."""
 
+import json
+from collections.abc import Sequence
 from typing import Any
 
 import numpy as np
@@ -16,6 +18,30 @@ fewest plots."""
 def budget_bytes(plots: int) -> int:
     """The most that a page of so many plots may weigh."""
     return int(1e6 * np.interp(plots, PLOTS, MEGABYTES))
+
+
+def fit_contours(finest_first: Sequence[list[dict[str, Any]]], room: int) -> tuple[list[dict[str, Any]], list[str]]:
+    """The finest contours of cold air that fit: they are coarsened, and then go, before any picture does.
+
+    Parameters
+    ----------
+    finest_first : sequence of list of dict
+        As :func:`sitescreen.deliverables.cold_contours.cold_contours` gives them.
+    room : int
+        Bytes that are left.
+
+    Returns
+    -------
+    contours : list of dict
+        None of them where even the coarsest are too heavy.
+    said : list of str
+        A sentence where they are left out.
+    """
+    for contours in finest_first:
+        if len(json.dumps(contours, separators=(",", ":"))) <= room or not contours:
+            return contours, []
+    said = ["The lines of cold-air depth are left out, to keep this page light enough to mail."]
+    return [], said if finest_first else []
 
 
 def fit_pictures(questions: list[dict[str, Any]], over: int) -> list[str]:

@@ -15,7 +15,8 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from sitescreen.deliverables.answer import CAUTION, answer, trust
-from sitescreen.deliverables.budget import budget_bytes, fit_pictures
+from sitescreen.deliverables.budget import budget_bytes, fit_contours, fit_pictures
+from sitescreen.deliverables.cold_contours import LEVELS_M, cold_contours
 from sitescreen.deliverables.columns import Column
 from sitescreen.deliverables.page_data import page_data
 from sitescreen.deliverables.questions import asked_here, views
@@ -30,8 +31,8 @@ if TYPE_CHECKING:
     from sitescreen.screening import Screening
 
 SCRIPTS = (
-    "start.js", "weigh.js", "words.js", "frame.js", "landmarks.js", "plan.js", "ladder.js", "leaf.js", "around.js",
-    "section.js", "ranking.js", "asks.js", "paper.js", "page.js",
+    "start.js", "weigh.js", "words.js", "frame.js", "cold.js", "landmarks.js", "plan.js", "ladder.js", "leaf.js",
+    "around.js", "section.js", "ranking.js", "asks.js", "paper.js", "page.js",
 )  # fmt: skip
 
 _DANGEROUS = {"&": "\\u0026", "<": "\\u003c", ">": "\\u003e", "\u2028": "\\u2028", "\u2029": "\\u2029"}
@@ -66,11 +67,16 @@ def map_page(screening: "Screening", columns: Sequence[Column]) -> str:
     data["answer"] = answer(table)
     data["trust"] = trust(screening)
     relief_address = _BLANK_PICTURE if relief is None else webp(relief, lossless=False)
-    page = _page(screening, sheet, relief_address, data)
-    over = len(page.encode("utf-8", errors="replace")) - budget_bytes(len(table))
-    if over <= 0:
-        return page
-    data["left_out"] += fit_pictures(data["questions"], over)
+    is_cold_asked = any(one.name == "cold" for one in questions)
+    contours = (
+        cold_contours(groups.get("cold_depth_m", []), groups.get("cold_kind", []), sheet) if is_cold_asked else []
+    )
+    data["cold_levels_m"] = LEVELS_M
+    data["cold"] = []
+    over = len(_page(screening, sheet, relief_address, data).encode("utf-8", errors="replace"))
+    over -= budget_bytes(len(table))
+    data["cold"], said = fit_contours(contours, -over)
+    data["left_out"] += said + fit_pictures(data["questions"], over)
     return _page(screening, sheet, relief_address, data)
 
 

@@ -71,7 +71,7 @@ ASKED = (
         "Cold air at night?",
         "Cold air",
         "Where cold air lies on calm clear nights: in hollows without an outlet, and where the air of a computed night "
-        "is held back, deeper than on level ground. How sure that is, given the terrain’s error, is not yet measured.",
+        "is held back, deeper than on level ground. How sure that is, a plot’s leaf says as its chance of cold air.",
     ),
     Asked(
         "sun",

@@ -63,6 +63,7 @@ const landmarks = (() => {
   }
   function paint(pen, size, onScreen, taken) {
     const names = [];
+    coldAir.paint(pen, size, onScreen);
     for (const layer of layers) {
       for (const thing of layer.things) {
         const parts = thing.parts.map((part) => part.map(onScreen));

@@ -31,11 +31,11 @@
     const best = view && view.bare ? "Bare ground is best, then dark ground." : "Dark ground is better ground.";
     const darker = view ? `${best} Plots show their own mark, by their own zone, in the same five steps.` : "Dark is better.";
     legend.hidden = false;
-    const way = landmarks.key();
+    const way = [...coldAir.key(), ...landmarks.key()];
     legend.replaceChildren(
       make("div", { class: "legend-row" }, title, ...items.map(([sign, words]) => make("span", { class: "legend-item" }, sign, words)),
         ...way.map((parts) => make("span", { class: "legend-item" }, ...parts))),
-      make("p", {}, `${darker} 1st, 2nd … on the map are ranks; a plot’s own number stands in its leaf. ${(one || data.overall).method} ${data.left_out.join(" ")}`.trim()));
+      make("p", {}, `${darker} 1st, 2nd … on the map are ranks; a plot’s own number stands in its leaf. ${coldAir.says()} ${(one || data.overall).method} ${data.left_out.join(" ")}`.trim()));
   }
 
   function trust() {
