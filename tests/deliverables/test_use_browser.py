@@ -64,6 +64,20 @@ def test_the_table_is_downloaded_as_shown(read: Any, invent: Any) -> None:
     assert "'=1+1" in [row[2] for row in rows[1:-1]]
 
 
+def test_of_many_plots_what_is_out_of_sight_waits(read: Any, invent: Any) -> None:
+    """The table below the map is laid out once it comes into view; of few plots it always is."""
+    shown = (
+        "const done = arguments[0], seen = () => document.querySelector('#rows tr:nth-child(90)')"
+        ".checkVisibility({ contentVisibilityAuto: true }), before = seen();"
+        "document.querySelector('#rows tr:nth-child(90)').scrollIntoView();"
+        "requestAnimationFrame(() => requestAnimationFrame(() => setTimeout(() => done([before, seen()]), 100)))"
+    )
+    page = read(invent(names=tuple(f"Field {k}" for k in range(450))), height=400)
+    assert page.browser.execute_async_script(shown) == [False, True]
+    page = read(invent(names=tuple(f"Field {k}" for k in range(100))), height=400)
+    assert page.browser.execute_async_script(shown) == [True, True]
+
+
 def test_a_file_comes_of_the_download(read: Any, screening: Any, tmp_path: Path) -> None:
     page = read(screening)
     page.browser.execute_cdp_cmd("Browser.setDownloadBehavior", {"behavior": "allow", "downloadPath": str(tmp_path)})

@@ -43,6 +43,7 @@
       make("ul", {}, ...block.lines.map((line) => make("li", {}, line))))));
   }
 
+  document.body.classList.toggle("many", page.count > 400);
   asks.start();
   trust();
   landmarks.start();
