@@ -55,6 +55,13 @@ def transpose(source: Any, target: Any, start: Any, stop: Any) -> None:
 
 
 @njit(nogil=True, cache=True, error_model="numpy")
+def _copy(source: Any, target: Any) -> None:
+    """Copy a row. Array assignment would do, but compiling its message for unequal shapes takes four seconds."""
+    for i in range(source.shape[0]):
+        target[i] = source[i]
+
+
+@njit(nogil=True, cache=True, error_model="numpy")
 def _inside(samples: Any, row: Any, low: Any, high: Any, rows: Any, cols: Any) -> Any:
     """Whether both cells of each sample lie on the ground, for all viewers low … high of a row."""
     for s in range(samples.shape[0]):
@@ -423,22 +430,14 @@ def sweep_strips(
                     tangent,
                     per_distance,
                 )
-                if high - low == width:
-                    _raise(
-                        tangent,
-                        per_distance,
-                        found_m[search],
-                        part[row],
-                        elevation_m[row, low:high],
-                        out[row, low:high],
-                    )
-                else:
-                    height[low - side : high - side] = elevation_m[row, low:high]
-                    best[low - side : high - side] = out[row, low:high]
-                    _raise(tangent, per_distance, found_m[search], part[row], height, best)
-                    out[row, low:high] = best[low - side : high - side]
+                _copy(elevation_m[row, low:high], height[low - side :])
+                _copy(out[row, low:high], best[low - side :])
+                _raise(tangent, per_distance, found_m[search], part[row], height, best)
+                _copy(best[low - side : high - side], out[row, low:])
             # what the next block still needs of this one
             for k in range(before):
-                ground[k] = ground[k + k1 - k0]
-            found_at[0], found_m[0], seen[0] = found_at[searches], found_m[searches], seen[searches]
+                _copy(ground[k + k1 - k0], ground[k])
+            _copy(found_at[searches], found_at[0])
+            _copy(found_m[searches], found_m[0])
+            _copy(seen[searches], seen[0])
             k0, base = k1, k1 - 1
