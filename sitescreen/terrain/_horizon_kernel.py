@@ -341,7 +341,9 @@ def sweep_strips(
     found_m = np.empty((_BLOCK + 2, lines + 1), dtype=np.float32)
     seen = np.empty((_BLOCK + 2, lines + 1), dtype=np.float32)
     tangent, per_distance = np.empty(lines + 1, dtype=np.float32), np.empty(lines + 1, dtype=np.float32)
-    height, best = np.full(width, _NAN, dtype=np.float32), np.full(width, _NAN, dtype=np.float32)
+    height, best = np.empty(width, dtype=np.float32), np.empty(width, dtype=np.float32)
+    height[:] = _NAN
+    best[:] = _NAN
     for strip in range(start, stop):
         first = first_line + width * strip
         begin, end = _steps_inside(whole, cols, first, width)

@@ -172,15 +172,18 @@ def _tangents(
     out = np.empty(grid.shape, dtype=np.float32)
     seen = out.view()
     seen.flags.writeable = False
-    turned, turned_out = None, np.empty((0, 0), dtype=np.float32)
+    turned = None
+    turned_out = turned_seen = np.empty((0, 0), dtype=np.float32)
     for azimuth in azimuths_deg:
         if _sweeps_rows(azimuth):
             _sweep(elevation.values, grid, azimuth, earth_curvature, out)
         else:
             if turned is None:
                 turned, turned_out = transposed(elevation.values), np.empty(grid.shape[::-1], dtype=np.float32)
+                turned_seen = turned_out.view()
+                turned_seen.flags.writeable = False
             _sweep(turned, grid, azimuth, earth_curvature, turned_out)
-            in_bands(transpose, grid.rows, turned_out, out)
+            in_bands(transpose, grid.rows, turned_seen, out)
         yield azimuth, seen
 
 
