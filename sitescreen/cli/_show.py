@@ -71,4 +71,4 @@ def say_if_first_run() -> None:
     """
     package = Path(__file__).parents[1]
     if os.access(package, os.W_OK) and not any(package.glob("terrain/__pycache__/*.nbi")):
-        click.echo("First run: the measuring code is compiled once, which takes about half a minute more.", err=True)
+        click.echo("First run: the measuring code is compiled once, which takes about a minute more.", err=True)
