@@ -26,8 +26,8 @@ if TYPE_CHECKING:
 IN_WATER_SHARE = 0.5
 """As the caution ``in_water`` has it."""
 
-# measured on two cores: the demo (4.2 million cells) and a 1° tile at 30 m (16 million cells in two blocks)
-START_S, S_A_CELL = 5.0, 2.0e-6
+# roughly, from the demo on two busy cores (4.2 million cells, its nights simulated); memory also from a 1° tile at 30 m
+START_S, S_A_CELL = 10.0, 1.0e-5
 START_GB, GB_A_CELL = 0.6, 0.1e-6
 
 
