@@ -143,7 +143,9 @@ def test_why_tells_place_marks_and_reasons(job: Path, rows: dict[str, dict[str, 
     lines = said.splitlines()
     assert lines[0] == "Plot A"
     assert f"Rank {rows['A']['rank']} of 3; {rows['A']['rank_in_zone']} in upland." in lines
-    assert any(line.startswith("In 2,000 trials, which vary the weights") and "mostly rank" in line for line in lines)
+    assert any(
+        line.startswith("In 2,000 trials, which vary the weights") and "nine in ten give it" in line for line in lines
+    )
     assert "     80.0  price (8 % of the mark)" in lines, "10 of 100 + 20 + 10"
     assert "  - 1,000 m from the nearest road, a mark of 75 out of 100." in lines
     for kind in ("for", "against", "cautions"):

@@ -62,11 +62,11 @@ def _place(row: Mapping[str, str], plots: Mapping[str, Any], certainty: Mapping[
             f"Two zones share it: {_in_zone(row, 'zone', 'zone_share', 'mark_in_zone')} and "
             f"{_in_zone(row, 'zone_2', 'zone_2_share', 'mark_in_zone_2')}; what follows speaks of the first."
         )
-    if row.get("zone_missing"):
+    if row.get("zone_missing") and row["rank"]:
         yield f"Its rank is provisional: {row['zone_missing']} is missing to tell its zone."
     if row["rank_low"]:
         yield (
-            f"In {certainty['trials']:,} trials, which vary {certainty['varies']}, mostly "
+            f"In {certainty['trials']:,} trials, which vary {certainty['varies']}, nine in ten give it "
             f"{_span(row['rank_low'], row['rank_high'])}; first {of_trials(float(row['chance_first']))}."
         )
     if row.get("rank_low_data"):

@@ -23,7 +23,7 @@ _CHUNK = 2000
 
 @dataclass(frozen=True)
 class PlotSkies:
-    """What the sun's readings of n plots rest on; helpers of siting take it too.
+    """What the sun's readings of n plots rest on; siting takes it too.
 
     ``skyline_deg`` (n, 72): from true north [°]; NaN counts as level. ``skies``: the suns, and which is each plot's.
     ``seasons``. ``clear_share`` (12, 2): of mornings and afternoons; None where no table was given. ``sky_view`` (n,):
